@@ -1,0 +1,31 @@
+"""The registry of measures.  Adding one takes a file in this folder and a line here."""
+
+from __future__ import annotations
+
+from importlib import import_module
+
+from kingpost.core.errors import SettingsError
+from kingpost.core.measures.base import Measure
+
+# name -> module that defines MEASURE; imported on first use, so that asking for one measure
+# does not load the solvers of all.
+_MODULES = {
+    "surfer": "kingpost.core.measures.surfer",
+    "eigenvector": "kingpost.core.measures.eigenvector",
+    "katz": "kingpost.core.measures.katz",
+    "degree": "kingpost.core.measures.degree",
+}
+
+NAMES = tuple(_MODULES)
+
+
+def measure(name: str) -> Measure:
+    """The measure called ``name``.
+
+    Raises:
+        SettingsError: if there is none of that name.
+    """
+    if name not in _MODULES:
+        raise SettingsError(f"no measure is called {name!r}; there are {', '.join(NAMES)}")
+    found: Measure = import_module(_MODULES[name]).MEASURE
+    return found
