@@ -1,0 +1,75 @@
+"""How every numba loop of this package is compiled.
+
+The settings are the same everywhere: the interpreter lock is released, arithmetic is plain IEEE
+(never reordered, so that results are the same bit for bit and their bounds hold), arrays are not
+bounds-checked, and a division by zero gives infinity or NaN as numpy does.
+
+Machine code is kept between runs where numba finds a folder it may write to.  Where it finds
+none, or the disk is full, kernels still work and are compiled afresh in every process;
+:func:`cache_message` says so.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from pickle import UnpicklingError
+from typing import Any, TypeVar
+
+from numba import njit
+
+F = TypeVar("F", bound=Callable[..., Any])
+
+_message: str | None = None
+
+
+def kernel(**options: Any) -> Callable[[F], F]:
+    """Decorator: compile a function over flat arrays; ``options`` go to ``numba.njit``."""
+    settings = {"nogil": True, "error_model": "numpy", "boundscheck": False, **options}
+
+    def decorate(function: F) -> F:
+        try:
+            compiled = njit(cache=True, **settings)(function)
+        except RuntimeError as error:  # numba: "cannot cache function", no folder to write to
+            if "cannot cache" not in str(error):
+                raise
+            _remember("no folder for compiled code can be written to")
+            return njit(**settings)(function)  # type: ignore[no-any-return]
+        _forgive(compiled)
+        return compiled  # type: ignore[no-any-return]
+
+    return decorate
+
+
+def cache_message() -> str | None:
+    """Why compiled code is not kept between runs, as one sentence; None where it is kept."""
+    return _message
+
+
+def _remember(reason: str) -> None:
+    global _message
+    if _message is None:
+        _message = (
+            f"compiled code is not kept between runs ({reason}), so every start takes some seconds "
+            "longer; set NUMBA_CACHE_DIR to a folder that can be written to"
+        )
+
+
+def _forgive(compiled: Any) -> None:
+    # numba lets an error of the cache's files (disk full, a folder gone, a damaged index) end
+    # the call of the kernel itself, although the code is compiled and ready by then.
+    cache = getattr(compiled, "_cache", None)
+    for name in ("load_overload", "save_overload"):
+        original = getattr(cache, name, None)
+        if original is not None:
+            setattr(cache, name, _guarded(original))
+
+
+def _guarded(original: Callable[..., Any]) -> Callable[..., Any]:
+    def guarded(*arguments: Any, **keywords: Any) -> Any:
+        try:
+            return original(*arguments, **keywords)
+        except (OSError, EOFError, ValueError, UnpicklingError) as error:
+            _remember(f"{type(error).__name__}: {error}")
+            return None
+
+    return guarded
