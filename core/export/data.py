@@ -1,0 +1,165 @@
+"""A ranking as data: csv, tsv, json and parquet, exact to the last bit and written in batches."""
+
+from __future__ import annotations
+
+import dataclasses
+from collections.abc import Callable, Iterator
+from typing import Any, BinaryIO
+
+import pyarrow as pa
+
+from kingpost.core.export.jsonable import dumps, jsonable
+from kingpost.core.export.rows import Ranking, as_plain, batches, schema, shown
+from kingpost.core.watch import Watch
+
+
+def facts(ranking: Ranking) -> dict[str, Any]:
+    """Everything about a ranking but its rows, ready for JSON.
+
+    Keys: ``input, graph, account, measure, settings, conventions, solve``.  ``error_bound`` is
+    null where no bound is known.
+    """
+    graph, result = ranking.graph, ranking.result
+    return {
+        "input": jsonable(dataclasses.asdict(graph.origin)),
+        "graph": {
+            "name": graph.origin.name,
+            "nodes": graph.n,
+            "edges": graph.m,
+            "directed": graph.directed,
+            "weighted": graph.weighted,
+            "self_loops": graph.loop_count,
+        },
+        "account": jsonable(dataclasses.asdict(graph.account)),
+        "measure": result.measure,
+        "settings": settings(result.settings),
+        "conventions": jsonable(ranking.conventions),
+        "solve": {
+            "stop": result.stop.value,
+            "sweeps": result.sweeps,
+            "edge_visits": result.edge_visits,
+            "error_bound": jsonable(float(result.bound.value)),
+            "bound_kind": result.bound.kind.value,
+            "proven_order": result.proven_order,
+            "seconds": jsonable(dataclasses.asdict(result.seconds)),
+        },
+    }
+
+
+def settings(chosen: Any) -> dict[str, Any]:
+    """A measure's settings by name, ready for JSON; long vectors by their length."""
+    return {
+        item.name: jsonable(getattr(chosen, item.name)) for item in dataclasses.fields(chosen)
+    }
+
+
+def write_json(
+    ranking: Ranking, sink: BinaryIO, watch: Watch | None = None, *, ascii_only: bool = False
+) -> None:
+    """One object with the keys of :func:`facts` and ``rows``, one row a line."""
+    head = dumps(facts(ranking), indent=2, ascii_only=ascii_only)
+    sink.write((head.removesuffix("\n}") + ',\n  "rows": [').encode())
+    between = "\n    "
+    for batch in _watched(ranking, watch):
+        lines = []
+        for row in _plain(batch).to_pylist():
+            lines.append(between + dumps(row, ascii_only=ascii_only))
+            between = ",\n    "
+        sink.write("".join(lines).encode())
+    sink.write(b"\n  ]\n}\n" if ranking.count else b"]\n}\n")
+
+
+def write_delimited(
+    ranking: Ranking,
+    sink: BinaryIO,
+    watch: Watch | None = None,
+    *,
+    delimiter: str = ",",
+    safe: bool = False,
+) -> None:
+    """RFC 4180 text in UTF-8: a line of names, then the rows; lines end in a line feed.
+
+    Text is always quoted, numbers and nulls never, so that an empty text and a null differ.
+    ``safe`` writes control characters out, for a terminal; without it text is exact.
+    """
+    from pyarrow import csv
+
+    plain = pa.schema([(f.name, as_plain(pa.array([], f.type)).type) for f in schema(ranking.graph)])
+    _write_csv(plain.empty_table(), sink, csv.WriteOptions(delimiter=delimiter))
+    body = csv.WriteOptions(delimiter=delimiter, include_header=False)
+    for batch in _watched(ranking, watch):
+        batch = _plain(batch)
+        if safe:
+            batch = _each(batch, shown)
+        _write_csv(pa.Table.from_batches([batch]), sink, body)
+
+
+def _write_csv(table: pa.Table, sink: BinaryIO, options: Any) -> None:
+    from pyarrow import csv
+
+    # Through memory: Arrow would hide a broken pipe or a full disk behind errors of its own.
+    buffer = pa.BufferOutputStream()
+    csv.write_csv(table, buffer, options)
+    sink.write(memoryview(buffer.getvalue()))
+
+
+def write_parquet(ranking: Ranking, sink: BinaryIO, watch: Watch | None = None) -> None:
+    """The rows as Parquet; the file's metadata holds :func:`facts` as JSON under ``kingpost``."""
+    import pyarrow.parquet as pq
+
+    columns = schema(ranking.graph).with_metadata({"kingpost": dumps(facts(ranking))})
+    with pq.ParquetWriter(_Sink(sink), columns, compression="zstd") as writer:
+        for batch in _watched(ranking, watch):
+            writer.write_batch(batch.replace_schema_metadata(columns.metadata))
+
+
+class _Sink:
+    """A binary file for Arrow that is only ever written forwards, so that a pipe will do."""
+
+    closed = False
+
+    def __init__(self, sink: BinaryIO) -> None:
+        self._sink, self._at = sink, 0
+
+    def write(self, data: Any) -> int:
+        view = memoryview(data)
+        self._sink.write(view)
+        self._at += view.nbytes
+        return view.nbytes
+
+    def tell(self) -> int:
+        return self._at
+
+    def flush(self) -> None:
+        self._sink.flush()
+
+    def close(self) -> None:
+        self._sink.flush()
+
+    def readable(self) -> bool:
+        return False
+
+    def writable(self) -> bool:
+        return True
+
+    def seekable(self) -> bool:
+        return False
+
+
+def _watched(ranking: Ranking, watch: Watch | None) -> Iterator[pa.RecordBatch]:
+    done = 0
+    for batch in batches(ranking):
+        if watch is not None:
+            watch.report("writing", done, ranking.count, "rows")
+        yield batch
+        done += len(batch)
+
+
+def _plain(batch: pa.RecordBatch) -> pa.RecordBatch:
+    return _each(batch, as_plain)
+
+
+def _each(batch: pa.RecordBatch, change: Callable[[pa.Array], pa.Array]) -> pa.RecordBatch:
+    return pa.RecordBatch.from_arrays(list(map(change, batch.columns)), names=batch.schema.names)
+
+

@@ -1,0 +1,181 @@
+"""Where tables come from: files, folders, globs and hive partitions, opened as parts.
+
+A part is one file (or one table in memory) that can tell its columns and hand out batches of a
+few of them.  Every way in which a file can be missing or broken ends in one sentence here.
+"""
+
+from __future__ import annotations
+
+import glob
+import os
+from collections.abc import Callable, Iterator, Sequence
+from dataclasses import dataclass, field
+from pathlib import Path
+from typing import Any
+from urllib.parse import unquote
+
+import pyarrow as pa
+import pyarrow.dataset as ds
+
+from kingpost.core.errors import InputError
+from kingpost.core.ingest.idtypes import first_line
+from kingpost.core.text import listed
+
+ENDINGS = (".parquet", ".parq", ".pq")
+_NULL_PARTITION = "__HIVE_DEFAULT_PARTITION__"
+BATCH_ROWS = 131_072
+
+Paths = str | os.PathLike[str] | Sequence[str | os.PathLike[str]]
+
+
+@dataclass(frozen=True)
+class Part:
+    """One file or table: its columns, its number of rows, and a reader of chosen columns."""
+
+    name: str
+    schema: pa.Schema
+    rows: int
+    read: Callable[[list[str]], Iterator[pa.RecordBatch]]
+    partitions: frozenset[str] = field(default_factory=frozenset)
+
+
+def parts_of_table(table: pa.Table, name: str) -> list[Part]:
+    """A table in memory as a single part."""
+
+    def read(columns: list[str]) -> Iterator[pa.RecordBatch]:
+        yield from table.select(columns).to_batches(max_chunksize=BATCH_ROWS)
+
+    return [Part(name, table.schema, table.num_rows, read)]
+
+
+def open_parts(paths: Paths) -> list[Part]:
+    """Open every Parquet file that ``paths`` names, in a fixed order: as given, then by name.
+
+    Raises:
+        InputError: for a path that names nothing, or a file that cannot be read as Parquet.
+    """
+    files = find_files(paths)
+    keys = [_partition_keys(file) for file in files]
+    # A partition column exists where every file's path has it.
+    shared = [name for name in keys[0] if all(name in key for key in keys)]
+    columns = {name: _partition_column([key[name] for key in keys]) for name in shared}
+    return [
+        _open(file, {name: columns[name].slice(at, 1) for name in shared})
+        for at, file in enumerate(files)
+    ]
+
+
+def find_files(paths: Paths) -> list[str]:
+    """The files that paths, folders and globs name; never empty."""
+    given = [paths] if isinstance(paths, str | os.PathLike) else list(paths)
+    if not given:
+        raise InputError("no edge table was named; name a Parquet file, a folder or a glob")
+    found: list[str] = []
+    for path in map(os.fspath, given):
+        found.extend(_expand(path))
+    return list(dict.fromkeys(found))
+
+
+def _expand(path: str) -> list[str]:
+    if os.path.isdir(path):
+        files = sorted(_walk(path))
+        if not files:
+            raise InputError(f"folder {path} holds no Parquet file (names ending in .parquet)")
+        return files
+    if os.path.lexists(path):
+        return [path]
+    if glob.has_magic(path):
+        hits = sorted(glob.glob(path, recursive=True))
+        if not hits:
+            raise InputError(f"no file matches {path}")
+        return [file for hit in hits for file in _expand(hit)]
+    raise InputError(f"there is no file {path}")
+
+
+def _walk(folder: str) -> Iterator[str]:
+    def refuse(error: OSError) -> None:
+        raise InputError(f"folder {error.filename} cannot be read: {error.strerror}")
+
+    for root, folders, files in os.walk(folder, onerror=refuse, followlinks=True):
+        # Names with a leading dot or underscore are other programs' temporary files and markers.
+        folders[:] = sorted(name for name in folders if not name.startswith((".", "_")))
+        for name in files:
+            if name.lower().endswith(ENDINGS) and not name.startswith((".", "_")):
+                yield os.path.join(root, name)
+
+
+def _partition_keys(file: str) -> dict[str, str]:
+    pairs = [step.split("=", 1) for step in Path(file).parts[:-1] if "=" in step]
+    return {unquote(name): unquote(value) for name, value in pairs if name}
+
+
+def _partition_column(values: list[str]) -> pa.Array:
+    """Whole numbers where every value is one in its plainest spelling ("007" is text)."""
+    known = [None if value == _NULL_PARTITION else value for value in values]
+    if all(value is None or _whole(value) for value in known):
+        return pa.array([None if value is None else int(value) for value in known], pa.int64())
+    return pa.array(known, pa.string())
+
+
+def _whole(text: str) -> bool:
+    digits = text.removeprefix("-")
+    return digits.isascii() and digits.isdigit() and len(digits) <= 18 and str(int(text)) == text
+
+
+def _open(file: str, partitions: dict[str, pa.Array]) -> Part:
+    fragment, schema, rows = _footer(file)
+    extra = {name: value for name, value in partitions.items() if name not in schema.names}
+    for name, value in extra.items():
+        schema = schema.append(pa.field(name, value.type))
+
+    def read(columns: list[str]) -> Iterator[pa.RecordBatch]:
+        inside = [name for name in columns if name not in extra]
+        try:
+            for batch in _scan(fragment, inside):
+                arrays = [
+                    pa.repeat(extra[name][0], batch.num_rows)
+                    if name in extra
+                    else batch.column(inside.index(name))
+                    for name in columns
+                ]
+                yield pa.RecordBatch.from_arrays(arrays, names=columns)
+        except (pa.ArrowException, OSError) as error:
+            raise InputError(
+                f"{file} is damaged: its rows cannot be read ({first_line(error)})"
+            ) from None
+
+    return Part(file, schema, rows, read, frozenset(extra))
+
+
+def _scan(fragment: Any, columns: list[str]) -> Iterator[pa.RecordBatch]:
+    # Expressions, because a name with a dot in it is a name here and no path.
+    wanted = {str(at): ds.field(name) for at, name in enumerate(columns)}
+    yield from fragment.scanner(columns=wanted, batch_size=BATCH_ROWS).to_batches()
+
+
+def _footer(file: str) -> tuple[Any, pa.Schema, int]:
+    try:
+        with open(file, "rb") as stream:
+            head = stream.read(4)
+            size = stream.seek(0, os.SEEK_END)
+    except OSError as error:
+        raise InputError(f"{file} cannot be read: {error.strerror or error}") from None
+    if size == 0:
+        raise InputError(f"{file} is empty (0 bytes); it should be a Parquet file")
+    if head == b"PARE":
+        raise InputError(f"{file} is an encrypted Parquet file; decrypt it first")
+    if head != b"PAR1":
+        raise InputError(f"{file} is no Parquet file (it does not begin as one)")
+    try:
+        fragment = ds.ParquetFileFormat().make_fragment(file)
+        schema = fragment.physical_schema
+        return fragment, schema, fragment.metadata.num_rows
+    except (pa.ArrowException, OSError, ValueError) as error:
+        raise InputError(
+            f"{file} is a truncated or damaged Parquet file ({first_line(error)})"
+        ) from None
+
+
+def columns_listed(schema: pa.Schema) -> str:
+    """The columns of a table with their types, for a sentence."""
+    return listed([f"{item.name} ({item.type})" for item in schema], 12)

@@ -1,0 +1,174 @@
+"""Where a graph's cycles are: strong components, their order, dangling nodes, period.
+
+Everything a solver needs to know about the shape of a graph, found once and kept with it.  Score
+flowing along the edges never returns to an earlier strong component, so components are numbered
+in condensation order: along an edge the number stays or grows.  Nodes outside non-trivial
+components are solved in one visit; only edges inside them need iterating.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+from numpy.typing import NDArray
+
+from kingpost.core.graph import Adjacency, Graph
+from kingpost.core.watch import Watch
+
+_PIECE = 4_000_000  # edges a kernel call may visit before it looks whether it was cancelled
+
+
+@dataclass(frozen=True)
+class Structure:
+    """Strong components of a directed graph in condensation order.
+
+    Attributes:
+        component: component number of each node, shape (n,), uint32.
+        order: all nodes, component by component, ascending inside, shape (n,), uint32.
+        starts: where each component begins in ``order``, shape (components + 1,), int64.
+        inner: number of stored edges inside each non-trivial component, in the order of
+            ``cyclic``, shape (k,), int64.
+        cyclic: numbers of the components that hold a cycle (more than one node, or a
+            self-loop), ascending, shape (k,), int64.
+        stored: number of stored edges of the graph.
+    """
+
+    component: NDArray[np.uint32]
+    order: NDArray[np.uint32]
+    starts: NDArray[np.int64]
+    cyclic: NDArray[np.int64]
+    inner: NDArray[np.int64]
+    stored: int
+    _outward: Adjacency
+
+    @property
+    def count(self) -> int:
+        """Number of strong components, single nodes included."""
+        return len(self.starts) - 1
+
+    @property
+    def acyclic(self) -> bool:
+        """Whether there is no cycle, not even a self-loop."""
+        return len(self.cyclic) == 0
+
+    @property
+    def share_iterated(self) -> float:
+        """Share of the stored edges inside non-trivial components: what needs iterating."""
+        return float(self.inner.sum()) / self.stored if self.stored else 0.0
+
+    @cached_property
+    def sizes(self) -> NDArray[np.int64]:
+        """Number of nodes of every component."""
+        return np.diff(self.starts)
+
+    def members(self, component: int) -> NDArray[np.uint32]:
+        """Nodes of one component, ascending."""
+        return self.order[self.starts[component] : self.starts[component + 1]]
+
+    def period(self, component: int) -> int:
+        """Greatest common divisor of the lengths of a component's cycles; 0 if it has none."""
+        from kingpost.core.kernels.components import cycle_gcd
+
+        nodes = self.members(component)
+        level = np.full(len(self.component), -1, dtype=np.int64)
+        queue = np.empty(len(nodes), dtype=np.uint32)
+        out = self._outward
+        return int(
+            cycle_gcd(out.offsets, out.neighbours, self.component, int(nodes[0]), level, queue)
+        )
+
+
+def analyse(graph: Graph, watch: Watch | None = None) -> Structure:
+    """Find the strong components of ``graph`` in condensation order.
+
+    Raises:
+        Interrupted: if ``watch`` was cancelled.
+    """
+    from kingpost.core.kernels import components as kernels
+
+    watch = watch or Watch()
+    out, n = graph.outward, graph.n
+    down = up = 0
+    for low, high in row_pieces(out.offsets, _PIECE):
+        watch.check()
+        falls, rises = kernels.backward_edges(out.offsets, out.neighbours, low, high)
+        down, up = down + falls, up + rises
+    if down == 0 or up == 0:
+        # The numbering of the nodes is a topological order already, or its reverse.
+        order = np.arange(n, dtype=np.uint32)
+        component = order if down == 0 else order[::-1].copy()
+        starts = np.arange(n + 1, dtype=np.int64)
+        order = component
+    else:
+        component, found = _strong(out, n, watch)
+        counts = np.bincount(component, minlength=found)
+        starts = np.zeros(found + 1, dtype=np.int64)
+        np.cumsum(counts, out=starts[1:])
+        order = np.empty(n, dtype=np.uint32)
+        kernels.group_order(component, starts[:-1].copy(), order)
+    return _finish(out, component, order, starts, graph.stored, watch)
+
+
+def _strong(out: Adjacency, n: int, watch: Watch) -> tuple[NDArray[np.uint32], int]:
+    from kingpost.core.kernels import components as kernels
+
+    state = np.zeros(5, dtype=np.int64)
+    index = np.full(n, kernels.UNSEEN, dtype=np.uint32)
+    cursor = np.empty(n, dtype=np.int64)
+    stack, path = np.empty(n, dtype=np.uint32), np.empty(n, dtype=np.uint32)
+    done = False
+    while not done:
+        watch.check()
+        done = kernels.strong(
+            out.offsets, out.neighbours, state, index, cursor, stack, path, _PIECE
+        )
+        watch.report("finding strong components", min(int(state[0]), n), n, "nodes")
+    found = int(state[4])
+    return index - np.uint32(n - found), found
+
+
+def _finish(
+    out: Adjacency,
+    component: NDArray[np.uint32],
+    order: NDArray[np.uint32],
+    starts: NDArray[np.int64],
+    stored: int,
+    watch: Watch,
+) -> Structure:
+    from kingpost.core.kernels import components as kernels
+
+    count = len(starts) - 1
+    counts = np.zeros(count, dtype=np.int64)
+    for low, high in row_pieces(out.offsets, _PIECE):
+        watch.check()
+        kernels.edges_inside(out.offsets, out.neighbours, component, low, high, counts)
+    cyclic = np.flatnonzero(counts)
+    return Structure(component, order, starts, cyclic, counts[cyclic], stored, out)
+
+
+def weak_components(graph: Graph, watch: Watch | None = None) -> NDArray[np.uint32]:
+    """For each node the lowest number in its weakly connected component, shape (n,)."""
+    from kingpost.core.kernels import components as kernels
+
+    watch = watch or Watch()
+    parent = np.arange(graph.n, dtype=np.uint32)
+    out = graph.outward
+    for low, high in row_pieces(out.offsets, _PIECE):
+        watch.check()
+        kernels.unite(out.offsets, out.neighbours, low, high, parent)
+    kernels.find_roots(parent)
+    return parent
+
+
+def row_pieces(offsets: NDArray[np.int64], edges: int) -> Iterator[tuple[int, int]]:
+    """Cut the rows into consecutive ranges of about ``edges`` edges (and as many nodes) each."""
+    n = len(offsets) - 1
+    low = 0
+    while low < n:
+        high = int(np.searchsorted(offsets, offsets[low] + edges, side="right")) - 1
+        high = min(max(high, low + 1), low + edges, n)
+        yield low, high
+        low = high
