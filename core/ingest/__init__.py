@@ -1,0 +1,85 @@
+"""Tables of edges -> one immutable Graph, with an account of every row.
+
+Light to import: Arrow and the compiled loops are loaded on first use.
+"""
+
+from __future__ import annotations
+
+import dataclasses
+import os
+from collections.abc import Sequence
+from typing import TYPE_CHECKING, Any
+
+from kingpost.core.ingest.options import LoadOptions
+
+if TYPE_CHECKING:
+    import pyarrow as pa
+
+    from kingpost.core.graph import Floats, Graph
+    from kingpost.core.ingest.about import TableAbout
+    from kingpost.core.watch import Watch
+
+__all__ = ["LoadOptions", "describe", "from_table", "load", "read_node_values"]
+
+Paths = str | os.PathLike[str] | Sequence[str | os.PathLike[str]]
+
+
+def load(
+    paths: Paths,
+    options: LoadOptions | None = None,
+    watch: Watch | None = None,
+    **overrides: Any,
+) -> Graph:
+    """Load an edge table.
+
+    Args:
+        paths: Parquet files, folders of them (hive partitions become columns) or globs.
+        options: how rows become edges; keyword ``overrides`` replace single fields.
+        watch: progress and cancelling.
+
+    Raises:
+        InputError: for files or columns that cannot be used; RowsError for refused rows.
+        SettingsError: for options outside their choices.
+        Interrupted: if the watch was cancelled.
+    """
+    from kingpost.core.ingest import files, pipeline
+
+    chosen = dataclasses.replace(options or LoadOptions(), **overrides)
+    return pipeline.build_graph(files.open_parts(paths), chosen, watch)
+
+
+def from_table(
+    table: pa.Table,
+    options: LoadOptions | None = None,
+    watch: Watch | None = None,
+    name: str = "table",
+    **overrides: Any,
+) -> Graph:
+    """Like :func:`load`, from an Arrow table in memory; ``name`` stands for the file's name."""
+    from kingpost.core.ingest import files, pipeline
+
+    chosen = dataclasses.replace(options or LoadOptions(), **overrides)
+    return pipeline.build_graph(files.parts_of_table(table, name), chosen, watch)
+
+
+def read_node_values(
+    path: str | os.PathLike[str], graph: Graph, column: str | None = None
+) -> Floats:
+    """A number for every node from a Parquet or CSV file of ids and values, shape (n,).
+
+    Nodes that the file does not name get 0.
+
+    Raises:
+        InputError: for an unusable file or column, ids that the graph does not hold, repeated
+            ids, or values that are null, NaN, infinite or negative.
+    """
+    from kingpost.core.ingest import nodes
+
+    return nodes.read_values(path, graph, column)
+
+
+def describe(paths: Paths) -> TableAbout:
+    """What the files hold and which columns would be taken, without reading rows."""
+    from kingpost.core.ingest import about
+
+    return about.about(paths)

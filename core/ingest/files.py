@@ -16,6 +16,7 @@ from urllib.parse import unquote
 
 import pyarrow as pa
 import pyarrow.dataset as ds
+from pyarrow import fs
 
 from kingpost.core.errors import InputError
 from kingpost.core.ingest.idtypes import first_line
@@ -71,8 +72,8 @@ def find_files(paths: Paths) -> list[str]:
     if not given:
         raise InputError("no edge table was named; name a Parquet file, a folder or a glob")
     found: list[str] = []
-    for path in map(os.fspath, given):
-        found.extend(_expand(path))
+    for path in given:
+        found.extend(_expand(os.fspath(path)))
     return list(dict.fromkeys(found))
 
 
@@ -167,7 +168,7 @@ def _footer(file: str) -> tuple[Any, pa.Schema, int]:
     if head != b"PAR1":
         raise InputError(f"{file} is no Parquet file (it does not begin as one)")
     try:
-        fragment = ds.ParquetFileFormat().make_fragment(file)
+        fragment = ds.ParquetFileFormat().make_fragment(file, fs.LocalFileSystem())
         schema = fragment.physical_schema
         return fragment, schema, fragment.metadata.num_rows
     except (pa.ArrowException, OSError, ValueError) as error:

@@ -8,6 +8,7 @@ underneath (dates, times, bool) are numbered as integers.
 from __future__ import annotations
 
 import pyarrow as pa
+import pyarrow.compute as pc
 from pyarrow import types as pt
 
 from kingpost.core.errors import InputError
@@ -118,7 +119,7 @@ def _decimals(left: pa.DataType, right: pa.DataType) -> pa.DataType | None:
 
 
 def _finer(left: pa.DataType, right: pa.DataType) -> str:
-    return max(left.unit, right.unit, key=_UNITS.index)
+    return str(max(left.unit, right.unit, key=_UNITS.index))
 
 
 def integer_type(kind: pa.DataType) -> pa.DataType | None:
@@ -161,7 +162,7 @@ def unwrap(values: pa.Array) -> pa.Array:
         elif pt.is_dictionary(kind):
             values = values.dictionary_decode()
         elif pt.is_run_end_encoded(kind):
-            values = pa.compute.run_end_decode(values)
+            values = pc.run_end_decode(values)
         elif pt.is_string_view(kind) or pt.is_binary_view(kind):
             small = values.nbytes < 2**31 - 1
             if pt.is_string_view(kind):

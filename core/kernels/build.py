@@ -197,7 +197,7 @@ def merge(
             k += 1
             while k < end and near[k] == to:
                 more = weights[k] if weighted else 1.0
-                if policy == SUM or policy == MEAN:
+                if policy <= MEAN:  # or SUM
                     value += more
                 elif policy == MIN:
                     value = min(value, more)

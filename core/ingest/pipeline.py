@@ -1,0 +1,72 @@
+"""The way from parts of a table to a Graph, step by step."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from kingpost.core.graph import Account, Graph, Origin
+from kingpost.core.ingest.assemble import Ends, assemble
+from kingpost.core.ingest.columns import choose
+from kingpost.core.ingest.files import Part
+from kingpost.core.ingest.nodes import join_nodes
+from kingpost.core.ingest.numbering import number_ids
+from kingpost.core.ingest.options import LoadOptions
+from kingpost.core.ingest.rows import read_rows
+from kingpost.core.text import visible
+from kingpost.core.watch import Watch
+
+
+def build_graph(parts: list[Part], options: LoadOptions, watch: Watch | None = None) -> Graph:
+    """Read, number and assemble; join node attributes last, when the ids are known."""
+    watch = watch or Watch()
+    roles = choose(parts, options)
+    rows = read_rows(parts, roles, options.bad_rows, watch)
+    labels, source, target = number_ids(rows.source, rows.target, roles.id_type, watch)
+    weights = None
+    if rows.weights:
+        weights = np.concatenate(rows.weights)
+        rows.weights.clear()
+    ends = Ends(source, target, weights)
+    del source, target, weights
+    built = assemble(ends, labels, options, watch)
+    notes = list(roles.notes)
+    if len(built.outward.neighbours) == 0:
+        notes.append("no edge is left: every row was a dropped loop or weighs nothing")
+    joined = join_nodes(options, labels, watch)
+    account = Account(
+        rows_read=rows.read,
+        rows_kept=rows.kept,
+        skipped=dict(rows.skipped),
+        examples={reason: tuple(lines) for reason, lines in rows.examples.items()},
+        merged=built.merged,
+        loops=built.loops,
+        loops_dropped=built.loops_dropped,
+        zero_weight=built.zero_weight,
+        nodes_rows=joined.rows,
+        nodes_joined=joined.joined,
+        nodes_unknown=joined.unknown,
+        nodes_missing=joined.missing,
+        nodes_repeated=joined.repeated,
+        notes=tuple(map(visible, [*notes, *joined.notes])),
+    )
+    origin = Origin(
+        files=tuple(part.name for part in parts),
+        source=roles.source,
+        target=roles.target,
+        weight=roles.weight,
+        weight_as=options.weight_as,
+        parallel=options.parallel,
+        loops=options.loops,
+        bad_rows=options.bad_rows,
+        nodes_file=options.nodes,
+        node_id=joined.column,
+    )
+    return Graph(
+        labels=labels,
+        outward=built.outward,
+        inward=built.inward,
+        directed=options.directed,
+        attributes=joined.attributes,
+        account=account,
+        origin=origin,
+    )
