@@ -53,14 +53,18 @@ class Adjacency:
         return np.diff(self.offsets)
 
     def strengths(self) -> Floats:
-        """Sum of the weights in every row, shape (n,), added from left to right in each row."""
+        """Sum of the weights in every row, shape (n,), each rounded once (compensated sums)."""
         if self.weights is None:
             return self.degrees.astype(np.float64)
-        # add.reduceat reads the element at an empty row's offset, so only full rows are summed.
-        full = np.flatnonzero(np.diff(self.offsets))
-        total = np.zeros(len(self.offsets) - 1)
-        if len(full):
-            total[full] = np.add.reduceat(self.weights, self.offsets[full])
+        from kingpost.core.kernels.sweep import pull_exactly
+
+        n = len(self.offsets) - 1
+        total, size = np.zeros(n), np.empty(n)
+        order = np.arange(n, dtype=np.uint32)
+        ones = np.ones(n)  # rows and columns are nodes alike
+        pull_exactly(
+            self.offsets, self.neighbours, self.weights, order, 0, n, ones, total, size
+        )
         return total
 
     def row(self, node: int) -> tuple[Neighbours, Floats]:

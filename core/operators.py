@@ -12,11 +12,14 @@ from dataclasses import dataclass
 from functools import cached_property
 
 import numpy as np
+from numpy.typing import NDArray
 
 from kingpost.core.graph import Adjacency, Floats, Flow, Graph
 from kingpost.core.parallel import each
 from kingpost.core.structure import row_pieces
 from kingpost.core.watch import Watch
+
+Order = NDArray[np.uint32]
 
 _PIECE = 2_000_000  # edges in one piece of a product; also how soon a cancel is noticed
 
@@ -70,23 +73,37 @@ class Pull:
         each(piece, self.pieces, watch.threads)
         return y
 
-    def apply_exactly(self, x: Floats, watch: Watch) -> tuple[Floats, Floats]:
-        """``B x`` by compensated summation, and ``|B| |x|`` for rounding bounds; shape (n,) each."""
+    def apply_exactly(
+        self, x: Floats, order: Order, low: int, high: int, watch: Watch
+    ) -> tuple[Floats, Floats]:
+        """``B x`` by compensated sums, and ``|B| |x|``, in the rows ``order[low:high]``.
+
+        Both have shape (n,) and are zero in all other rows.
+        """
         from kingpost.core.kernels.sweep import pull_exactly
 
-        z, y, size = self.scale * x, np.empty(self.n), np.empty(self.n)
+        z, y, size = self.scale * x, np.zeros(self.n), np.zeros(self.n)
         rows = self.rows
 
         def piece(part: tuple[int, int]) -> None:
             watch.check()
-            pull_exactly(rows.offsets, rows.neighbours, rows.weights, *part, z, y, size)
+            pull_exactly(rows.offsets, rows.neighbours, rows.weights, order, *part, z, y, size)
 
-        each(piece, self.pieces, watch.threads)
+        each(piece, cut(rows, order, low, high, _PIECE // 2), watch.threads)
         return y, size
 
-    def edges_of(self, nodes: np.ndarray[tuple[int], np.dtype[np.uint32]]) -> int:
-        """Number of stored entries in the rows of ``nodes``."""
-        return int((self.rows.offsets[nodes + np.int64(1)] - self.rows.offsets[nodes]).sum())
+
+def cut(rows: Adjacency, order: Order, low: int, high: int, edges: int) -> list[tuple[int, int]]:
+    """Cut ``order[low:high]`` into consecutive ranges of about ``edges`` entries each."""
+    nodes = order[low:high].astype(np.int64)
+    # A node counts as one entry more, so that a million empty rows are cut too.
+    ends = np.cumsum(rows.offsets[nodes + 1] - rows.offsets[nodes] + 1)
+    if len(ends) == 0:
+        return []
+    marks = np.arange(edges, int(ends[-1]) + edges, edges)
+    stops = np.unique(np.minimum(np.searchsorted(ends, marks) + 1, len(nodes)))
+    bounds = [low, *(low + int(stop) for stop in stops)]
+    return list(zip(bounds[:-1], bounds[1:], strict=True))
 
 
 def adjacency(graph: Graph, flow: Flow, alpha: float = 1.0) -> Pull:
@@ -101,8 +118,8 @@ def walk(graph: Graph, flow: Flow, damping: float = 1.0) -> tuple[Pull, Floats]:
     out-strength (dangling) are zero.
     """
     strength = graph.push(flow).strengths()
-    with np.errstate(divide="ignore"):
-        scale = np.where(strength > 0, damping / strength, 0.0)
+    scale = np.zeros(graph.n)
+    np.divide(damping, strength, out=scale, where=strength > 0)
     return Pull(graph.pull(flow), scale), strength
 
 

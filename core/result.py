@@ -2,13 +2,14 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass, field
 from enum import StrEnum
 from functools import cached_property
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
+from numpy.typing import NDArray
 
 from kingpost.core.graph import Floats
 
@@ -118,7 +119,8 @@ class Result:
 
     ``scores`` has shape (n,), float64, in the graph's numbering; it is all NaN when ``stop`` is
     ``REFUSED``, and ``refusal`` says why.  ``exact_zero`` marks nodes whose score is zero by
-    structure rather than by rounding.  ``conventions`` names, in words, every choice that
+    structure rather than by rounding; ``symmetry()`` gives classes of nodes whose equations are
+    the same, so that their exact scores are equal (or None).  ``conventions`` names, in words, every choice that
     other software may make otherwise.
     """
 
@@ -133,8 +135,8 @@ class Result:
     seconds: Seconds = field(default_factory=Seconds)
     refusal: Refusal | None = None
     facts: Mapping[str, Any] = field(default_factory=dict)
-    exact_zero: Any = None
-    symmetry: Any = None
+    exact_zero: NDArray[np.bool_] | None = None
+    symmetry: Callable[[], NDArray[np.int64] | None] | None = None
 
     @property
     def sweeps(self) -> int:
@@ -151,7 +153,14 @@ class Result:
         """Order, rank ranges and what is proven about them; computed on first use and kept."""
         from kingpost.core.standing import stand
 
-        return stand(self.scores, self.bound, self.exact_zero, self.symmetry)
+        first = stand(self.scores, self.bound, self.exact_zero)
+        if first.proven == len(self.scores) or self.symmetry is None:
+            return first
+        # Equal scores can be told from unproven ones only by why they are equal.
+        classes = self.symmetry()
+        if classes is None:
+            return first
+        return stand(self.scores, self.bound, self.exact_zero, classes)
 
     @property
     def proven_order(self) -> int:

@@ -9,13 +9,14 @@ components are solved in one visit; only edges inside them need iterating.
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
 
-from kingpost.core.graph import Adjacency, Graph
+from kingpost.core.graph import Adjacency, Floats, Flow, Graph
+from kingpost.core.parallel import each
 from kingpost.core.watch import Watch
 
 _PIECE = 4_000_000  # edges a kernel call may visit before it looks whether it was cancelled
@@ -43,6 +44,8 @@ class Structure:
     inner: NDArray[np.int64]
     stored: int
     _outward: Adjacency
+    _inward: Adjacency
+    _inside: dict[str, Floats] = field(default_factory=dict)
 
     @property
     def count(self) -> int:
@@ -67,6 +70,23 @@ class Structure:
     def members(self, component: int) -> NDArray[np.uint32]:
         """Nodes of one component, ascending."""
         return self.order[self.starts[component] : self.starts[component + 1]]
+
+    def inside(self, flow: Flow, watch: Watch | None = None) -> Floats:
+        """Weight each node gives along ``flow`` to its own component, shape (n,); kept."""
+        from kingpost.core.kernels.sweep import inside
+
+        if flow not in self._inside:
+            watch = watch or Watch()
+            push = self._outward if flow == "along" else self._inward
+            values = np.empty(len(self.component))
+
+            def piece(part: tuple[int, int]) -> None:
+                watch.check()
+                inside(push.offsets, push.neighbours, push.weights, *part, self.component, values)
+
+            each(piece, row_pieces(push.offsets, _PIECE), watch.threads)
+            self._inside[flow] = values
+        return self._inside[flow]
 
     def period(self, component: int) -> int:
         """Greatest common divisor of the lengths of a component's cycles; 0 if it has none."""
@@ -109,7 +129,7 @@ def analyse(graph: Graph, watch: Watch | None = None) -> Structure:
         np.cumsum(counts, out=starts[1:])
         order = np.empty(n, dtype=np.uint32)
         kernels.group_order(component, starts[:-1].copy(), order)
-    return _finish(out, component, order, starts, graph.stored, watch)
+    return _finish(component, order, starts, graph, watch)
 
 
 def _strong(out: Adjacency, n: int, watch: Watch) -> tuple[NDArray[np.uint32], int]:
@@ -131,22 +151,21 @@ def _strong(out: Adjacency, n: int, watch: Watch) -> tuple[NDArray[np.uint32], i
 
 
 def _finish(
-    out: Adjacency,
     component: NDArray[np.uint32],
     order: NDArray[np.uint32],
     starts: NDArray[np.int64],
-    stored: int,
+    graph: Graph,
     watch: Watch,
 ) -> Structure:
     from kingpost.core.kernels import components as kernels
 
-    count = len(starts) - 1
+    out, count = graph.outward, len(starts) - 1
     counts = np.zeros(count, dtype=np.int64)
     for low, high in row_pieces(out.offsets, _PIECE):
         watch.check()
         kernels.edges_inside(out.offsets, out.neighbours, component, low, high, counts)
     cyclic = np.flatnonzero(counts)
-    return Structure(component, order, starts, cyclic, counts[cyclic], stored, out)
+    return Structure(component, order, starts, cyclic, counts[cyclic], graph.stored, graph.outward, graph.inward)
 
 
 def weak_components(graph: Graph, watch: Watch | None = None) -> NDArray[np.uint32]:
@@ -161,6 +180,25 @@ def weak_components(graph: Graph, watch: Watch | None = None) -> NDArray[np.uint
         kernels.unite(out.offsets, out.neighbours, low, high, parent)
     kernels.find_roots(parent)
     return parent
+
+
+def reachable(
+    push: Adjacency, start: NDArray[np.uint32], watch: Watch | None = None
+) -> NDArray[np.bool_]:
+    """Which nodes can be reached from ``start`` (itself included), shape (n,)."""
+    from kingpost.core.kernels.rows import spread
+
+    watch = watch or Watch()
+    n = len(push.offsets) - 1
+    seen = np.zeros(n, dtype=bool)
+    seen[start] = True
+    queue = np.empty(n, dtype=np.uint32)
+    head, tail = 0, len(start)
+    queue[:tail] = start
+    while head < tail:
+        watch.check()
+        head, tail = spread(push.offsets, push.neighbours, queue, head, tail, seen, _PIECE)
+    return seen
 
 
 def row_pieces(offsets: NDArray[np.int64], edges: int) -> Iterator[tuple[int, int]]:

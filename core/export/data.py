@@ -48,9 +48,7 @@ def facts(ranking: Ranking) -> dict[str, Any]:
 
 def settings(chosen: Any) -> dict[str, Any]:
     """A measure's settings by name, ready for JSON; long vectors by their length."""
-    return {
-        item.name: jsonable(getattr(chosen, item.name)) for item in dataclasses.fields(chosen)
-    }
+    return {item.name: jsonable(getattr(chosen, item.name)) for item in dataclasses.fields(chosen)}
 
 
 def write_json(
@@ -84,7 +82,9 @@ def write_delimited(
     """
     from pyarrow import csv
 
-    plain = pa.schema([(f.name, as_plain(pa.array([], f.type)).type) for f in schema(ranking.graph)])
+    plain = pa.schema(
+        [(f.name, as_plain(pa.array([], f.type)).type) for f in schema(ranking.graph)]
+    )
     _write_csv(plain.empty_table(), sink, csv.WriteOptions(delimiter=delimiter))
     body = csv.WriteOptions(delimiter=delimiter, include_header=False)
     for batch in _watched(ranking, watch):
@@ -161,5 +161,3 @@ def _plain(batch: pa.RecordBatch) -> pa.RecordBatch:
 
 def _each(batch: pa.RecordBatch, change: Callable[[pa.Array], pa.Array]) -> pa.RecordBatch:
     return pa.RecordBatch.from_arrays(list(map(change, batch.columns)), names=batch.schema.names)
-
-

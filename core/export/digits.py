@@ -50,17 +50,18 @@ def _text(score: float, error: float, places: int | None) -> str:
         return "-"
     if score == 0 and error == 0:
         return "0"
-    if not math.isfinite(error) or 2 * error > abs(score):
+    justified = math.floor(-math.log10(2 * error)) if 0 < error < math.inf else None
+    if justified is None:
+        justified = 400 if error == 0 else -400
+    digits = justified + _magnitude(score) + 1
+    if digits < 1:
         return f"~{score:.2g}"
-    justified = math.floor(-math.log10(2 * error)) if error > 0 else 400
-    small = places is not None and abs(score) < 10.0 ** (2 - places)
-    if places is None or small:
-        digits = min(SIGNIFICANT if places is None else 3, justified + _magnitude(score) + 1)
-        return f"{score:.{max(digits, 1) - 1}e}"
+    if places is None or abs(score) < 10.0 ** (2 - places):
+        return f"{score:.{min(digits, SIGNIFICANT if places is None else 3) - 1}e}"
     decimals = min(places, justified)
     if decimals >= 0:
         return f"{score:.{decimals}f}"
-    return f"{int(round(score, decimals)):,}"
+    return f"{round(round(score, decimals)):,}"
 
 
 def on_the_point(texts: list[str]) -> list[str]:
@@ -80,4 +81,4 @@ def small(number: float) -> str:
         return "none known" if number else "0"
     scale = 10.0 ** (_magnitude(number) - 1)
     up = math.ceil(number / scale * (1 - 1e-15)) * scale
-    return f"{up:.1e}" if up < 1e-3 or up >= 1e4 else f"{up:.2g}"
+    return f"{up:.2g}" if 0.999e-3 < up < 1e4 else f"{up:.1e}"

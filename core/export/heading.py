@@ -10,6 +10,7 @@ import numpy as np
 from kingpost.core.export.digits import small
 from kingpost.core.export.rows import Ranking
 from kingpost.core.graph import Graph
+from kingpost.core.measures.base import Settings
 from kingpost.core.result import BoundKind
 from kingpost.core.standing import OPEN, PROVEN, TIED, UNRANKED
 from kingpost.core.text import count, visible
@@ -45,9 +46,8 @@ def settings_words(settings: Any) -> str:
     The flow has its own place; None means the default that the conventions name.
     """
     words = []
-    own = type(settings).__dict__.get("__annotations__", {})
-    fields = dataclasses.fields(settings)
-    for item in sorted(fields, key=lambda f: f.name not in own):
+    shared = {item.name for item in dataclasses.fields(Settings)}
+    for item in sorted(dataclasses.fields(settings), key=lambda f: f.name in shared):
         value = getattr(settings, item.name)
         if item.name == "flow" or value is None:
             continue
@@ -90,6 +90,6 @@ def legend(ascii_only: bool = False) -> str:
     """What each rail mark says."""
     rail = RAIL_ASCII if ascii_only else RAIL
     return (
-        f"{rail[PROVEN]} proven above the next row   {rail[OPEN]} not yet proven   "
-        f"{rail[TIED]} exactly tied   blank: not told from zero"
+        f"{rail[PROVEN]} proven above the next  {rail[OPEN]} not proven yet  "
+        f"{rail[TIED]} tied  blank: not told from zero"
     )

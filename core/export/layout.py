@@ -29,34 +29,40 @@ class Column:
 
 
 GAP = "  "
+USUAL = 32  # columns that a column which may be narrowed gets before optional ones get theirs
 
 
 def terminal_table(columns: list[Column], limit: int, ellipsis: str = "…") -> tuple[list[str], int]:
     """Lines of a table at most ``limit`` columns wide, and how many optional columns it left out.
 
-    Columns that may be narrowed are, the widest first; optional ones are taken from the left
-    while they fit at their full width or at 12 columns.
+    Columns that may be narrowed begin at no more than 32 columns and are narrowed further
+    where even that is too wide; optional columns are taken from the left while they fit at
+    their full width or at 12; what is left then goes back to the first that were narrowed.
     """
     must = [column for column in columns if not column.optional]
-    widths = {id(column): column.full for column in must}
+    flexible = [column for column in must if column.least is not None]
+    widths = {
+        id(column): column.full if column.least is None else min(column.full, USUAL)
+        for column in must
+    }
 
-    def total() -> int:
-        return sum(widths.values()) + len(GAP) * (len(widths) - 1)
+    def spare() -> int:
+        return limit - sum(widths.values()) - len(GAP) * (len(widths) - 1)
 
-    while total() > limit:
-        narrow = [c for c in must if c.least is not None and widths[id(c)] > c.least]
-        if not narrow:
-            break
-        widest = max(narrow, key=lambda c: widths[id(c)])
-        widths[id(widest)] = max(widest.least or 1, widths[id(widest)] - (total() - limit))
+    for column in sorted(flexible, key=lambda c: -widths[id(c)]):
+        if spare() < 0:
+            widths[id(column)] = max(column.least or 1, widths[id(column)] + spare())
     left_out = 0
     for column in columns:
         if column.optional:
-            room = limit - total() - len(GAP)
+            room = spare() - len(GAP)
             if min(column.full, 12) <= room and not left_out:
                 widths[id(column)] = min(column.full, room)
             else:
                 left_out += 1
+    for column in flexible:
+        if spare() > 0:
+            widths[id(column)] = min(column.full, widths[id(column)] + spare())
     shown = [column for column in columns if id(column) in widths]
     lines = [_line([c.title for c in shown], shown, widths, ellipsis)]
     for row in range(max((len(c.cells) for c in shown), default=0)):

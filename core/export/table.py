@@ -10,9 +10,9 @@ from kingpost.core.export.cells import plain_ascii, wrap
 from kingpost.core.export.digits import on_the_point, score_texts
 from kingpost.core.export.heading import RAIL, RAIL_ASCII, header, legend
 from kingpost.core.export.layout import Column, escaped, markdown_table, terminal_table
-from kingpost.core.export.rows import Ranking, attributes, batches, degrees
+from kingpost.core.export.rows import Ranking, attributes, degrees
 from kingpost.core.standing import UNRANKED
-from kingpost.core.text import id_text, visible
+from kingpost.core.text import count, id_text, visible
 
 NAME_LIMIT = 200  # characters of a name worth laying out; the column cuts it further
 
@@ -30,7 +30,7 @@ def columns(ranking: Ranking, *, ascii_only: bool = False) -> list[Column]:
     found = [
         Column("", [rail[int(mark)] for mark in standing.rail[: len(nodes)]]),
         Column("rank", [rank_text(int(a), int(b)) for a, b in spans], ">"),
-        Column("node", [graph.name(int(node), NAME_LIMIT) for node in nodes], least=8),
+        Column("node", [name_text(graph.label(int(node))) for node in nodes], least=8),
         Column(result.measure, on_the_point(scores), ">"),
         Column("in", _counts(graph.inward.offsets, nodes), ">"),
         Column("out", _counts(graph.outward.offsets, nodes), ">"),
@@ -41,15 +41,18 @@ def columns(ranking: Ranking, *, ascii_only: bool = False) -> list[Column]:
         for title, values in zip(picked.column_names, picked.columns, strict=True):
             number = _is_number(values.type)
             texts = [value_text(value) for value in values.to_pylist()]
-            found.append(
-                Column(visible(title, 40), texts, ">" if number else "<", optional=True)
-            )
+            found.append(Column(visible(title, 40), texts, ">" if number else "<", optional=True))
     return found
 
 
 def rank_text(first: int, last: int) -> str:
     """``7``, or ``4-9`` where the rank is not settled."""
     return f"{first:,}" if first == last else f"{first:,}-{last:,}"
+
+
+def name_text(label: Any) -> str:
+    """An id, safe to show and never nothing."""
+    return visible(id_text(label), NAME_LIMIT) or '""'
 
 
 def value_text(value: Any) -> str:
@@ -68,7 +71,9 @@ def _counts(offsets: Any, nodes: Any) -> list[str]:
 def _is_number(kind: Any) -> bool:
     import pyarrow as pa
 
-    return bool(pa.types.is_integer(kind) or pa.types.is_floating(kind) or pa.types.is_decimal(kind))
+    return bool(
+        pa.types.is_integer(kind) or pa.types.is_floating(kind) or pa.types.is_decimal(kind)
+    )
 
 
 def table(ranking: Ranking, width: int = 80, *, ascii_only: bool = False) -> str:
@@ -101,14 +106,16 @@ def _tail(ranking: Ranking, left_out: int) -> str:
     if len(marks) and (unsure := int(np.count_nonzero(marks == UNRANKED))):
         parts.append(f"{unsure:,} cannot be told from zero")
     if left_out:
-        parts.append(f"{left_out:,} columns of attributes did not fit")
+        parts.append(f"{count(left_out, 'attribute column')} did not fit")
     return "; ".join(parts)
 
 
-def markdown(ranking: Ranking) -> str:
+def markdown(ranking: Ranking, *, ascii_only: bool = False) -> str:
     """A ranking as Markdown: a list of the header's sentences, a pipe table, the legend."""
     lines = [f"- {escaped(sentence)}" for sentence in header(ranking)]
-    lines += ["", *markdown_table(columns(ranking)), "", escaped(legend())]
+    body = markdown_table(columns(ranking, ascii_only=ascii_only))
+    lines += ["", *body, "", escaped(legend(ascii_only))]
     if tail := _tail(ranking, 0):
         lines += ["", escaped(tail)]
-    return "\n".join(lines) + "\n"
+    text = "\n".join(lines) + "\n"
+    return plain_ascii(text) if ascii_only else text

@@ -167,7 +167,7 @@ def guess_ends(
     part: Part, source: str | None = None, target: str | None = None, weight: str | None = None
 ) -> tuple[str, str] | None:
     """The two ends of an edge by name, else the only two id-like columns of one sort."""
-    names = [item.name for item in part.schema if family(item.type) in _GUESSABLE]
+    names = [item.name for item in part.schema if family(item.type) is not None]
     names = [name for name in names if part.schema.names.count(name) == 1 and name != weight]
     words = {name: _word(name) for name in names}
     for first, second in PAIRS:
@@ -185,7 +185,13 @@ def guess_ends(
 def _only_pair(
     part: Part, names: list[str], source: str | None, target: str | None
 ) -> tuple[str, str] | None:
-    likely = [name for name in names if not _weight_word(name) and name not in part.partitions]
+    likely = [
+        name
+        for name in names
+        if family(part.schema.field(name).type) in _GUESSABLE
+        and not _weight_word(name)
+        and name not in part.partitions
+    ]
     groups: dict[str, list[str]] = {}
     for name in likely:
         groups.setdefault(str(family(part.schema.field(name).type)), []).append(name)

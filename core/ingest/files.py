@@ -131,6 +131,7 @@ def _open(file: str, partitions: dict[str, pa.Array]) -> Part:
 
     def read(columns: list[str]) -> Iterator[pa.RecordBatch]:
         inside = [name for name in columns if name not in extra]
+        read = 0
         try:
             for batch in _scan(fragment, inside):
                 arrays = [
@@ -139,11 +140,14 @@ def _open(file: str, partitions: dict[str, pa.Array]) -> Part:
                     else batch.column(inside.index(name))
                     for name in columns
                 ]
+                read += batch.num_rows
                 yield pa.RecordBatch.from_arrays(arrays, names=columns)
         except (pa.ArrowException, OSError) as error:
             raise InputError(
                 f"{file} is damaged: its rows cannot be read ({first_line(error)})"
             ) from None
+        if read != rows:
+            raise InputError(f"{file} is damaged: it holds {read:,} rows, its footer says {rows:,}")
 
     return Part(file, schema, rows, read, frozenset(extra))
 
@@ -151,7 +155,10 @@ def _open(file: str, partitions: dict[str, pa.Array]) -> Part:
 def _scan(fragment: Any, columns: list[str]) -> Iterator[pa.RecordBatch]:
     # Expressions, because a name with a dot in it is a name here and no path.
     wanted = {str(at): ds.field(name) for at, name in enumerate(columns)}
-    yield from fragment.scanner(columns=wanted, batch_size=BATCH_ROWS).to_batches()
+    checked = ds.ParquetFragmentScanOptions(page_checksum_verification=True)
+    yield from fragment.scanner(
+        columns=wanted, batch_size=BATCH_ROWS, fragment_scan_options=checked
+    ).to_batches()
 
 
 def _footer(file: str) -> tuple[Any, pa.Schema, int]:

@@ -47,6 +47,12 @@ def number_ids(
     labels, left, right = _hashed(source, target, watch)
     if labels.type != kind and labels.nbytes < _TEXT_LIMIT:
         labels = labels.cast(kind)
+    try:
+        labels.validate(full=True)
+    except pa.ArrowInvalid:
+        raise InputError(
+            "the ids hold text that is not valid UTF-8; mend it, or cast the id columns to binary"
+        ) from None
     return labels, left, right
 
 

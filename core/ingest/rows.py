@@ -7,7 +7,6 @@ from dataclasses import dataclass, field
 
 import numpy as np
 import pyarrow as pa
-import pyarrow.compute as pc
 from numpy.typing import NDArray
 
 from kingpost.core.errors import InputError, RowsError
@@ -52,7 +51,7 @@ def read_rows(parts: list[Part], roles: Roles, bad_rows: str, watch: Watch) -> R
     """
     total = sum(part.rows for part in parts)
     if total == 0:
-        names = parts[0].name if len(parts) == 1 else count(len(parts), "file")
+        names = parts[0].name if len(parts) == 1 else f"each of {len(parts):,} files"
         raise InputError(f"{names} holds no rows; an edge table needs at least one")
     rows = Rows()
     columns = [roles.source, roles.target, *([roles.weight] if roles.weight else [])]
@@ -89,7 +88,7 @@ def _take(
     start = rows.read
     rows.read += batch.num_rows
     if reason is not None:
-        _count_bad(rows, reason, source, target, start, name)
+        _count_bad(rows, reason, (source, target, weights), start, name)
         good = reason == 0
         mask = pa.array(good)
         source, target = source.filter(mask), target.filter(mask)
@@ -146,11 +145,11 @@ def _reasons(
 def _count_bad(
     rows: Rows,
     reason: NDArray[np.uint8],
-    source: pa.Array,
-    target: pa.Array,
+    columns: tuple[pa.Array, pa.Array, Floats | None],
     start: int,
     name: Callable[[int], str],
 ) -> None:
+    source, target, weights = columns
     for code, words in enumerate(REASONS, 1):
         at = np.flatnonzero(reason == code)
         if not len(at):
@@ -159,11 +158,18 @@ def _count_bad(
         examples = rows.examples.setdefault(words, [])
         for row in at[: EXAMPLES - len(examples)]:
             ends = f"{_shown(source[int(row)])} -> {_shown(target[int(row)])}"
+            if weights is not None and code > 3:
+                ends += f" weighs {weights[row]:g}"
             examples.append(f"{name(start + int(row))}: {ends}")
 
 
 def _shown(value: pa.Scalar) -> str:
-    return "null" if not value.is_valid else visible(id_text(value.as_py()), 40)
+    if not value.is_valid:
+        return "null"
+    try:
+        return visible(id_text(value.as_py()), 40)
+    except UnicodeDecodeError:
+        return "text that is no UTF-8"
 
 
 def _refusal(rows: Rows, bad_rows: str) -> str:
@@ -177,13 +183,3 @@ def _refusal(rows: Rows, bad_rows: str) -> str:
     if bad_rows == "refuse":
         return f"{head}; mend them, or leave them out with --bad-rows skip"
     return f"{head}; no row is left"
-
-
-def finite(values: Floats) -> bool:
-    """Whether no value is NaN or infinite."""
-    return bool(np.isfinite(values).all())
-
-
-def first_null(values: pa.Array) -> int:
-    """Position of the first null, or -1."""
-    return int(pc.index(pc.is_null(values), True).as_py())

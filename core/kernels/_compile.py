@@ -56,20 +56,32 @@ def _remember(reason: str) -> None:
 
 def _forgive(compiled: Any) -> None:
     # numba lets an error of the cache's files (disk full, a folder gone, a damaged index) end
-    # the call of the kernel itself, although the code is compiled and ready by then.
+    # the call of the kernel itself, although the code is compiled and ready by then.  And when
+    # two processes compile one kernel for different types at once, the index of one can come to
+    # point at the code of the other: what is loaded must be what was asked for.
     cache = getattr(compiled, "_cache", None)
-    for name in ("load_overload", "save_overload"):
-        original = getattr(cache, name, None)
-        if original is not None:
-            setattr(cache, name, _guarded(original))
+    load = getattr(cache, "load_overload", None)
+    save = getattr(cache, "save_overload", None)
+    if cache is None or load is None or save is None:
+        return
 
-
-def _guarded(original: Callable[..., Any]) -> Callable[..., Any]:
-    def guarded(*arguments: Any, **keywords: Any) -> Any:
-        try:
-            return original(*arguments, **keywords)
-        except (OSError, EOFError, ValueError, UnpicklingError) as error:
-            _remember(f"{type(error).__name__}: {error}")
+    def guarded_load(signature: Any, *rest: Any) -> Any:
+        found = _guarded(load, signature, *rest)
+        wanted = getattr(signature, "args", signature)
+        if found is not None and tuple(found.signature.args) != tuple(wanted):
             return None
+        return found
 
-    return guarded
+    def guarded_save(*arguments: Any) -> None:
+        _guarded(save, *arguments)
+
+    cache.load_overload = guarded_load
+    cache.save_overload = guarded_save
+
+
+def _guarded(action: Callable[..., Any], *arguments: Any) -> Any:
+    try:
+        return action(*arguments)
+    except (OSError, EOFError, ValueError, UnpicklingError) as error:
+        _remember(f"{type(error).__name__}: {error}")
+        return None

@@ -212,11 +212,12 @@ def merge(
             if value == 0.0:
                 state[2] += 1
                 continue
+            fine = value < np.inf
             if change == LOG1P:
                 value = math.log1p(value)
             elif change == INVERSE:
                 value = 1.0 / value
-            if not (value < np.inf):
+            if not (fine and value < np.inf):
                 if state[3] == 0:
                     state[4] = node
                     state[5] = to

@@ -42,28 +42,55 @@ def row_sum(neighbours, weights, start, end, z):  # type: ignore[no-untyped-def]
 
 
 @kernel()
-def gauss_seidel(offsets, neighbours, weights, order, low, high, b, scale, loops, z, x):  # type: ignore[no-untyped-def]
-    """One sweep in place over ``order[low:high]``; returns ``sum |change|``.
+def gauss_seidel(offsets, neighbours, weights, order, low, high, b, share, scale, loops, keep, z, x):  # type: ignore[no-untyped-def]
+    """One sweep in place over ``order[low:high]``, with ``share * b`` for b.
 
     ``loops[i]`` is ``B[i, i]`` (or ``loops`` is empty where there is none): a self-loop is
-    solved for, not iterated.
+    solved for, not iterated.  Returns ``sum |change|``, ``sum x`` and ``sum keep x`` over the
+    rows (the last is 0 where ``keep`` is empty).
     """
+    zero, one = np.uint64(0), np.uint64(1)
     constant = len(b) == 1
     looped = len(loops) > 0
-    moved = 0.0
+    kept = len(keep) > 0
+    moved = mass = balance = 0.0
     for k in range(np.uint64(low), np.uint64(high)):
         i = np.uint64(order[k])
-        total = row_sum(
-            neighbours, weights, np.uint64(offsets[i]), np.uint64(offsets[i + np.uint64(1)]), z
-        )
+        new = row_sum(neighbours, weights, np.uint64(offsets[i]), np.uint64(offsets[i + one]), z)
+        new += share * (b[zero] if constant else b[i])
         old = x[i]
-        new = total + (b[np.uint64(0)] if constant else b[i])
         if looped and loops[i] != 0.0:
             new = (new - loops[i] * old) / (1.0 - loops[i])
         moved += abs(new - old)
+        mass += new
+        if kept:
+            balance += keep[i] * new
         x[i] = new
         z[i] = new * scale[i]
-    return moved
+    return moved, mass, balance
+
+
+@kernel()
+def substitute(offsets, neighbours, weights, order, low, high, b, scale, loops, z, x):  # type: ignore[no-untyped-def]
+    """Solve the rows ``order[low:high]`` once, in order, by compensated sums.
+
+    Exact up to a few roundings a row where no row depends on a later one.
+    """
+    zero, one = np.uint64(0), np.uint64(1)
+    constant = len(b) == 1
+    looped = len(loops) > 0
+    for k in range(np.uint64(low), np.uint64(high)):
+        i = np.uint64(order[k])
+        if looped and loops[i] != 0.0:
+            z[i] = 0.0
+        new, _ = _compensated(
+            neighbours, weights, np.uint64(offsets[i]), np.uint64(offsets[i + one]), z
+        )
+        new += b[zero] if constant else b[i]
+        if looped and loops[i] != 0.0:
+            new /= 1.0 - loops[i]
+        x[i] = new
+        z[i] = new * scale[i]
 
 
 @kernel()
@@ -86,34 +113,41 @@ def pull_rows(offsets, neighbours, weights, order, low, high, z, y):  # type: ig
 
 
 @kernel()
-def pull_exactly(offsets, neighbours, weights, low, high, z, y, size):  # type: ignore[no-untyped-def]
-    """As :func:`pull`, by compensated summation (Neumaier), with ``size[i] = sum |terms|``.
+def _compensated(neighbours, weights, start, end, z):  # type: ignore[no-untyped-def]
+    """One row by compensated summation (Neumaier 1974): the sum, and the sum of magnitudes."""
+    one = np.uint64(1)
+    total = 0.0
+    spill = 0.0
+    whole = 0.0
+    while start < end:
+        term = z[neighbours[start]]
+        if weights is not None:
+            term *= weights[start]
+        after = total + term
+        if abs(total) >= abs(term):
+            spill += (total - after) + term
+        else:
+            spill += (term - after) + total
+        total = after
+        whole += abs(term)
+        start += one
+    return total + spill, whole
+
+
+@kernel()
+def pull_exactly(offsets, neighbours, weights, order, low, high, z, y, size):  # type: ignore[no-untyped-def]
+    """As :func:`pull_rows`, by compensated summation, with ``size[i] = sum |terms|``.
 
     The computed ``y[i]`` is off the exact sum of the rounded products by at most
-    ``2 u |y[i]| + O(u^2) size[i]`` (Ogita, Rump and Oishi 2005, Proposition 4.5), whatever the
-    length of the row.
+    ``u |y[i]| + O(n u^2) size[i]`` (Ogita, Rump and Oishi, "Accurate sum and dot product",
+    SIAM J. Sci. Comput. 26, 2005, Proposition 4.5), for any length of row met in practice.
     """
     one = np.uint64(1)
-    for i in range(np.uint64(low), np.uint64(high)):
-        total = 0.0
-        spill = 0.0
-        whole = 0.0
-        e = np.uint64(offsets[i])
-        end = np.uint64(offsets[i + one])
-        while e < end:
-            term = z[neighbours[e]]
-            if weights is not None:
-                term *= weights[e]
-            after = total + term
-            if abs(total) >= abs(term):
-                spill += (total - after) + term
-            else:
-                spill += (term - after) + total
-            total = after
-            whole += abs(term)
-            e += one
-        y[i] = total + spill
-        size[i] = whole
+    for k in range(np.uint64(low), np.uint64(high)):
+        i = np.uint64(order[k])
+        y[i], size[i] = _compensated(
+            neighbours, weights, np.uint64(offsets[i]), np.uint64(offsets[i + one]), z
+        )
 
 
 @kernel()
@@ -135,16 +169,16 @@ def push(offsets, neighbours, weights, low, high, z, y):  # type: ignore[no-unty
 
 
 @kernel()
-def inside(offsets, neighbours, weights, order, low, high, group, y):  # type: ignore[no-untyped-def]
-    """``y[u]`` = weight of the edges from u (rows ``order[low:high]``) to nodes of u's group."""
+def inside(offsets, neighbours, weights, low, high, group, y):  # type: ignore[no-untyped-def]
+    """``y[u]`` = weight of the edges from u (rows ``low..high``) to nodes of u's own group."""
     one = np.uint64(1)
-    for k in range(np.uint64(low), np.uint64(high)):
-        u = np.uint64(order[k])
+    for u in range(np.uint64(low), np.uint64(high)):
+        g = group[u]
         total = 0.0
         e = np.uint64(offsets[u])
         end = np.uint64(offsets[u + one])
         while e < end:
-            if group[neighbours[e]] == group[u]:
+            if group[neighbours[e]] == g:
                 total += 1.0 if weights is None else weights[e]
             e += one
         y[u] = total

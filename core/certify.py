@@ -1,0 +1,96 @@
+"""Theorems that turn a residual into an error bound, rounding included.
+
+Throughout, ``M = I - B`` with B nonnegative (see :mod:`kingpost.core.operators`), ``M x = b``
+exactly, ``y`` is what was computed and ``r = b - M y``.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from kingpost.core.graph import Floats
+from kingpost.core.operators import Order, Pull
+from kingpost.core.watch import Watch
+
+UNIT = 2.0**-53  # unit roundoff of IEEE double precision
+
+
+@dataclass(frozen=True)
+class Residual:
+    """``r = b - M y`` as computed, and a bound of its rounding error; shape (n,) each.
+
+    ``slack`` covers, per row, the rounding of scale (3 u), of scale times score (u), of weight
+    times that (u), of the compensated sum (2 u), and of the two last additions, doubled for
+    safety: ``12 u |B||y| + 6 u (|y| + |b|)``.
+    """
+
+    value: Floats
+    slack: Floats
+
+    @property
+    def reach(self) -> Floats:
+        """The most the exact residual can be, in magnitude."""
+        total: Floats = np.abs(self.value) + self.slack
+        return total
+
+    @property
+    def norm(self) -> float:
+        """Bound of ``sum |r|``."""
+        return float(self.reach.sum()) * (1 + 64 * UNIT)
+
+
+def residual(
+    matrix: Pull,
+    b: Floats,
+    y: Floats,
+    order: Order,
+    ranges: list[tuple[int, int]],
+    watch: Watch,
+) -> Residual:
+    """The residual of ``y`` in the rows ``order[low:high]`` of ``ranges``.
+
+    All other rows must have been solved once, by ``kernels.sweep.substitute``, after everything
+    they depend on: there the residual is rounding alone and is bounded, not computed.
+    """
+    value = np.zeros(matrix.n)
+    size = np.abs(y)
+    for low, high in ranges:
+        product, magnitude = matrix.apply_exactly(y, order, low, high, watch)
+        nodes = order[low:high]
+        given = b if len(b) == 1 else b[nodes]
+        value[nodes] = (product[nodes] - y[nodes]) + given
+        size[nodes] = magnitude[nodes]
+    return Residual(value, UNIT * (12 * size + 6 * (np.abs(y) + np.abs(b))))
+
+
+def componentwise(b: Floats, y: Floats, r: Residual) -> float:
+    """Smallest c such that ``|x - y| <= c y`` in every component; infinity where none is proven.
+
+    M is an M-matrix as soon as some ``y > 0`` has ``M y > 0``; then ``M^-1 >= 0`` and, with
+    ``|r| <= c M y``, ``|x - y| <= M^-1 |r| <= c y``.  So the same numbers prove that alpha is
+    below 1/rho (Katz) and how far the scores can be off.  Rows where y is zero must be zero
+    by structure (nothing is given to them, directly or through others).
+    """
+    least = (b - r.value) - r.slack * (1 + 8 * UNIT)  # a lower bound of M y
+    live = y > 0
+    if not live.any():
+        return 0.0
+    if (y < 0).any() or (least[live] <= 0).any():
+        return float("inf")
+    return float((r.reach[live] / least[live]).max()) * (1 + 8 * UNIT)
+
+
+def weighted(r: Residual, guard: Floats, guarded: Floats) -> float:
+    """c with ``|x - y| <= c guard``, for ``guard > 0`` and ``guarded <= M guard``, ``> 0``.
+
+    Serves where b has zeros or signs: the guard is any positive vector that M keeps positive
+    (for alpha < 0 take M of ``|alpha|``, whose inverse dominates).
+    """
+    live = guard > 0
+    if not live.any():
+        return 0.0
+    if (guarded[live] <= 0).any():
+        return float("inf")
+    return float((r.reach[live] / guarded[live]).max()) * (1 + 8 * UNIT)

@@ -1,0 +1,150 @@
+"""An audit, as text and as JSON."""
+
+from __future__ import annotations
+
+import dataclasses
+from typing import Any
+
+from kingpost.core.export.cells import plain_ascii, wrap
+from kingpost.core.export.heading import graph_line
+from kingpost.core.export.jsonable import jsonable
+from kingpost.core.export.layout import Column, terminal_table
+from kingpost.core.graph import Account, Graph
+from kingpost.core.ingest.about import TableAbout
+from kingpost.core.insight.audit import QUANTILES, Audit
+from kingpost.core.text import count, listed, visible
+
+
+def audit_json(graph: Graph, audit: Audit, table: TableAbout) -> dict[str, Any]:
+    """Keys: ``table`` (files, rows, columns), ``input``, ``account``, ``structure``.
+
+    ``structure`` holds the fields of :class:`Audit`, degree quantiles keyed by the quantile,
+    and the graph's fingerprint.
+    """
+    structure = dataclasses.asdict(audit)
+    for side in ("in_degrees", "out_degrees"):
+        structure[side] = dict(zip(map(str, QUANTILES), structure[side], strict=True))
+    structure["directed"] = graph.directed
+    structure["fingerprint"] = graph.fingerprint
+    found: dict[str, Any] = jsonable(
+        {
+            "table": dataclasses.asdict(table),
+            "input": dataclasses.asdict(graph.origin),
+            "account": dataclasses.asdict(graph.account),
+            "structure": structure,
+        }
+    )
+    return found
+
+
+def audit_text(
+    graph: Graph, audit: Audit, table: TableAbout, width: int = 80, *, ascii_only: bool = False
+) -> str:
+    """An audit as lines of at most ``width`` columns."""
+    lines = wrap(graph_line(graph), width, "  ")
+    lines += ["", "Table", *_table(table, width)]
+    lines += ["", "Rows", *_pairs(_account(graph.account), width)]
+    lines += ["", "Structure", *_pairs(_structure(audit), width)]
+    lines += ["", *_degrees(audit, width)]
+    text = "\n".join(line.rstrip() for line in lines) + "\n"
+    return plain_ascii(text) if ascii_only else text
+
+
+def _pairs(pairs: list[tuple[str, str]], width: int) -> list[str]:
+    room = max(len(name) for name, _ in pairs)
+    lines = []
+    for name, words in pairs:
+        lines += wrap(f"  {name:<{room}}  {words}", width, " " * (room + 4))
+    return lines
+
+
+def _table(table: TableAbout, width: int) -> list[str]:
+    files = listed([visible(name, 60) for name in table.files], 3)
+    lines = wrap(f"  {count(table.rows, 'row')} in {files}", width, "    ")
+    roles = {table.source: "source", table.target: "target", table.weight: "weight"}
+    rows = terminal_table(
+        [
+            Column("  column", [f"  {visible(c.name, 60)}" for c in table.columns], least=10),
+            Column("type", [visible(c.type, 60) for c in table.columns], least=8),
+            Column("could be", [_could_be(c) for c in table.columns]),
+            Column("unasked", [roles.get(c.name, "") for c in table.columns]),
+        ],
+        width,
+    )[0]
+    return [*lines, *rows, *wrap(f"  unasked: {visible(table.why)}", width, "    ")]
+
+
+def _could_be(column: Any) -> str:
+    uses = [("an end", column.can_be_id), ("a weight", column.can_be_weight)]
+    return " or ".join(name for name, possible in uses if possible) or "-"
+
+
+def _account(account: Account) -> list[tuple[str, str]]:
+    pairs = [("read", f"{account.rows_read:,}"), ("kept", f"{account.rows_kept:,}")]
+    for reason, rows in account.skipped.items():
+        examples = [visible(text, 60) for text in account.examples.get(reason, ())]
+        shown = f" (such as {listed(examples)})" if examples else ""
+        pairs.append(("skipped", f"{rows:,} {visible(reason)}{shown}"))
+    pairs.append(("merged", f"{account.merged:,} into an earlier edge between the same nodes"))
+    if account.loops_dropped:
+        pairs.append(("dropped", f"{account.loops_dropped:,} self-loops"))
+    if account.zero_weight:
+        pairs.append(("left out", count(account.zero_weight, "edge") + " of weight zero"))
+    if account.filtered:
+        pairs.append(("filtered", f"{account.filtered:,}"))
+    if account.nodes_rows:
+        pairs.append(
+            (
+                "node table",
+                f"{count(account.nodes_rows, 'row')}, {account.nodes_joined:,} joined, "
+                f"{account.nodes_unknown:,} of nodes that have no edge, "
+                f"{account.nodes_repeated:,} repeated; "
+                f"{count(account.nodes_missing, 'node')} without a row",
+            )
+        )
+    return pairs
+
+
+def _structure(audit: Audit) -> list[tuple[str, str]]:
+    low, high = audit.radius
+    pairs = [
+        ("nodes", f"{audit.nodes:,}"),
+        ("edges", f"{audit.edges:,}"),
+        ("density", f"{audit.density:.3g}"),
+        ("self-loops", f"{audit.self_loops:,}"),
+        ("zero weight", f"{audit.zero_weight:,} edges, left out"),
+        ("dangling", f"{count(audit.dangling, 'node')} that point at nobody"),
+        ("sources", f"{count(audit.sources, 'node')} that nobody points at"),
+        ("isolated", f"{count(audit.isolated, 'node')} without any edge"),
+        ("weak components", _components(audit.weak, audit.weak_largest)),
+        ("strong components", _components(audit.strong, audit.strong_largest)),
+        ("with a cycle", f"{audit.cyclic:,}, holding {audit.cyclic_share:.1%} of the edges"),
+    ]
+    if audit.weights is not None:
+        w = audit.weights
+        words = f"{w.least:.6g} to {w.greatest:.6g}, {w.total:.6g} in all"
+        pairs.insert(2, ("weights", words))
+    if audit.period is None:
+        pairs.append(("spectral radius", "0: there is no cycle, so no eigenvector centrality"))
+        return pairs
+    where = f"in the component with most edges ({count(audit.period_nodes or 0, 'node')})"
+    pairs.append(("period", f"{audit.period} {where}"))
+    pairs.append(("spectral radius", f"{low:.10g}" if low == high else _bracket(low, high)))
+    return pairs
+
+
+def _components(number: int, largest: int) -> str:
+    return f"{number:,}, {count(largest, 'node')} in the largest"
+
+
+def _bracket(low: float, high: float) -> str:
+    return f"between {low:.12g} and {high:.12g}"
+
+
+def _degrees(audit: Audit, width: int) -> list[str]:
+    titles = ["least", "25%", "median", "75%", "90%", "99%", "greatest"]
+    sides = (audit.in_degrees, audit.out_degrees)
+    columns = [Column("Degrees", ["  in", "  out"])]
+    for at, title in enumerate(titles):
+        columns.append(Column(title, [f"{side[at]:,}" for side in sides], ">"))
+    return terminal_table(columns, width)[0]

@@ -1,0 +1,117 @@
+"""Cutting a linear system along the strong components of its graph.
+
+Rows outside cycles are solved once, in condensation order; only the rows of cyclic components
+are swept.  Large components are stages of their own, small ones between them share one.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from kingpost.core.graph import Adjacency, Flow
+from kingpost.core.operators import Order, cut
+from kingpost.core.structure import Structure
+
+_LARGE = 0.02  # share of all cyclic edges above which a component is a stage of its own
+_LANES = 2  # blocks swept side by side; fixed, so that bits do not depend on the threads
+_STEPS = 4  # pairs of blocks in one sweep
+_SPLIT = 1_000_000  # edges above which a stage is worth splitting
+
+
+@dataclass(frozen=True)
+class Stage:
+    """Rows ``order[low:high]``; ``component`` is set where they are one strong component."""
+
+    low: int
+    high: int
+    swept: bool
+    edges: int
+    steps: list[list[tuple[int, int]]]
+    component: int | None = None
+
+
+@dataclass(frozen=True)
+class Plan:
+    """The order to visit the rows in, and its stages, upstream first."""
+
+    order: Order
+    stages: list[Stage]
+
+    @property
+    def swept(self) -> list[tuple[int, int]]:
+        """Ranges of ``order`` that need sweeps."""
+        return [(stage.low, stage.high) for stage in self.stages if stage.swept]
+
+
+def plan(structure: Structure, rows: Adjacency, flow: Flow) -> Plan:
+    """Stages of a system whose scores flow ``flow`` through the graph of ``structure``."""
+    n, count = len(structure.order), structure.count
+    along = flow == "along"
+    order = structure.order if along else np.ascontiguousarray(structure.order[::-1])
+    starts = structure.starts if along else n - structure.starts[::-1]
+    cyclic, inner = structure.cyclic, structure.inner
+    if not along:
+        cyclic, inner = (count - 1 - cyclic)[::-1], inner[::-1]
+    single = starts[cyclic + 1] - starts[cyclic] == 1  # a self-loop alone is solved for exactly
+    cyclic, inner = cyclic[~single], inner[~single]
+    large = set(cyclic[inner >= _LARGE * max(int(inner.sum()), 1)].tolist())
+
+    stages: list[Stage] = []
+    at = 0
+    run: list[int] = []
+    for number in [*_marked(cyclic, large), count]:
+        if number in large or number == count:
+            if run:
+                first, last = int(starts[run[0]]), int(starts[run[-1] + 1])
+                _once(stages, rows, order, at, first)
+                stages.append(_swept(rows, order, first, last, None))
+                at, run = last, []
+            if number < count:
+                first, last = int(starts[number]), int(starts[number + 1])
+                _once(stages, rows, order, at, first)
+                own = number if along else count - 1 - number
+                stages.append(_swept(rows, order, first, last, own))
+                at = last
+        else:
+            run.append(number)
+    _once(stages, rows, order, at, n)
+    return Plan(order, stages)
+
+
+def _marked(cyclic: NDArray[np.int64], large: set[int]) -> list[int]:
+    """Large components, and of the small ones between them the first and the last."""
+    keep: list[int] = []
+    numbers = cyclic.tolist()
+    for position, number in enumerate(numbers):
+        before = numbers[position - 1] if position else None
+        after = numbers[position + 1] if position + 1 < len(numbers) else None
+        edge = before is None or after is None or before in large or after in large
+        if number in large or edge:
+            keep.append(number)
+    return keep
+
+
+def _count(rows: Adjacency, order: Order, low: int, high: int) -> int:
+    nodes = order[low:high].astype(np.int64)
+    return int((rows.offsets[nodes + 1] - rows.offsets[nodes]).sum())
+
+
+def _once(stages: list[Stage], rows: Adjacency, order: Order, low: int, high: int) -> None:
+    if low < high:
+        edges = _count(rows, order, low, high)
+        pieces = cut(rows, order, low, high, _SPLIT)
+        stages.append(Stage(low, high, False, edges, [[piece] for piece in pieces]))
+
+
+def _swept(rows: Adjacency, order: Order, low: int, high: int, component: int | None) -> Stage:
+    edges = _count(rows, order, low, high)
+    if edges < _SPLIT:
+        return Stage(low, high, True, edges, [[(low, high)]], component)
+    blocks = _LANES * max(_STEPS, round(edges / (_LANES * 4 * _SPLIT)))
+    pieces = cut(rows, order, low, high, -(-(edges + high - low) // blocks))
+    pieces += [(high, high)] * (-len(pieces) % _LANES)  # every lane takes part in every step
+    steps = [pieces[at : at + _LANES] for at in range(0, len(pieces), _LANES)]
+    return Stage(low, high, True, edges, steps, component)
