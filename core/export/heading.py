@@ -81,9 +81,18 @@ def header(ranking: Ranking) -> list[str]:
         else "error: no bound is known",
         f"order proven to {result.proven_order:,} of {graph.n:,}",
     ]
-    for name, words in ranking.conventions.items():
-        lines.append(f"{visible(name.replace('_', ' '))}: {visible(words)}")
+    if words := _conventions(ranking):
+        lines.append(f"conventions  {words}")
     return lines
+
+
+def _conventions(ranking: Ranking) -> str:
+    told = {"flow", "weight"}  # by the first two lines
+    return "; ".join(
+        f"{visible(name.replace('_', ' '))}: {visible(words)}"
+        for name, words in ranking.conventions.items()
+        if name not in told
+    )
 
 
 def legend(ascii_only: bool = False) -> str:

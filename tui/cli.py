@@ -1,0 +1,45 @@
+"""The command line; imports no numpy, pyarrow, rich or textual until a command runs."""
+
+from __future__ import annotations
+
+import click
+
+from kingpost.tui.commands import audit, node, rank, screen
+from kingpost.tui.commands.front import BARE, Front
+
+EPILOG = """\
+\b
+kingpost calls.parquet                    open the screen (piped: print the standings)
+kingpost rank calls.parquet --top 50      the standings as a table
+kingpost rank calls.parquet --out ranks.csv
+kingpost audit calls.parquet              what the table holds and how the graph is built
+kingpost node calls.parquet billing       one node: ranks, who points at it, at whom it points
+
+EDGES are Parquet files, folders or patterns; a file that is called like a command is reached
+as ./rank.  Node names that begin with a dash follow after --.
+
+\b
+Exit status: 0 answered; 1 answered without reaching the accuracy asked for;
+2 unusable input or usage; 3 the mathematics has no such answer; 130 interrupted.
+"""
+
+
+@click.group(cls=Front, epilog=EPILOG, context_settings={"help_option_names": ["--help", "-h"]})
+@click.version_option(package_name="kingpost", message="kingpost %(version)s")
+def cli() -> None:
+    """Which nodes carry a large sparse graph, with proof.
+
+    Reads a table of edges and ranks its nodes; every score comes with an error bound, every
+    ranking says how much of its order is proven.
+    """
+
+
+cli.commands[BARE] = screen.screen
+cli.add_command(rank.rank)
+cli.add_command(audit.audit)
+cli.add_command(node.node)
+
+
+def main() -> None:
+    """Entry point of the installed program."""
+    cli.main()

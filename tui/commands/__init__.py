@@ -1,0 +1,1 @@
+"""The commands of the shell, one a file; nothing heavy is imported before a command runs."""

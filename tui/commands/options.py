@@ -1,0 +1,221 @@
+"""Every option of the command line, once: name, type, help and the heading it stands under.
+
+This file must stay importable without numpy, so measures and the fields of their settings are
+named here in words; a test holds both lists equal to the registry's.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from typing import Any, TypeVar
+
+import click
+
+from kingpost.tui.commands.front import SectionOption
+
+F = TypeVar("F", bound=Callable[..., Any])
+
+MEASURES = ("surfer", "eigenvector", "katz", "degree")
+FORMATS = ("table", "json", "csv", "tsv", "markdown", "parquet")
+
+LOADING, MEASURE, OUTPUT = "Loading", "Measure", "Output"
+
+# Names of the options whose values are fields of a measure's settings.
+SETTINGS = (
+    "flow",
+    "damping",
+    "dangling",
+    "teleport",
+    "alpha",
+    "alpha_fraction",
+    "beta",
+    "counting",
+    "tol",
+    "stop",
+    "max_sweeps",
+)
+
+
+class Count(click.ParamType):  # type: ignore[type-arg]
+    """A whole number from 1, or one of a few words."""
+
+    name = "N"
+
+    def __init__(self, *words: str) -> None:
+        self.words = words
+
+    def convert(self, value: Any, param: Any, ctx: Any) -> Any:
+        if isinstance(value, int) or value in self.words:
+            return value
+        if not (value.isascii() and value.isdigit() and int(value) > 0):
+            words = " or ".join(["a number from 1", *self.words])
+            self.fail(f"{value!r} is not {words}", param, ctx)
+        return int(value)
+
+
+def _option(section: str, *names: str, **about: Any) -> Callable[[F], F]:
+    return click.option(*names, cls=SectionOption, section=section, **about)
+
+
+def _stack(*decorators: Callable[[F], F]) -> Callable[[F], F]:
+    def apply(command: F) -> F:
+        for decorate in reversed(decorators):
+            command = decorate(command)
+        return command
+
+    return apply
+
+
+edges = click.argument("edges", nargs=-1, required=True, metavar="EDGES...")
+
+loading = _stack(
+    _option(LOADING, "--source", metavar="COLUMN", help="column an edge starts at [guessed]"),
+    _option(LOADING, "--target", metavar="COLUMN", help="column an edge leads to [guessed]"),
+    _option(LOADING, "--weight", metavar="COLUMN", help="column of strengths [guessed]"),
+    _option(LOADING, "--nodes", metavar="FILE", help="table of node attributes"),
+    _option(LOADING, "--node-id", metavar="COLUMN", help="id column of --nodes [guessed]"),
+    _option(LOADING, "--undirected", is_flag=True, help="read every edge both ways"),
+    _option(
+        LOADING,
+        "--parallel",
+        type=click.Choice(["sum", "mean", "min", "max", "first", "count"]),
+        default="sum",
+        help="what repeated edges become [sum]",
+    ),
+    _option(
+        LOADING,
+        "--loops",
+        type=click.Choice(["keep", "drop"]),
+        default="keep",
+        help="edges from a node to itself [keep]",
+    ),
+    _option(
+        LOADING,
+        "--bad-rows",
+        type=click.Choice(["refuse", "skip"]),
+        default="refuse",
+        help="rows with null ids or negative, NaN or infinite weights [refuse]",
+    ),
+    _option(
+        LOADING,
+        "--weight-as",
+        type=click.Choice(["asis", "log1p", "inverse", "none"]),
+        default="asis",
+        help="how a weight becomes a strength [asis]",
+    ),
+    _option(
+        LOADING,
+        "--threads",
+        type=Count(),
+        metavar="N",
+        help="threads to use [all this process may]",
+    ),
+)
+
+measure = _stack(
+    _option(
+        MEASURE,
+        "--measure",
+        default="surfer",
+        metavar="NAME",
+        help=f"{', '.join(MEASURES)} [surfer]",
+    ),
+    _option(
+        MEASURE,
+        "--flow",
+        metavar="WAY",
+        help="score flows along the edges or against them [along]",
+    ),
+    _option(
+        MEASURE,
+        "--damping",
+        type=float,
+        metavar="D",
+        help="surfer: probability of following an edge [0.85]",
+    ),
+    _option(
+        MEASURE,
+        "--dangling",
+        metavar="MODE",
+        help="surfer: where nodes without out-edges send score: teleport, uniform or leak",
+    ),
+    _option(
+        MEASURE,
+        "--teleport",
+        multiple=True,
+        metavar="NODE|FILE",
+        help="surfer: jump to this node (repeatable), or by the weights in a two-column file",
+    ),
+    _option(
+        MEASURE,
+        "--alpha",
+        type=float,
+        metavar="A",
+        help="katz: attenuation per edge, below 1/rho",
+    ),
+    _option(
+        MEASURE,
+        "--alpha-fraction",
+        type=float,
+        metavar="F",
+        help="katz: attenuation as a fraction of 1/rho",
+    ),
+    _option(
+        MEASURE,
+        "--beta",
+        metavar="B",
+        help="katz: what every node has of itself: a number, a node attribute, or a file",
+    ),
+    _option(
+        MEASURE,
+        "--counting",
+        metavar="WHAT",
+        help="degree: add the weights of a node's edges (strength) or count them (edges)",
+    ),
+    _option(
+        MEASURE,
+        "--tol",
+        type=float,
+        metavar="E",
+        help="proven error asked for, as a share of the sum of the scores [1e-10]",
+    ),
+    _option(
+        MEASURE,
+        "--stop",
+        metavar="WHEN",
+        help="bound: at --tol; order:K: once the order of the top K is proven [bound]",
+    ),
+    _option(MEASURE, "--max-sweeps", type=int, metavar="N", help="give up after N sweeps [10000]"),
+)
+
+
+def limit_of(top: int | str | None, default: int | None) -> int | None:
+    """What ``--top`` asks for as a number of rows, None for all."""
+    if top is None:
+        return default
+    return top if isinstance(top, int) else None
+
+
+def output(*formats: str) -> Callable[[F], F]:
+    """``--format`` with these choices, and ``--out``."""
+    return _stack(
+        _option(
+            OUTPUT,
+            "--format",
+            "form",
+            type=click.Choice(formats),
+            help=f"{', '.join(formats)} [by the name of --out, else table]",
+            metavar="FORMAT",
+        ),
+        _option(OUTPUT, "--out", metavar="FILE", help="write here, whole or not at all"),
+    )
+
+
+def top(words: str) -> Callable[[F], F]:
+    """``--top``."""
+    return _option(OUTPUT, "--top", type=Count("all"), metavar="N", help=words)
+
+
+log = _option(
+    OUTPUT, "--log", metavar="FILE", help="write the sweeps to FILE (*.csv, *.json, *.parquet)"
+)
