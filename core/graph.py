@@ -78,10 +78,18 @@ class Adjacency:
 class Account:
     """What became of every row of the edge table; travels with the graph.
 
-    ``rows_read = rows_kept + sum(skipped.values())``.  Of the kept rows ``merged`` were folded
-    into an earlier parallel edge, so ``edges = rows_kept - merged - loops_dropped - zero_weight``
-    where ``zero_weight`` counts edges whose weight is zero: they carry nothing and are left
-    out, but their end points stay.
+    ``rows_read = rows_kept + sum(skipped.values())``, and
+    ``Graph.m = rows_kept - loops_dropped - merged - zero_weight``, exactly.  Of the kept rows
+    ``loops`` lead from a node to itself, and ``loops_dropped`` is 0 or all of these; ``merged``
+    counts the other rows that were folded into an edge an earlier row had named; ``zero_weight``
+    counts edges (after merging) that weigh 0: they carry nothing and are left out.  The ends of
+    dropped loops and of zero-weight edges stay nodes.  ``examples`` holds up to three rows for
+    every reason in ``skipped``, safe to print; so are ``notes``.
+
+    ``nodes_rows = nodes_joined + nodes_unknown + nodes_repeated`` and
+    ``Graph.n = nodes_joined + nodes_missing`` where a nodes table was joined: rows that describe
+    a node, rows with a null id or one that no edge names, further rows of an id already met,
+    and nodes without a row.
     """
 
     rows_read: int = 0

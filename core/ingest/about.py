@@ -43,6 +43,9 @@ def about(paths: Paths) -> TableAbout:
             type=str(item.type),
             can_be_id=family(item.type) is not None,
             can_be_weight=is_numeric(item.type),
+            nulls=sum(part.nulls[item.name] for part in parts)
+            if all(item.name in part.nulls for part in parts)
+            else None,
         )
         for item in first.schema
     )

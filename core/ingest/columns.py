@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import difflib
 import re
+from collections.abc import Iterator
 from dataclasses import dataclass
 
 import pyarrow as pa
@@ -169,17 +170,34 @@ def guess_ends(
     """The two ends of an edge by name, else the only two id-like columns of one sort."""
     names = [item.name for item in part.schema if family(item.type) is not None]
     names = [name for name in names if part.schema.names.count(name) == 1 and name != weight]
+    named = list(_named_pairs(names, source, target))
+    meeting = [pair for pair in named if _meet(part, *pair)]
+    # A pair whose types do not meet comes last: it will be refused with both types named.
+    return (
+        next(iter(meeting), None)
+        or _only_pair(part, names, source, target)
+        or next(iter(named), None)
+    )
+
+
+def _named_pairs(
+    names: list[str], source: str | None, target: str | None
+) -> Iterator[tuple[str, str]]:
     words = {name: _word(name) for name in names}
     for first, second in PAIRS:
-        starts = [n for n in names if words[n] == first] if source is None else [source]
-        ends = [n for n in names if words[n] == second] if target is None else [target]
-        if source is not None and _word(source) != first:
-            continue
-        if target is not None and _word(target) != second:
-            continue
+        starts = [name for name in names if words[name] == first]
+        ends = [name for name in names if words[name] == second]
+        if source is not None:
+            starts = [source] if _word(source) == first else []
+        if target is not None:
+            ends = [target] if _word(target) == second else []
         if len(starts) == len(ends) == 1:
-            return starts[0], ends[0]
-    return _only_pair(part, names, source, target)
+            yield starts[0], ends[0]
+
+
+def _meet(part: Part, source: str, target: str) -> bool:
+    kinds = [part.schema.field(name).type for name in (source, target)]
+    return common(*kinds) is not None or family(kinds[0]) is None
 
 
 def _only_pair(

@@ -38,6 +38,7 @@ class Part:
     rows: int
     read: Callable[[list[str]], Iterator[pa.RecordBatch]]
     partitions: frozenset[str] = field(default_factory=frozenset)
+    nulls: dict[str, int] = field(default_factory=dict)  # where known without reading
 
 
 def parts_of_table(table: pa.Table, name: str) -> list[Part]:
@@ -46,7 +47,8 @@ def parts_of_table(table: pa.Table, name: str) -> list[Part]:
     def read(columns: list[str]) -> Iterator[pa.RecordBatch]:
         yield from table.select(columns).to_batches(max_chunksize=BATCH_ROWS)
 
-    return [Part(name, table.schema, table.num_rows, read)]
+    nulls = {item: table.column(at).null_count for at, item in enumerate(table.schema.names)}
+    return [Part(name, table.schema, table.num_rows, read, nulls=nulls)]
 
 
 def open_parts(paths: Paths) -> list[Part]:
@@ -125,8 +127,10 @@ def _whole(text: str) -> bool:
 
 def _open(file: str, partitions: dict[str, pa.Array]) -> Part:
     fragment, schema, rows = _footer(file)
+    nulls = _null_counts(fragment)
     extra = {name: value for name, value in partitions.items() if name not in schema.names}
     for name, value in extra.items():
+        nulls[name] = rows * value.null_count
         schema = schema.append(pa.field(name, value.type))
 
     def read(columns: list[str]) -> Iterator[pa.RecordBatch]:
@@ -149,7 +153,7 @@ def _open(file: str, partitions: dict[str, pa.Array]) -> Part:
         if read != rows:
             raise InputError(f"{file} is damaged: it holds {read:,} rows, its footer says {rows:,}")
 
-    return Part(file, schema, rows, read, frozenset(extra))
+    return Part(file, schema, rows, read, frozenset(extra), nulls)
 
 
 def _scan(fragment: Any, columns: list[str]) -> Iterator[pa.RecordBatch]:
@@ -182,6 +186,19 @@ def _footer(file: str) -> tuple[Any, pa.Schema, int]:
         raise InputError(
             f"{file} is a truncated or damaged Parquet file ({first_line(error)})"
         ) from None
+
+
+def _null_counts(fragment: Any) -> dict[str, int]:
+    """Nulls of every flat column whose statistics are complete in the footer."""
+    footer = fragment.metadata
+    nulls: dict[str, int] = {}
+    for at in range(footer.num_columns if footer.num_row_groups else 0):
+        name = footer.schema.column(at).path
+        groups = range(footer.num_row_groups)
+        known = [footer.row_group(group).column(at).statistics for group in groups]
+        if all(about is not None and about.has_null_count for about in known):
+            nulls[name] = sum(about.null_count for about in known)
+    return nulls
 
 
 def columns_listed(schema: pa.Schema) -> str:

@@ -57,7 +57,7 @@ def join_nodes(options: LoadOptions, labels: pa.Array, watch: Watch) -> Joined:
     if column is not None:
         require_column(schema, column, path)
     else:
-        column, guessed = guess_id(schema, labels.type, path), True
+        column, guessed = guess_id(path, schema, labels), True
     table = _read(path, schema, column, labels.type)
     at = _positions(table.column(column), labels, column, path)
     known = np.flatnonzero(at >= 0)
@@ -84,7 +84,7 @@ def read_values(path: str | os.PathLike[str], graph: Graph, column: str | None) 
     schema = _schema(name)
     if column is not None:
         require_column(schema, column, name)
-    ids = guess_id(schema, graph.labels.type, name, exclude=column)
+    ids = guess_id(name, schema, graph.labels, exclude=column)
     if column is None:
         numeric = [f.name for f in schema if f.name != ids and is_numeric(f.type)]
         if len(numeric) != 1:
@@ -139,17 +139,29 @@ def _refuse_ids(at: NDArray[np.int64], ids: pa.ChunkedArray, name: str) -> None:
         )
 
 
-def guess_id(schema: pa.Schema, kind: pa.DataType, where: str, exclude: str | None = None) -> str:
-    """The id column of a nodes table: by name, else the only one whose type goes with the ids."""
-    fits = [f.name for f in schema if f.name != exclude and _goes(f.type, kind)]
-    fits = [name for name in fits if schema.names.count(name) == 1]
-    lower = {name.lower(): name for name in reversed(fits)}
-    found = [lower[word] for word in _ID_WORDS if word in lower] or fits
-    if len(found) >= 1 and (found is not fits or len(fits) == 1):
-        return str(found[0])
+def guess_id(path: str, schema: pa.Schema, labels: pa.Array, exclude: str | None = None) -> str:
+    """The id column of a nodes table: by name, else the one whose values are ids of the graph."""
+    names = [f.name for f in schema if f.name != exclude and schema.names.count(f.name) == 1]
+    if _delimiter(path) is None or family(labels.type) == "integer":
+        kinds = {name: schema.field(name).type for name in names}
+        names = [name for name in names if _goes(kinds[name], labels.type)]
+    lower = {name.lower(): name for name in reversed(names)}
+    named = [lower[word] for word in _ID_WORDS if word in lower]
+    if named or len(names) == 1:
+        return str(named[0] if named else names[0])
+    hits: dict[str, int] = {}
+    for name in names:
+        try:
+            ids = _read(path, schema, name, labels.type).column(name)
+            hits[name] = int(np.count_nonzero(_positions(ids, labels, name, path) >= 0))
+        except InputError:  # text that does not read as ids
+            hits[name] = 0
+    best = [name for name in names if hits[name] == max(hits.values())]
+    if len(best) == 1:
+        return str(best[0])
     raise InputError(
-        f"it is not clear which column of {where} holds the node ids (of type {kind}); name it "
-        f"with --node-id; its columns are {columns_listed(schema)}"
+        f"it is not clear which column of {path} holds the node ids (of type {labels.type}); name "
+        f"it with --node-id; its columns are {columns_listed(schema)}"
     )
 
 

@@ -33,6 +33,7 @@ def build_graph(parts: list[Part], options: LoadOptions, watch: Watch | None = N
     if len(built.outward.neighbours) == 0:
         notes.append("no edge is left: every row was a dropped loop or weighs nothing")
     joined = join_nodes(options, labels, watch)
+    watch.check()
     account = Account(
         rows_read=rows.read,
         rows_kept=rows.kept,
