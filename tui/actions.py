@@ -1,0 +1,131 @@
+"""The registry of actions: what can be done, by which keys, in which views, in what words.
+
+Key bindings, the line of keys at the foot of the screen and the help are all made from this
+table; an action that is not here does not exist.  A key means the same wherever it works.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping
+from dataclasses import dataclass
+
+STANDINGS, NODE, LOG, FORM, CHOICE, PROMPT, NOTICE, HELP, LOADING = (
+    "standings",
+    "node",
+    "log",
+    "form",
+    "choice",
+    "prompt",
+    "notice",
+    "help",
+    "loading",
+)
+_TABLES = (STANDINGS, NODE, LOG, CHOICE, HELP)
+_ROOMS = (STANDINGS, NODE, LOG, HELP)
+_TYPING = (FORM, PROMPT)
+
+
+@dataclass(frozen=True, slots=True)
+class Action:
+    """One thing the user can do.
+
+    ``id`` is stable: settings files and tests refer to it.  ``words`` is what the key line says,
+    empty for what needs no saying there; ``means`` is the sentence in the help.  ``order``
+    sorts the key line, lowest first; what does not fit the width is left to the help.
+    """
+
+    id: str
+    keys: tuple[str, ...]
+    views: tuple[str, ...]
+    means: str
+    words: str = ""
+    order: int = 50
+    group: str = "Everywhere"
+
+
+ACTIONS: tuple[Action, ...] = (
+    Action("row.up", ("up",), (*_TABLES, FORM), "one row up (upstream in Node)", group="Moving"),
+    Action("row.down", ("down",), (*_TABLES, FORM), "one row down (downstream in Node)", group="Moving"),
+    Action("page.ahead", ("a", "pagedown"), _TABLES, "a page ahead", group="Moving"),
+    Action("page.return", ("r", "pageup"), _TABLES, "return a page", group="Moving"),
+    Action("row.first", ("t", "home"), _TABLES, "to the top row", group="Moving"),
+    Action("row.last", ("e", "end"), _TABLES, "to the end row", group="Moving"),
+    Action("columns.left", ("left",), (STANDINGS, NODE, FORM), "columns further left, or the choice before", group="Moving"),
+    Action("columns.right", ("right",), (STANDINGS, NODE, FORM), "columns further right, or the next choice", group="Moving"),
+    Action("other.part", ("tab",), (NODE, FORM), "to the other table, or the next field", "other table", 30, "Moving"),
+    Action("node.open", ("enter",), (STANDINGS, NODE), "open the node; in Node, make the neighbour the centre", "node", 1, "Investigating"),
+    Action("walk.back", ("b",), (NODE,), "walk back the way you came", "walk back", 2, "Investigating"),
+    Action("walk.on", ("v",), (NODE,), "walk the way again, forth", "walk forth", 8, "Investigating"),
+    Action("measure.choose", ("m",), _ROOMS[:3], "choose the measure; it is solved if it has not been", "measure", 10, "Investigating"),
+    Action("settings.change", ("c",), (STANDINGS, NODE, LOG, CHOICE), "change the settings of the measure and solve again", "change settings", 14, "Investigating"),
+    Action("log.open", ("l",), (STANDINGS, NODE), "the solve log: residual, bound and proven order, sweep by sweep", "log", 15, "Investigating"),
+    Action("solve.halt", ("h",), (STANDINGS, NODE, LOG, LOADING), "halt the solve or loading; a solve keeps its best iterate", "halt", 3, "Investigating"),
+    Action("rows.sort", ("s",), (STANDINGS,), "sort by a column; the same column again turns the order round", "sort", 11, "Looking"),
+    Action("rows.filter", ("f",), (STANDINGS,), "keep only the rows whose name contains a text; empty for all", "filter", 12, "Looking"),
+    Action("find.ask", ("slash",), (STANDINGS,), "find a name that contains a text", "find", 13, "Looking"),
+    Action("find.next", ("n",), (STANDINGS,), "next row found", "next found", 16, "Looking"),
+    Action("find.before", ("p",), (STANDINGS,), "row found before", "found before", 17, "Looking"),
+    Action("choice.take", ("enter",), (CHOICE,), "take the highlighted row", "take", 1, "Asked something"),
+    Action("prompt.take", ("enter",), (PROMPT,), "go on with what is written", "go", 1, "Asked something"),
+    Action("form.solve", ("enter",), (FORM,), "solve with these settings", "solve", 1, "Asked something"),
+    Action("notice.close", ("enter",), (NOTICE,), "close the notice", "close", 1, "Asked something"),
+    Action("step.back", ("escape",), (STANDINGS, NODE, LOG, HELP, *_TYPING, CHOICE, NOTICE), "one step back; nothing is lost", "back", 4),
+    Action("help.open", ("question_mark",), (STANDINGS, NODE, LOG), "every key, in words", "all keys", 90),
+    Action("quit", ("q",), (STANDINGS, NODE, LOG, HELP, LOADING), "quit", "quit", 91),
+    Action("quit.now", ("ctrl+c",), (*_ROOMS, *_TYPING, CHOICE, NOTICE, LOADING), "quit at once, from anywhere"),
+)  # fmt: skip
+
+BY_ID: dict[str, Action] = {action.id: action for action in ACTIONS}
+
+_KEY_WORDS = {
+    "slash": "/",
+    "question_mark": "?",
+    "enter": "Enter",
+    "escape": "Esc",
+    "tab": "Tab",
+    "up": "Up",
+    "down": "Down",
+    "left": "Left",
+    "right": "Right",
+    "pagedown": "PageDown",
+    "pageup": "PageUp",
+    "home": "Home",
+    "end": "End",
+    "ctrl+c": "Ctrl-C",
+}
+
+
+def key_words(key: str) -> str:
+    """A key as it is written on the screen."""
+    return _KEY_WORDS.get(key, key)
+
+
+def keymap(view: str, rebound: Mapping[str, tuple[str, ...]] | None = None) -> dict[str, str]:
+    """Key -> action id for one view; ``rebound`` gives other keys to some action ids."""
+    rebound = rebound or {}
+    found: dict[str, str] = {}
+    for action in ACTIONS:
+        if view not in action.views:
+            continue
+        for key in rebound.get(action.id, action.keys):
+            found.setdefault(key, action.id)
+    return found
+
+
+def key_line(view: str, possible: Iterable[str]) -> list[tuple[str, str]]:
+    """(key, words) for the foot of a view, most useful first, of the actions possible now."""
+    now = set(possible)
+    chosen = [a for a in ACTIONS if view in a.views and a.words and a.id in now]
+    return [(key_words(a.keys[0]), a.words) for a in sorted(chosen, key=lambda a: a.order)]
+
+
+def help_rows() -> list[tuple[str, str, str]]:
+    """(group, keys, meaning) of every action, grouped, in the order of the registry."""
+    groups: dict[str, list[Action]] = {}
+    for action in ACTIONS:
+        groups.setdefault(action.group, []).append(action)
+    return [
+        (group, " ".join(key_words(key) for key in action.keys), action.means)
+        for group, actions in groups.items()
+        for action in actions
+    ]

@@ -1,0 +1,117 @@
+"""The lines that say who a node is and why it stands where it does; pieces of styled text."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+from rich.cells import cell_len
+
+from kingpost.tui.models.drawing import bar, fit, ruler, tame
+from kingpost.tui.models.numbers import percent, rank_range, small
+from kingpost.tui.models.sitting import Sitting, flow_words, settings_words
+from kingpost.tui.terminal import Glyphs
+
+if TYPE_CHECKING:
+    from kingpost.core.graph import Graph
+    from kingpost.core.insight.contributions import Contributions
+    from kingpost.core.result import Result
+
+Piece = tuple[str, str]
+_BAR = 8
+_SEPARATOR = "   "
+
+
+def graph_line(graph: Graph, flow: str, shown: int) -> list[Piece]:
+    """Graph, nodes, edges, flow; with how many rows a filter leaves."""
+    rows = f"{graph.n:,} nodes" if shown == graph.n else f"{shown:,} of {graph.n:,} nodes"
+    return [
+        (f" {tame(graph.origin.name)}", "head"),
+        (f"   {rows}  {graph.m:,} edges   {flow_words(graph, flow)}", "plain"),
+    ]
+
+
+def terms_line(graph: Graph, result: Result, width: int) -> list[Piece]:
+    """Measure, settings, weights; what is proven. The proof is kept where space is short."""
+    if result.refusal is not None:
+        return [(f" {result.measure}", "strong"), ("   no answer here: see below", "bad")]
+    words = settings_words(result.settings, result.facts)
+    words = f" {words}," if words else ""
+    left = f"{words} weight {graph.origin.weight_words}"
+    proof = f"order proven to {result.proven_order:,} of {graph.n:,}"
+    if not result.stop.accurate and str(result.stop) not in ("converged", "order proven"):
+        proof = f"{result.stop}, bound {small(result.bound.value)}, {proof}"
+    room = width - len(result.measure) - cell_len(proof) - 5
+    return [
+        (f" {result.measure}", "strong"),
+        (fit(left, max(room, 0)), "plain"),
+        (f"  {proof}", "strong"),
+    ]
+
+
+def ruler_line(sitting: Sitting, node: int, width: int, glyphs: Glyphs) -> list[Piece]:
+    """The node's name, its ruler, and the ranks in figures where there is room for them."""
+    n = sitting.graph.n
+    found = sitting.ranks(node)
+    legend = "  ".join(
+        f"{letter} {name} {rank_range(first, last)}" for letter, (name, first, last) in found.items()
+    )
+    if cell_len(legend) + 44 > width:
+        legend = "  ".join(f"{letter} {first:,}" for letter, (_, first, _) in found.items())
+    if cell_len(legend) + 40 > width:
+        legend = ""
+    end = f" {n:,}"
+    name = tame(sitting.graph.name(node, 200), glyphs)
+    room = width - cell_len(end) - (cell_len(legend) + 3 if legend else 0) - 5
+    named = min(cell_len(name), max(room // 3, 8))
+    track = max(room - named - 1, 8)
+    marks = ruler({letter: first for letter, (_, first, _) in found.items()}, n, track, glyphs)
+    pieces: list[Piece] = [(f" {fit(name, named, glyphs=glyphs)}", "strong"), ("  1 ", "plain")]
+    pieces += track_pieces(marks, glyphs)
+    pieces.append((end, "plain"))
+    if legend:
+        pieces.append((f"   {legend}", "quiet"))
+    return pieces
+
+
+def track_pieces(marks: str, glyphs: Glyphs) -> list[Piece]:
+    """A ruler with its letters standing out."""
+    pieces: list[Piece] = []
+    run = ""
+    for char in marks:
+        if char == glyphs.track:
+            run += char
+            continue
+        if run:
+            pieces.append((run, "quiet"))
+            run = ""
+        pieces.append((char, "letter"))
+    if run:
+        pieces.append((run, "quiet"))
+    return pieces
+
+
+def supports_line(graph: Graph, given: Contributions, width: int, glyphs: Glyphs) -> list[Piece]:
+    """The strongest feeders with their shares; how many more there are."""
+    count = len(given.neighbours)
+    if count == 0:
+        return [(" held up by  nothing: no neighbour gives score to it", "plain")]
+    pieces: list[Piece] = [(" held up by  ", "plain")]
+    used = 13
+    for at in range(count):
+        name = tame(graph.name(int(given.neighbours[at]), 120), glyphs)
+        name = fit(name, min(cell_len(name), 24), glyphs=glyphs)
+        share = percent(float(given.share[at]))
+        drawn = bar(float(given.share[at]), _BAR, glyphs)
+        size = cell_len(name) + len(share) + cell_len(drawn) + 4
+        rest = len(f"+{count - at - 1:,} more")
+        if used + size + (rest if at < count - 1 else 0) > width and at > 0:
+            pieces.append((f"+{count - at:,} more", "quiet"))
+            return pieces
+        pieces += [(f"{name} ", "plain"), (f"{share} ", "strong"), (drawn, "bar"), ("  ", "plain")]
+        used += size
+    return pieces
+
+
+def parts_words(given: Contributions) -> str:
+    """``feeders 83%  teleport 17%``."""
+    return "  ".join(f"{name} {percent(share)}" for name, share in given.parts.items())

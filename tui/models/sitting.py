@@ -1,0 +1,118 @@
+"""One sitting: a graph, the results solved so far, the settings in force, every solve made."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
+from typing import TYPE_CHECKING, Any
+
+from kingpost.core.measures import NAMES, measure
+
+if TYPE_CHECKING:
+    from kingpost.core.graph import Graph
+    from kingpost.core.measures.base import Measure, Settings
+    from kingpost.core.result import Result
+
+
+@dataclass
+class Sitting:
+    """What the views share.  ``current`` is the measure the standings show."""
+
+    graph: Graph
+    current: str
+    settings: dict[str, Settings] = field(default_factory=dict)
+    results: dict[str, Result] = field(default_factory=dict)
+    solves: list[Result] = field(default_factory=list)
+    names: Sequence[str] = NAMES
+
+    def measure(self, name: str) -> Measure:
+        """The measure of that name, from the registry."""
+        return measure(name)
+
+    def settings_of(self, name: str) -> Settings:
+        """Settings in force for a measure; its defaults, with the flow now shown, at first."""
+        if name not in self.settings:
+            flow = getattr(self.settings.get(self.current), "flow", "along")
+            self.settings[name] = self.measure(name).settings(flow=flow)
+        return self.settings[name]
+
+    def record(self, result: Result) -> None:
+        """Keep a result as the latest of its measure."""
+        self.results[result.measure] = result
+        self.settings[result.measure] = result.settings
+        self.solves.append(result)
+
+    @property
+    def result(self) -> Result | None:
+        """The result the standings show."""
+        return self.results.get(self.current)
+
+    @property
+    def flow(self) -> str:
+        """The flow the standings show."""
+        return str(getattr(self.settings_of(self.current), "flow", "along"))
+
+    def others(self) -> list[Result]:
+        """Answers of the other measures under the same flow, in the registry's order."""
+        return [
+            self.results[name]
+            for name in self.names
+            if name != self.current
+            and name in self.results
+            and self.results[name].refusal is None
+            and getattr(self.results[name].settings, "flow", "along") == self.flow
+        ]
+
+    def ranks(self, node: int) -> dict[str, tuple[str, int, int]]:
+        """Letter -> (measure, first rank, last rank) of a node in every answer shown."""
+        found: dict[str, tuple[str, int, int]] = {}
+        for name in self.names:
+            result = self.results.get(name)
+            if result is None or result.refusal is not None:
+                continue
+            if name != self.current and result not in self.others():
+                continue
+            first, last = result.standing.range_of(node)
+            found[self.measure(name).letter] = (name, first, last)
+        return found
+
+
+def flow_words(graph: Graph, flow: str) -> str:
+    """Which way score flows, in the words of the table's own columns."""
+    origin = graph.origin
+    if not graph.directed:
+        return f"undirected, score flows both ways between {origin.source} and {origin.target}"
+    if flow == "along":
+        return f"score flows along {origin.source} -> {origin.target}"
+    return f"score flows against {origin.source} -> {origin.target}"
+
+
+def settings_words(settings: Any, facts: Mapping[str, Any] | None = None) -> str:
+    """The settings that shape the answer, in a few words: all but accuracy and limits.
+
+    What is done with dangling nodes is left out where ``facts`` say there are none.
+    """
+    import dataclasses
+
+    parts = []
+    for item in dataclasses.fields(settings):
+        if item.name in ("flow", "tol", "stop", "max_sweeps"):
+            continue
+        if item.name == "dangling" and (facts or {}).get("dangling nodes") == 0:
+            continue
+        value = getattr(settings, item.name)
+        if value is None or value == {} or value == ():
+            continue
+        words = f"{value:g}" if isinstance(value, float) else _short(value)
+        parts.append(f"{item.name.replace('_', ' ')} {words}")
+    return ", ".join(parts)
+
+
+def _short(value: Any) -> str:
+    from kingpost.core.text import visible
+
+    if isinstance(value, dict):
+        return f"on {len(value):,} nodes"
+    if isinstance(value, (list, tuple)) and len(value) > 3:
+        return f"{len(value):,} given"
+    return visible(str(value), 24)

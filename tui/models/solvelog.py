@@ -1,0 +1,127 @@
+"""The solve log's model: series for the chart, rows for the table, the sentence beneath."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from typing import TYPE_CHECKING, Any
+
+from kingpost.core.standing import UNRANKED
+from kingpost.tui.models.chart import Series
+from kingpost.tui.models.columns import Column
+from kingpost.tui.models.numbers import compact, small
+
+if TYPE_CHECKING:
+    from kingpost.core.result import Iteration, Result
+
+_NAN = math.nan
+
+
+class Sweeps:
+    """The lines of a convergence log, oldest first, as a source for the row-window table."""
+
+    def __init__(self, log: Sequence[Iteration]) -> None:
+        self.log = list(log)
+        self.head = [
+            Column("index", "sweep", 6, lambda at: f"{self.log[at].index:,}", right=True, frozen=True),
+            Column("residual", "residual", 9, lambda at: small(self.log[at].residual), right=True),
+            Column("bound", "bound", 9, lambda at: small(self.log[at].bound), right=True),
+            Column("factor", "factor", 7, self._factor, right=True),
+            Column("proven", "proven", 9, self._proven, right=True),
+            Column("visits", "edges read", 10, lambda at: compact(self.log[at].edge_visits), right=True),
+            Column("seconds", "seconds", 8, lambda at: f"{self.log[at].seconds:.3f}", right=True),
+        ]
+        if any(line.eigenvalue for line in self.log):
+            self.head.append(Column("rho", "spectral radius within", 27, self._bracket))
+        if any(line.part for line in self.log):
+            self.head.append(Column("part", "part", 14, self._part))
+
+    @property
+    def count(self) -> int:
+        """Number of sweeps."""
+        return len(self.log)
+
+    def item(self, row: int) -> int:
+        """Sweeps are addressed by their place in the log."""
+        return row
+
+    def rail(self, row: int) -> int:
+        """Sweeps have no rail."""
+        return UNRANKED
+
+    def marked(self, row: int) -> bool:
+        """Nothing is marked here."""
+        return False
+
+    def _factor(self, at: int) -> str:
+        if at == 0:
+            return ""
+        before, here = self.log[at - 1].residual, self.log[at].residual
+        return f"{here / before:.3f}" if before > 0.0 and math.isfinite(here / before) else ""
+
+    def _proven(self, at: int) -> str:
+        proven = self.log[at].proven
+        return "" if proven is None else f"{proven:,}"
+
+    def _bracket(self, at: int) -> str:
+        found = self.log[at].eigenvalue
+        return "" if found is None else f"{found[0]:.9g} .. {found[1]:.9g}"
+
+    def _part(self, at: int) -> str:
+        from kingpost.core.text import visible
+
+        return visible(self.log[at].part, 40)
+
+
+def series_of(log: Sequence[Iteration], tolerance: float | None, n: int) -> Series:
+    """The chart's series; a log of many thousand sweeps is thinned to what a screen can show."""
+    every = max(1, len(log) // 500)
+    kept = [line for at, line in enumerate(log) if at % every == 0 or at == len(log) - 1]
+    return Series(
+        [line.index for line in kept],
+        [line.residual for line in kept],
+        [line.bound for line in kept],
+        [line.proven for line in kept],
+        tolerance,
+        n,
+    )
+
+
+def observed_factor(log: Sequence[Iteration]) -> float:
+    """Geometric mean of the residual's factor a sweep over the second half; NaN if unknown."""
+    lines = [line for line in log if math.isfinite(line.residual) and line.residual > 0.0]
+    lines = lines[len(lines) // 2 :]
+    if len(lines) < 2 or lines[-1].index == lines[0].index:
+        return _NAN
+    sweeps = lines[-1].index - lines[0].index
+    return float((lines[-1].residual / lines[0].residual) ** (1.0 / sweeps))
+
+
+def expected_factor(result: Result) -> tuple[float, str]:
+    """The factor theory promises for plain sweeps, and where it comes from; NaN if none.
+
+    The second eigenvalue of the surfer's matrix is at most the damping (Haveliwala and Kamvar
+    2003); Katz sweeps contract by alpha times the spectral radius.
+    """
+    facts: Any = result.facts
+    if result.measure == "surfer":
+        damping = getattr(result.settings, "damping", facts.get("damping"))
+        return (float(damping), "the damping") if damping is not None else (_NAN, "")
+    if result.measure == "katz" and facts.get("alpha") and facts.get("rho"):
+        return float(facts["alpha"]) * float(facts["rho"]), "alpha times the spectral radius"
+    return _NAN, ""
+
+
+def why_stopped(result: Result) -> str:
+    """One sentence: why it stopped, at what rate it converged, what rate was to be expected."""
+    parts = [f"{result.stop}: {result.reason}".rstrip(": ")]
+    observed = observed_factor(result.log)
+    expected, origin = expected_factor(result)
+    if math.isfinite(observed):
+        parts.append(f"the residual fell by a factor of {observed:.3f} a sweep")
+    if math.isfinite(expected):
+        parts.append(f"at most {expected:.3f} was to be expected ({origin})")
+    kind = str(result.bound.kind)
+    if math.isfinite(result.bound.value):
+        parts.append(f"error bound {small(result.bound.value)} ({kind})")
+    return "; ".join(parts)

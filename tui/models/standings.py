@@ -1,0 +1,220 @@
+"""The standings as a view model: order, filter, find, cursor.  Knows no screen.
+
+Everything that takes a pass over all nodes (:func:`prepare`, :func:`arrange`,
+:func:`search`) is a plain function to be run in a job; what is left for the screen is
+looking up the few rows it shows.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from kingpost.core.graph import Graph
+from kingpost.core.labels import containing
+from kingpost.core.result import Result
+from kingpost.core.standing import OPEN, PROVEN, TIED, UNRANKED
+from kingpost.tui.models import columns as make
+from kingpost.tui.models.columns import Column
+
+Rows = NDArray[np.int64]
+
+
+@dataclass(frozen=True)
+class Arrangement:
+    """Which nodes are shown, and in which order.
+
+    ``rows[i]`` is the node in row i; ``row_of[node]`` its row or -1.
+    """
+
+    rows: Rows
+    row_of: NDArray[np.int32]
+    sort: str = "rank"
+    turned: bool = False
+    text: str = ""
+
+
+@dataclass(frozen=True)
+class Found:
+    """The rows of an arrangement whose name contains ``text``, ascending."""
+
+    text: str
+    rows: Rows
+
+    def after(self, row: int) -> int | None:
+        """The next row found below ``row``, going round; None where there is none."""
+        if len(self.rows) == 0:
+            return None
+        at = int(np.searchsorted(self.rows, row, side="right"))
+        return int(self.rows[at % len(self.rows)])
+
+    def before(self, row: int) -> int | None:
+        """The row found above ``row``, going round."""
+        if len(self.rows) == 0:
+            return None
+        return int(self.rows[int(np.searchsorted(self.rows, row, side="left")) - 1])
+
+    def place(self, row: int) -> int:
+        """Which of the rows found, from 1, ``row`` is."""
+        return int(np.searchsorted(self.rows, row)) + 1
+
+    def holds(self, row: int) -> bool:
+        """Whether ``row`` is one of them."""
+        at = int(np.searchsorted(self.rows, row))
+        return at < len(self.rows) and int(self.rows[at]) == row
+
+
+class Standings:
+    """The table of one result: what the row-window widget asks for, and the cursor.
+
+    Rows are addressed 0..count-1 in the present arrangement.
+    """
+
+    def __init__(
+        self,
+        graph: Graph,
+        result: Result,
+        head: Sequence[Column],
+        cuts: NDArray[np.int32],
+        ties: NDArray[np.int32],
+        arrangement: Arrangement,
+    ) -> None:
+        self.graph = graph
+        self.result = result
+        self.head = list(head)
+        self._cuts = cuts
+        self._ties = ties
+        self.arrangement = arrangement
+        self.found: Found | None = None
+        self.cursor = 0
+
+    @property
+    def count(self) -> int:
+        """Number of rows shown."""
+        return len(self.arrangement.rows)
+
+    def item(self, row: int) -> int:
+        """The node in a row."""
+        return int(self.arrangement.rows[row])
+
+    @property
+    def node(self) -> int | None:
+        """The node under the cursor."""
+        return self.item(self.cursor) if self.count else None
+
+    def row_of(self, node: int) -> int | None:
+        """The row of a node, None where the filter hides it."""
+        row = int(self.arrangement.row_of[node])
+        return None if row < 0 else row
+
+    def rail(self, row: int) -> int:
+        """How a row stands against the one below it: one of the codes of ``core.standing``.
+
+        The statement holds in any arrangement: two rows are proven apart when a proven cut
+        lies between their places in the standing, tied when nothing but ties does.
+        """
+        if self.result.refusal is not None:
+            return UNRANKED
+        position = self.result.standing.position
+        here = int(position[self.item(row)])
+        if self.result.standing.rail[here] == UNRANKED:
+            return UNRANKED
+        if row + 1 >= self.count:
+            return PROVEN if here + 1 >= len(position) else int(self.result.standing.rail[here])
+        low, high = sorted((here, int(position[self.item(row + 1)])))
+        if self._cuts[high] > self._cuts[low]:
+            return PROVEN
+        return TIED if self._ties[high] - self._ties[low] == high - low else OPEN
+
+    def marked(self, row: int) -> bool:
+        """Whether the row was found by the last search."""
+        return self.found is not None and self.found.holds(row)
+
+    def adopt(self, arrangement: Arrangement) -> None:
+        """Show another arrangement, keeping the cursor on its node if that is still shown."""
+        node = self.node
+        self.arrangement, self.found = arrangement, None
+        row = None if node is None else self.row_of(node)
+        self.cursor = min(self.cursor, max(self.count - 1, 0)) if row is None else row
+
+    def column(self, key: str) -> Column | None:
+        """The column of that key."""
+        return next((column for column in self.head if column.key == key), None)
+
+
+def prepare(
+    graph: Graph, result: Result, others: Sequence[Result] = (), after: Standings | None = None
+) -> Standings:
+    """Everything the table of ``result`` needs, O(n log n); run it in a job.
+
+    ``others`` get a column of ranks each; sort, filter and cursor are taken over from
+    ``after`` as far as they still make sense.
+    """
+    standing = result.standing
+    rail = standing.rail
+    head = [
+        make.rank_column(result),
+        make.name_column(graph, standing.order),
+        make.score_column(result),
+        *(make.other_rank_column(other) for other in others if other.refusal is None),
+        *make.degree_columns(graph),
+        *make.attribute_columns(graph),
+    ]
+    plain = _arranged(standing.order, graph.n, "rank", False, "")
+    table = Standings(graph, result, head, _before(rail == PROVEN), _before(rail == TIED), plain)
+    if after is not None and after.graph is graph:
+        old = after.arrangement
+        if old.text or old.sort != "rank" or old.turned:
+            sort = old.sort if table.column(old.sort) else "rank"
+            table.arrangement = arrange(table, sort, old.turned, old.text)
+        node = after.node
+        row = None if node is None else table.row_of(node)
+        table.cursor = row or 0
+    return table
+
+
+def arrange(table: Standings, sort: str, turned: bool = False, text: str = "") -> Arrangement:
+    """Sort by a column and keep the names that contain ``text``; run it in a job.
+
+    Equal values stand in the order of the standing.  ``turned`` reverses the column's own
+    direction; what has no value stays last either way.
+    """
+    order = table.result.standing.order
+    column = table.column(sort)
+    if column is not None and column.keys is not None and (sort != "rank" or turned):
+        keys = column.keys()[order]
+        falling = column.high_first != turned
+        order = order[_stable(keys, falling)]
+    if text:
+        order = order[containing(table.graph.labels, text)[order]]
+    return _arranged(order, table.graph.n, sort, turned, text)
+
+
+def search(table: Standings, arrangement: Arrangement, text: str) -> Found:
+    """Rows whose name contains ``text``, letter case apart; run it in a job."""
+    hits = containing(table.graph.labels, text)[arrangement.rows]
+    return Found(text, np.flatnonzero(hits))
+
+
+def _arranged(rows: Rows, n: int, sort: str, turned: bool, text: str) -> Arrangement:
+    row_of = np.full(n, -1, dtype=np.int32)
+    row_of[rows] = np.arange(len(rows), dtype=np.int32)
+    return Arrangement(rows, row_of, sort, turned, text)
+
+
+def _stable(keys: NDArray[np.float64], falling: bool) -> Rows:
+    if not falling:
+        return np.argsort(keys, kind="stable")
+    if keys.dtype.kind == "u":
+        keys = keys.astype(np.float64)
+    return np.argsort(-keys, kind="stable")
+
+
+def _before(flags: NDArray[np.bool_]) -> NDArray[np.int32]:
+    """How many flags are set before each position, shape (n + 1,)."""
+    sums = np.zeros(len(flags) + 1, dtype=np.int32)
+    np.cumsum(flags, out=sums[1:])
+    return sums

@@ -1,0 +1,181 @@
+"""What the terminal can show: colours, line-drawing characters, and how much traffic it bears.
+
+Imports nothing heavy.  :func:`prepare_environment` must run before textual is imported, because
+textual reads these variables once, at import.
+"""
+
+from __future__ import annotations
+
+import locale
+import os
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+
+
+@dataclass(frozen=True, slots=True)
+class Glyphs:
+    """Every character the screen draws with, in one place, so that ASCII is a choice of set."""
+
+    ascii: bool
+    rail: str  # proven, not proven, tied, below the noise floor: indexed by the rail codes
+    bar: str  # the partly filled cells, from the thinnest to the full one
+    rule: str
+    track: str
+    pointer: str
+    ellipsis: str
+    down: str
+    way: str
+    residual: str
+    bound: str
+    both: str
+    tolerance: str
+    step: str
+    axis: str
+    corner: str
+    rising: str
+    falling: str
+    arrow: str
+    caret: str
+
+
+UNICODE = Glyphs(
+    ascii=False,
+    rail="┃╎= ",
+    bar="▏▎▍▌▋▊▉█",
+    rule="─",
+    track="·",
+    pointer="▸",
+    ellipsis="…",
+    down="▼",
+    way="›",
+    residual="•",
+    bound="○",
+    both="◉",
+    tolerance="┈",
+    step="▁",
+    axis="│",
+    corner="└",
+    rising="▴",
+    falling="▾",
+    arrow="->",
+    caret="▏",
+)
+ASCII = Glyphs(
+    ascii=True,
+    rail="|:= ",
+    bar="#",
+    rule="-",
+    track=".",
+    pointer=">",
+    ellipsis="~",
+    down="v",
+    way=">",
+    residual="x",
+    bound="o",
+    both="@",
+    tolerance=".",
+    step="_",
+    axis="|",
+    corner="+",
+    rising="^",
+    falling="v",
+    arrow="->",
+    caret="_",
+)
+
+# Only the terminal's own sixteen colours and its own background: they follow the reader's light
+# or dark scheme and cost the fewest bytes.  Each role is told apart by glyph or position too.
+_COLOURED = {
+    "plain": "",
+    "strong": "bold",
+    "quiet": "dim",
+    "head": "bold cyan",
+    "title": "dim",
+    "cursor": "reverse",
+    "bar": "cyan",
+    "proven": "green",
+    "open": "yellow",
+    "tied": "cyan",
+    "rule": "dim",
+    "news": "bold",
+    "bad": "bold red",
+    "good": "green",
+    "hit": "underline",
+    "key": "bold",
+    "letter": "bold",
+    "residual": "cyan",
+    "bound": "bold yellow",
+    "step": "green",
+}
+_PLAIN = _COLOURED | {
+    "head": "bold",
+    "bar": "",
+    "proven": "",
+    "open": "",
+    "tied": "",
+    "bad": "bold",
+    "good": "",
+    "residual": "",
+    "bound": "bold",
+    "step": "",
+}
+
+
+@dataclass(frozen=True, slots=True)
+class Looks:
+    """The decisions taken for this terminal; ``styles`` maps a role to a style in words."""
+
+    glyphs: Glyphs = UNICODE
+    colour: bool = True
+    slow: bool = False
+    styles: Mapping[str, str] = field(default_factory=lambda: dict(_COLOURED))
+
+
+def decide(
+    environ: Mapping[str, str] | None = None,
+    codeset: str | None = None,
+    *,
+    slow: bool = False,
+) -> Looks:
+    """Looks for an environment: ``NO_COLOR`` (any non-empty value) means no colour at all.
+
+    Line drawing falls back to ASCII where the locale is not UTF-8 or ``KINGPOST_ASCII`` is set.
+    """
+    environ = os.environ if environ is None else environ
+    if codeset is None:
+        codeset = locale_codeset(environ)
+    plain = codeset.lower().replace("-", "") != "utf8" or bool(environ.get("KINGPOST_ASCII"))
+    colour = not environ.get("NO_COLOR") and environ.get("TERM", "") not in ("dumb", "vt100")
+    return Looks(ASCII if plain else UNICODE, colour, slow, _COLOURED if colour else _PLAIN)
+
+
+def locale_codeset(environ: Mapping[str, str]) -> str:
+    """The character set the locale's variables ask for.
+
+    Python coerces a C locale to UTF-8 by setting ``LC_CTYPE=C.UTF-8``.  That says nothing about
+    what the terminal can draw, so a ``LANG`` of C beside it still means ASCII.
+    """
+    lang = environ.get("LANG", "")
+    ctype = environ.get("LC_CTYPE", "")
+    if ctype == "C.UTF-8" and lang in ("C", "POSIX"):
+        ctype = ""
+    value = environ.get("LC_ALL") or ctype or lang
+    if value in ("", "C", "POSIX"):
+        return "ascii"
+    if "." in value:
+        return value.split(".", 1)[1].split("@", 1)[0]
+    return locale.getpreferredencoding(False)
+
+
+def prepare_environment(*, slow: bool = False) -> None:
+    """Set what textual reads at import: no animation, few frames, no extended key protocol."""
+    settings = {
+        "TEXTUAL_ANIMATIONS": "none",
+        "TEXTUAL_FPS": "12" if slow else "30",
+        "TEXTUAL_SMOOTH_SCROLL": "0",
+        "TEXTUAL_DISABLE_KITTY_KEY": "1",
+        # Nothing here uses a colour beyond the terminal's own sixteen.
+        "TEXTUAL_COLOR_SYSTEM": "standard",
+    }
+    for name, value in settings.items():
+        os.environ.setdefault(name, value)

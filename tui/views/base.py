@@ -1,0 +1,93 @@
+"""What every view has in common: keys by the registry of actions, a line of keys, news."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, Any, cast
+
+from textual import events
+from textual.screen import Screen
+
+from kingpost.tui import actions
+from kingpost.tui.terminal import Looks
+from kingpost.tui.widgets.lines import KeyLine, Rule
+
+if TYPE_CHECKING:
+    from kingpost.tui.app import KingpostApp
+
+
+class View(Screen[Any], inherit_bindings=False):
+    """A screen whose keys come from the registry.
+
+    An action ``row.down`` is done by the method ``do_row_down`` of the view, else of the app.
+    A method ``can_row_down`` says whether it is possible here and now.
+    """
+
+    AUTO_FOCUS = None
+    ALLOW_SELECT = False
+    view = ""
+    composed = False  # whether its widgets exist; events may come before they do
+
+    def on_mount(self) -> None:
+        self.composed = True
+        self.opened()
+
+    def opened(self) -> None:
+        """Called once its widgets exist."""
+
+    @property
+    def kingpost(self) -> KingpostApp:
+        """The application, with its own type."""
+        return cast("KingpostApp", self.app)
+
+    @property
+    def looks(self) -> Looks:
+        """How this terminal is drawn on."""
+        return self.kingpost.looks
+
+    def possible(self, action_id: str) -> bool:
+        """Whether an action of this view can be done now."""
+        name = action_id.replace(".", "_")
+        can = getattr(self, f"can_{name}", None) or getattr(self.app, f"can_{name}", None)
+        if can is not None and not can():
+            return False
+        return self._doer(name) is not None
+
+    def _doer(self, name: str) -> Any:
+        return getattr(self, f"do_{name}", None) or getattr(self.app, f"do_{name}", None)
+
+    def on_key(self, event: events.Key) -> None:
+        action_id = self.kingpost.keymap(self.view).get(event.key)
+        if action_id is not None and self.possible(action_id):
+            event.stop()
+            self.do(action_id)
+        elif self.typed(event):
+            event.stop()
+
+    def typed(self, event: events.Key) -> bool:
+        """A key that is no action: views that take text use it."""
+        return False
+
+    def do(self, action_id: str) -> None:
+        """Do an action by its id."""
+        self._doer(action_id.replace(".", "_"))()
+        self.refresh_keys()
+
+    def refresh_keys(self) -> None:
+        """Show the keys that do something now."""
+        if not self.composed or not self.is_attached:
+            return
+        possible = [a.id for a in actions.ACTIONS if self.view in a.views and self.possible(a.id)]
+        for line in self.query(KeyLine):
+            line.keys(actions.key_line(self.view, possible))
+
+    def tell(self, text: str, role: str = "news") -> None:
+        """Show news in the rule above the keys, where the view has one."""
+        for rule in self.query("#news").results(Rule):
+            rule.tell(text, role)
+
+    def on_screen_resume(self) -> None:
+        self.refresh_keys()
+        self.tell(*self.kingpost.latest_news)
+
+    def refreshed(self) -> None:
+        """Called when results, jobs or the table have changed; views show what concerns them."""

@@ -1,0 +1,87 @@
+"""Loading: names the file at once, then shows the stages of reading and of the first solve.
+
+This is the first frame.  Nothing imported from here may import numpy.
+"""
+
+from __future__ import annotations
+
+import time
+from typing import TYPE_CHECKING
+
+from textual.app import ComposeResult
+
+from kingpost.core.text import visible
+from kingpost.core.watch import Progress
+from kingpost.tui.actions import LOADING
+from kingpost.tui.models.drawing import bar
+from kingpost.tui.views.base import View
+from kingpost.tui.widgets.lines import KeyLine, Line, Piece, Rule
+
+if TYPE_CHECKING:
+    from kingpost.tui.jobs import Job
+
+_MOST_STAGES = 12
+
+
+class LoadingView(View):
+    """Stages done, the stage at work with how far it has come, and the way out."""
+
+    view = LOADING
+
+    def __init__(self, paths: list[str]) -> None:
+        super().__init__()
+        names = [visible(path.rstrip("/").rsplit("/", 1)[-1], 60) for path in paths]
+        self._file_name = names[0] if len(names) == 1 else f"{names[0]} +{len(names) - 1}"
+        self._stages: dict[str, Progress] = {}
+        self._started = time.monotonic()
+
+    def compose(self) -> ComposeResult:
+        yield Line(id="head")
+        yield Rule(id="top")
+        yield Line(id="stages")
+        yield Rule(id="news")
+        yield KeyLine(id="keys")
+
+    def opened(self) -> None:
+        self.query_one("#head", Line).show((f" {self._file_name}", "head"), ("   opening", "plain"))
+        self.query_one("#stages", Line).show((f" {self.looks.glyphs.pointer} reading the edge table", "plain"))
+        self.refresh_keys()
+
+    def stage(self, job: Job) -> None:
+        """Show the latest of a job: its stage and how far it is, or the sweeps of a solve."""
+        if job.log:
+            line = job.log[-1]
+            self._stages[job.words] = Progress(job.words, line.index, None, "sweeps")
+        elif job.progress is not None:
+            self._stages[job.progress.stage] = job.progress
+        elif job.words:
+            self._stages.setdefault(job.words, Progress(job.words))
+        self._show()
+
+    def _show(self) -> None:
+        shown = list(self._stages.values())[-_MOST_STAGES:]
+        width = max((len(p.stage) for p in shown), default=0)
+        width = min(max(width, 12), 40)
+        rows = [self._row(p, width, p is shown[-1]) for p in shown]
+        self.query_one("#stages", Line).show_rows(rows)
+        seconds = time.monotonic() - self._started
+        self.query_one("#head", Line).show(
+            (f" {self._file_name}", "head"), (f"   opening, {seconds:.0f} s", "plain")
+        )
+
+    def _row(self, progress: Progress, width: int, now: bool) -> list[Piece]:
+        glyphs = self.looks.glyphs
+        name = visible(progress.stage, 40).ljust(width)
+        pieces: list[Piece] = [(f" {glyphs.pointer if now else ' '} {name}  ", "plain")]
+        amount = f"{progress.done:,}"
+        if progress.total:
+            share = min(progress.done / progress.total, 1.0)
+            pieces.append((bar(share, 16, glyphs).ljust(16) + " ", "bar"))
+            amount += f" of {progress.total:,}"
+        if progress.done or progress.total:
+            pieces.append((f"{amount} {visible(progress.unit, 20)}", "plain"))
+        return pieces
+
+    def do_solve_halt(self) -> None:
+        """Stop loading, or end the first solve with the iterate it has."""
+        self.kingpost.halt()

@@ -1,0 +1,195 @@
+"""Sheets that rise from the foot of the screen: a choice, a question, a notice."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+from textual import events
+from textual.app import ComposeResult
+from textual.containers import Vertical
+from textual.screen import ModalScreen
+
+from kingpost.core.standing import UNRANKED
+from kingpost.core.text import visible
+from kingpost.tui.actions import CHOICE, NOTICE, PROMPT
+from kingpost.tui.models.columns import Column
+from kingpost.tui.models.drawing import wrap
+from kingpost.tui.views.base import View
+from kingpost.tui.widgets.entry import Entry
+from kingpost.tui.widgets.lines import KeyLine, Line, Rule
+from kingpost.tui.widgets.rowtable import RowTable
+
+_MOST_ROWS = 12
+
+
+class Sheet(View, ModalScreen, inherit_bindings=False):
+    """A view over the lower part of another; Escape closes it and changes nothing."""
+
+    CSS_PATH = "sheets.tcss"
+
+    def do_step_back(self) -> None:
+        self.dismiss(None)
+
+
+@dataclass(frozen=True)
+class Choice:
+    """A row to choose: its key, its name, and what there is to know about it."""
+
+    key: str
+    name: str
+    words: str = ""
+
+
+class Choices:
+    """Choices as the source of a row-window table."""
+
+    def __init__(self, choices: Sequence[Choice]) -> None:
+        self.choices = list(choices)
+        longest = max((len(choice.name) for choice in choices), default=4)
+        width = min(max(longest, 6), 30)
+        self.head = [
+            Column("name", "", width, lambda at: self.choices[at].name, frozen=True, stretch=width),
+            Column("words", "", 400, lambda at: self.choices[at].words),
+        ]
+
+    @property
+    def count(self) -> int:
+        return len(self.choices)
+
+    def item(self, row: int) -> int:
+        return row
+
+    def rail(self, row: int) -> int:
+        return UNRANKED
+
+    def marked(self, row: int) -> bool:
+        return False
+
+
+class ChoiceSheet(Sheet):
+    """One of several rows; dismissed with the key of the row taken, or None."""
+
+    view = CHOICE
+
+    def __init__(self, title: str, choices: Sequence[Choice], at: str = "") -> None:
+        super().__init__()
+        self._title = title
+        self._choices = Choices(choices)
+        keys = [choice.key for choice in choices]
+        self._start = keys.index(at) if at in keys else 0
+
+    def compose(self) -> ComposeResult:
+        with Vertical(id="sheet"):
+            yield Rule(title=self._title)
+            yield RowTable(id="choices", headings=False, rail=False)
+            yield Rule(id="news")
+            yield KeyLine(id="keys")
+
+    @property
+    def table(self) -> RowTable:
+        """The widget."""
+        return self.query_one("#choices", RowTable)
+
+    def opened(self) -> None:
+        rows = min(self._choices.count, _MOST_ROWS, max(self.app.size.height - 5, 2))
+        self.table.styles.height = rows
+        self.table.show(self._choices, self._start)
+
+    @property
+    def key(self) -> str | None:
+        """The key of the highlighted row."""
+        at = self.table.item()
+        return None if at is None else self._choices.choices[at].key
+
+    def do_choice_take(self) -> None:
+        self.dismiss(self.key)
+
+    def do_row_up(self) -> None:
+        self.table.move(-1)
+
+    def do_row_down(self) -> None:
+        self.table.move(1)
+
+    def do_page_ahead(self) -> None:
+        self.table.page(1)
+
+    def do_page_return(self) -> None:
+        self.table.page(-1)
+
+    def do_row_first(self) -> None:
+        self.table.go(0)
+
+    def do_row_last(self) -> None:
+        self.table.go(self.table.count - 1)
+
+    def can_settings_change(self) -> bool:
+        return False
+
+
+class MeasureSheet(ChoiceSheet):
+    """The measures, with what is known of each; its settings are one key away."""
+
+    def can_settings_change(self) -> bool:
+        return True
+
+    def do_settings_change(self) -> None:
+        key = self.key
+        self.dismiss(None)
+        if key is not None:
+            self.kingpost.open_settings(key)
+
+
+class PromptSheet(Sheet):
+    """A line to write; dismissed with the text, or None."""
+
+    view = PROMPT
+
+    def __init__(self, label: str, text: str = "") -> None:
+        super().__init__()
+        self._label, self._text = label, text
+
+    def compose(self) -> ComposeResult:
+        with Vertical(id="sheet"):
+            yield Rule()
+            yield Entry(self._label, self._text, id="entry")
+            yield KeyLine(id="keys")
+
+    @property
+    def entry(self) -> Entry:
+        """The widget."""
+        return self.query_one("#entry", Entry)
+
+    def typed(self, event: events.Key) -> bool:
+        return self.entry.typed(event)
+
+    def on_paste(self, event: events.Paste) -> None:
+        event.stop()
+        self.entry.pasted(event.text)
+
+    def do_prompt_take(self) -> None:
+        self.dismiss(self.entry.writing.text)
+
+
+class NoticeSheet(Sheet):
+    """A sentence that must be read, such as a refusal; it stays until it is closed."""
+
+    view = NOTICE
+
+    def __init__(self, title: str, text: str) -> None:
+        super().__init__()
+        self._title, self._text = title, visible(text, 2_000)
+
+    def compose(self) -> ComposeResult:
+        lines = wrap(self._text, max(self.app.size.width - 2, 10))
+        lines = lines[: max(self.app.size.height - 4, 1)]
+        with Vertical(id="sheet"):
+            yield Rule(title=self._title)
+            text = Line(id="text", rows=len(lines))
+            text.show_rows([[(f" {line}", "plain")] for line in lines])
+            yield text
+            yield Rule()
+            yield KeyLine(id="keys")
+
+    def do_notice_close(self) -> None:
+        self.dismiss(None)

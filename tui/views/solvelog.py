@@ -1,0 +1,126 @@
+"""Solve log: how residual, bound and proven order went, sweep by sweep, live while solving."""
+
+from __future__ import annotations
+
+from textual import events
+from textual.app import ComposeResult
+
+from kingpost.core.text import visible
+from kingpost.tui.actions import LOG
+from kingpost.tui.jobs import Job
+from kingpost.tui.models.drawing import wrap
+from kingpost.tui.models.solvelog import Sweeps, series_of, why_stopped
+from kingpost.tui.views.base import View
+from kingpost.tui.widgets.lines import KeyLine, Line, Rule
+from kingpost.tui.widgets.residual import ResidualChart
+from kingpost.tui.widgets.rowtable import RowTable
+
+
+class SolveLogView(View):
+    """The solve at work, else the latest solve of the measure the standings show."""
+
+    CSS_PATH = "solvelog.tcss"
+    view = LOG
+
+    def compose(self) -> ComposeResult:
+        yield Line(id="head")
+        yield Line(id="legend")
+        yield ResidualChart(id="chart")
+        yield Rule(id="top")
+        yield RowTable(id="sweeps", rail=False)
+        yield Line(id="why", rows=3)
+        yield Rule(id="news")
+        yield KeyLine(id="keys")
+
+    @property
+    def table(self) -> RowTable:
+        """The table of sweeps."""
+        return self.query_one("#sweeps", RowTable)
+
+    def opened(self) -> None:
+        self.refreshed()
+
+    def on_resize(self, event: events.Resize) -> None:
+        self.set_class(event.size.height < 18, "-low")
+        self.call_after_refresh(self.refreshed)
+
+    def refreshed(self) -> None:
+        """Show the running solve if there is one, else the latest result."""
+        if not self.composed or not self.is_attached:
+            return
+        job = self.kingpost.solving
+        sitting = self.kingpost.sitting
+        if job is not None:
+            self._live(job)
+        elif sitting.result is not None:
+            result = sitting.result
+            log = result.log
+            self._head(result.measure, f"{result.sweeps:,} sweeps, {result.stop}", result.settings)
+            self._series(log, result.settings)
+            sentence = why_stopped(result)
+            if result.refusal is not None:
+                sentence = result.refusal.sentence
+            self._why(sentence)
+
+    def _live(self, job: Job) -> None:
+        name = str(job.facts.get("measure", job.words))
+        self._head(name, "solving", job.facts.get("settings"))
+        self._series(list(job.log), job.facts.get("settings"))
+        stage = f"{job.progress.stage}" if job.progress and not job.log else "h halts it and keeps the best iterate"
+        self._why(stage)
+
+    def _head(self, measure: str, state: str, settings: object) -> None:
+        tol = getattr(settings, "tol", None)
+        asked = f", bound asked for {tol:g}" if isinstance(tol, float) else ""
+        self.query_one("#head", Line).show(
+            (f" solve log of {visible(measure, 40)}", "head"), (f"   {state}{asked}", "plain")
+        )
+        glyphs = self.looks.glyphs
+        self.query_one("#legend", Line).show(
+            (f" {glyphs.residual}", "residual"),
+            (" residual  ", "plain"),
+            (glyphs.bound, "bound"),
+            (" bound  ", "plain"),
+            (glyphs.both, "residual"),
+            (" both  ", "plain"),
+            (glyphs.tolerance * 3, "quiet"),
+            (" asked for  ", "plain"),
+            (glyphs.step * 2, "step"),
+            (" order proven (right scale)", "plain"),
+        )
+
+    def _series(self, log: object, settings: object) -> None:
+        lines = list(log)  # type: ignore[call-overload]
+        tol = getattr(settings, "tol", None)
+        n = self.kingpost.sitting.graph.n
+        self.query_one("#chart", ResidualChart).show(series_of(lines, tol, n))
+        table = self.table
+        at_end = table.row >= table.count - 1
+        sweeps = Sweeps(lines)
+        row = sweeps.count - 1 if at_end else table.row
+        table.show(sweeps, row, empty="no sweeps: the answer was computed directly")
+
+    def _why(self, sentence: str) -> None:
+        lines = wrap(visible(sentence), max((self.size.width or 80) - 2, 10))
+        self.query_one("#why", Line).show_rows([[(f" {line}", "plain")] for line in lines[:3]])
+
+    def do_row_up(self) -> None:
+        self.table.move(-1)
+
+    def do_row_down(self) -> None:
+        self.table.move(1)
+
+    def do_page_ahead(self) -> None:
+        self.table.page(1)
+
+    def do_page_return(self) -> None:
+        self.table.page(-1)
+
+    def do_row_first(self) -> None:
+        self.table.go(0)
+
+    def do_row_last(self) -> None:
+        self.table.go(self.table.count - 1)
+
+    def do_step_back(self) -> None:
+        self.app.pop_screen()

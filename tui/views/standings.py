@@ -1,0 +1,292 @@
+"""Standings: the ranking with its proof rail, and why the highlighted row stands where it does."""
+
+from __future__ import annotations
+
+from textual import events
+from textual.app import ComposeResult
+from textual.containers import Horizontal
+
+from kingpost.core.insight.contributions import contributions
+from kingpost.core.text import visible
+from kingpost.tui.actions import STANDINGS
+from kingpost.tui.models import detail
+from kingpost.tui.models.drawing import wrap
+from kingpost.tui.models.node import MANY, centre
+from kingpost.tui.models.standings import Found, Standings, search
+from kingpost.tui.views.base import View
+from kingpost.tui.views.nodepanel import NodePanel
+from kingpost.tui.views.sheets import Choice, ChoiceSheet, PromptSheet
+from kingpost.tui.widgets.lines import KeyLine, Line, Rule
+from kingpost.tui.widgets.rowtable import RowTable
+
+BESIDE = 150  # columns from which the node view stands beside the table
+LOW = 17  # lines below which only the table is shown
+_REST = 0.06  # seconds the cursor rests before the lines below follow it
+
+
+class StandingsView(View):
+    """The table of the current measure; everything else is reached from here."""
+
+    CSS_PATH = "standings.tcss"
+    view = STANDINGS
+
+    def __init__(self, table: Standings) -> None:
+        super().__init__()
+        self.model = table
+        self._detailed: tuple[int, int] | None = None
+        self._timer: object | None = None
+
+    def compose(self) -> ComposeResult:
+        yield Line(id="graph")
+        yield Line(id="terms")
+        yield Rule(id="top")
+        with Horizontal(id="body"):
+            yield RowTable(id="table")
+            yield NodePanel(id="beside")
+        yield Rule(id="below")
+        yield Line(id="ruler")
+        yield Line(id="supports")
+        yield Rule(id="news")
+        yield KeyLine(id="keys")
+
+    @property
+    def table(self) -> RowTable:
+        """The widget."""
+        return self.query_one("#table", RowTable)
+
+    def opened(self) -> None:
+        self.show(self.model)
+
+    def on_resize(self, event: events.Resize) -> None:
+        self.set_class(event.size.height < LOW, "-low")
+        self.set_class(event.size.height < 12, "-lowest")
+        self.set_class(event.size.width >= BESIDE, "-wide")
+        self._detailed = None
+        if self.composed:
+            self._show_lines()
+            self._detail()
+
+    def show(self, table: Standings) -> None:
+        """Show a table, or the same one newly arranged."""
+        self.model = table
+        arranged = table.arrangement
+        column = table.column(arranged.sort)
+        rising = bool(column and column.high_first == arranged.turned)
+        empty = f"no name contains {visible(arranged.text, 40)!r}; f asks again, Esc shows all rows"
+        if not arranged.text:
+            empty = "the graph has no nodes"
+        self.table.show(table, table.cursor, sorted_by=(arranged.sort, rising), empty=empty)
+        self._detailed = None
+        self._show_lines()
+        self._detail()
+        self.refresh_keys()
+
+    def _show_lines(self) -> None:
+        width = self.size.width or 80
+        model = self.model
+        flow = self.kingpost.sitting.flow
+        self.query_one("#graph", Line).show(*detail.graph_line(model.graph, flow, model.count))
+        self.query_one("#terms", Line).show(*detail.terms_line(model.graph, model.result, width))
+
+    def refreshed(self) -> None:
+        if not self.composed:
+            return
+        self._detailed = None
+        self._detail()
+        self.refresh_keys()
+
+    # ---- the highlighted row -----------------------------------------------------------------
+
+    def on_row_table_moved(self, message: RowTable.Moved) -> None:
+        if message.table.id != "table":
+            return
+        self.model.cursor = self.table.row
+        # While a key is held down only the table moves; its lines follow once it rests.
+        if self._timer is None:
+            self._timer = self.set_timer(_REST, self._rested)
+
+    def _rested(self) -> None:
+        self._timer = None
+        self._detail()
+
+    def _detail(self) -> None:
+        if not self.composed or not self.is_attached:
+            return
+        node = self.model.node
+        result = self.model.result
+        width = self.size.width or 80
+        glyphs = self.looks.glyphs
+        ruler, supports = self.query_one("#ruler", Line), self.query_one("#supports", Line)
+        if result.refusal is not None:
+            lines = wrap(visible(result.refusal.sentence), width - 2)
+            ruler.show((f" {lines[0]}", "strong"))
+            more = " ".join(lines[1:])
+            supports.show((f" {more}" if more else " m chooses another measure", "plain"))
+            return
+        if node is None:
+            ruler.show()
+            supports.show()
+            return
+        if self._detailed == (node, id(result)):
+            return
+        self._detailed = (node, id(result))
+        ruler.show(*detail.ruler_line(self.kingpost.sitting, node, width, glyphs))
+        graph = self.model.graph
+        if self._degree(node) > MANY:
+            supports.show((" held up by  ...", "plain"))
+            self.kingpost.background(
+                "detail",
+                lambda job: contributions(graph, result, node),
+                lambda given: self._supported(node, given),
+            )
+        else:
+            self._supported(node, contributions(graph, result, node))
+        if self.has_class("-wide"):
+            panel = self.query_one("#beside", NodePanel)
+            if self._degree(node) <= MANY:
+                panel.show(self.kingpost.sitting, centre(graph, result, node, glyphs))
+
+    def _degree(self, node: int) -> int:
+        graph = self.model.graph
+        return sum(
+            int(side.offsets[node + 1] - side.offsets[node])
+            for side in (graph.inward, graph.outward)
+        )
+
+    def _supported(self, node: int, given: object) -> None:
+        if node != self.model.node or not self.composed or not self.is_attached:
+            return
+        pieces = detail.supports_line(
+            self.model.graph, given, self.size.width or 80, self.looks.glyphs  # type: ignore[arg-type]
+        )
+        self.query_one("#supports", Line).show(*pieces)
+
+    # ---- moving ------------------------------------------------------------------------------
+
+    def do_row_up(self) -> None:
+        self.table.move(-1)
+
+    def do_row_down(self) -> None:
+        self.table.move(1)
+
+    def do_page_ahead(self) -> None:
+        self.table.page(1)
+
+    def do_page_return(self) -> None:
+        self.table.page(-1)
+
+    def do_row_first(self) -> None:
+        self.table.go(0)
+
+    def do_row_last(self) -> None:
+        self.table.go(self.table.count - 1)
+
+    def do_columns_left(self) -> None:
+        self.table.sideways(-1)
+
+    def do_columns_right(self) -> None:
+        self.table.sideways(1)
+
+    # ---- looking and investigating -------------------------------------------------------------
+
+    def can_node_open(self) -> bool:
+        return self.model.node is not None and self.model.result.refusal is None
+
+    def do_node_open(self) -> None:
+        node = self.model.node
+        if node is not None:
+            self.kingpost.open_node(node)
+
+    def do_rows_sort(self) -> None:
+        arranged = self.model.arrangement
+        choices = [
+            Choice(column.key, column.title, self._sort_words(column.key))
+            for column in self.model.head
+            if column.keys is not None
+        ]
+        self.app.push_screen(ChoiceSheet("sort by", choices, arranged.sort), self._sort)
+
+    def _sort_words(self, key: str) -> str:
+        column = self.model.column(key)
+        arranged = self.model.arrangement
+        falling = bool(column and column.high_first)
+        if key == arranged.sort:
+            falling = falling == arranged.turned
+            return "turns the order round: " + ("highest first" if falling else "lowest first")
+        return "highest first" if falling else "lowest first"
+
+    def _sort(self, key: str | None) -> None:
+        if key is None:
+            return
+        arranged = self.model.arrangement
+        turned = not arranged.turned if key == arranged.sort else False
+        self.kingpost.arrange(sort=key, turned=turned)
+
+    def do_rows_filter(self) -> None:
+        sheet = PromptSheet("keep names that contain", self.model.arrangement.text)
+        self.app.push_screen(sheet, self._filter)
+
+    def _filter(self, text: str | None) -> None:
+        if text is not None and text != self.model.arrangement.text:
+            self.kingpost.arrange(text=text)
+
+    def do_find_ask(self) -> None:
+        found = self.model.found
+        self.app.push_screen(PromptSheet("find", found.text if found else ""), self._find)
+
+    def _find(self, text: str | None) -> None:
+        if not text:
+            return
+        model, arranged = self.model, self.model.arrangement
+        self.kingpost.background(
+            "find",
+            lambda job: search(model, arranged, text),
+            lambda found: self._searched(found, model),
+            words="finding",
+        )
+
+    def _searched(self, found: Found, model: Standings) -> None:
+        if model is not self.model:
+            return
+        model.found = found
+        self.table.refresh()
+        shown = visible(found.text, 40)
+        if len(found.rows) == 0:
+            self.kingpost.news(f"no name contains {shown!r}", "bad")
+            return
+        row = self.table.row
+        self._to(row if found.holds(row) else found.after(row))
+        self.refresh_keys()
+
+    def can_find_next(self) -> bool:
+        return self.model.found is not None and len(self.model.found.rows) > 0
+
+    can_find_before = can_find_next
+
+    def do_find_next(self) -> None:
+        if self.model.found:
+            self._to(self.model.found.after(self.table.row))
+
+    def do_find_before(self) -> None:
+        if self.model.found:
+            self._to(self.model.found.before(self.table.row))
+
+    def _to(self, row: int | None) -> None:
+        if row is None or self.model.found is None:
+            return
+        self.table.go(row)
+        found = self.model.found
+        words = f"{found.place(row):,} of {len(found.rows):,} names with {visible(found.text, 40)!r}"
+        self.kingpost.news(words)
+
+    def can_step_back(self) -> bool:
+        return bool(self.kingpost.latest_news[0] or self.model.arrangement.text or self.model.found)
+
+    def do_step_back(self) -> None:
+        if self.kingpost.latest_news[0] and not self.kingpost.solving:
+            self.kingpost.news("")
+        elif self.model.found is not None:
+            self.model.found = None
+            self.table.refresh()
+        elif self.model.arrangement.text:
+            self.kingpost.arrange(text="")
