@@ -9,6 +9,7 @@ from __future__ import annotations
 import os
 import signal
 import sys
+import traceback
 from collections.abc import Callable
 from typing import TYPE_CHECKING, Any, cast
 
@@ -36,6 +37,7 @@ if TYPE_CHECKING:
 # Measures nobody asked for are solved too while the edges of all their sweeps are few: rulers
 # and rank columns then compare from the first minute.
 COMPANY_EDGES = 2_000_000
+FAULT = 70  # exit status of a fault of the program
 _PATIENCE = 2.0  # seconds that threads get to end on leaving
 
 Load = Callable[[Job], "Graph"]
@@ -125,6 +127,23 @@ class KingpostApp(App[int], inherit_bindings=False):
     def leave(self, status: int) -> None:
         """Leave with an exit status; the terminal is restored by the driver."""
         self.exit(status)
+
+    def fault(self, error: Exception, words: str) -> None:
+        """A fault of the program that the screen survives: a sentence, and a log file."""
+        place = terminal.keep_fault("".join(traceback.format_exception(error)))
+        kept = f"; details are in {place}" if place else ""
+        self.news(visible(f"{words}: {type(error).__name__}: {error}{kept}", 300), "bad")
+
+    def _handle_exception(self, error: Exception) -> None:
+        # textual would print a traceback with every local variable, data and all.  Tests, which
+        # run without a terminal, get the exception itself.
+        if self.is_headless:
+            super()._handle_exception(error)
+            return
+        place = terminal.keep_fault("".join(traceback.format_exception(error)))
+        kept = f"; please report {place}" if place else ""
+        self.sentence = f"a fault of the program ended the screen ({type(error).__name__}){kept}"
+        self.leave(FAULT)
 
     def do_quit(self) -> None:
         """Quit: answered."""

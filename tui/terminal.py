@@ -6,8 +6,11 @@ textual reads these variables once, at import.
 
 from __future__ import annotations
 
+import contextlib
 import locale
 import os
+import tempfile
+import time
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 
@@ -179,3 +182,17 @@ def prepare_environment(*, slow: bool = False) -> None:
     }
     for name, value in settings.items():
         os.environ.setdefault(name, value)
+
+
+def keep_fault(trace: str) -> str:
+    """Write a traceback to a log file of its own; its place, or "" where none can be written."""
+    state = os.environ.get("XDG_STATE_HOME") or os.path.expanduser("~/.local/state")
+    name = f"fault-{time.strftime('%Y%m%d-%H%M%S')}-{os.getpid()}.log"
+    for folder in (os.path.join(state, "kingpost"), tempfile.gettempdir()):
+        with contextlib.suppress(OSError):
+            os.makedirs(folder, exist_ok=True)
+            path = os.path.join(folder, name)
+            with open(path, "a", encoding="utf-8", errors="backslashreplace") as log:
+                log.write(trace + "\n")
+            return path
+    return ""

@@ -59,7 +59,7 @@ def chart(series: Series, width: int, height: int, glyphs: Glyphs = UNICODE) -> 
                 continue
             y = row(value)
             here = grid[y][x][0]
-            both = here == glyphs.bound and glyph != glyphs.bound
+            both = here in (glyphs.bound, glyphs.both) and glyph != glyphs.bound
             grid[y][x] = (glyphs.both if both else glyph, role)
     return _framed(grid, series, low, high, glyphs)
 

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 from rich.cells import cell_len
 
 from kingpost.tui.models.drawing import bar, fit, ruler, tame
-from kingpost.tui.models.numbers import percent, rank_range, small
+from kingpost.tui.models.numbers import ScoreFormat, percent, rank_range, small
 from kingpost.tui.models.sitting import Sitting, flow_words, settings_words
 from kingpost.tui.terminal import Glyphs
 
@@ -15,6 +15,7 @@ if TYPE_CHECKING:
     from kingpost.core.graph import Graph
     from kingpost.core.insight.contributions import Contributions
     from kingpost.core.result import Result
+    from kingpost.tui.models.node import NodeModel
 
 Piece = tuple[str, str]
 _BAR = 8
@@ -49,22 +50,32 @@ def terms_line(graph: Graph, result: Result, width: int) -> list[Piece]:
 
 
 def ruler_line(sitting: Sitting, node: int, width: int, glyphs: Glyphs) -> list[Piece]:
-    """The node's name, its ruler, and the ranks in figures where there is room for them."""
+    """The node's name, its ruler, and the ranks in figures where there is room for them.
+
+    Name and figures get the same room on every row, so that rulers can be compared.
+    """
     n = sitting.graph.n
     found = sitting.ranks(node)
-    legend = "  ".join(
-        f"{letter} {name} {rank_range(first, last)}" for letter, (name, first, last) in found.items()
-    )
-    if cell_len(legend) + 44 > width:
-        legend = "  ".join(f"{letter} {first:,}" for letter, (_, first, _) in found.items())
-    if cell_len(legend) + 40 > width:
-        legend = ""
     end = f" {n:,}"
+    named = min(max(width // 5, 8), 28)
+    rest = width - named - len(end) - 6
+    digits = len(f"{n:,}")
+    words = {letter: f"{letter} {name}" for letter, (name, _, _) in found.items()}
+    for wide in (True, False):
+        heads = words if wide else {letter: letter for letter in words}
+        room = sum(len(head) + digits + 3 for head in heads.values()) + 1
+        legend = "  ".join(
+            f"{head} {rank_range(*found[letter][1:]) if wide else f'{found[letter][1]:,}'}"
+            for letter, head in heads.items()
+        )
+        if rest - room >= (48 if wide else 24):
+            break
+    else:
+        room, legend = 0, ""
     name = tame(sitting.graph.name(node, 200), glyphs)
-    room = width - cell_len(end) - (cell_len(legend) + 3 if legend else 0) - 5
-    named = min(cell_len(name), max(room // 3, 8))
-    track = max(room - named - 1, 8)
-    marks = ruler({letter: first for letter, (_, first, _) in found.items()}, n, track, glyphs)
+    marks = ruler(
+        {letter: first for letter, (_, first, _) in found.items()}, n, max(rest - room, 8), glyphs
+    )
     pieces: list[Piece] = [(f" {fit(name, named, glyphs=glyphs)}", "strong"), ("  1 ", "plain")]
     pieces += track_pieces(marks, glyphs)
     pieces.append((end, "plain"))
@@ -115,3 +126,40 @@ def supports_line(graph: Graph, given: Contributions, width: int, glyphs: Glyphs
 def parts_words(given: Contributions) -> str:
     """``feeders 83%  teleport 17%``."""
     return "  ".join(f"{name} {percent(share)}" for name, share in given.parts.items())
+
+
+def who_line(model: NodeModel, came_by: str, width: int, glyphs: Glyphs) -> list[Piece]:
+    """Name and attributes of a node, and the way one came."""
+    about = "   ".join(f"{name} {value}" for name, value in model.attributes if value)
+    way = f"came by: {came_by}" if came_by else ""
+    room = max(width - cell_len(way) - 3, 8)
+    name = tame(model.name, glyphs)
+    name = fit(name, min(cell_len(name), max(room // 2, 8)), glyphs=glyphs)
+    left = fit(f"   {tame(about, glyphs)}", max(room - cell_len(name), 0), glyphs=glyphs)
+    return [(f" {name}", "head"), (left, "plain"), (f" {way}", "quiet")]
+
+
+def what_line(
+    sitting: Sitting,
+    result: Result,
+    model: NodeModel,
+    score: ScoreFormat,
+    width: int,
+    glyphs: Glyphs,
+) -> list[Piece]:
+    """Score and rank of a node, where the score comes from, and its ruler where there is room."""
+    n = sitting.graph.n
+    first, last = result.standing.range_of(model.node)
+    text = f" {result.measure} {score.text(float(result.scores[model.node]))}{score.unit}"
+    text += f" ({rank_range(first, last)})   {parts_words(model.given)}"
+    end = f" {n:,}"
+    track = width - len(text) - len(end) - 7
+    if track < 8:
+        return [(text, "plain")]
+    ranks = {letter: low for letter, (_, low, _) in sitting.ranks(model.node).items()}
+    return [
+        (text, "plain"),
+        ("   1 ", "plain"),
+        *track_pieces(ruler(ranks, n, track, glyphs), glyphs),
+        (end, "plain"),
+    ]

@@ -24,17 +24,17 @@ class Sweeps:
         self.log = list(log)
         self.head = [
             Column("index", "sweep", 6, lambda at: f"{self.log[at].index:,}", right=True, frozen=True),
-            Column("residual", "residual", 9, lambda at: small(self.log[at].residual), right=True),
-            Column("bound", "bound", 9, lambda at: small(self.log[at].bound), right=True),
-            Column("factor", "factor", 7, self._factor, right=True),
-            Column("proven", "proven", 9, self._proven, right=True),
-            Column("visits", "edges read", 10, lambda at: compact(self.log[at].edge_visits), right=True),
-            Column("seconds", "seconds", 8, lambda at: f"{self.log[at].seconds:.3f}", right=True),
+            Column("residual", "residual", 8, lambda at: small(self.log[at].residual), right=True),
+            Column("bound", "bound", 8, lambda at: small(self.log[at].bound), right=True),
+            Column("factor", "factor", 6, self._factor, right=True),
+            Column("proven", "proven", 7, self._proven, right=True),
+            Column("visits", "read", 6, lambda at: compact(self.log[at].edge_visits), right=True),
+            Column("seconds", "seconds", 7, lambda at: f"{self.log[at].seconds:.3f}", right=True),
         ]
         if any(line.eigenvalue for line in self.log):
             self.head.append(Column("rho", "spectral radius within", 27, self._bracket))
         if any(line.part for line in self.log):
-            self.head.append(Column("part", "part", 14, self._part))
+            self.head.append(Column("part", "part", 22, self._part))
 
     @property
     def count(self) -> int:
@@ -73,15 +73,20 @@ class Sweeps:
         return visible(self.log[at].part, 40)
 
 
-def series_of(log: Sequence[Iteration], tolerance: float | None, n: int) -> Series:
-    """The chart's series; a log of many thousand sweeps is thinned to what a screen can show."""
+def series_of(
+    log: Sequence[Iteration], tolerance: float | None, n: int, proven: int | None = None
+) -> Series:
+    """The chart's series; a log of many thousand sweeps is thinned to what a screen can show.
+
+    ``proven`` is the order proven by the finished result, known beyond what the log holds.
+    """
     every = max(1, len(log) // 500)
     kept = [line for at, line in enumerate(log) if at % every == 0 or at == len(log) - 1]
     return Series(
         [line.index for line in kept],
         [line.residual for line in kept],
         [line.bound for line in kept],
-        [line.proven for line in kept],
+        [line.proven for line in kept[:-1]] + [proven or line.proven for line in kept[-1:]],
         tolerance,
         n,
     )

@@ -68,8 +68,13 @@ class View(Screen[Any], inherit_bindings=False):
         return False
 
     def do(self, action_id: str) -> None:
-        """Do an action by its id."""
-        self._doer(action_id.replace(".", "_"))()
+        """Do an action by its id; a fault in it becomes a sentence, and the screen goes on."""
+        try:
+            self._doer(action_id.replace(".", "_"))()
+        except Exception as error:
+            if self.app.is_headless:
+                raise
+            self.kingpost.fault(error, f"{action_id} failed")
         self.refresh_keys()
 
     def refresh_keys(self) -> None:

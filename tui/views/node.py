@@ -41,7 +41,6 @@ class NodeView(View):
 
     def on_resize(self, event: events.Resize) -> None:
         self.set_class(event.size.height < 14, "-low")
-        self.call_after_refresh(self._lines)
 
     def refreshed(self) -> None:
         if self.composed:
@@ -73,10 +72,6 @@ class NodeView(View):
         self.panel.show(self.kingpost.sitting, model, self._way())
         self.refresh_keys()
         self.tell(*self.kingpost.latest_news)
-
-    def _lines(self) -> None:
-        if self.composed and self.panel.model is not None:
-            self.panel.relabel(self.kingpost.sitting, self._way())
 
     def _way(self) -> str:
         graph, glyphs = self.kingpost.sitting.graph, self.looks.glyphs
@@ -112,7 +107,7 @@ class NodeView(View):
     def do_columns_right(self) -> None:
         self.panel.active.sideways(1)
 
-    def do_other_part(self) -> None:
+    def do_other_table(self) -> None:
         self.panel.switch()
 
     def can_node_open(self) -> bool:

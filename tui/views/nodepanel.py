@@ -6,9 +6,9 @@ from textual.app import ComposeResult
 from textual.widget import Widget
 
 from kingpost.tui.models import detail
-from kingpost.tui.models.drawing import fit, ruler, tame
+from kingpost.tui.models.drawing import tame
 from kingpost.tui.models.node import NodeModel
-from kingpost.tui.models.numbers import rank_range, score_format
+from kingpost.tui.models.numbers import score_format
 from kingpost.tui.models.sitting import Sitting
 from kingpost.tui.widgets.lines import Line, Rule, looks_of
 from kingpost.tui.widgets.rowtable import RowTable
@@ -59,37 +59,22 @@ class NodePanel(Widget):
         self.query_one("#centre", Rule).title(f"{glyphs.down} {tame(model.name, glyphs)}")
         if self._cursor:
             self.activate(self.feeders if model.feeders.count else self.receivers)
-        self.relabel(sitting, came_by)
+        self._describe(sitting, came_by)
 
-    def relabel(self, sitting: Sitting, came_by: str = "") -> None:
-        """Write the two lines about the node for the present width."""
-        model = self.model
+    def _describe(self, sitting: Sitting, came_by: str) -> None:
+        model, glyphs = self.model, looks_of(self).glyphs
         assert model is not None
-        width = self.size.width or 80
-        glyphs = looks_of(self).glyphs
         result = sitting.result
-        about = "   ".join(f"{name} {value}" for name, value in model.attributes if value)
-        way = f"came by: {came_by}" if came_by else ""
-        room = max(width - len(way) - 3, 8)
-        name = fit(model.name, min(len(model.name), max(room // 2, 8)), glyphs=glyphs)
-        left = fit(f"   {tame(about, glyphs)}", max(room - len(name), 0), glyphs=glyphs)
-        self.query_one("#who", Line).show((f" {name}", "head"), (left, "plain"), (f" {way}", "quiet"))
+        self.query_one("#who", Line).show_by(
+            lambda width: detail.who_line(model, came_by, width, glyphs)
+        )
         if result is None or result.refusal is not None:
             self.query_one("#what", Line).show()
             return
         score = score_format(result.scores, result.bound)
-        first, last = result.standing.range_of(model.node)
-        text = f" {result.measure} {score.text(float(result.scores[model.node]))}{score.unit}"
-        text += f" ({rank_range(first, last)})   {detail.parts_words(model.given)}"
-        ranks = {letter: low for letter, (_, low, _) in sitting.ranks(model.node).items()}
-        end = f" {sitting.graph.n:,}"
-        track = width - len(text) - len(end) - 7
-        pieces: list[tuple[str, str]] = [(text, "plain")]
-        if track >= 8:
-            pieces.append(("   1 ", "plain"))
-            pieces += detail.track_pieces(ruler(ranks, sitting.graph.n, track, glyphs), glyphs)
-            pieces.append((end, "plain"))
-        self.query_one("#what", Line).show(*pieces)
+        self.query_one("#what", Line).show_by(
+            lambda width: detail.what_line(sitting, result, model, score, width, glyphs)
+        )
 
     def activate(self, table: RowTable) -> None:
         """Give one of the tables the cursor."""

@@ -128,7 +128,7 @@ class SettingsView(View):
         self._at = (self._at + 1) % len(self._fields)
         self._show()
 
-    do_other_part = do_row_down
+    do_field_next = do_row_down
 
     def do_columns_left(self) -> None:
         self._sideways(-1, "left")

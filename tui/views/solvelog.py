@@ -2,6 +2,9 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable
+from typing import TYPE_CHECKING
+
 from textual import events
 from textual.app import ComposeResult
 
@@ -14,6 +17,9 @@ from kingpost.tui.views.base import View
 from kingpost.tui.widgets.lines import KeyLine, Line, Rule
 from kingpost.tui.widgets.residual import ResidualChart
 from kingpost.tui.widgets.rowtable import RowTable
+
+if TYPE_CHECKING:
+    from kingpost.core.result import Iteration
 
 
 class SolveLogView(View):
@@ -56,7 +62,7 @@ class SolveLogView(View):
             result = sitting.result
             log = result.log
             self._head(result.measure, f"{result.sweeps:,} sweeps, {result.stop}", result.settings)
-            self._series(log, result.settings)
+            self._series(log, result.settings, result.proven_order)
             sentence = why_stopped(result)
             if result.refusal is not None:
                 sentence = result.refusal.sentence
@@ -89,11 +95,11 @@ class SolveLogView(View):
             (" order proven (right scale)", "plain"),
         )
 
-    def _series(self, log: object, settings: object) -> None:
-        lines = list(log)  # type: ignore[call-overload]
+    def _series(self, log: Iterable[Iteration], settings: object, proven: int | None = None) -> None:
+        lines = list(log)
         tol = getattr(settings, "tol", None)
         n = self.kingpost.sitting.graph.n
-        self.query_one("#chart", ResidualChart).show(series_of(lines, tol, n))
+        self.query_one("#chart", ResidualChart).show(series_of(lines, tol, n, proven))
         table = self.table
         at_end = table.row >= table.count - 1
         sweeps = Sweeps(lines)

@@ -6,7 +6,7 @@ from textual import events
 from textual.app import ComposeResult
 from textual.containers import Horizontal
 
-from kingpost.core.insight.contributions import contributions
+from kingpost.core.insight.contributions import Contributions, contributions
 from kingpost.core.text import visible
 from kingpost.tui.actions import STANDINGS
 from kingpost.tui.models import detail
@@ -61,9 +61,8 @@ class StandingsView(View):
         self.set_class(event.size.height < LOW, "-low")
         self.set_class(event.size.height < 12, "-lowest")
         self.set_class(event.size.width >= BESIDE, "-wide")
-        self._detailed = None
-        if self.composed:
-            self._show_lines()
+        if self.composed and self.has_class("-wide"):
+            self._detailed = None
             self._detail()
 
     def show(self, table: Standings) -> None:
@@ -82,11 +81,12 @@ class StandingsView(View):
         self.refresh_keys()
 
     def _show_lines(self) -> None:
-        width = self.size.width or 80
         model = self.model
         flow = self.kingpost.sitting.flow
         self.query_one("#graph", Line).show(*detail.graph_line(model.graph, flow, model.count))
-        self.query_one("#terms", Line).show(*detail.terms_line(model.graph, model.result, width))
+        self.query_one("#terms", Line).show_by(
+            lambda width: detail.terms_line(model.graph, model.result, width)
+        )
 
     def refreshed(self) -> None:
         if not self.composed:
@@ -114,14 +114,12 @@ class StandingsView(View):
             return
         node = self.model.node
         result = self.model.result
-        width = self.size.width or 80
         glyphs = self.looks.glyphs
         ruler, supports = self.query_one("#ruler", Line), self.query_one("#supports", Line)
         if result.refusal is not None:
-            lines = wrap(visible(result.refusal.sentence), width - 2)
-            ruler.show((f" {lines[0]}", "strong"))
-            more = " ".join(lines[1:])
-            supports.show((f" {more}" if more else " m chooses another measure", "plain"))
+            sentence = visible(result.refusal.sentence)
+            ruler.show_by(lambda width: [(f" {wrap(sentence, width - 2)[0]}", "strong")])
+            supports.show_by(lambda width: [(f" {' '.join(wrap(sentence, width - 2)[1:])}", "plain")])
             return
         if node is None:
             ruler.show()
@@ -130,7 +128,8 @@ class StandingsView(View):
         if self._detailed == (node, id(result)):
             return
         self._detailed = (node, id(result))
-        ruler.show(*detail.ruler_line(self.kingpost.sitting, node, width, glyphs))
+        sitting = self.kingpost.sitting
+        ruler.show_by(lambda width: detail.ruler_line(sitting, node, width, glyphs))
         graph = self.model.graph
         if self._degree(node) > MANY:
             supports.show((" held up by  ...", "plain"))
@@ -153,13 +152,13 @@ class StandingsView(View):
             for side in (graph.inward, graph.outward)
         )
 
-    def _supported(self, node: int, given: object) -> None:
+    def _supported(self, node: int, given: Contributions) -> None:
         if node != self.model.node or not self.composed or not self.is_attached:
             return
-        pieces = detail.supports_line(
-            self.model.graph, given, self.size.width or 80, self.looks.glyphs  # type: ignore[arg-type]
+        graph, glyphs = self.model.graph, self.looks.glyphs
+        self.query_one("#supports", Line).show_by(
+            lambda width: detail.supports_line(graph, given, width, glyphs)
         )
-        self.query_one("#supports", Line).show(*pieces)
 
     # ---- moving ------------------------------------------------------------------------------
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Callable, Iterable, Sequence
 
 from rich.cells import cell_len
 from rich.segment import Segment
@@ -50,6 +50,8 @@ class Line(Widget):
     def __init__(self, id: str | None = None, classes: str | None = None, rows: int = 1) -> None:
         super().__init__(id=id, classes=classes)
         self._rows: list[Sequence[Piece]] = [()] * rows
+        self._make: Callable[[int], Sequence[Piece]] | None = None
+        self._made_for = -1
         if rows > 1:
             self.styles.height = rows
 
@@ -57,8 +59,17 @@ class Line(Widget):
         """Show these pieces in the only line."""
         self.show_rows([pieces])
 
+    def show_by(self, make: Callable[[int], Sequence[Piece]]) -> None:
+        """Show what ``make(width)`` gives, for this width and every later one."""
+        self._replace([make(self.size.width)] if self.size.width else self._rows)
+        self._make, self._made_for = make, self.size.width
+
     def show_rows(self, rows: Sequence[Sequence[Piece]]) -> None:
         """Show one sequence of pieces a line; lines beyond the height are not shown."""
+        self._make = None
+        self._replace(rows)
+
+    def _replace(self, rows: Sequence[Sequence[Piece]]) -> None:
         old, self._rows = self._rows, list(rows)
         for y in range(max(len(old), len(self._rows))):
             before = old[y] if y < len(old) else ()
@@ -77,6 +88,8 @@ class Line(Widget):
         return "\n".join("".join(text for text, _ in row) for row in self._rows)
 
     def render_line(self, y: int) -> Strip:
+        if self._make is not None and self._made_for != self.size.width:
+            self._rows, self._made_for = [self._make(self.size.width)], self.size.width
         pieces = self._rows[y] if y < len(self._rows) else ()
         return strip_of(pieces, self.size.width, looks_of(self))
 
@@ -129,30 +142,25 @@ class KeyLine(Line):
 
     def keys(self, items: Sequence[tuple[str, str]]) -> None:
         """Show (key, words) pairs, most useful first."""
-        self._items = list(items)
-        self._fill()
+        kept = tuple(items)
+        self.show_by(lambda width: _fitting(kept, width))
 
-    _items: Sequence[tuple[str, str]] = ()
 
-    def on_resize(self) -> None:
-        self._fill()
-
-    def _fill(self) -> None:
-        width = self.size.width or 80
-        help_item = [item for item in self._items if item[0] == "?"]
-        used = sum(_size(item) for item in help_item) + 1
-        chosen: list[tuple[str, str]] = []
-        for item in self._items:
-            if item[0] == "?":
-                continue
-            if used + _size(item) > width:
-                break
-            used += _size(item)
-            chosen.append(item)
-        pieces: list[Piece] = [(" ", "plain")]
-        for key, words in [*chosen, *help_item]:
-            pieces += [(key, "key"), (f" {words}   ", "plain")]
-        self.show(*pieces)
+def _fitting(items: Sequence[tuple[str, str]], width: int) -> list[Piece]:
+    help_item = [item for item in items if item[0] == "?"]
+    used = sum(_size(item) for item in help_item) + 1
+    chosen: list[tuple[str, str]] = []
+    for item in items:
+        if item[0] == "?":
+            continue
+        if used + _size(item) > width:
+            break
+        used += _size(item)
+        chosen.append(item)
+    pieces: list[Piece] = [(" ", "plain")]
+    for key, words in [*chosen, *help_item]:
+        pieces += [(key, "key"), (f" {words}   ", "plain")]
+    return pieces
 
 
 def _size(item: tuple[str, str]) -> int:

@@ -67,6 +67,7 @@ class RowTable(Widget):
         self._row = 0
         self._first = 0  # the first of the scrolling columns that is shown
         self._widths: list[int] = []
+        self._measured: tuple[int, int] = (-1, -1)  # the size the widths were chosen for
 
     # ---- what it shows -------------------------------------------------------------------
 
@@ -82,7 +83,7 @@ class RowTable(Widget):
             # Keep the cursor at the same height on the screen where that is possible.
             self._top = self._row - min(max(offset, 0), height - 1)
         self._top = min(max(self._top, 0), max(source.count - height, 0))
-        self._measure()
+        self._measured = (-1, -1)
         self.refresh()
 
     @property
@@ -146,6 +147,7 @@ class RowTable(Widget):
 
     def sideways(self, columns: int) -> None:
         """Scroll the columns that are not frozen."""
+        self._measure()
         scrolling = sum(not column.frozen for column in self._source.head) if self._source else 0
         last = self._last_first(scrolling)
         first = min(max(self._first + columns, 0), last)
@@ -155,20 +157,18 @@ class RowTable(Widget):
 
     # ---- painting --------------------------------------------------------------------------
 
-    def on_resize(self) -> None:
-        if self._source is None:
+    def _measure(self) -> None:
+        """Choose widths for the present size, if they are not chosen yet: the name column takes
+        what is left, within reason.  Done on painting, because the first painting may come
+        before the news of the size.
+        """
+        if self._source is None or self._measured == tuple(self.size):
             return
+        self._measured = (self.size.width, self.size.height)
         height = self._page
         if not self._top <= self._row < self._top + height:
             self._top = self._row - height // 2
         self._top = min(max(self._top, 0), max(self.count - height, 0))
-        self._measure()
-        self.refresh()
-
-    def _measure(self) -> None:
-        """Widths for the present size: the name column takes what is left, within reason."""
-        if self._source is None:
-            return
         head = self._source.head
         self._widths = [max(column.width, 1) for column in head]
         lead = 2 if self._rail else 1
@@ -218,6 +218,7 @@ class RowTable(Widget):
         """Repaint the frozen part of a row: all that a cursor move changes."""
         if self._source is None:
             return
+        self._measure()
         y = row - self._top + (1 if self._headings else 0)
         lead = 2 if self._rail else 1
         frozen = [w for w, c in zip(self._widths, self._source.head, strict=True) if c.frozen]
@@ -228,6 +229,7 @@ class RowTable(Widget):
         width = self.size.width
         if self._source is None or width <= 0:
             return Strip.blank(width)
+        self._measure()
         if self._headings and y == 0:
             return self._fitted(self._heading_segments())
         row = self._top + y - (1 if self._headings else 0)
