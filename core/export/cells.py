@@ -54,9 +54,10 @@ def wrap(text: str, limit: int, indent: str = "") -> list[str]:
 
     Lines after the first begin with ``indent``; a word longer than a line is cut.
     """
+    body = text.lstrip(" ")
+    line = " " * (len(text) - len(body))
     lines: list[str] = []
-    line = ""
-    for word in text.split(" "):
+    for word in body.split(" "):
         longer = f"{line} {word}" if line.strip() else line + word
         if line.strip() and width(longer) > limit:
             lines.append(line)

@@ -8,6 +8,7 @@ from typing import Any, BinaryIO
 
 import pyarrow as pa
 
+from kingpost.core.export.json_rows import row_texts
 from kingpost.core.export.jsonable import dumps, jsonable
 from kingpost.core.export.rows import Ranking, as_plain, batches, schema, shown
 from kingpost.core.watch import Watch
@@ -59,11 +60,8 @@ def write_json(
     sink.write((head.removesuffix("\n}") + ',\n  "rows": [').encode())
     between = "\n    "
     for batch in _watched(ranking, watch):
-        lines = []
-        for row in _plain(batch).to_pylist():
-            lines.append(between + dumps(row, ascii_only=ascii_only))
-            between = ",\n    "
-        sink.write("".join(lines).encode())
+        sink.write((between + ",\n    ".join(row_texts(batch, ascii_only))).encode())
+        between = ",\n    "
     sink.write(b"\n  ]\n}\n" if ranking.count else b"]\n}\n")
 
 

@@ -57,6 +57,11 @@ def dumps(value: Any, *, indent: int | None = None, ascii_only: bool = False) ->
     every JSON reader turns back; all others stay readable unless ``ascii_only``.
     """
     text = json.dumps(jsonable(value), indent=indent, ensure_ascii=ascii_only, allow_nan=False)
+    return tamed(text)
+
+
+def tamed(text: str) -> str:
+    """JSON text with what would act on a terminal escaped; reads as the same value."""
     if text.isascii() and "\x7f" not in text:
         return text
     return _BEYOND_ASCII.sub(_escaped, text)

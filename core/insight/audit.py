@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from kingpost.core.graph import Adjacency, Graph
-from kingpost.core.structure import Structure, weak_components
+from kingpost.core.structure import weak_components
 from kingpost.core.watch import Watch
 
 QUANTILES = (0.0, 0.25, 0.5, 0.75, 0.9, 0.99, 1.0)

@@ -14,18 +14,20 @@ NEIGHBOURS = 20
 
 
 @click.command(cls=Sectioned)
-@options.edges
-@click.argument("name")
+@click.argument("edges", nargs=-1, metavar="EDGES...")
+@click.argument("name", required=False)
 @options.loading
 @options.measure
 @options.top(f"neighbours on each side, or all [{NEIGHBOURS} in table, all in json]")
 @options.output("table", "json")
-def node(edges: tuple[str, ...], name: str, **given: Any) -> int:
+def node(edges: tuple[str, ...], name: str | None, **given: Any) -> int:
     """Show one node of EDGES: attributes, ranks, neighbours.
 
     NAME is the node's id.  The ranks are those of every measure, each with the options it
     takes; the ranks of the neighbours are those of --measure.
     """
+    if name is None or not edges:
+        raise click.UsageError("kingpost node takes EDGES... and then the NAME of one node")
     from kingpost.core.measures import NAMES, measure
     from kingpost.tui.commands import writing
     from kingpost.tui.commands.choices import build, check_takers, given_settings

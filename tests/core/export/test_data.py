@@ -171,6 +171,8 @@ def test_attributes_of_any_type_reach_text_formats() -> None:
             "tags": pa.array([["a", "b"], None]),
             "share": pa.array([math.nan, math.inf]),
             "none": pa.nulls(2),
+            "100% %s": pa.array([7, None]),
+            "flag": pa.array([True, None]),
             "span": pa.array([dt.timedelta(seconds=90), None]),
         }
     )
@@ -180,6 +182,8 @@ def test_attributes_of_any_type_reach_text_formats() -> None:
     assert first["when"].startswith("2024-05-06T07:08:09")
     assert second["when"] is None
     assert (first["kind"], second["kind"]) == ("x", "y")
+    assert (first["100% %s"], second["100% %s"]) == (7, None)
+    assert (first["flag"], second["flag"]) == (True, None)
     assert (first["share"], second["share"], first["none"]) == (None, None, None)
     assert json.loads(first["tags"]) == ["a", "b"]
     text = written(data.write_delimited, ranking).decode()
