@@ -1,13 +1,16 @@
 """Numbered rows -> compressed adjacency: merge parallel edges by policy, then both directions.
 
-Both passes are stable counting sorts, so parallel edges meet in the order of their rows and sums
-do not depend on anything else.  Arrays are let go of as soon as the next one is filled.
+Rows are sorted by target and then by source, both times by a stable counting sort, so parallel
+edges meet in the order of their rows and sums depend on nothing else.  Every sort first deals
+the rows out to buckets of neighbouring keys and then settles each bucket within the cache; spans
+and buckets are independent of each other, so that threads change the speed and never a bit.
+Arrays are let go of as soon as the next one is filled.
 """
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator
 from dataclasses import dataclass
+from itertools import pairwise
 from typing import Any
 
 import numpy as np
@@ -15,13 +18,13 @@ import pyarrow as pa
 from numpy.typing import NDArray
 
 from kingpost.core.errors import RowsError
-from kingpost.core.graph import Adjacency, Floats
+from kingpost.core.graph import Adjacency, Floats, Offsets
 from kingpost.core.ingest.numbering import Codes
 from kingpost.core.ingest.options import LoadOptions
+from kingpost.core.ingest.spread import Span, each, spans
 from kingpost.core.text import id_text, visible
 from kingpost.core.watch import Watch
 
-_PIECE = 1 << 21  # rows or entries a kernel call works on: some 20 ms
 _POLICIES = ("sum", "mean", "min", "max", "first", "count")
 _CHANGES = {"asis": 0, "log1p": 1, "inverse": 2, "none": 0}
 _NONE: Floats = np.empty(0, dtype=np.float64)
@@ -39,12 +42,16 @@ class Assembled:
     zero_weight: int
 
 
+@dataclass
 class Ends:
     """The numbered rows; handed over whole, so that whoever takes them can let them go."""
 
+    source: Codes
+    target: Codes
+    weights: Floats
+
     def __init__(self, source: Codes, target: Codes, weights: Floats | None) -> None:
-        self.source = source
-        self.target = target
+        self.source, self.target = source, target
         self.weights = _NONE if weights is None else weights
 
     def clear(self) -> None:
@@ -53,8 +60,28 @@ class Ends:
         self.weights = _NONE
 
 
+@dataclass
+class Rows:
+    """A mutable adjacency under way."""
+
+    offsets: Offsets
+    near: Codes
+    weights: Floats
+
+
+@dataclass
+class Buckets:
+    """Rows dealt out by key: bucket b is ``starts[b]`` to ``starts[b + 1]``."""
+
+    starts: Offsets
+    shift: int
+    keys: Codes
+    others: Codes
+    weights: Floats
+
+
 def assemble(ends: Ends, labels: pa.Array, options: LoadOptions, watch: Watch) -> Assembled:
-    """Build the adjacency of ``len(labels)`` nodes from numbered rows.
+    """Build the adjacency of ``len(labels)`` nodes from numbered rows; ``ends`` is emptied.
 
     Raises:
         RowsError: if merged or inverted weights are too great for a number to hold.
@@ -64,20 +91,27 @@ def assemble(ends: Ends, labels: pa.Array, options: LoadOptions, watch: Watch) -
 
     n = len(labels)
     loops = sum(
-        build.count_loops(ends.source, ends.target, a, b)
-        for a, b in _spans(len(ends.source), watch, "counting loops")
+        each(
+            spans(len(ends.source)),
+            lambda a, b: build.count_loops(ends.source, ends.target, a, b),
+            watch,
+            "counting loops",
+        )
     )
-    dropped = 0
-    if options.loops == "drop" and loops:
+    dropped = loops if options.loops == "drop" else 0
+    if dropped:
         kept = build.drop_loops(ends.source, ends.target, ends.weights)
-        dropped = len(ends.source) - kept
         ends.source, ends.target = ends.source[:kept], ends.target[:kept]
         ends.weights = ends.weights[:kept]
     if not options.directed:
-        for a, b in _spans(len(ends.source), watch, "ordering ends"):
-            build.order_ends(ends.source, ends.target, a, b)
+        each(
+            spans(len(ends.source)),
+            lambda a, b: build.order_ends(ends.source, ends.target, a, b),
+            watch,
+            "ordering ends",
+        )
     rows = len(ends.source)
-    rough = _sorted_rows(ends, n, watch)
+    rough = _by_source(ends, n, watch)
     outward, zero = _merged(rough, labels, options, watch)
     merged = rows - len(outward.neighbours) - zero
     if options.directed:
@@ -87,160 +121,233 @@ def assemble(ends: Ends, labels: pa.Array, options: LoadOptions, watch: Watch) -
     return Assembled(outward, inward, loops, dropped, merged, zero)
 
 
-def _sorted_rows(ends: Ends, n: int, watch: Watch) -> list[Any]:
-    """Offsets, neighbours and weights by source, then target, then row, not yet merged."""
+def _by_source(ends: Ends, n: int, watch: Watch) -> Rows:
+    """Rows by source, then target, then as they came; parallel edges side by side."""
     from kingpost.core.kernels import build
 
-    rows = len(ends.source)
-    by_source = _offsets(
-        n, lambda counts, a, b: build.tally(ends.source, a, b, counts), rows, watch
+    buckets = _dealt(
+        n,
+        spans(len(ends.source)),
+        ends.target,
+        ends.weights,
+        lambda a, b, *into: build.to_buckets(ends.target, ends.source, ends.weights, a, b, *into),
+        watch,
+        "sorting edges by target",
     )
-    by_target = _offsets(
-        n, lambda counts, a, b: build.tally(ends.target, a, b, counts), rows, watch
-    )
-    near = np.empty(rows, dtype=np.uint32)
-    heavy = np.empty(len(ends.weights))
-    place = by_target[:-1].copy()
-    for a, b in _spans(rows, watch, "sorting edges by target"):
-        build.scatter_rows(ends.target, ends.source, ends.weights, a, b, place, near, heavy)
     ends.clear()
-    return _transposed(by_target, near, heavy, by_source, watch, "sorting edges by source")
+    by_target = _settled(buckets, n, watch, "sorting edges by target")
+    del buckets
+    again = _dealt_rows(by_target, watch, "sorting edges by source")
+    del by_target
+    return _settled(again, n, watch, "sorting edges by source")
 
 
-def _transposed(
-    offsets: NDArray[np.int64],
-    near: Codes,
-    heavy: Floats,
-    turned: NDArray[np.int64],
+def _dealt_rows(rows: Rows, watch: Watch, stage: str) -> Buckets:
+    """Deal an adjacency out by neighbour, in order of the nodes."""
+    from kingpost.core.kernels import build
+
+    return _dealt(
+        len(rows.offsets) - 1,
+        node_spans(rows.offsets),
+        rows.near,
+        rows.weights,
+        lambda a, b, *into: build.rows_to_buckets(
+            rows.offsets, rows.near, rows.weights, a, b, *into
+        ),
+        watch,
+        stage,
+        rows.offsets,
+    )
+
+
+def _dealt(
+    n: int,
+    pieces: list[Span],
+    keys: Codes,
+    weights: Floats,
+    deal: Any,
     watch: Watch,
     stage: str,
-) -> list[Any]:
+    offsets: Offsets | None = None,
+) -> Buckets:
+    """Stable: within a bucket come the pieces in order, and within a piece its rows."""
     from kingpost.core.kernels import build
 
-    out = np.empty(len(near), dtype=np.uint32)
-    out_heavy = np.empty(len(heavy))
-    place = turned[:-1].copy()
-    for a, b in _node_spans(offsets, watch, stage):
-        build.transpose(offsets, near, heavy, a, b, place, out, out_heavy)
-    return [turned, out, out_heavy]
+    bits = max(n - 1, 0).bit_length()
+    # Few enough buckets to write to side by side, few enough keys in each to sort in cache.
+    shift = max(bits - 10, min(12, max(0, bits - 6)))
+    counts = np.zeros((len(pieces), (max(n - 1, 0) >> shift) + 1), dtype=np.int64)
+    number = {piece: at for at, piece in enumerate(pieces)}
+
+    def count(a: int, b: int) -> None:
+        first, last = (a, b) if offsets is None else (int(offsets[a]), int(offsets[b]))
+        build.count_buckets(keys, first, last, shift, counts[number[a, b]])
+
+    each(pieces, count, watch, stage)
+    starts = np.zeros(counts.shape[1] + 1, dtype=np.int64)
+    np.cumsum(counts.sum(axis=0), out=starts[1:])
+    place = starts[:-1] + np.cumsum(counts, axis=0) - counts
+    out = Buckets(
+        starts,
+        shift,
+        np.empty(len(keys), dtype=np.uint32),
+        np.empty(len(keys), dtype=np.uint32),
+        np.empty(len(weights)),
+    )
+    each(
+        pieces,
+        lambda a, b: deal(a, b, shift, place[number[a, b]], out.keys, out.others, out.weights),
+        watch,
+        stage,
+    )
+    return out
+
+
+def _settled(buckets: Buckets, n: int, watch: Watch, stage: str) -> Rows:
+    from kingpost.core.kernels import build
+
+    m = len(buckets.keys)
+    rows = Rows(
+        np.zeros(n + 1, dtype=np.int64),
+        np.empty(m, dtype=np.uint32),
+        np.empty(len(buckets.weights)),
+    )
+
+    def settle(bucket: int, _: int) -> None:
+        build.settle(
+            buckets.keys,
+            buckets.others,
+            buckets.weights,
+            buckets.starts,
+            bucket,
+            buckets.shift,
+            rows.offsets,
+            rows.near,
+            rows.weights,
+        )
+
+    each([(b, b + 1) for b in range(len(buckets.starts) - 1)], settle, watch, stage)
+    rows.offsets[-1] = m
+    return rows
 
 
 def _merged(
-    rough: list[Any], labels: pa.Array, options: LoadOptions, watch: Watch
+    rows: Rows, labels: pa.Array, options: LoadOptions, watch: Watch
 ) -> tuple[Adjacency, int]:
     """Fold parallel edges, apply the weight change, leave out zero weights (their number too)."""
     from kingpost.core.kernels import build
 
-    offsets, near, weights = rough
-    rough.clear()
-    spans = list(_node_spans(offsets, watch, "merging parallel edges"))
-    state = np.zeros(7, dtype=np.int64)
-    weighted = len(weights) > 0
-    repeats = 0
+    stage = "merging parallel edges"
+    pieces = node_spans(rows.offsets)
+    weighted = len(rows.weights) > 0
+    heavy = rows.weights
     if not weighted:
-        repeats = sum(build.count_repeats(offsets, near, a, b) for a, b in spans)
-    counted = options.parallel in ("sum", "count") and repeats > 0
-    if not weighted and not counted and options.weight_as != "log1p":
-        for a, b in spans:
-            watch.check()
-            build.merge_pattern(offsets, near, a, b, state)
-        offsets[-1] = state[0]
-        return Adjacency(offsets, _trim(near, int(state[0]))), 0
-    # Without a weight column results go to an array of their own, as long as the edges.
-    heavy = weights if weighted else np.empty(len(near) - repeats)
-    policy = _POLICIES.index(options.parallel)
-    for a, b in spans:
+        repeats = sum(
+            each(
+                pieces,
+                lambda a, b: build.count_repeats(rows.offsets, rows.near, a, b),
+                watch,
+                stage,
+            )
+        )
+        counts = options.parallel in ("sum", "count") and repeats > 0
+        if not repeats and options.weight_as != "log1p":
+            return Adjacency(rows.offsets, rows.near), 0
+        if counts or options.weight_as == "log1p":
+            heavy = np.empty(len(rows.near))
+    states = np.zeros((len(pieces), 6), dtype=np.int64)
+    number = {piece: at for at, piece in enumerate(pieces)}
+    lengths = np.zeros(len(labels) + 1, dtype=np.int64)
+    policy, change = _POLICIES.index(options.parallel), _CHANGES[options.weight_as]
+
+    def merge(a: int, b: int) -> None:
+        build.merge(
+            rows.offsets,
+            rows.near,
+            rows.weights,
+            heavy,
+            a,
+            b,
+            policy,
+            change,
+            lengths[1:],
+            states[number[a, b]],
+        )
+
+    each(pieces, merge, watch, stage)
+    if states[:, 2].any():
+        raise RowsError(_overflow(states, labels, options))
+    to = 0
+    for (a, _), state in zip(pieces, states, strict=True):
         watch.check()
-        build.merge(offsets, near, weights, heavy, a, b, policy, _CHANGES[options.weight_as], state)
-    offsets[-1] = state[0]
-    if state[3]:
-        raise RowsError(_overflow(state, labels, options))
-    kept = int(state[0])
-    del weights, rough
-    near = _trim(near, kept)
-    return Adjacency(offsets, near, _trim(heavy, kept) if state[6] else None), int(state[2])
+        size, start = int(state[0]), int(rows.offsets[a])
+        if to < start:
+            build.move_left(rows.near, start, size, to)
+            if len(heavy):
+                build.move_left(heavy, start, size, to)
+        to += size
+    weights = None
+    if states[:, 5].any() and len(heavy):
+        rows.weights = _NONE
+        weights = _trimmed(heavy, to)
+    near, rows.near = rows.near, _NONE.astype(np.uint32)
+    np.cumsum(lengths, out=lengths)
+    return Adjacency(lengths, _trimmed(near, to), weights), int(states[:, 1].sum())
 
 
-def _overflow(state: NDArray[np.int64], labels: pa.Array, options: LoadOptions) -> str:
-    ends = [visible(id_text(labels[int(node)].as_py()), 40) for node in state[4:6]]
+def _overflow(states: NDArray[np.int64], labels: pa.Array, options: LoadOptions) -> str:
+    first = states[np.flatnonzero(states[:, 2])[0]]
+    ends = [visible(id_text(labels[int(node)].as_py()), 40) for node in first[3:5]]
     how = f"--parallel {options.parallel}"
     if options.weight_as != "asis":
         how += f" and --weight-as {options.weight_as}"
-    many = "1 edge becomes" if state[3] == 1 else f"{state[3]:,} edges become"
+    total = int(states[:, 2].sum())
+    many = "1 edge becomes" if total == 1 else f"{total:,} edges become"
     return (
         f"the weight of {many} infinite by {how}, for example {ends[0]} -> {ends[1]}; "
         "scale the weights, or choose another policy"
     )
 
 
-def _trim(array: Any, size: int) -> Any:
-    """Shorten an array that nobody else refers to, in place where the allocator can."""
-    if len(array) == size:
-        return array
-    array.resize(size, refcheck=False)
+def _trimmed(array: Any, size: int) -> Any:
+    """Shorten an array whose memory nobody else looks at, in place where the allocator can."""
+    if len(array) > size:
+        array.resize(size, refcheck=False)
     return array
 
 
 def _turned(outward: Adjacency, watch: Watch) -> Adjacency:
-    from kingpost.core.kernels import build
-
-    m = len(outward.neighbours)
-    n = len(outward.offsets) - 1
-    offsets = _offsets(
-        n, lambda counts, a, b: build.tally(outward.neighbours, a, b, counts), m, watch
-    )
     weights = _NONE if outward.weights is None else outward.weights
-    offsets, near, heavy = _transposed(
-        outward.offsets, outward.neighbours, weights, offsets, watch, "turning edges round"
-    )
-    return Adjacency(offsets, near, None if outward.weights is None else heavy)
+    rows = Rows(outward.offsets, outward.neighbours, weights)
+    buckets = _dealt_rows(rows, watch, "turning edges round")
+    rows = _settled(buckets, len(outward.offsets) - 1, watch, "turning edges round")
+    return Adjacency(rows.offsets, rows.near, None if outward.weights is None else rows.weights)
 
 
 def _mirrored(upper: Adjacency, watch: Watch) -> Adjacency:
+    """A symmetric adjacency from its upper triangle."""
     from kingpost.core.kernels import build
 
     n = len(upper.offsets) - 1
     offsets = np.zeros(n + 1, dtype=np.int64)
-    spans = list(_node_spans(upper.offsets, watch, "mirroring edges"))
-    for a, b in spans:
+    weights = _NONE if upper.weights is None else upper.weights
+    pieces = node_spans(upper.offsets)
+    for a, b in pieces:
+        watch.check()
         build.mirror_counts(upper.offsets, upper.neighbours, a, b, offsets[1:])
     np.cumsum(offsets, out=offsets)
     near = np.empty(int(offsets[-1]), dtype=np.uint32)
-    weights = _NONE if upper.weights is None else upper.weights
     heavy = np.empty(len(near) if len(weights) else 0)
     place = offsets[:-1].copy()
-    for a, b in spans:
+    for a, b in pieces:
         watch.check()
+        watch.report("mirroring edges", int(upper.offsets[a]), len(upper.neighbours), "edges")
         build.mirror(upper.offsets, upper.neighbours, weights, a, b, place, near, heavy)
     return Adjacency(offsets, near, heavy if len(weights) else None)
 
 
-def _offsets(
-    n: int, tally: Callable[[NDArray[np.int64], int, int], None], rows: int, watch: Watch
-) -> NDArray[np.int64]:
-    """Offsets of n rows from a kernel that counts a span of entries."""
-    offsets = np.zeros(n + 1, dtype=np.int64)
-    for a, b in _spans(rows, watch, "counting degrees"):
-        tally(offsets[1:], a, b)
-    np.cumsum(offsets, out=offsets)
-    return offsets
-
-
-def _spans(rows: int, watch: Watch, stage: str) -> Iterator[tuple[int, int]]:
-    for a in range(0, rows, _PIECE):
-        watch.check()
-        watch.report(stage, a, rows, "rows")
-        yield a, min(a + _PIECE, rows)
-    watch.report(stage, rows, rows, "rows")
-
-
-def _node_spans(offsets: NDArray[np.int64], watch: Watch, stage: str) -> Iterator[tuple[int, int]]:
-    """Ranges of nodes that hold about _PIECE entries each."""
-    n, m = len(offsets) - 1, int(offsets[-1])
-    marks = np.arange(_PIECE, m, _PIECE)
-    cuts = np.unique(np.concatenate(([0], np.searchsorted(offsets[1:], marks), [n])))
-    for a, b in zip(cuts[:-1].tolist(), cuts[1:].tolist(), strict=True):
-        watch.check()
-        watch.report(stage, int(offsets[a]), m, "edges")
-        yield a, b
-    watch.report(stage, m, m, "edges")
+def node_spans(offsets: Offsets) -> list[Span]:
+    """Ranges of nodes that hold some two million entries each; at least one."""
+    cuts = [int(np.searchsorted(offsets[1:], b)) for _, b in spans(int(offsets[-1]))[:-1]]
+    edges = sorted({0, *cuts, len(offsets) - 1})
+    return list(pairwise(edges)) or [(0, 0)]

@@ -81,40 +81,101 @@ def count_loops(source: Any, target: Any, first: int, last: int) -> int:
 
 
 @kernel()
-def tally(codes: Any, first: int, last: int, counts: Any) -> None:
-    """Add to ``counts[c]`` the number of times code c occurs."""
+def count_buckets(keys: Any, first: int, last: int, shift: int, counts: Any) -> None:
+    """``counts[b] += 1`` for every key of bucket b, which holds the keys k with k >> shift = b."""
     for i in range(first, last):
-        counts[codes[i]] += 1
+        counts[keys[i] >> shift] += 1
 
 
 @kernel()
-def scatter_rows(
-    key: Any, other: Any, weights: Any, first: int, last: int, place: Any, near: Any, heavy: Any
+def to_buckets(
+    keys: Any,
+    others: Any,
+    weights: Any,
+    first: int,
+    last: int,
+    shift: int,
+    place: Any,
+    out_keys: Any,
+    out_others: Any,
+    out_weights: Any,
 ) -> None:
-    """Move row by row to the next free place of its key; ``place`` holds the next places."""
+    """Move rows to the next free place of their bucket; ``place`` holds the next places."""
     weighted = len(weights) > 0
     for i in range(first, last):
-        at = place[key[i]]
-        place[key[i]] = at + 1
-        near[np.uint64(at)] = other[i]
+        key = keys[i]
+        bucket = key >> shift
+        at = np.uint64(place[bucket])
+        place[bucket] += 1
+        out_keys[at] = key
+        out_others[at] = others[i]
         if weighted:
-            heavy[np.uint64(at)] = weights[i]
+            out_weights[at] = weights[i]
 
 
 @kernel()
-def transpose(
-    offsets: Any, near: Any, weights: Any, first: int, last: int, place: Any, out: Any, heavy: Any
+def rows_to_buckets(
+    offsets: Any,
+    near: Any,
+    weights: Any,
+    first: int,
+    last: int,
+    shift: int,
+    place: Any,
+    out_keys: Any,
+    out_others: Any,
+    out_weights: Any,
 ) -> None:
-    """Turn rows ``first`` to ``last`` of an adjacency round; ``place`` holds the next places."""
+    """Like :func:`to_buckets` for an adjacency: the key is the neighbour, the other the node."""
     weighted = len(weights) > 0
     for node in range(first, last):
         for k in range(offsets[node], offsets[node + 1]):
-            to = near[np.uint64(k)]
-            at = place[to]
-            place[to] = at + 1
-            out[np.uint64(at)] = node
+            key = near[np.uint64(k)]
+            bucket = key >> shift
+            at = np.uint64(place[bucket])
+            place[bucket] += 1
+            out_keys[at] = key
+            out_others[at] = node
             if weighted:
-                heavy[np.uint64(at)] = weights[np.uint64(k)]
+                out_weights[at] = weights[np.uint64(k)]
+
+
+@kernel()
+def settle(
+    keys: Any,
+    others: Any,
+    weights: Any,
+    starts: Any,
+    bucket: int,
+    shift: int,
+    offsets: Any,
+    near: Any,
+    heavy: Any,
+) -> None:
+    """Sort one bucket by key, stably, into its part of the adjacency; fills its offsets.
+
+    ``starts[bucket]`` to ``starts[bucket + 1]`` are the bucket's rows.  Its keys and rows are few
+    enough to stay in cache, which is what the buckets are for.
+    """
+    n = len(offsets) - 1
+    low = bucket << shift
+    high = min(low + (1 << shift), n)
+    begin, end = starts[bucket], starts[bucket + 1]
+    place = np.zeros(high - low + 1, dtype=np.int64)
+    for i in range(begin, end):
+        place[keys[i] - low + 1] += 1
+    place[0] = begin
+    for key in range(high - low):
+        place[key + 1] += place[key]
+        offsets[low + key] = place[key]
+    weighted = len(weights) > 0
+    for i in range(begin, end):
+        key = keys[i] - low
+        at = np.uint64(place[key])
+        place[key] += 1
+        near[at] = others[i]
+        if weighted:
+            heavy[at] = weights[i]
 
 
 @kernel()
@@ -173,23 +234,23 @@ def merge(
     last: int,
     policy: int,
     change: int,
+    lengths: Any,
     state: Any,
 ) -> None:
-    """Fold equal neighbours of each row into one entry, in place, and apply the weight change.
+    """Fold equal neighbours of rows ``first`` to ``last`` and apply the weight change.
 
-    ``weights`` may be empty (every entry counts 1); results go to ``heavy``, which may be
-    ``weights`` itself.  ``offsets[first]`` must be the old one; the new start of each row is
-    written over it.  ``state`` holds [next free place, old start of row ``first``, zero edges,
-    entries whose weight is no finite number, row and neighbour of the first such entry, entries
-    that weigh other than 1].
+    In place: the results stand at the beginning of the range, and ``lengths`` gets the new
+    lengths of its rows.  ``weights`` may be empty (every entry counts 1); ``heavy`` may be
+    ``weights`` itself, or empty where results are not wanted.  ``state`` gets [entries left,
+    edges of weight zero, entries whose weight is no finite number, row and neighbour of the
+    first such entry, entries that weigh other than 1].
     """
-    write = state[0]
-    begin = state[1]
+    write = offsets[first]
     weighted = len(weights) > 0
+    kept = len(heavy) > 0
     for node in range(first, last):
-        end = offsets[node + 1]
-        offsets[node] = write
-        k = begin
+        row = write
+        k, end = offsets[node], offsets[node + 1]
         while k < end:
             to = near[k]
             value = weights[k] if weighted else 1.0
@@ -210,7 +271,7 @@ def merge(
             elif policy == COUNT:
                 value = float(rows)
             if value == 0.0:
-                state[2] += 1
+                state[1] += 1
                 continue
             fine = value < np.inf
             if change == LOG1P:
@@ -218,32 +279,22 @@ def merge(
             elif change == INVERSE:
                 value = 1.0 / value
             if not (fine and value < np.inf):
-                if state[3] == 0:
-                    state[4] = node
-                    state[5] = to
-                state[3] += 1
+                if state[2] == 0:
+                    state[3] = node
+                    state[4] = to
+                state[2] += 1
             if value != 1.0:
-                state[6] += 1
+                state[5] += 1
             near[write] = to
-            heavy[write] = value
+            if kept:
+                heavy[write] = value
             write += 1
-        begin = end
-    state[0] = write
-    state[1] = begin
+        lengths[node] = write - row
+    state[0] = write - offsets[first]
 
 
 @kernel()
-def merge_pattern(offsets: Any, near: Any, first: int, last: int, state: Any) -> None:
-    """Fold equal neighbours where every edge weighs 1; ``state`` as in :func:`merge`."""
-    write = state[0]
-    begin = state[1]
-    for node in range(first, last):
-        end = offsets[node + 1]
-        offsets[node] = write
-        for k in range(begin, end):
-            if k == begin or near[k] != near[write - 1]:
-                near[write] = near[k]
-                write += 1
-        begin = end
-    state[0] = write
-    state[1] = begin
+def move_left(values: Any, start: int, size: int, to: int) -> None:
+    """``values[to : to + size] = values[start : start + size]`` where ``to <= start``."""
+    for i in range(size):
+        values[to + i] = values[start + i]

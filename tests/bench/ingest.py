@@ -1,0 +1,161 @@
+"""How long loading takes against reading the two columns alone, and how much memory it needs.
+
+    python tests/bench/ingest.py make FOLDER [--rows 16000000] [--nodes 1000000]
+    python tests/bench/ingest.py run FOLDER
+
+Every measurement is a process of its own: seconds are the best of ``--times`` runs within it,
+after one small load has compiled the loops; memory is the greatest resident size less what the
+process held before, told per edge beside what the two columns occupy in memory.
+"""
+
+from __future__ import annotations
+
+import argparse
+import json
+import subprocess
+import sys
+import threading
+import time
+from pathlib import Path
+
+import numpy as np
+import pyarrow as pa
+import pyarrow.parquet as pq
+
+KINDS = ("dense", "sparse", "text", "weighted")
+GROUP = 1 << 20
+
+
+def make(folder: Path, rows: int, nodes: int) -> None:
+    """Files of the same random edges: ids 0..n-1, scattered 64-bit ids, names of 25 characters."""
+    folder.mkdir(parents=True, exist_ok=True)
+    rng = np.random.default_rng(1)
+    scattered = rng.integers(-(2**62), 2**62, nodes)
+    names = pa.array([f"node-{number:020d}" for number in rng.permutation(nodes)])
+    schema = {
+        "dense": pa.int64(),
+        "sparse": pa.int64(),
+        "text": pa.string(),
+        "weighted": pa.int64(),
+    }
+    writers = {}
+    for kind, type_ in schema.items():
+        fields = [("source", type_), ("target", type_)]
+        fields += [("weight", pa.float64())] if kind == "weighted" else []
+        writers[kind] = pq.ParquetWriter(folder / f"{kind}.parquet", pa.schema(fields))
+    for start in range(0, rows, GROUP):
+        size = min(GROUP, rows - start)
+        # Squared uniform numbers: some nodes are met far more often than others.
+        ends = [(rng.random(size) ** 2 * nodes).astype(np.int64) for _ in range(2)]
+        weight = rng.random(size)
+        for kind, writer in writers.items():
+            columns = [
+                names.take(pa.array(e))
+                if kind == "text"
+                else pa.array(scattered[e] if kind == "sparse" else e)
+                for e in ends
+            ]
+            columns += [pa.array(weight)] if kind == "weighted" else []
+            writer.write_table(pa.Table.from_arrays(columns, schema=writer.schema))
+    for writer in writers.values():
+        writer.close()
+
+
+def resident() -> int:
+    """Bytes of memory this process holds now."""
+    for line in Path("/proc/self/status").read_text().splitlines():
+        if line.startswith("VmRSS"):
+            return int(line.split()[1]) * 1024
+    raise OSError("no VmRSS")
+
+
+class Peak:
+    """Watches the resident size from a thread while the work runs."""
+
+    def __enter__(self) -> Peak:
+        self.start = self.top = resident()
+        self.ended = threading.Event()
+        self.thread = threading.Thread(target=self._look)
+        self.thread.start()
+        return self
+
+    def _look(self) -> None:
+        while not self.ended.wait(0.005):
+            self.top = max(self.top, resident())
+
+    def __exit__(self, *_: object) -> None:
+        self.ended.set()
+        self.thread.join()
+
+    @property
+    def used(self) -> int:
+        return self.top - self.start
+
+
+def measure(path: Path, what: str, times: int) -> dict[str, float]:
+    """Seconds and peak memory of one way of reading, in this process."""
+    columns = ["source", "target"] + (["weight"] if path.stem == "weighted" else [])
+    if what == "load":
+        from kingpost.core.ingest import from_table, load
+
+        small = pq.ParquetFile(path)
+        from_table(pa.Table.from_batches([next(small.iter_batches(1_000))]))
+        for kernels_of in (1, 10**12):
+            from_table(pa.table({"source": [1, 2 * kernels_of], "target": [2, 3]}))
+    work = (
+        (lambda: load(path)) if what == "load" else (lambda: pq.read_table(path, columns=columns))
+    )
+    seconds, used, size = [], 0, 0
+    for turn in range(times):
+        begin = time.perf_counter()
+        if turn == 0:
+            with Peak() as peak:
+                made = work()
+            used = peak.used
+        else:
+            made = work()
+        seconds.append(time.perf_counter() - begin)
+        size = made.nbytes if what == "read" else made.m
+        del made
+    return {"seconds": min(seconds), "used": used, "size": size}
+
+
+def run(folder: Path, kinds: list[str], times: int) -> None:
+    """Print one line a file; sizes in bytes a row."""
+    heads = ("rows", "read s", "load s", "ratio", "columns", "peak")
+    print(f"{'file':10}" + "".join(f"{head:>12}" for head in heads))
+    for kind in kinds:
+        path = folder / f"{kind}.parquet"
+        rows = pq.ParquetFile(path).metadata.num_rows
+        found = {}
+        for what in ("read", "load"):
+            command = [sys.executable, __file__, "one", str(path), what, "--times", str(times)]
+            found[what] = json.loads(
+                subprocess.run(command, check=True, capture_output=True).stdout
+            )
+        read, loaded = found["read"], found["load"]
+        figures = (read["seconds"], loaded["seconds"], loaded["seconds"] / read["seconds"])
+        figures += (read["size"] / rows, loaded["used"] / rows)
+        print(f"{kind:10}{rows:12,}" + "".join(f"{figure:12.2f}" for figure in figures))
+
+
+def main() -> None:
+    parser = argparse.ArgumentParser(description=__doc__)
+    parser.add_argument("task", choices=["make", "run", "one"])
+    parser.add_argument("place", type=Path)
+    parser.add_argument("what", nargs="?", default="load")
+    parser.add_argument("--rows", type=int, default=16_000_000)
+    parser.add_argument("--nodes", type=int, default=1_000_000)
+    parser.add_argument("--times", type=int, default=3)
+    parser.add_argument("--kinds", nargs="*", default=list(KINDS))
+    given = parser.parse_args()
+    if given.task == "make":
+        make(given.place, given.rows, given.nodes)
+    elif given.task == "one":
+        print(json.dumps(measure(given.place, given.what, given.times)))
+    else:
+        run(given.place, given.kinds, given.times)
+
+
+if __name__ == "__main__":
+    main()
