@@ -5,11 +5,12 @@ from __future__ import annotations
 import dataclasses
 from typing import Any
 
+from kingpost.core.export.account import account_pairs
 from kingpost.core.export.cells import plain_ascii, wrap
 from kingpost.core.export.heading import graph_line
 from kingpost.core.export.jsonable import jsonable
 from kingpost.core.export.layout import Column, terminal_table
-from kingpost.core.graph import Account, Graph
+from kingpost.core.graph import Graph
 from kingpost.core.ingest.about import TableAbout
 from kingpost.core.insight.audit import QUANTILES, Audit
 from kingpost.core.text import count, listed, visible
@@ -43,7 +44,7 @@ def audit_text(
     """An audit as lines of at most ``width`` columns."""
     lines = wrap(graph_line(graph), width, "  ")
     lines += ["", "Table", *_table(table, width)]
-    lines += ["", "Rows", *_pairs(_account(graph.account), width)]
+    lines += ["", "Rows", *_pairs(account_pairs(graph.account), width)]
     lines += ["", "Structure", *_pairs(_structure(audit), width)]
     lines += ["", *_degrees(audit, width)]
     text = "\n".join(line.rstrip() for line in lines) + "\n"
@@ -77,32 +78,6 @@ def _table(table: TableAbout, width: int) -> list[str]:
 def _could_be(column: Any) -> str:
     uses = [("an end", column.can_be_id), ("a weight", column.can_be_weight)]
     return " or ".join(name for name, possible in uses if possible) or "-"
-
-
-def _account(account: Account) -> list[tuple[str, str]]:
-    pairs = [("read", f"{account.rows_read:,}"), ("kept", f"{account.rows_kept:,}")]
-    for reason, rows in account.skipped.items():
-        examples = [visible(text, 60) for text in account.examples.get(reason, ())]
-        shown = f" (such as {listed(examples)})" if examples else ""
-        pairs.append(("skipped", f"{rows:,} {visible(reason)}{shown}"))
-    pairs.append(("merged", f"{account.merged:,} into an earlier edge between the same nodes"))
-    if account.loops_dropped:
-        pairs.append(("dropped", f"{account.loops_dropped:,} self-loops"))
-    if account.zero_weight:
-        pairs.append(("left out", count(account.zero_weight, "edge") + " of weight zero"))
-    if account.filtered:
-        pairs.append(("filtered", f"{account.filtered:,}"))
-    if account.nodes_rows:
-        pairs.append(
-            (
-                "node table",
-                f"{count(account.nodes_rows, 'row')}, {account.nodes_joined:,} joined, "
-                f"{account.nodes_unknown:,} of nodes that have no edge, "
-                f"{account.nodes_repeated:,} repeated; "
-                f"{count(account.nodes_missing, 'node')} without a row",
-            )
-        )
-    return pairs
 
 
 def _structure(audit: Audit) -> list[tuple[str, str]]:

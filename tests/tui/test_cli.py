@@ -307,3 +307,23 @@ def test_ascii_where_the_locale_has_no_more(hostile: Path, monkeypatch: pytest.M
         assert run("rank", hostile, "--format", form).stdout.isascii()
     monkeypatch.setenv("LC_ALL", "C.UTF-8")
     assert not run("rank", hostile).stdout.isascii()
+
+
+def test_what_was_lost_is_told(calls: Path, tmp_path: Path) -> None:
+    nodes = tmp_path / "some.csv"
+    nodes.write_text("id,team\na,x\nzz,y\na,z\n")
+    said = run("rank", calls, "--nodes", nodes).stderr
+    assert "node table: 1 of 3 rows joined" in said
+    assert "1 of nodes that no edge names" in said
+    assert "1 repeated" in said
+    assert "4 nodes without a row" in said
+    bad = tmp_path / "bad.parquet"
+    pq.write_table(
+        pa.table({"source": ["a", None, "b"], "target": ["b", "a", "a"], "weight": [1.0, 1, -1]}),
+        bad,
+    )
+    refused = run("rank", bad)
+    assert refused.exit_code == 2
+    skipped = run("rank", bad, "--bad-rows", "skip")
+    assert skipped.exit_code == 0
+    assert skipped.stderr.count("skipped 1 row: ") == 2

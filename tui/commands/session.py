@@ -127,14 +127,16 @@ class Session:
         self.watch.cancel()
 
     def load(self, paths: tuple[str, ...], options: LoadOptions) -> tuple[Graph, float]:
-        """The graph and the seconds it took; what was guessed is told on standard error."""
+        """The graph and the seconds it took; what was guessed or lost is told on standard error."""
         from kingpost.core.ingest import load
 
         began = time.perf_counter()
         graph = load(list(paths), options, self.watch)
         taken = time.perf_counter() - began
         self.line.clear()
-        for note in graph.account.notes:
+        from kingpost.core.export.account import losses
+
+        for note in [*graph.account.notes, *losses(graph.account)]:
             complain(f"note: {note}")
         return graph, taken
 
