@@ -11,12 +11,12 @@ from __future__ import annotations
 from collections.abc import Iterator
 from dataclasses import dataclass, field
 from functools import cached_property
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
-from kingpost.core.graph import Adjacency, Floats, Flow, Graph
-from kingpost.core.parallel import each
+from kingpost.core.graph import Adjacency, Graph
 from kingpost.core.watch import Watch
 
 _PIECE = 4_000_000  # edges a kernel call may visit before it looks whether it was cancelled
@@ -44,8 +44,7 @@ class Structure:
     inner: NDArray[np.int64]
     stored: int
     _outward: Adjacency
-    _inward: Adjacency
-    _inside: dict[str, Floats] = field(default_factory=dict)
+    cache: dict[str, Any] = field(default_factory=dict)  # what measures found out and keep
 
     @property
     def count(self) -> int:
@@ -70,23 +69,6 @@ class Structure:
     def members(self, component: int) -> NDArray[np.uint32]:
         """Nodes of one component, ascending."""
         return self.order[self.starts[component] : self.starts[component + 1]]
-
-    def inside(self, flow: Flow, watch: Watch | None = None) -> Floats:
-        """Weight each node gives along ``flow`` to its own component, shape (n,); kept."""
-        from kingpost.core.kernels.sweep import inside
-
-        if flow not in self._inside:
-            watch = watch or Watch()
-            push = self._outward if flow == "along" else self._inward
-            values = np.empty(len(self.component))
-
-            def piece(part: tuple[int, int]) -> None:
-                watch.check()
-                inside(push.offsets, push.neighbours, push.weights, *part, self.component, values)
-
-            each(piece, row_pieces(push.offsets, _PIECE), watch.threads)
-            self._inside[flow] = values
-        return self._inside[flow]
 
     def period(self, component: int) -> int:
         """Greatest common divisor of the lengths of a component's cycles; 0 if it has none."""
@@ -165,7 +147,7 @@ def _finish(
         watch.check()
         kernels.edges_inside(out.offsets, out.neighbours, component, low, high, counts)
     cyclic = np.flatnonzero(counts)
-    return Structure(component, order, starts, cyclic, counts[cyclic], graph.stored, graph.outward, graph.inward)
+    return Structure(component, order, starts, cyclic, counts[cyclic], graph.stored, graph.outward)
 
 
 def weak_components(graph: Graph, watch: Watch | None = None) -> NDArray[np.uint32]:

@@ -73,18 +73,3 @@ def pull_inside(offsets, neighbours, weights, order, low, high, group, z, y):  #
                 total += z[j] if weights is None else weights[e] * z[j]
             e += one
         y[i] = total
-
-
-@kernel()
-def push_rows(offsets, neighbours, weights, order, low, high, z, y):  # type: ignore[no-untyped-def]
-    """``y[v] += weight(u -> v) z[u]`` for the nodes u of ``order[low:high]``."""
-    one = np.uint64(1)
-    for k in range(np.uint64(low), np.uint64(high)):
-        u = np.uint64(order[k])
-        value = z[u]
-        e = np.uint64(offsets[u])
-        end = np.uint64(offsets[u + one])
-        if value != 0.0:
-            while e < end:
-                y[neighbours[e]] += value if weights is None else value * weights[e]
-                e += one

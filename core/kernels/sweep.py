@@ -42,32 +42,28 @@ def row_sum(neighbours, weights, start, end, z):  # type: ignore[no-untyped-def]
 
 
 @kernel()
-def gauss_seidel(offsets, neighbours, weights, order, low, high, b, share, scale, loops, keep, z, x):  # type: ignore[no-untyped-def]
-    """One sweep in place over ``order[low:high]``, with ``share * b`` for b.
+def gauss_seidel(offsets, neighbours, weights, order, low, high, b, scale, loops, z, x):  # type: ignore[no-untyped-def]
+    """One sweep in place over ``order[low:high]``; returns ``sum |change|`` and ``sum |x|``.
 
     ``loops[i]`` is ``B[i, i]`` (or ``loops`` is empty where there is none): a self-loop is
-    solved for, not iterated.  Returns ``sum |change|``, ``sum x`` and ``sum keep x`` over the
-    rows (the last is 0 where ``keep`` is empty).
+    solved for, not iterated.
     """
     zero, one = np.uint64(0), np.uint64(1)
     constant = len(b) == 1
     looped = len(loops) > 0
-    kept = len(keep) > 0
-    moved = mass = balance = 0.0
+    moved = mass = 0.0
     for k in range(np.uint64(low), np.uint64(high)):
         i = np.uint64(order[k])
         new = row_sum(neighbours, weights, np.uint64(offsets[i]), np.uint64(offsets[i + one]), z)
-        new += share * (b[zero] if constant else b[i])
+        new += b[zero] if constant else b[i]
         old = x[i]
         if looped and loops[i] != 0.0:
             new = (new - loops[i] * old) / (1.0 - loops[i])
         moved += abs(new - old)
-        mass += new
-        if kept:
-            balance += keep[i] * new
+        mass += abs(new)
         x[i] = new
         z[i] = new * scale[i]
-    return moved, mass, balance
+    return moved, mass
 
 
 @kernel()
@@ -166,19 +162,3 @@ def push(offsets, neighbours, weights, low, high, z, y):  # type: ignore[no-unty
             while e < end:
                 y[neighbours[e]] += value if weights is None else value * weights[e]
                 e += one
-
-
-@kernel()
-def inside(offsets, neighbours, weights, low, high, group, y):  # type: ignore[no-untyped-def]
-    """``y[u]`` = weight of the edges from u (rows ``low..high``) to nodes of u's own group."""
-    one = np.uint64(1)
-    for u in range(np.uint64(low), np.uint64(high)):
-        g = group[u]
-        total = 0.0
-        e = np.uint64(offsets[u])
-        end = np.uint64(offsets[u + one])
-        while e < end:
-            if group[neighbours[e]] == g:
-                total += 1.0 if weights is None else weights[e]
-            e += one
-        y[u] = total

@@ -77,13 +77,11 @@ def _solve(graph: Graph, settings: SurferSettings, watch: Watch) -> Solve:
     matrix, strength = walk(graph, settings.flow, d)
     jump = Jump(graph, settings, strength == 0)
     structure = graph.structure
-    if not structure.acyclic:
-        structure.inside(settings.flow, watch)
     clock.ready()
-    system = System(
-        matrix, (1 - d) * jump.teleport, structure, settings.flow, graph.push(settings.flow)
-    )
-    options = {"max_sweeps": settings.max_sweeps, "watch": watch}
+    system = System(matrix, (1 - d) * jump.teleport, structure, settings.flow)
+    options: dict[str, Any] = {
+        "max_sweeps": settings.max_sweeps, "watch": watch, "gain": 0.5 * d / (1 - d)
+    }  # fmt: skip
     early = settings.stop_order is not None
     if jump.apart is None:
         judge = order_judge(settings, lambda y, r: jump.pseudo(y, r)[1])

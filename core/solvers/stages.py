@@ -23,14 +23,15 @@ _SPLIT = 1_000_000  # edges above which a stage is worth splitting
 
 @dataclass(frozen=True)
 class Stage:
-    """Rows ``order[low:high]``; ``component`` is set where they are one strong component."""
+    """Rows ``order[low:high]``: swept until settled, or solved once.
+
+    ``steps`` are done one after the other, the blocks of one step side by side."""
 
     low: int
     high: int
     swept: bool
     edges: int
     steps: list[list[tuple[int, int]]]
-    component: int | None = None
 
 
 @dataclass(frozen=True)
@@ -39,6 +40,11 @@ class Plan:
 
     order: Order
     stages: list[Stage]
+
+    @property
+    def lanes(self) -> int:
+        """The most blocks that are worked on side by side."""
+        return max((len(step) for stage in self.stages for step in stage.steps), default=1)
 
     @property
     def swept(self) -> list[tuple[int, int]]:
@@ -67,13 +73,12 @@ def plan(structure: Structure, rows: Adjacency, flow: Flow) -> Plan:
             if run:
                 first, last = int(starts[run[0]]), int(starts[run[-1] + 1])
                 _once(stages, rows, order, at, first)
-                stages.append(_swept(rows, order, first, last, None))
+                stages.append(_swept(rows, order, first, last))
                 at, run = last, []
             if number < count:
                 first, last = int(starts[number]), int(starts[number + 1])
                 _once(stages, rows, order, at, first)
-                own = number if along else count - 1 - number
-                stages.append(_swept(rows, order, first, last, own))
+                stages.append(_swept(rows, order, first, last))
                 at = last
         else:
             run.append(number)
@@ -106,12 +111,12 @@ def _once(stages: list[Stage], rows: Adjacency, order: Order, low: int, high: in
         stages.append(Stage(low, high, False, edges, [[piece] for piece in pieces]))
 
 
-def _swept(rows: Adjacency, order: Order, low: int, high: int, component: int | None) -> Stage:
+def _swept(rows: Adjacency, order: Order, low: int, high: int) -> Stage:
     edges = _count(rows, order, low, high)
     if edges < _SPLIT:
-        return Stage(low, high, True, edges, [[(low, high)]], component)
+        return Stage(low, high, True, edges, [[(low, high)]])
     blocks = _LANES * max(_STEPS, round(edges / (_LANES * 4 * _SPLIT)))
     pieces = cut(rows, order, low, high, -(-(edges + high - low) // blocks))
     pieces += [(high, high)] * (-len(pieces) % _LANES)  # every lane takes part in every step
     steps = [pieces[at : at + _LANES] for at in range(0, len(pieces), _LANES)]
-    return Stage(low, high, True, edges, steps, component)
+    return Stage(low, high, True, edges, steps)
