@@ -75,22 +75,9 @@ def componentwise(b: Floats, y: Floats, r: Residual) -> float:
     """
     least = (b - r.value) - r.slack * (1 + 8 * UNIT)  # a lower bound of M y
     live = y > 0
+    if not (y >= 0).all() or (least[live] <= 0).any():
+        return float("inf")
     if not live.any():
         return 0.0
-    if (y < 0).any() or (least[live] <= 0).any():
-        return float("inf")
     return float((r.reach[live] / least[live]).max()) * (1 + 8 * UNIT)
 
-
-def weighted(r: Residual, guard: Floats, guarded: Floats) -> float:
-    """c with ``|x - y| <= c guard``, for ``guard > 0`` and ``guarded <= M guard``, ``> 0``.
-
-    Serves where b has zeros or signs: the guard is any positive vector that M keeps positive
-    (for alpha < 0 take M of ``|alpha|``, whose inverse dominates).
-    """
-    live = guard > 0
-    if not live.any():
-        return 0.0
-    if (guarded[live] <= 0).any():
-        return float("inf")
-    return float((r.reach[live] / guarded[live]).max()) * (1 + 8 * UNIT)

@@ -92,6 +92,11 @@ class Pull:
         each(piece, cut(rows, order, low, high, _PIECE // 2), watch.threads)
         return y, size
 
+    def edges_of(self, nodes: Order) -> int:
+        """Number of stored entries in the rows of ``nodes``."""
+        long = nodes.astype(np.int64)
+        return int((self.rows.offsets[long + 1] - self.rows.offsets[long]).sum())
+
 
 def cut(rows: Adjacency, order: Order, low: int, high: int, edges: int) -> list[tuple[int, int]]:
     """Cut ``order[low:high]`` into consecutive ranges of about ``edges`` entries each."""

@@ -1,0 +1,48 @@
+"""A bracket of the spectral radius of a graph's adjacency, kept with the graph."""
+
+from __future__ import annotations
+
+from collections.abc import Generator
+from dataclasses import dataclass
+
+from kingpost.core.errors import Interrupted
+from kingpost.core.graph import Graph
+from kingpost.core.operators import adjacency
+from kingpost.core.result import Iteration
+from kingpost.core.solvers.perron import bracket
+from kingpost.core.watch import Watch
+
+
+@dataclass(frozen=True)
+class Radius:
+    """``low <= rho <= high``, as a theorem (Collatz-Wielandt), rounding included."""
+
+    low: float
+    high: float
+
+
+def spectral_radius(
+    graph: Graph, width: float, watch: Watch, max_steps: int = 5_000
+) -> Generator[Iteration, None, Radius | None]:
+    """Bracket rho(A) to the relative ``width`` if rounding and ``max_steps`` allow.
+
+    A and its transpose have the same rho, so the flow does not matter.  An acyclic graph has
+    rho = 0.  None if cancelled.
+    """
+    structure = graph.structure
+    if structure.acyclic:
+        return Radius(0.0, 0.0)
+    known: tuple[float, Radius] | None = structure.cache.get("radius")
+    if known is not None and known[0] <= width:
+        return known[1]
+    work = bracket(
+        adjacency(graph, "along"), structure,
+        width=width, max_steps=max_steps, watch=watch, separate=False,
+    )  # fmt: skip
+    try:
+        found = yield from work
+    except Interrupted:
+        return None
+    radius = Radius(*found.rho)
+    structure.cache["radius"] = width, radius
+    return radius

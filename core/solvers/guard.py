@@ -1,0 +1,79 @@
+"""A positive vector that an M-matrix keeps positive: what turns any residual into a bound.
+
+With ``w > 0`` and ``M w >= h > 0`` (M = I - B, B nonnegative) every solution of ``M x = b`` obeys
+``|x - y| <= max_i(|r_i| / h_i) w`` for any y with residual r, whatever the signs of b and y; the
+same holds for ``M' x = b`` whenever ``|M'^-1| <= M^-1``, as for negative alpha.  That such a w exists
+also proves that the spectral radius of B is below 1.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Generator
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from kingpost.core.certify import Residual
+from kingpost.core.graph import Floats, Flow
+from kingpost.core.operators import Pull
+from kingpost.core.result import Iteration
+from kingpost.core.solvers.linear import Solution, System, solve
+from kingpost.core.structure import Structure
+from kingpost.core.watch import Watch
+
+
+@dataclass(frozen=True)
+class Guard:
+    """``w``, a lower bound ``kept`` of M w, and the rows ``live`` they hold for; shape (n,)."""
+
+    w: Floats
+    kept: Floats
+    live: NDArray[np.bool_]
+    sweeps: int
+    edge_visits: int
+
+    def factor(self, reach: Floats) -> float:
+        """c with ``|x - y| <= c w`` for a residual of magnitude ``reach`` (shape (n,))."""
+        if not self.live.any():
+            return 0.0
+        return float((reach[self.live] / self.kept[self.live]).max()) * (1 + 1e-15)
+
+
+def find_guard(
+    matrix: Pull,
+    structure: Structure,
+    flow: Flow,
+    g: Floats,
+    *,
+    max_sweeps: int,
+    watch: Watch,
+    ignore: int | None = None,
+) -> Generator[Iteration, None, Guard | None]:
+    """Solve ``M w = g`` only so far that ``M w >= g / 2`` where ``g > 0``; None if that fails.
+
+    ``ignore`` is a node whose row does not count (its column in ``matrix`` must be zero).
+    """
+    live = np.broadcast_to(g > 0, matrix.n).copy()
+    if ignore is not None:
+        live[ignore] = False
+
+    def judge(w: Floats, r: Residual) -> tuple[float, bool]:
+        if not live.any():
+            return 0.0, False
+        if not (w[live] > 0).all():
+            return float("inf"), False
+        return float((r.reach / g)[live].max()), False
+
+    found: Solution = yield from solve(
+        System(matrix, g, structure, flow),
+        judge,
+        tol=0.5,
+        max_sweeps=max_sweeps,
+        watch=watch,
+        gain=0.3,
+    )
+    if not found.bound <= 0.5:
+        return None
+    kept = g - found.residual.reach
+    return Guard(found.x, np.broadcast_to(kept, matrix.n), live, found.sweeps, found.edge_visits)

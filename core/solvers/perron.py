@@ -1,0 +1,278 @@
+"""The dominant eigenvector of the strong components of a nonnegative matrix, with brackets.
+
+For every ``y > 0`` on an irreducible block, ``min (B y)_i / y_i <= rho <= max (B y)_i / y_i`` (Collatz
+1942, Wielandt 1950).  The bracket is what is claimed; power iteration with a shift (so that
+periodic blocks do not oscillate), dense or Krylov eigenvectors only supply the y.
+
+All cyclic components are bracketed at once: each product stays inside the components, and those
+whose upper end falls below the best lower end are dropped.
+"""
+
+from __future__ import annotations
+
+import time
+from collections.abc import Generator
+from dataclasses import dataclass, field
+
+import numpy as np
+from numpy.typing import NDArray
+
+from kingpost.core.certify import UNIT
+from kingpost.core.graph import Floats
+from kingpost.core.operators import Order, Pull, cut
+from kingpost.core.parallel import each
+from kingpost.core.result import Iteration
+from kingpost.core.structure import Structure
+from kingpost.core.watch import Watch
+
+_DENSE = 300  # components up to this size get their first vector from a dense solver
+_PATIENCE = 24  # power steps before a slow component is handed to a Krylov solver
+_WIDE = 4  # at most this many components are worth a Krylov solve each
+
+
+@dataclass
+class Bracketed:
+    """Brackets of the spectral radii of components, and a positive vector for each.
+
+    ``low`` and ``high`` have one entry for each of ``components`` (numbers in the Structure) that
+    may still be dominating; ``y`` is positive on their nodes, zero elsewhere, shape (n,).
+    """
+
+    components: NDArray[np.int64]
+    low: Floats
+    high: Floats
+    y: Floats
+    steps: int = 0
+    edge_visits: int = 0
+    log: list[Iteration] = field(default_factory=list)
+
+    @property
+    def rho(self) -> tuple[float, float]:
+        """Bracket of the largest spectral radius of all."""
+        return float(self.low.max()), float(self.high.max())
+
+    @property
+    def decided(self) -> bool:
+        """Whether one component is proven to dominate all others."""
+        return len(self.components) == 1
+
+
+def bracket(
+    matrix: Pull,
+    structure: Structure,
+    *,
+    width: float,
+    max_steps: int,
+    watch: Watch,
+    only: int | None = None,
+    separate: bool = True,
+) -> Generator[Iteration, None, Bracketed]:
+    """Bracket the spectral radius of ``matrix``; needs at least one cyclic component.
+
+    Ends when the bracket's relative width is at most ``width`` and (with ``separate``) one
+    component is proven dominating, or when rounding or ``max_steps`` allow no more.  ``only``
+    names a single component to look at.
+
+    Raises:
+        Interrupted: if ``watch`` was cancelled.
+    """
+    work = _Brackets(matrix, structure, watch, only)
+    while True:
+        yield work.step()
+        state = work.state
+        rho_low, rho_high = state.rho
+        narrow = rho_high - rho_low <= width * rho_high
+        if narrow and (state.decided or not separate):
+            return state
+        if state.steps >= max_steps or work.stuck:
+            return state
+        if work.slow:
+            work.accelerate()
+
+
+class _Brackets:
+    def __init__(
+        self, matrix: Pull, structure: Structure, watch: Watch, only: int | None
+    ) -> None:
+        self.matrix, self.structure, self.watch = matrix, structure, watch
+        numbers = structure.cyclic if only is None else np.array([only], dtype=np.int64)
+        y = np.zeros(matrix.n)
+        self.state = Bracketed(numbers, np.zeros(len(numbers)), np.full(len(numbers), np.inf), y)
+        self.began = time.perf_counter()
+        self._choose(np.ones(len(numbers), dtype=bool))
+        y[self.nodes] = 1.0
+        self.stuck = False
+        self._since = 0
+        self._widths: list[float] = []
+        self._tried: set[int] = set()
+
+    def _choose(self, keep: NDArray[np.bool_]) -> None:
+        """Keep the marked components and drop the others' nodes."""
+        state = self.state
+        state.components = state.components[keep]
+        state.low, state.high = state.low[keep], state.high[keep]
+        starts, sizes = self.structure.starts, self.structure.sizes
+        sizes = sizes[state.components]
+        at = np.repeat(starts[state.components] - np.cumsum(sizes) + sizes, sizes)
+        self.nodes: Order = self.structure.order[at + np.arange(int(sizes.sum()))]
+        self.firsts = np.cumsum(sizes) - sizes
+        self.sizes = sizes
+        alive = np.zeros(self.matrix.n, dtype=bool)
+        alive[self.nodes] = True
+        state.y[~alive] = 0.0
+        rows = self.matrix.rows
+        self.pieces = cut(rows, self.nodes, 0, len(self.nodes), 2_000_000)
+        long = self.nodes.astype(np.int64)
+        lengths = rows.offsets[long + 1] - rows.offsets[long]
+        self.edges = int(lengths.sum())
+        # A plain sum of k terms is off by at most (k / 4 + 4) u of itself (four partial sums).
+        self.slack = UNIT * (lengths / 4 + 8)
+
+    def product(self, y: Floats) -> Floats:
+        """``B y`` inside the components, for ``nodes`` in their order."""
+        from kingpost.core.kernels.rows import pull_inside
+        from kingpost.core.kernels.sweep import pull_rows
+
+        rows, group = self.matrix.rows, self.structure.component
+        z = y * self.matrix.scale
+        out = np.empty(self.matrix.n)
+        alone = len(self.state.components) == 1  # nothing else is nonzero: no need to ask
+
+        def piece(part: tuple[int, int]) -> None:
+            self.watch.check()
+            if alone:
+                pull_rows(
+                    rows.offsets, rows.neighbours, rows.weights, self.nodes, *part, z, out
+                )
+            else:
+                pull_inside(
+                    rows.offsets, rows.neighbours, rows.weights, self.nodes, *part, group, z, out
+                )
+
+        each(piece, self.pieces, self.watch.threads)
+        self.state.edge_visits += self.edges
+        return out[self.nodes]
+
+    def step(self) -> Iteration:
+        """One product: new brackets, the next vector, and who can no longer be dominating."""
+        state = self.state
+        mine = state.y[self.nodes]
+        product = self.product(state.y)
+        with np.errstate(divide="ignore", invalid="ignore"):
+            ratio = product / mine
+        low = np.minimum.reduceat(ratio * (1 - self.slack), self.firsts)
+        high = np.maximum.reduceat(ratio * (1 + self.slack), self.firsts)
+        # Both hold at every step, so the best of all steps does.
+        state.low = np.fmax(state.low, low)
+        state.high = np.fmin(state.high, high)
+        middle = np.repeat((np.fmax(low, 0) + np.fmin(high, 1e300)) / 2, self.sizes)
+        after = product + 0.35 * middle * mine
+        top = np.repeat(np.maximum.reduceat(after, self.firsts), self.sizes)
+        with np.errstate(invalid="ignore", divide="ignore"):
+            after = after / top
+        # An entry that underflows would leave the bracket open for good.
+        state.y[self.nodes] = np.maximum(np.nan_to_num(after), 1e-290)
+        state.steps += 1
+        keep = state.high >= state.low.max()
+        if not keep.all():
+            self._choose(keep)
+        lo, hi = state.rho
+        self._widths.append((hi - lo) / hi if hi > 0 else 0.0)
+        self._since += 1
+        line = Iteration(
+            state.steps,
+            self._widths[-1],
+            float("nan"),
+            state.edge_visits,
+            time.perf_counter() - self.began,
+            eigenvalue=(lo, hi),
+            part="bracket",
+        )
+        state.log.append(line)
+        recent = self._widths[-60:]
+        self.stuck = self._widths[-1] < 1e-13 and len(recent) > 20 and min(recent[:20]) <= min(
+            recent[20:]
+        )
+        return line
+
+    @property
+    def slow(self) -> bool:
+        """Whether a better vector is worth asking another solver for."""
+        few = len(self.state.components) <= 64
+        small = few and int(self.sizes.max()) <= _DENSE and self._since >= 3
+        large = len(self.state.components) <= _WIDE and self._since >= _PATIENCE
+        return (small or large) and self._widths[-1] > 1e-15
+
+    def accelerate(self) -> None:
+        """Replace the vectors by dense or Krylov ones where those come out positive."""
+        self._since = -(10**9) if len(self._tried) > 3 * _WIDE + 64 else -_PATIENCE
+        for number, first, size in zip(
+            self.state.components.tolist(), self.firsts.tolist(), self.sizes.tolist(), strict=True
+        ):
+            if number in self._tried or size == 1:
+                continue
+            self._tried.add(number)
+            nodes = self.nodes[first : first + size]
+            vector = leading(self.matrix, nodes, self.state.y[nodes], self.watch, self._count)
+            if vector is not None:
+                self.state.y[nodes] = vector
+
+    def _count(self, edges: int) -> None:
+        self.state.edge_visits += edges
+
+
+def leading(
+    matrix: Pull, nodes: Order, start: Floats, watch: Watch, count: object = None
+) -> Floats | None:
+    """The dominant eigenvector of one component by a library, or None if it is not positive.
+
+    Dense up to 300 nodes, implicitly restarted Arnoldi (ARPACK through scipy) from there, with a
+    fixed start.  Nothing is claimed of it until a bracket has closed around it.
+    """
+    from scipy.sparse.linalg import ArpackError, LinearOperator, eigs
+
+    from kingpost.core.kernels.sweep import pull_rows
+
+    rows, size = matrix.rows, len(nodes)
+    place = np.zeros(matrix.n)
+    out = np.empty(matrix.n)
+    pieces = cut(rows, nodes, 0, size, 2_000_000)
+    edges = matrix.edges_of(nodes)
+
+    def apply(vector: Floats) -> Floats:
+        place[nodes] = matrix.scale[nodes] * vector.ravel()
+
+        def piece(part: tuple[int, int]) -> None:
+            watch.check()
+            pull_rows(rows.offsets, rows.neighbours, rows.weights, nodes, *part, place, out)
+
+        each(piece, pieces, watch.threads)
+        if callable(count):
+            count(edges)
+        result: Floats = out[nodes]
+        return result
+
+    if size <= _DENSE:
+        dense = np.column_stack([apply(column) for column in np.eye(size)])
+        values, vectors = np.linalg.eig(dense)
+        vector = vectors[:, int(np.argmax(values.real))]
+    else:
+        operator = LinearOperator((size, size), matvec=apply, dtype=np.float64)
+        try:
+            _, found = eigs(
+                operator, k=1, which="LR", v0=start / np.linalg.norm(start), ncv=min(20, size - 1),
+                maxiter=60, tol=1e-14,
+            )  # fmt: skip
+        except ArpackError:
+            return None
+        vector = found[:, 0]
+    real = np.real(vector)
+    if np.abs(np.imag(vector)).max() > 1e-6 * np.abs(real).max():
+        return None
+    real = real * np.sign(real[int(np.argmax(np.abs(real)))])
+    top = float(real.max())
+    # Entries lost in rounding are given a floor; a few power steps mend them.
+    if not top > 0 or float(real.min()) < -1e-8 * top:
+        return None
+    result: Floats = np.maximum(real / top, 1e-17)
+    return result
