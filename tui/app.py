@@ -111,13 +111,17 @@ class KingpostApp(App[int], inherit_bindings=False):
             self.screen.stage(job)
 
     def _loaded(self, graph: Graph) -> None:
-        from kingpost.tui.models.sitting import Sitting
-
-        self._sitting = Sitting(graph, self._measure)
+        self._sitting = self.make_sitting(graph, self._measure)
         settings = self._settings() if callable(self._settings) else self._settings
         if settings is not None:
             self._sitting.settings[self._measure] = settings
         self.solve(self._measure, settings)
+
+    def make_sitting(self, graph: Graph, measure: str) -> Sitting:
+        """The sitting over a graph just loaded."""
+        from kingpost.tui.models.sitting import Sitting
+
+        return Sitting(graph, measure)
 
     def _unreadable(self, sentence: str) -> None:
         self.sentence = sentence

@@ -188,7 +188,7 @@ def attribute_keys(values: Any) -> NDArray[Any]:
         return np.asarray(pc.cast(values, pa.float64(), safe=False).to_numpy())
     if pa.types.is_floating(kind):
         return np.asarray(pc.cast(values, pa.float64()).to_numpy())
-    ranks = pc.rank(values, sort_keys="ascending", null_placement="at_end", tiebreaker="dense")
+    ranks = pc.rank(values, sort_keys="ascending", tiebreaker="dense")
     keys = np.asarray(ranks.to_numpy()).astype(np.float64)
     if values.null_count:
         keys[np.asarray(pc.is_null(values).to_numpy(), dtype=bool)] = np.nan

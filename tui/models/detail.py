@@ -19,6 +19,9 @@ if TYPE_CHECKING:
 
 Piece = tuple[str, str]
 _BAR = 8
+# These lines are written anew at every key: their length is what a key costs on a slow link.
+_TRACK = 44
+_SUPPORTS = 4
 _SEPARATOR = "   "
 
 
@@ -74,7 +77,10 @@ def ruler_line(sitting: Sitting, node: int, width: int, glyphs: Glyphs) -> list[
         room, legend = 0, ""
     name = tame(sitting.graph.name(node, 200), glyphs)
     marks = ruler(
-        {letter: first for letter, (_, first, _) in found.items()}, n, max(rest - room, 8), glyphs
+        {letter: first for letter, (_, first, _) in found.items()},
+        n,
+        min(max(rest - room, 8), _TRACK),
+        glyphs,
     )
     pieces: list[Piece] = [(f" {fit(name, named, glyphs=glyphs)}", "strong"), ("  1 ", "plain")]
     pieces += track_pieces(marks, glyphs)
@@ -115,10 +121,11 @@ def supports_line(graph: Graph, given: Contributions, width: int, glyphs: Glyphs
         drawn = bar(float(given.share[at]), _BAR, glyphs)
         size = cell_len(name) + len(share) + cell_len(drawn) + 4
         rest = len(f"+{count - at - 1:,} more")
-        if used + size + (rest if at < count - 1 else 0) > width and at > 0:
+        full = used + size + (rest if at < count - 1 else 0) > width
+        if at == _SUPPORTS or (full and at > 0):
             pieces.append((f"+{count - at:,} more", "quiet"))
             return pieces
-        pieces += [(f"{name} ", "plain"), (f"{share} ", "strong"), (drawn, "bar"), ("  ", "plain")]
+        pieces += [(f"{name} ", "plain"), (f"{share} ", "plain"), (drawn, "bar"), ("  ", "plain")]
         used += size
     return pieces
 

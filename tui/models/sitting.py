@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Any
 
@@ -24,10 +24,11 @@ class Sitting:
     results: dict[str, Result] = field(default_factory=dict)
     solves: list[Result] = field(default_factory=list)
     names: Sequence[str] = NAMES
+    find: Callable[[str], Measure] = measure
 
     def measure(self, name: str) -> Measure:
-        """The measure of that name, from the registry."""
-        return measure(name)
+        """The measure of that name, by default from the registry."""
+        return self.find(name)
 
     def settings_of(self, name: str) -> Settings:
         """Settings in force for a measure; its defaults, with the flow now shown, at first."""

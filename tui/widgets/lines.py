@@ -24,8 +24,11 @@ def looks_of(widget: Widget) -> Looks:
 
 
 def strip_of(pieces: Iterable[Piece], width: int, looks: Looks) -> Strip:
-    """Styled pieces as one row of exactly ``width`` cells; nothing in them is read as markup."""
-    segments: list[Segment] = []
+    """Styled pieces as one row of exactly ``width`` cells; nothing in them is read as markup.
+
+    Neighbours of one style are joined, which saves the bytes of switching styles.
+    """
+    runs: list[tuple[str, str]] = []
     left = width
     for text, role in pieces:
         size = cell_len(text)
@@ -33,10 +36,15 @@ def strip_of(pieces: Iterable[Piece], width: int, looks: Looks) -> Strip:
             text = fit(text, left, glyphs=looks.glyphs)
             size = left
         if size > 0:
-            segments.append(Segment(text, Style.parse(looks.styles[role])))
+            style = looks.styles.get(role, role)
+            if runs and runs[-1][1] == style:
+                runs[-1] = (runs[-1][0] + text, style)
+            else:
+                runs.append((text, style))
             left -= size
         if left <= 0:
             break
+    segments = [Segment(text, Style.parse(style) if style else None) for text, style in runs]
     if left > 0:
         segments.append(Segment(" " * left))
     return Strip(segments, width)

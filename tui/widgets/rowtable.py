@@ -7,11 +7,8 @@ tenth of the bytes.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
 from typing import Protocol
 
-from rich.segment import Segment
-from rich.style import Style
 from textual.geometry import Region
 from textual.message import Message
 from textual.strip import Strip
@@ -19,7 +16,7 @@ from textual.widget import Widget
 
 from kingpost.tui.models.columns import Column
 from kingpost.tui.models.drawing import fit
-from kingpost.tui.widgets.lines import looks_of
+from kingpost.tui.widgets.lines import Piece, looks_of, strip_of
 
 _GAP = "  "
 _LEAST_NAME = 8
@@ -230,59 +227,56 @@ class RowTable(Widget):
         if self._source is None or width <= 0:
             return Strip.blank(width)
         self._measure()
+        looks = looks_of(self)
         if self._headings and y == 0:
-            return self._fitted(self._heading_segments())
+            return strip_of(self._heading_pieces(), width, looks)
         row = self._top + y - (1 if self._headings else 0)
         if row < self.count:
-            return self._fitted(self._row_segments(row))
+            return strip_of(self._row_pieces(row), width, looks)
         if self.count == 0 and y == (1 if self._headings else 0):
-            return self._fitted([Segment("  " + self._empty)])
+            return strip_of([("  " + self._empty, "plain")], width, looks)
         return Strip.blank(width)
 
-    def _fitted(self, segments: Sequence[Segment]) -> Strip:
-        strip = Strip(segments)
-        return strip.adjust_cell_length(self.size.width)
-
-    def _heading_segments(self) -> list[Segment]:
-        assert self._source is not None
-        looks = looks_of(self)
-        style = Style.parse(looks.styles["title"])
-        strong = Style.parse(looks.styles["strong"])
+    def _heading_pieces(self) -> list[Piece]:
+        glyphs = looks_of(self).glyphs
         key, rising = self._sorted
-        segments = [Segment("  " if self._rail else " ")]
+        pieces: list[Piece] = [("  " if self._rail else " ", "title")]
         columns = self._shown_columns()
         for place, (at, column) in enumerate(columns):
-            text = fit(column.title, self._widths[at], column.right, looks.glyphs)
+            text = fit(column.title, self._widths[at], column.right, glyphs)
             by = column.key == key
-            segments.append(Segment(text, strong if by else style))
-            mark = (looks.glyphs.rising if rising else looks.glyphs.falling) if by else " "
-            gap = mark + " " * (len(_GAP) - 1)
-            segments.append(Segment(gap if place < len(columns) - 1 else mark, strong))
-        return segments
+            role = "strong" if by else "title"
+            pieces.append((text, role))
+            mark = (glyphs.rising if rising else glyphs.falling) if by else " "
+            pieces.append((mark, role))
+            if place < len(columns) - 1:
+                pieces.append((" " * (len(_GAP) - 1), "title"))
+        return pieces
 
-    def _row_segments(self, row: int) -> list[Segment]:
+    def _row_pieces(self, row: int) -> list[Piece]:
         assert self._source is not None
         looks, source = looks_of(self), self._source
-        styles, glyphs = looks.styles, looks.glyphs
+        glyphs = looks.glyphs
         here = self._active and row == self._row
-        segments: list[Segment] = []
+        pieces: list[Piece] = []
         if self._rail:
             code = source.rail(row)
-            segments.append(Segment(glyphs.rail[code], Style.parse(styles[_RAIL_ROLES[code]])))
-        segments.append(Segment(glyphs.pointer if here else " ", Style.parse(styles["strong"])))
+            pieces.append((glyphs.rail[code], _RAIL_ROLES[code]))
+        pieces.append((glyphs.pointer if here else " ", "plain"))
         item = source.item(row)
         hit = source.marked(row)
         columns = self._shown_columns()
         for place, (at, column) in enumerate(columns):
             text = fit(column.text(item), self._widths[at], column.right, glyphs)
-            role = styles["cursor"] if here and column.frozen else styles[column.style]
+            role = "cursor" if here and column.frozen else column.style
             if hit and column.frozen and column.stretch:
-                role = f"{role} {styles['hit']}".strip()
-            segments.append(Segment(text, Style.parse(role)))
+                # Two roles at once: a style in words is taken as it is.
+                role = f"{looks.styles[role]} {looks.styles['hit']}".strip()
+            pieces.append((text, role))
             if place < len(columns) - 1:
                 beside = here and column.frozen and columns[place + 1][1].frozen
-                segments.append(Segment(_GAP, Style.parse(styles["cursor"]) if beside else None))
-        return segments
+                pieces.append((_GAP, "cursor" if beside else "plain"))
+        return pieces
 
     @property
     def rows_shown(self) -> list[str]:
