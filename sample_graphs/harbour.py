@@ -219,7 +219,8 @@ def corners(dice: Dice, fleet: Fleet, call) -> None:
     )
     # The standby lives on a trickle until the day it is needed, and so does its umpire.
     call(PRIMARY, STANDBY, 0.8)
-    call(STANDBY, UMPIRE, 0.3)
+    call(STANDBY, UMPIRE, 0.1)
+    call(STANDBY, "trace-buoy", 2.4)
     call(choose(dice, fleet, fleet.of(3, "berths"), 1, home="", pull=1.0)[0], UMPIRE, 0.2)
     call(UMPIRE, "key-chest", 0.3)
     call(UMPIRE, "clock-signal", 0.2)
