@@ -7,6 +7,7 @@ from typing import Any
 
 from kingpost.core.export.account import account_pairs
 from kingpost.core.export.cells import plain_ascii, wrap
+from kingpost.core.export.digits import small
 from kingpost.core.export.heading import graph_line
 from kingpost.core.export.jsonable import jsonable
 from kingpost.core.export.layout import Column, terminal_table
@@ -68,11 +69,11 @@ def _table(table: TableAbout, width: int) -> list[str]:
             Column("  column", [f"  {visible(c.name, 60)}" for c in table.columns], least=10),
             Column("type", [visible(c.type, 60) for c in table.columns], least=8),
             Column("could be", [_could_be(c) for c in table.columns]),
-            Column("unasked", [roles.get(c.name, "") for c in table.columns]),
+            Column("guess", [roles.get(c.name, "") for c in table.columns]),
         ],
         width,
     )[0]
-    return [*lines, *rows, *wrap(f"  unasked: {visible(table.why)}", width, "    ")]
+    return [*lines, *rows, *wrap(f"  guess: {visible(table.why)}", width, "    ")]
 
 
 def _could_be(column: Any) -> str:
@@ -104,7 +105,7 @@ def _structure(audit: Audit) -> list[tuple[str, str]]:
         return pairs
     where = f"in the component with most edges ({count(audit.period_nodes or 0, 'node')})"
     pairs.append(("period", f"{audit.period} {where}"))
-    pairs.append(("spectral radius", f"{low:.10g}" if low == high else _bracket(low, high)))
+    pairs.append(("spectral radius", _bracket(low, high)))
     return pairs
 
 
@@ -113,7 +114,12 @@ def _components(number: int, largest: int) -> str:
 
 
 def _bracket(low: float, high: float) -> str:
-    return f"between {low:.12g} and {high:.12g}"
+    if low == high:
+        return f"{low:.10g}, exactly"
+    width = (high - low) / high
+    if width > 1e-6:
+        return f"between {low:.8g} and {high:.8g}"
+    return f"{low:.10g}, bracketed to a relative width of {small(width)}"
 
 
 def _degrees(audit: Audit, width: int) -> list[str]:

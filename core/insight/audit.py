@@ -7,10 +7,14 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from kingpost.core.errors import Interrupted
 from kingpost.core.graph import Adjacency, Graph
+from kingpost.core.measures.base import finish
+from kingpost.core.measures.radius import spectral_radius
 from kingpost.core.structure import weak_components
 from kingpost.core.watch import Watch
 
+RADIUS_WIDTH = 1e-9  # relative width of the bracket asked for; rounding may leave it wider
 QUANTILES = (0.0, 0.25, 0.5, 0.75, 0.9, 0.99, 1.0)
 
 
@@ -106,8 +110,18 @@ def examine(graph: Graph, watch: Watch | None = None) -> Audit:
         cyclic_share=structure.share_iterated,
         period=period,
         period_nodes=period_nodes,
-        radius=radius(graph, structure, watch),
+        radius=_radius(graph, watch),
     )
+
+
+def _radius(graph: Graph, watch: Watch) -> tuple[float, float]:
+    found = finish(
+        spectral_radius(graph, RADIUS_WIDTH, watch),
+        lambda line: watch.report("bracketing the spectral radius", line.index, unit="steps"),
+    )
+    if found is None:
+        raise Interrupted("cancelled before there was an answer to keep")
+    return found.low, found.high
 
 
 def density(graph: Graph) -> float:

@@ -7,6 +7,7 @@ measure by name.
 from __future__ import annotations
 
 import dataclasses
+import math
 import os
 from collections.abc import Mapping
 from typing import TYPE_CHECKING, Any
@@ -114,9 +115,13 @@ def _few(words: tuple[str, ...]) -> str:
 def _beta(word: str, graph: Graph | None) -> tuple[Any, str]:
     """A number, else the name of a node attribute, else a file."""
     try:
-        return float(word), ""
+        number = float(word)
     except ValueError:
         pass
+    else:
+        if math.isfinite(number):
+            return number, ""
+        raise click.UsageError(f"--beta is {word}; it takes a finite number")
     if graph is None:
         raise click.UsageError(
             "--beta by attribute or file needs the graph, which the screen loads later; give a "

@@ -48,6 +48,8 @@ def node(edges: tuple[str, ...], name: str | None, **given: Any) -> int:
         for one in measures:
             choice = build(one, values, graph)
             result = session.solve(one, graph, choice.settings, load_seconds)
+            if result.refusal is not None:
+                session.check()
             results[one.name] = result
             if result.refusal is None:
                 status = max(status, session.status(result))

@@ -59,6 +59,7 @@ def answer(edges: tuple[str, ...], given: dict[str, Any]) -> int:
         choice = build(chosen, values, graph)
         result = session.solve(chosen, graph, choice.settings, load_seconds)
         if result.refusal is not None:
+            session.check()
             complain(result.refusal.sentence)
             return NO_SUCH_ANSWER
         session.release()

@@ -160,6 +160,11 @@ class Session:
         seconds = dataclasses.replace(result.seconds, load=load_seconds)
         return dataclasses.replace(result, seconds=seconds)
 
+    def check(self) -> None:
+        """Raise Interrupted after a Ctrl-C: for where a solve that was stopped has no scores."""
+        if self.interrupted:
+            self.watch.check()
+
     def status(self, result: Result) -> int:
         """The exit status that an answer deserves."""
         if self.interrupted:
