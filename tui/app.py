@@ -47,7 +47,9 @@ class KingpostApp(App[int], inherit_bindings=False):
     """Controller of the views; holds the sitting and the runner of background work."""
 
     # The first screen is the app's own, whose style sheet textual does not look up by itself.
-    CSS_PATH = ["app.tcss", "views/loading.tcss"]  # noqa: RUF012
+    CSS_PATH = [  # noqa: RUF012
+        os.path.join(os.path.dirname(__file__), name) for name in ("app.tcss", "views/loading.tcss")
+    ]
     ENABLE_COMMAND_PALETTE = False
     TITLE = "kingpost"
 

@@ -98,7 +98,7 @@ def other_rank_column(result: Result) -> Column:
     standing = result.standing
     digits = len(f"{max(len(standing.order), 1):,}")
     width = max(5, min(digits * 2 + 1, 11))
-    title = result.measure if len(result.measure) <= width else result.measure[:5]
+    title = result.measure if len(result.measure) <= max(width, 6) else result.measure[:5]
     return Column(
         f"rank:{result.measure}",
         title,

@@ -59,7 +59,7 @@ class StandingsView(View):
 
     def on_resize(self, event: events.Resize) -> None:
         self.set_class(event.size.height < LOW, "-low")
-        self.set_class(event.size.height < 12, "-lowest")
+        self.set_class(event.size.height < 8, "-lowest")
         self.set_class(event.size.width >= BESIDE, "-wide")
         if self.composed and self.has_class("-wide"):
             self._detailed = None

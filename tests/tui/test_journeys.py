@@ -1,0 +1,289 @@
+"""Journeys through the whole application over measures made for these tests, without a terminal.
+
+Nothing waits for time: :func:`until` gives the application turns until a condition holds.
+"""
+
+from __future__ import annotations
+
+import asyncio
+
+import pytest
+from kingpost.core.errors import InputError
+from kingpost.tui import terminal
+from kingpost.tui.app import KingpostApp
+from kingpost.tui.models.sitting import Sitting
+from kingpost.tui.views.loading import LoadingView
+from kingpost.tui.widgets.lines import Line, Rule
+
+
+class Kingpost(KingpostApp):
+    """The application over a graph and measures at hand."""
+
+    def __init__(self, graph, bench, measure="plain", load=None):
+        looks = terminal.decide({"LANG": "C.UTF-8"})
+        super().__init__(["ferry.parquet"], load or (lambda job: graph), measure, None, looks=looks)
+        self.bench = bench
+
+    def make_sitting(self, graph, measure):
+        # Those that hold on or break are solved only when asked for.
+        return Sitting(graph, measure, names=self.bench.names[:3], find=self.bench.find)
+
+    def shown(self):
+        return "\n".join(
+            "".join(segment.text for segment in strip).rstrip()
+            for strip in self.screen._compositor.render_strips()
+        )
+
+
+async def until(pilot, condition):
+    async with asyncio.timeout(30):
+        while not condition():
+            await pilot.pause()
+
+
+@pytest.fixture
+def app(graph, bench):
+    return Kingpost(graph, bench)
+
+
+async def opened(pilot):
+    app = pilot.app
+    await until(pilot, lambda: app.screen.view == "standings" and not app.runner.jobs("solve"))
+    await until(pilot, lambda: not app.runner.jobs("table"))
+    await pilot.pause()
+
+
+async def test_standings_name_what_they_show(app):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        lines = app.shown().splitlines()
+        assert "hand_made.parquet   6 nodes  8 edges   score flows along caller -> callee" in lines[0]
+        assert "plain pull 0.5" in lines[1]
+        assert "order proven to 6 of 6" in lines[1]
+        assert lines[3].split() == ["rank▴", "node", "plain", "mirror", "in", "out", "team", "tier"]
+        assert lines[4].split() == ["┃▸", "1", "gate", "6.00", "6", "4", "1", "blue", "2"]
+        assert "held up by  kiosk" in app.screen.query_one("#supports", Line).plain
+
+
+async def test_sort_find_and_filter(app):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await pilot.press("s", "down", "down", "down", "down", "enter")
+        await until(pilot, lambda: app.screen.view == "standings" and "in▾" in app.shown())
+        await pilot.press("slash", *"QU", "enter")
+        await until(pilot, lambda: "1 of 1 names with 'QU'" in app.shown())
+        assert app.screen.model.graph.label(app.screen.model.node) == "quay"
+        await pilot.press("f", "t", "enter")
+        await until(pilot, lambda: "3 of 6 nodes" in app.shown())
+        await pilot.press("f", "backspace", *"zz", "enter")
+        await until(pilot, lambda: "no name contains 'zz'" in app.shown())
+        await pilot.press("escape", "escape")
+        await until(pilot, lambda: "   6 nodes" in app.shown())
+
+
+async def test_walking_the_load_path_and_back(app):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await pilot.press("enter")
+        await until(pilot, lambda: "▼ gate" in app.shown())
+        assert "▸kiosk" in app.shown()
+        await pilot.press("down", "enter")
+        await until(pilot, lambda: "▼ fare" in app.shown())
+        assert "came by: gate" in app.shown()
+        await pilot.press("b")
+        await until(pilot, lambda: "▼ gate" in app.shown())
+        await pilot.press("v")
+        await until(pilot, lambda: "▼ fare" in app.shown())
+        await pilot.press("tab", "enter")
+        await until(pilot, lambda: "▼ gate" in app.shown())
+        await pilot.press("b", "escape")
+        await until(pilot, lambda: app.screen.view == "standings")
+        # The cursor stands on the node where the walk ended.
+        assert app.screen.model.graph.label(app.screen.model.node) == "fare"
+
+
+async def test_downstream_of_the_last_feeder_is_the_first_receiver(app):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await pilot.press("enter", *["down"] * 4)
+        await until(pilot, lambda: app.screen.view == "node")
+        assert app.screen.panel.active is app.screen.panel.receivers
+        await pilot.press("up")
+        assert app.screen.panel.active is app.screen.panel.feeders
+
+
+async def test_another_measure_keeps_the_cursor_on_its_node(app):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await pilot.press("down", "m", "down", "enter")
+        await until(pilot, lambda: " mirror " in app.shown().splitlines()[1])
+        await until(pilot, lambda: app.screen.model.result.measure == "mirror")
+        assert app.screen.model.graph.label(app.screen.model.node) == "fare"
+
+
+async def test_the_old_standings_stay_usable_while_solving_and_halting_keeps_the_best(app, bench):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        app.solve("held", None)
+        await until(pilot, lambda: "solving held: sweep" in app.shown())
+        await pilot.press("down")
+        assert app.screen.model.result.measure == "plain"
+        assert "h halt" in app.shown()
+        await pilot.press("l")
+        await until(pilot, lambda: "solve log of held" in app.shown())
+        await pilot.press("h")
+        await until(pilot, lambda: not app.runner.jobs("solve"))
+        await pilot.press("escape")
+        await until(pilot, lambda: "cancelled" in app.shown().splitlines()[1])
+        assert "held" in app.shown().splitlines()[1]
+
+
+async def test_a_refusal_is_said_in_words_and_the_old_standings_stay(app):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await pilot.press("m", "down", "down", "enter")
+        await until(pilot, lambda: "the graph has no such eigenvector; use plain" in app.shown())
+        await pilot.press("escape")
+        await until(pilot, lambda: app.screen.view == "standings")
+        assert app.screen.model.result.measure == "plain"
+
+
+async def test_a_refusal_at_the_start_still_opens_the_standings(graph, bench):
+    app = Kingpost(graph, bench, "barren")
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        assert "no answer here" in app.shown()
+        assert "use plain, which always answers" in app.shown()
+        await pilot.press("enter")
+        assert app.screen.view == "standings"
+
+
+async def test_a_broken_solver_is_a_sentence(app):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        app.solve("broken", None)
+        await until(pilot, lambda: "RuntimeError: a \\e[31mbroken" in app.shown())
+        await pilot.press("escape")
+        await until(pilot, lambda: app.screen.view == "standings")
+
+
+async def test_settings_are_checked_while_typed_and_solved_in_the_background(app):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await pilot.press("c", "backspace", "backspace", "backspace", *"1.5")
+        await until(pilot, lambda: app.screen.view == "form")
+        # The flow is the first field and has choices; typing there changes nothing.
+        assert "it takes" not in app.shown()
+        await pilot.press("down", "backspace", "backspace", "backspace", *"7")
+        await until(pilot, lambda: "pull is 7; it takes a number" in app.shown())
+        await pilot.press("enter")
+        assert app.screen.view == "form"
+        await pilot.press("backspace", *"0.25", "tab", "right", "enter")
+        await until(pilot, lambda: "pull 0.25, side far" in app.shown())
+
+
+async def test_leaving_the_form_changes_nothing(app):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await pilot.press("c", "down", "backspace", "escape")
+        await until(pilot, lambda: app.screen.view == "standings")
+        assert app.sitting.settings_of("plain").pull == 0.5
+        assert len(app.sitting.solves) == 3
+
+
+async def test_a_megabyte_pasted_is_cut(app):
+    from textual import events
+
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await pilot.press("slash")
+        await until(pilot, lambda: app.screen.view == "prompt")
+        app.screen.post_message(events.Paste("\x1b[31m" + "x" * 1_000_000))
+        await until(pilot, lambda: len(app.screen.entry.writing.text) > 900)
+        assert len(app.screen.entry.writing.text) <= 1_000
+        assert "\x1b" not in app.screen.entry.writing.text
+        await pilot.press("escape")
+
+
+async def test_help_names_every_key(app):
+    from kingpost.tui.actions import help_rows
+
+    async with app.run_test(size=(100, 60)) as pilot:
+        await opened(pilot)
+        await pilot.press("question_mark")
+        await until(pilot, lambda: app.screen.view == "help")
+        shown = app.shown()
+        for _, keys, means in help_rows():
+            assert keys.split()[0] in shown
+            assert means[:60] in shown
+
+
+@pytest.mark.parametrize("size", [(40, 10), (20, 5), (80, 24), (200, 50)])
+async def test_every_view_fits_any_terminal(graph, bench, size):
+    app = Kingpost(graph, bench)
+    async with app.run_test(size=size) as pilot:
+        await opened(pilot)
+        assert "gate" in app.shown()
+        for keys in (("enter",), ("escape", "l"), ("escape", "c"), ("escape", "question_mark")):
+            await pilot.press(*keys)
+            await pilot.pause()
+            assert len(app.shown().splitlines()) <= size[1]
+        for width in (30, 120, 10, 80):
+            await pilot.resize_terminal(width, 12)
+        await pilot.press("escape")
+        await until(pilot, lambda: app.screen.view == "standings")
+
+
+async def test_the_first_frame_names_the_file_before_anything_is_loaded(graph, bench):
+    app = Kingpost(graph, bench)
+    app._begin = lambda: None
+    async with app.run_test(size=(80, 24)) as pilot:
+        await pilot.pause()
+        assert isinstance(app.screen, LoadingView)
+        assert "ferry.parquet" in app.shown()
+
+
+async def test_what_cannot_be_loaded_ends_with_its_sentence(graph, bench):
+    def load(job):
+        raise InputError("ferry.parquet is no Parquet file; name one that is")
+
+    app = Kingpost(graph, bench, load=load)
+    async with app.run_test(size=(80, 24)) as pilot:
+        await until(pilot, lambda: app._exit)
+    assert app.return_value == 2
+    assert app.sentence == "ferry.parquet is no Parquet file; name one that is"
+
+
+async def test_loading_can_be_cancelled(graph, bench):
+    def load(job):
+        job.watch.report("reading rows", 10, 100, "rows")
+        while True:
+            job.watch.check()
+            bench.release.wait(0.005)
+
+    app = Kingpost(graph, bench, load=load)
+    async with app.run_test(size=(80, 24)) as pilot:
+        await until(pilot, lambda: "reading rows" in app.shown())
+        assert "10 of 100 rows" in app.shown()
+        await pilot.press("h")
+        await until(pilot, lambda: app._exit)
+    assert app.return_value == 130
+
+
+async def test_hostile_names_are_inert(make_graph, bench):
+    names = sorted(["\x1b[31mred", "[bold]x[/bold]", "\u202egnp.exe", "n" * 5_000, "🚢", "a\nb", "日本"])
+    graph = make_graph(names, [(i, 0, 1.0) for i in range(len(names))])
+    app = Kingpost(graph, bench)
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        shown = app.shown()
+        assert "\\e[31mred" in shown
+        assert "[bold]x[/bold]" in shown
+        assert "\\u{202e}gnp.exe" in shown
+        assert "a\\nb" in shown
+        assert "nnnnnnnn…" in shown
+        assert not {"\x1b", "\u202e", "\r"} & set(shown)
+        await pilot.press("enter")
+        await until(pilot, lambda: app.screen.view == "node")
+        assert not {"\x1b", "\u202e"} & set(app.shown())
+        assert app.screen.query_one("#news", Rule) is not None
