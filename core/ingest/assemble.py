@@ -19,7 +19,7 @@ from numpy.typing import NDArray
 
 from kingpost.core.errors import RowsError
 from kingpost.core.graph import Adjacency, Floats, Offsets
-from kingpost.core.ingest.numbering import Codes
+from kingpost.core.ingest.dictionaries import Codes
 from kingpost.core.ingest.options import LoadOptions
 from kingpost.core.ingest.spread import Span, each, spans
 from kingpost.core.text import id_text, visible
@@ -62,11 +62,15 @@ class Ends:
 
 @dataclass
 class Rows:
-    """A mutable adjacency under way."""
+    """An adjacency under way; ``weights`` is empty where every entry counts 1."""
 
     offsets: Offsets
     near: Codes
     weights: Floats
+
+    def frozen(self) -> Adjacency:
+        """The finished adjacency."""
+        return Adjacency(self.offsets, self.near, self.weights if len(self.weights) else None)
 
 
 @dataclass
@@ -112,12 +116,13 @@ def assemble(ends: Ends, labels: pa.Array, options: LoadOptions, watch: Watch) -
         )
     rows = len(ends.source)
     rough = _by_source(ends, n, watch)
-    outward, zero = _merged(rough, labels, options, watch)
-    merged = rows - len(outward.neighbours) - zero
+    folded, zero = _merged(rough, labels, options, watch)
+    merged = rows - len(folded.near) - zero
     if options.directed:
-        inward = _turned(outward, watch)
+        inward = _turned(folded, watch).frozen()
+        outward = folded.frozen()
     else:
-        outward = inward = _mirrored(outward, watch)
+        outward = inward = _mirrored(folded, watch).frozen()
     return Assembled(outward, inward, loops, dropped, merged, zero)
 
 
@@ -231,9 +236,7 @@ def _settled(buckets: Buckets, n: int, watch: Watch, stage: str) -> Rows:
     return rows
 
 
-def _merged(
-    rows: Rows, labels: pa.Array, options: LoadOptions, watch: Watch
-) -> tuple[Adjacency, int]:
+def _merged(rows: Rows, labels: pa.Array, options: LoadOptions, watch: Watch) -> tuple[Rows, int]:
     """Fold parallel edges, apply the weight change, leave out zero weights (their number too)."""
     from kingpost.core.kernels import build
 
@@ -252,7 +255,7 @@ def _merged(
         )
         counts = options.parallel in ("sum", "count") and repeats > 0
         if not repeats and options.weight_as != "log1p":
-            return Adjacency(rows.offsets, rows.near), 0
+            return rows, 0
         if counts or options.weight_as == "log1p":
             heavy = np.empty(len(rows.near))
     states = np.zeros((len(pieces), 6), dtype=np.int64)
@@ -286,13 +289,12 @@ def _merged(
             if len(heavy):
                 build.move_left(heavy, start, size, to)
         to += size
-    weights = None
+    weights = _NONE
     if states[:, 5].any() and len(heavy):
         rows.weights = _NONE
         weights = _trimmed(heavy, to)
-    near, rows.near = rows.near, _NONE.astype(np.uint32)
     np.cumsum(lengths, out=lengths)
-    return Adjacency(lengths, _trimmed(near, to), weights), int(states[:, 1].sum())
+    return Rows(lengths, _trimmed(rows.near, to), weights), int(states[:, 1].sum())
 
 
 def _overflow(states: NDArray[np.int64], labels: pa.Array, options: LoadOptions) -> str:
@@ -316,34 +318,31 @@ def _trimmed(array: Any, size: int) -> Any:
     return array
 
 
-def _turned(outward: Adjacency, watch: Watch) -> Adjacency:
-    weights = _NONE if outward.weights is None else outward.weights
-    rows = Rows(outward.offsets, outward.neighbours, weights)
+def _turned(rows: Rows, watch: Watch) -> Rows:
     buckets = _dealt_rows(rows, watch, "turning edges round")
-    rows = _settled(buckets, len(outward.offsets) - 1, watch, "turning edges round")
-    return Adjacency(rows.offsets, rows.near, None if outward.weights is None else rows.weights)
+    return _settled(buckets, len(rows.offsets) - 1, watch, "turning edges round")
 
 
-def _mirrored(upper: Adjacency, watch: Watch) -> Adjacency:
+def _mirrored(upper: Rows, watch: Watch) -> Rows:
     """A symmetric adjacency from its upper triangle."""
     from kingpost.core.kernels import build
 
     n = len(upper.offsets) - 1
     offsets = np.zeros(n + 1, dtype=np.int64)
-    weights = _NONE if upper.weights is None else upper.weights
+    weights = upper.weights
     pieces = node_spans(upper.offsets)
     for a, b in pieces:
         watch.check()
-        build.mirror_counts(upper.offsets, upper.neighbours, a, b, offsets[1:])
+        build.mirror_counts(upper.offsets, upper.near, a, b, offsets[1:])
     np.cumsum(offsets, out=offsets)
     near = np.empty(int(offsets[-1]), dtype=np.uint32)
     heavy = np.empty(len(near) if len(weights) else 0)
     place = offsets[:-1].copy()
     for a, b in pieces:
         watch.check()
-        watch.report("mirroring edges", int(upper.offsets[a]), len(upper.neighbours), "edges")
-        build.mirror(upper.offsets, upper.neighbours, weights, a, b, place, near, heavy)
-    return Adjacency(offsets, near, heavy if len(weights) else None)
+        watch.report("mirroring edges", int(upper.offsets[a]), len(upper.near), "edges")
+        build.mirror(upper.offsets, upper.near, weights, a, b, place, near, heavy)
+    return Rows(offsets, near, heavy)
 
 
 def node_spans(offsets: Offsets) -> list[Span]:

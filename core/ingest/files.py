@@ -159,7 +159,8 @@ def _open(file: str, partitions: dict[str, pa.Array]) -> Part:
 def _scan(fragment: Any, columns: list[str]) -> Iterator[pa.RecordBatch]:
     # Expressions, because a name with a dot in it is a name here and no path.
     wanted = {str(at): ds.field(name) for at, name in enumerate(columns)}
-    checked = ds.ParquetFragmentScanOptions(page_checksum_verification=True)
+    # Buffering ahead would hold the whole compressed file in memory until the end.
+    checked = ds.ParquetFragmentScanOptions(page_checksum_verification=True, pre_buffer=False)
     yield from fragment.scanner(
         columns=wanted, batch_size=BATCH_ROWS, fragment_scan_options=checked
     ).to_batches()

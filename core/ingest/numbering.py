@@ -1,11 +1,14 @@
 """Numbering ids: every id gets its place in ascending order, whatever the order of the rows.
 
 Integers (and what is integer beneath: dates, times, bool) whose range is narrow are looked up
-directly; everything else goes through Arrow's dictionary encoding over source and target
-together, after which only the distinct ids are sorted.
+directly.  Other integers, text and binary go through hash tables, one for the sources and one
+for the targets at the same time, which are then joined; decimals and binary of fixed size
+through Arrow's dictionary encoding.  In the end only the distinct ids are sorted.
 """
 
 from __future__ import annotations
+
+from typing import Any
 
 import numpy as np
 import pyarrow as pa
@@ -13,148 +16,167 @@ import pyarrow.compute as pc
 from numpy.typing import NDArray
 
 from kingpost.core.errors import InputError
+from kingpost.core.ingest.dictionaries import MOST_NODES, Codes, TextDictionary, WholeDictionary
 from kingpost.core.ingest.idtypes import from_integers, integer_type, to_integers
+from kingpost.core.ingest.spread import each, spans
 from kingpost.core.watch import Watch
 
-Codes = NDArray[np.uint32]
-MOST_NODES = 2**32 - 1
 _SMALL_RANGE = 1 << 16
 _TEXT_LIMIT = 2**31 - 2**20
+_STAGE = "numbering ids"
+Sides = tuple[list[pa.Array], list[pa.Array]]
 
 
-def number_ids(
-    source: list[pa.Array], target: list[pa.Array], kind: pa.DataType, watch: Watch
-) -> tuple[pa.Array, Codes, Codes]:
+def number_ids(sides: Sides, kind: pa.DataType, watch: Watch) -> tuple[pa.Array, Codes, Codes]:
     """Labels in ascending order and the numbers of both ends of every row.
 
     The lists are emptied: the ids are not needed any more once they have numbers.
+
+    Raises:
+        InputError: for more ids than can be numbered, or text that is not UTF-8.
     """
     whole = integer_type(kind)
     if whole is not None:
-        source[:] = [to_integers(chunk, whole) for chunk in source]
-        target[:] = [to_integers(chunk, whole) for chunk in target]
-        low, high = _range(source + target)
-        rows = sum(map(len, source))
-        if high - low < max(_SMALL_RANGE, 2 * rows):
-            labels, left, right = _direct(source, target, low, high, whole, watch)
-            return from_integers(labels, kind), left, right
-        labels, left, right = _hashed(source, target, watch)
-        return from_integers(labels, kind), left, right
-    if _is_small_text(kind) and _bytes(source) + _bytes(target) > _TEXT_LIMIT:
-        large = pa.large_string() if pa.types.is_string(kind) else pa.large_binary()
-        source[:] = [chunk.cast(large) for chunk in source]
-        target[:] = [chunk.cast(large) for chunk in target]
-    labels, left, right = _hashed(source, target, watch)
+        for side in sides:
+            side[:] = [to_integers(chunk, whole) for chunk in side]
+        low, high = _range(sides)
+        if high - low < max(_SMALL_RANGE, 2 * sum(map(len, sides[0]))):
+            labels, source, target = _direct(sides, low, high, whole, watch)
+        else:
+            labels, source, target = _hashed(sides, WholeDictionary, whole, watch)
+        return from_integers(labels, kind), source, target
+    if pa.types.is_decimal(kind) or pa.types.is_fixed_size_binary(kind):
+        return _by_arrow(sides, watch)
+    labels, source, target = _hashed(sides, TextDictionary, kind, watch)
     if labels.type != kind and labels.nbytes < _TEXT_LIMIT:
         labels = labels.cast(kind)
-    try:
-        labels.validate(full=True)
-    except pa.ArrowInvalid:
-        raise InputError(
-            "the ids hold text that is not valid UTF-8; mend it, or cast the id columns to binary"
-        ) from None
-    return labels, left, right
+    return labels, source, target
 
 
-def _is_small_text(kind: pa.DataType) -> bool:
-    return bool(pa.types.is_string(kind) or pa.types.is_binary(kind))
-
-
-def _bytes(chunks: list[pa.Array]) -> int:
-    return sum(chunk.nbytes for chunk in chunks)
-
-
-def _range(chunks: list[pa.Array]) -> tuple[int, int]:
-    ends = [pc.min_max(chunk) for chunk in chunks]
+def _range(sides: Sides) -> tuple[int, int]:
+    ends = [pc.min_max(chunk) for side in sides for chunk in side]
     return min(end["min"].as_py() for end in ends), max(end["max"].as_py() for end in ends)
 
 
 def _direct(
-    source: list[pa.Array],
-    target: list[pa.Array],
-    low: int,
-    high: int,
-    whole: pa.DataType,
-    watch: Watch,
+    sides: Sides, low: int, high: int, whole: pa.DataType, watch: Watch
 ) -> tuple[pa.Array, Codes, Codes]:
-    from kingpost.core.kernels import build
+    from kingpost.core.kernels import ids
 
     base = np.uint64(low % 2**64)
     present = np.zeros(high - low + 1, dtype=np.uint8)
-    total = sum(map(len, source))
-    done = 0
-    for side in (source, target):
-        for chunk in side:
-            watch.check()
-            build.mark(_flat(chunk), base, present)
-            done += len(chunk)
-            watch.report("numbering ids", done, 4 * total, "ids")
+    chunks = [(flat(chunk), at) for side in sides for chunk, at in _placed(side)]
+    half = len(sides[0])
+    for side in sides:
+        side.clear()
+    pieces = [(at, at + 1) for at in range(len(chunks))]
+
+    def mark(at: int, _: int) -> None:
+        ids.mark(chunks[at][0], base, 0, len(chunks[at][0]), present)
+
+    each(pieces, mark, watch, _STAGE)
+    check_size(int(np.count_nonzero(present)))
     ranks = np.empty(len(present), dtype=np.uint32)
-    n = int(np.count_nonzero(present))
-    _check_size(n)
-    build.number(present, ranks)
+    ids.number(present, ranks)
     values = np.flatnonzero(present).astype(np.uint64) + base
     labels = pa.array(values.view(np.int64) if low < 0 else values).cast(whole)
-    codes = []
-    for side in (source, target):
-        numbers = np.empty(total, dtype=np.uint32)
-        at = 0
-        while side:
-            watch.check()
-            chunk = side.pop(0)
-            build.look_up(_flat(chunk), base, ranks, numbers, at)
-            at += len(chunk)
-            done += len(chunk)
-            watch.report("numbering ids", done, 4 * total, "ids")
-        codes.append(numbers)
+    rows = sum(len(values) for values, _ in chunks[:half])
+    codes = [np.empty(rows, dtype=np.uint32) for _ in range(2)]
+
+    def look_up(at: int, _: int) -> None:
+        values, start = chunks[at]
+        ids.look_up(values, base, 0, len(values), ranks, codes[at >= half], start)
+
+    each(pieces, look_up, watch, _STAGE)
     return labels, codes[0], codes[1]
+
+
+def _placed(side: list[pa.Array]) -> list[tuple[pa.Array, int]]:
+    """Chunks with the row each begins at."""
+    starts = np.cumsum([0, *map(len, side)])
+    return [(chunk, int(start)) for chunk, start in zip(side, starts[:-1], strict=True)]
 
 
 def _hashed(
-    source: list[pa.Array], target: list[pa.Array], watch: Watch
+    sides: Sides, dictionary: Any, kind: pa.DataType, watch: Watch
 ) -> tuple[pa.Array, Codes, Codes]:
-    from kingpost.core.kernels import build
+    rows = sum(map(len, sides[0]))
+    codes = [np.empty(rows, dtype=np.uint32) for _ in sides]
+    known = [dictionary(), dictionary()]
 
-    total = sum(map(len, source))
-    watch.check()
-    watch.report("numbering ids", 0, 4 * total, "ids")
-    try:
-        encoded = pa.chunked_array([*source, *target]).dictionary_encode()
-    except pa.ArrowException as error:
-        raise InputError(f"the ids cannot be numbered: {error}") from None
-    pieces = encoded.chunks
-    splits = len(source)
-    source.clear()
-    target.clear()
-    del encoded
-    # All chunks share the last state of one dictionary.
-    distinct = pieces[-1].dictionary
-    _check_size(len(distinct))
-    watch.check()
-    watch.report("sorting ids", 0, len(distinct), "ids")
-    order = pc.array_sort_indices(distinct)
-    labels = distinct.take(order)
-    ranks = np.empty(len(distinct), dtype=np.uint32)
-    ranks[order.to_numpy()] = np.arange(len(distinct), dtype=np.uint32)
-    codes = []
-    done = 2 * total
-    for side in (pieces[:splits], pieces[splits:]):
-        numbers = np.empty(total, dtype=np.uint32)
-        at = 0
-        for chunk in side:
-            watch.check()
-            build.renumber(_flat(chunk.indices), ranks, numbers, at)
+    def encode(side: int, _: int, known: list[Any] = known) -> None:
+        chunks, at = sides[side], 0
+        chunks.reverse()
+        while chunks and not watch.cancelled:
+            chunk = chunks.pop()
+            known[side].encode(chunk, codes[side], at)
             at += len(chunk)
-            done += len(chunk)
-            watch.report("numbering ids", done, 4 * total, "ids")
-        codes.append(numbers)
+            if side == 0:
+                watch.report(_STAGE, at, rows, "rows")
+
+    each([(0, 1), (1, 2)], encode, watch, _STAGE)
+    watch.check()
+    moved = known[0].absorb(known.pop())
+    labels = known[0].ids(kind)
+    check_size(len(labels))
+    known.clear()
+    labels, ranks = _sorted(labels, watch)
+    _renumber(codes[0], ranks, watch)
+    _renumber(codes[1], ranks[moved], watch)
     return labels, codes[0], codes[1]
 
 
-def _flat(chunk: pa.Array) -> NDArray[np.generic]:
+def _sorted(labels: pa.Array, watch: Watch) -> tuple[pa.Array, Codes]:
+    """Ids in ascending order, and the place there of each as it stood before."""
+    watch.check()
+    watch.report("sorting ids", 0, len(labels), "ids")
+    if pa.types.is_string(labels.type) or pa.types.is_large_string(labels.type):
+        try:
+            labels.validate(full=True)
+        except pa.ArrowInvalid:
+            raise InputError(
+                "the ids hold text that is not valid UTF-8; mend it, or cast the id columns to "
+                "binary"
+            ) from None
+    order = pc.array_sort_indices(labels)
+    ranks = np.empty(len(labels), dtype=np.uint32)
+    ranks[order.to_numpy()] = np.arange(len(labels), dtype=np.uint32)
+    watch.check()
+    return labels.take(order), ranks
+
+
+def _renumber(codes: Codes, ranks: Codes, watch: Watch) -> None:
+    from kingpost.core.kernels import ids
+
+    each(
+        spans(len(codes)),
+        lambda a, b: ids.renumber(codes, ranks, a, b, codes, 0),
+        watch,
+        _STAGE,
+    )
+
+
+def _by_arrow(sides: Sides, watch: Watch) -> tuple[pa.Array, Codes, Codes]:
+    rows = sum(map(len, sides[0]))
+    watch.check()
+    watch.report(_STAGE, 0, rows, "rows")
+    encoded = pa.chunked_array([chunk for side in sides for chunk in side]).dictionary_encode()
+    for side in sides:
+        side.clear()
+    # All chunks share the last state of one dictionary.
+    labels, ranks = _sorted(encoded.chunk(encoded.num_chunks - 1).dictionary, watch)
+    indices = np.concatenate([flat(chunk.indices) for chunk in encoded.chunks])
+    codes = indices.astype(np.uint32)
+    _renumber(codes, ranks, watch)
+    return labels, codes[:rows], codes[rows:]
+
+
+def flat(chunk: pa.Array) -> NDArray[np.generic]:
+    """The values of a chunk without nulls, not copied."""
     return np.asarray(chunk.to_numpy(zero_copy_only=True))
 
 
-def _check_size(n: int) -> None:
+def check_size(n: int) -> None:
+    """Refuse more nodes than 32 bits can number."""
     if n > MOST_NODES:
         raise InputError(f"the table names {n:,} nodes; at most {MOST_NODES:,} can be numbered")

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import numpy as np
+import pyarrow as pa
 
 from kingpost.core.graph import Account, Graph, Origin
 from kingpost.core.ingest.assemble import Ends, assemble
@@ -21,7 +22,10 @@ def build_graph(parts: list[Part], options: LoadOptions, watch: Watch | None = N
     watch = watch or Watch()
     roles = choose(parts, options)
     rows = read_rows(parts, roles, options.bad_rows, watch)
-    labels, source, target = number_ids(rows.source, rows.target, roles.id_type, watch)
+    # Arrow keeps what it has freed; what follows is to be built in that memory's stead.
+    pa.default_memory_pool().release_unused()
+    labels, source, target = number_ids((rows.source, rows.target), roles.id_type, watch)
+    pa.default_memory_pool().release_unused()
     weights = None
     if rows.weights:
         weights = np.concatenate(rows.weights)

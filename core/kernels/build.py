@@ -18,37 +18,6 @@ ASIS, LOG1P, INVERSE = range(3)
 
 
 @kernel()
-def mark(values: Any, low: Any, present: Any) -> None:
-    """Set ``present[v - low]`` to 1 for every value; wraps correctly for any integer width."""
-    for i in range(len(values)):
-        present[np.uint64(values[i]) - low] = 1
-
-
-@kernel()
-def number(present: Any, ranks: Any) -> int:
-    """Ranks of the marked slots in ascending order; returns how many there are."""
-    found = 0
-    for i in range(len(present)):
-        ranks[i] = found
-        found += present[i]
-    return found
-
-
-@kernel()
-def look_up(values: Any, low: Any, ranks: Any, codes: Any, start: int) -> None:
-    """``codes[start + i] = ranks[values[i] - low]``."""
-    for i in range(len(values)):
-        codes[start + i] = ranks[np.uint64(values[i]) - low]
-
-
-@kernel()
-def renumber(indices: Any, ranks: Any, codes: Any, start: int) -> None:
-    """``codes[start + i] = ranks[indices[i]]``."""
-    for i in range(len(indices)):
-        codes[start + i] = ranks[np.uint64(indices[i])]
-
-
-@kernel()
 def order_ends(source: Any, target: Any, first: int, last: int) -> None:
     """Let the smaller end come first: an undirected edge has one form."""
     for i in range(first, last):

@@ -1,0 +1,122 @@
+"""Dictionaries that give ids numbers in the order of first sight and grow as they fill."""
+
+from __future__ import annotations
+
+from typing import Any
+
+import numpy as np
+import pyarrow as pa
+from numpy.typing import NDArray
+
+from kingpost.core.errors import InputError
+
+Codes = NDArray[np.uint32]
+MOST_NODES = 2**32 - 1
+_SLOTS = 1 << 12
+
+
+class WholeDictionary:
+    """Numbers for integers of up to 64 bits, kept as unsigned 64-bit words."""
+
+    def __init__(self) -> None:
+        self.table = np.zeros(2 * _SLOTS, dtype=np.uint64)
+        self.keys = np.empty(_SLOTS // 2, dtype=np.uint64)
+        self.known = 0
+
+    def encode(self, chunk: pa.Array, codes: Codes, at: int) -> None:
+        """Write the numbers of a chunk without nulls to ``codes`` from ``at`` on."""
+        self.encode_values(chunk.to_numpy(zero_copy_only=True), codes, at)
+
+    def encode_values(self, values: NDArray[Any], codes: Codes, at: int) -> None:
+        """Like :meth:`encode`, for a numpy array."""
+        from kingpost.core.kernels import ids
+
+        state = np.array([0, self.known, 0], dtype=np.int64)
+        while not ids.encode_whole(values, codes, at, self.table, self.keys, state):
+            self.known = int(state[1])
+            size = _grown(self.known, len(self.keys))
+            self.keys = np.concatenate([self.keys, np.empty(size - len(self.keys), np.uint64)])
+            self.table = np.zeros(4 * size, dtype=np.uint64)
+            ids.rebuild_whole(self.keys, self.known, self.table)
+        self.known = int(state[1])
+
+    def absorb(self, other: WholeDictionary) -> Codes:
+        """Numbers here of everything the other one knows, by its numbers."""
+        codes = np.empty(other.known, dtype=np.uint32)
+        self.encode_values(other.keys[: other.known], codes, 0)
+        return codes
+
+    def ids(self, kind: pa.DataType) -> pa.Array:
+        """What it knows, by number, as an array of the integer type ``kind``."""
+        words = self.keys[: self.known]
+        return pa.array(words.view(np.int64) if pa.types.is_signed_integer(kind) else words).cast(
+            kind
+        )
+
+
+class TextDictionary:
+    """Numbers for byte strings, of which it keeps one copy each."""
+
+    def __init__(self) -> None:
+        self.table = np.zeros(_SLOTS, dtype=np.uint64)
+        self.hashes = np.empty(_SLOTS // 2, dtype=np.uint64)
+        self.ends = np.zeros(_SLOTS // 2 + 1, dtype=np.int64)
+        self.store = np.empty(1 << 16, dtype=np.uint8)
+        self.known = 0
+
+    def encode(self, chunk: pa.Array, codes: Codes, at: int) -> None:
+        """Write the numbers of a chunk without nulls to ``codes`` from ``at`` on."""
+        _, ends, data = chunk.buffers()
+        large = pa.types.is_large_string(chunk.type) or pa.types.is_large_binary(chunk.type)
+        offsets = np.frombuffer(ends, dtype=np.int64 if large else np.int32)
+        offsets = offsets[chunk.offset : chunk.offset + len(chunk) + 1]
+        # An array of empty texts only may come without a buffer.
+        letters = np.frombuffer(data if data is not None and data.size else b"\0", dtype=np.uint8)
+        self._encode(offsets, letters, codes, at)
+
+    def _encode(
+        self, offsets: NDArray[Any], letters: NDArray[np.uint8], codes: Codes, at: int
+    ) -> None:
+        from kingpost.core.kernels import ids
+
+        state = np.array([0, self.known, 0], dtype=np.int64)
+        while not ids.encode_text(
+            offsets, letters, codes, at, self.table, self.hashes, self.ends, self.store, state
+        ):
+            self.known = int(state[1])
+            if self.known > len(self.hashes) - ids.BLOCK:
+                size = _grown(self.known, len(self.hashes))
+                more = size - len(self.hashes)
+                self.hashes = np.concatenate([self.hashes, np.empty(more, np.uint64)])
+                self.ends = np.concatenate([self.ends, np.empty(more, np.int64)])
+                self.table = np.zeros(2 * size, dtype=np.uint64)
+                ids.rebuild_text(self.hashes, self.known, self.table)
+            else:  # the texts need room: twice as much, and for the next block at least
+                row = int(state[0])
+                last = min(row + ids.BLOCK, len(offsets) - 1)
+                need = int(self.ends[self.known]) + int(offsets[last]) - int(offsets[row])
+                self.store.resize(max(2 * len(self.store), need), refcheck=False)
+        self.known = int(state[1])
+
+    def absorb(self, other: TextDictionary) -> Codes:
+        """Numbers here of everything the other one knows, by its numbers."""
+        codes = np.empty(other.known, dtype=np.uint32)
+        self._encode(other.ends[: other.known + 1], other.store, codes, 0)
+        return codes
+
+    def ids(self, kind: pa.DataType) -> pa.Array:
+        """What it knows, by number, as an array of the large type that goes with ``kind``."""
+        text = pa.types.is_string(kind) or pa.types.is_large_string(kind)
+        ends = self.ends[: self.known + 1].copy()
+        letters = self.store[: int(ends[-1])]
+        return pa.Array.from_buffers(
+            pa.large_string() if text else pa.large_binary(),
+            self.known,
+            [None, pa.py_buffer(ends), pa.py_buffer(letters)],
+        )
+
+
+def _grown(known: int, size: int) -> int:
+    if known > MOST_NODES - 1024:
+        raise InputError(f"the table names more nodes than can be numbered ({MOST_NODES:,})")
+    return 4 * size if size < 1 << 20 else 2 * size
