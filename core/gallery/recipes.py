@@ -142,7 +142,8 @@ def _layered(n: int, edges: int, layers: int, back: float, seed: int) -> Recipe:
 
     def inside(layer: Ints, lot: Floats) -> Ints:
         # lot^3 crowds the low places of a layer: place x is met with density x^(-2/3).
-        return ends[layer] + np.floor(lot**3 * (ends[layer + 1] - ends[layer])).astype(np.int64)
+        first: Ints = ends[layer]
+        return first + np.floor(lot**3 * (ends[layer + 1] - first)).astype(np.int64)
 
     def make(index: Counter) -> Part:
         caller = below(int(ends[-2]), seed, 1, index)
@@ -168,8 +169,9 @@ def _powerlaw(n: int, edges: int, gamma: float, seed: int) -> Recipe:
     reach = (n + 1.0) ** power - 1.0
 
     def node(lot: Floats) -> Ints:
-        place = np.floor((1.0 + lot * reach) ** (1.0 / power)).astype(np.int64) - 1
-        return np.minimum(place, n - 1)
+        place: Ints = np.floor((1.0 + lot * reach) ** (1.0 / power)).astype(np.int64) - 1
+        np.minimum(place, n - 1, out=place)
+        return place
 
     def make(index: Counter) -> Part:
         one, other = node(uniform(seed, 1, index)), node(uniform(seed, 2, index))

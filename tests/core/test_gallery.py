@@ -2,8 +2,12 @@
 
 from __future__ import annotations
 
+import importlib.util
+from pathlib import Path
+
 import networkx as nx
 import numpy as np
+import pyarrow.parquet as pq
 import pytest
 import scipy.sparse as sp
 from scipy.stats import chi2
@@ -327,3 +331,37 @@ def test_shuffling_keeps_the_graph_up_to_names():
 def test_sizes_out_of_range_are_refused_in_words(call, words):
     with pytest.raises(SettingsError, match=words):
         call()
+
+
+def bench_script():
+    place = Path(__file__).resolve().parents[1] / "bench" / "graphs.py"
+    spec = importlib.util.spec_from_file_location("bench_graphs", place)
+    module = importlib.util.module_from_spec(spec)
+    spec.loader.exec_module(module)
+    return module
+
+
+def test_the_bench_script_writes_what_the_gallery_makes(tmp_path, monkeypatch):
+    script = bench_script()
+    monkeypatch.setattr(script, "GROUP", 1_000)
+    for kind in ("layered", "citation"):
+        graph = gallery.recipe(kind, 4_500, seed=6)
+        script.write(tmp_path / f"{kind}.parquet", graph)
+        read, whole = pq.read_table(tmp_path / f"{kind}.parquet"), graph.whole()
+        assert np.array_equal(read["source"].to_numpy(), whole.source)
+        assert np.array_equal(read["target"].to_numpy(), whole.target)
+        if whole.weight is not None:
+            assert np.array_equal(read["weight"].to_numpy(), whole.weight)
+    assert [path.suffix for path in tmp_path.iterdir()] == [".parquet"] * 2
+
+
+def test_text_ids_are_distinct_and_25_characters_long(tmp_path):
+    script = bench_script()
+    names = script.text_ids(5_000)
+    assert len(set(names.to_pylist())) == 5_000
+    assert {len(name) for name in names.to_pylist()} == {25}
+    graph = gallery.recipe("rmat", 3_000, seed=6)
+    script.write(tmp_path / "text.parquet", graph, script.text_ids(graph.n))
+    read = pq.read_table(tmp_path / "text.parquet")["source"].to_pylist()
+    places = {name: i for i, name in enumerate(script.text_ids(graph.n).to_pylist())}
+    assert [places[name] for name in read] == graph.whole().source.tolist()
