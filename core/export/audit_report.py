@@ -7,7 +7,7 @@ from typing import Any
 
 from kingpost.core.export.account import account_pairs
 from kingpost.core.export.cells import plain_ascii, wrap
-from kingpost.core.export.digits import small
+from kingpost.core.export.digits import number, small
 from kingpost.core.export.heading import graph_line
 from kingpost.core.export.jsonable import jsonable
 from kingpost.core.export.layout import Column, terminal_table
@@ -98,7 +98,7 @@ def _structure(audit: Audit) -> list[tuple[str, str]]:
     ]
     if audit.weights is not None:
         w = audit.weights
-        words = f"{w.least:.6g} to {w.greatest:.6g}, {w.total:.6g} in all"
+        words = f"{number(w.least)} to {number(w.greatest)}, {number(w.total)} in all"
         pairs.insert(2, ("weights", words))
     if audit.period is None:
         pairs.append(("spectral radius", "0: there is no cycle, so no eigenvector centrality"))

@@ -73,12 +73,19 @@ def on_the_point(texts: list[str]) -> list[str]:
     return [h.rjust(before) + t.ljust(after) for h, t in zip(heads, tails, strict=True)]
 
 
-def small(number: float) -> str:
+def number(value: float) -> str:
+    """A weight or a sum of weights: whole ones with separators, others in six digits."""
+    if math.isfinite(value) and abs(value) < 1e15 and value == int(value):
+        return f"{value:,.0f}"
+    return f"{value:.6g}"
+
+
+def small(value: float) -> str:
     """A bound or residual in two digits, rounded up: ``1.3e-11``; ``0``; ``unknown`` for NaN."""
-    if math.isnan(number):
+    if math.isnan(value):
         return "unknown"
-    if math.isinf(number) or number == 0:
-        return "none known" if number else "0"
-    scale = 10.0 ** (_magnitude(number) - 1)
-    up = math.ceil(number / scale * (1 - 1e-15)) * scale
+    if math.isinf(value) or value == 0:
+        return "none known" if value else "0"
+    scale = 10.0 ** (_magnitude(value) - 1)
+    up = math.ceil(value / scale * (1 - 1e-15)) * scale
     return f"{up:.2g}" if 0.999e-3 < up < 1e4 else f"{up:.1e}"

@@ -8,7 +8,7 @@ from typing import Any
 import numpy as np
 
 from kingpost.core.export.cells import plain_ascii, wrap
-from kingpost.core.export.digits import score_texts
+from kingpost.core.export.digits import number, score_texts
 from kingpost.core.export.heading import graph_line
 from kingpost.core.export.jsonable import jsonable
 from kingpost.core.export.layout import Column, terminal_table
@@ -76,7 +76,7 @@ def node_text(
         lines += wrap(f"  {visible(name, 40)}: {value_text(value) or '(none)'}", width, "    ")
     lines += ["", *_places(view, graph.n, width)]
     weight_in, weight_out = (
-        f"weight {s:.6g} in all" for s in (view.in_strength, view.out_strength)
+        f"weight {number(s)} in all" for s in (view.in_strength, view.out_strength)
     )
     title = f"pointing at it: {count(view.in_degree, 'node')}, {weight_in}"
     lines += ["", title, *_side(view.inward, view.in_degree, view.leading, width)]
@@ -111,9 +111,9 @@ def _score(place: Place) -> str:
 
 
 def _remark(place: Place) -> str:
-    if not place.ranked:
-        return "not told from zero"
-    return "" if place.stop.accurate else place.stop.value
+    told = "" if place.stop.accurate else place.stop.value
+    zero = "" if place.ranked else "not told from zero"
+    return ", ".join(filter(None, (told, zero)))
 
 
 def _side(items: tuple[Neighbour, ...], degree: int, leading: str, width: int) -> list[str]:
@@ -123,7 +123,7 @@ def _side(items: tuple[Neighbour, ...], degree: int, leading: str, width: int) -
     rows = terminal_table(
         [
             Column("  node", [f"  {name_text(i.label)}" for i in items], least=10),
-            Column("weight", [f"{item.weight:.6g}" for item in items], ">"),
+            Column("weight", [number(item.weight) for item in items], ">"),
             Column("share", [f"{item.share:.1%}" for item in items], ">"),
             Column(f"{leading} rank", ranks, ">"),
         ],

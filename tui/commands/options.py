@@ -30,6 +30,8 @@ SETTINGS = (
     "alpha_fraction",
     "beta",
     "counting",
+    "component",
+    "certificate",
     "tol",
     "stop",
     "max_sweeps",
@@ -171,6 +173,18 @@ measure = _stack(
         "--counting",
         metavar="WHAT",
         help="degree: add the weights of a node's edges (strength) or count them (edges)",
+    ),
+    _option(
+        MEASURE,
+        "--component",
+        metavar="NODE",
+        help="eigenvector: answer within the strong component of this node",
+    ),
+    _option(
+        MEASURE,
+        "--certificate",
+        metavar="WHAT",
+        help="eigenvector: bound every score (componentwise) or only rho (bracket)",
     ),
     _option(
         MEASURE,
