@@ -80,4 +80,3 @@ def componentwise(b: Floats, y: Floats, r: Residual) -> float:
     if not live.any():
         return 0.0
     return float((r.reach[live] / least[live]).max()) * (1 + 8 * UNIT)
-

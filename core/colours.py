@@ -51,10 +51,12 @@ def colours(matrix: Pull, b: Floats, watch: Watch) -> NDArray[np.int64] | None:
             refine(rows.offsets, rows.neighbours, bits, *part, colour, fresh)
 
         each(piece, matrix.pieces, watch.threads)
-        kinds, classes = np.unique(fresh, return_inverse=True)
-        if len(kinds) == found:
-            return classes.astype(np.int64)
-        if len(kinds) == matrix.n:
+        ordered = np.sort(fresh)
+        kinds = int(np.count_nonzero(ordered[1:] != ordered[:-1])) + 1
+        if kinds == found:
+            classes = np.unique(fresh, return_inverse=True)[1]
+            return classes.astype(np.int64).ravel()
+        if kinds == matrix.n:
             return None  # every node is unlike every other: there are no ties to prove
-        found, colour = len(kinds), fresh
+        found, colour = kinds, fresh
     return None

@@ -62,9 +62,7 @@ class Adjacency:
         total, size = np.zeros(n), np.empty(n)
         order = np.arange(n, dtype=np.uint32)
         ones = np.ones(n)  # rows and columns are nodes alike
-        pull_exactly(
-            self.offsets, self.neighbours, self.weights, order, 0, n, ones, total, size
-        )
+        pull_exactly(self.offsets, self.neighbours, self.weights, order, 0, n, ones, total, size)
         return total
 
     def row(self, node: int) -> tuple[Neighbours, Floats]:
@@ -207,9 +205,12 @@ class Graph:
     def fingerprint(self) -> str:
         """64 hexadecimal digits that depend on labels, edges and weights alone (SHA-256)."""
         digest = hashlib.sha256()
-        digest.update(f"kingpost graph 1 {self.n} {int(self.directed)} {self.labels.type}".encode())
+        kind = f"kingpost graph 1 {self.n} {int(self.directed)} {self.labels.type}"
+        digest.update(kind.encode())
         for array in (self.outward.offsets, self.outward.neighbours, self.outward.weights):
-            digest.update(b"-" if array is None else memoryview(np.ascontiguousarray(array)).cast("B"))
+            digest.update(
+                b"-" if array is None else np.ascontiguousarray(array).view(np.uint8).data
+            )
         for start in range(0, self.n, 65_536):
             for value in self.labels.slice(start, 65_536).to_pylist():
                 text = id_text(value).encode("utf-8", "surrogatepass")

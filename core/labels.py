@@ -47,7 +47,7 @@ def containing(labels: pa.Array, text: str) -> NDArray[np.bool_]:
 
 
 def suggest(labels: pa.Array, text: str, limit: int = 3) -> list[str]:
-    """A few labels that look like ``text``, safe to show: those containing it, else similar ones."""
+    """A few labels that look like ``text``, safe to show: those containing it, or similar."""
     if len(labels) == 0 or not text:
         return []
     inside = np.flatnonzero(containing(labels, text))[:limit]

@@ -7,9 +7,9 @@ adjacency itself (scale 1), alpha times it (Katz), the damped walk of the random
 
 from __future__ import annotations
 
-from collections.abc import Iterator
 from dataclasses import dataclass
 from functools import cached_property
+from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
@@ -108,7 +108,7 @@ def cut(rows: Adjacency, order: Order, low: int, high: int, edges: int) -> list[
     marks = np.arange(edges, int(ends[-1]) + edges, edges)
     stops = np.unique(np.minimum(np.searchsorted(ends, marks) + 1, len(nodes)))
     bounds = [low, *(low + int(stop) for stop in stops)]
-    return list(zip(bounds[:-1], bounds[1:], strict=True))
+    return list(pairwise(bounds))
 
 
 def adjacency(graph: Graph, flow: Flow, alpha: float = 1.0) -> Pull:
@@ -126,5 +126,3 @@ def walk(graph: Graph, flow: Flow, damping: float = 1.0) -> tuple[Pull, Floats]:
     scale = np.zeros(graph.n)
     np.divide(damping, strength, out=scale, where=strength > 0)
     return Pull(graph.pull(flow), scale), strength
-
-

@@ -120,8 +120,8 @@ class Result:
     ``scores`` has shape (n,), float64, in the graph's numbering; it is all NaN when ``stop`` is
     ``REFUSED``, and ``refusal`` says why.  ``exact_zero`` marks nodes whose score is zero by
     structure rather than by rounding; ``symmetry()`` gives classes of nodes whose equations are
-    the same, so that their exact scores are equal (or None).  ``conventions`` names, in words, every choice that
-    other software may make otherwise.
+    the same, so that their exact scores are equal (or None).  ``conventions`` names, in words,
+    every choice that other software may make otherwise.
     """
 
     measure: str

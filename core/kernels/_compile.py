@@ -13,29 +13,27 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from pickle import UnpicklingError
-from typing import Any, TypeVar
+from typing import Any
 
 from numba import njit
-
-F = TypeVar("F", bound=Callable[..., Any])
 
 _message: str | None = None
 
 
-def kernel(**options: Any) -> Callable[[F], F]:
+def kernel(**options: Any) -> Callable[[Callable[..., Any]], Any]:
     """Decorator: compile a function over flat arrays; ``options`` go to ``numba.njit``."""
     settings = {"nogil": True, "error_model": "numpy", "boundscheck": False, **options}
 
-    def decorate(function: F) -> F:
+    def decorate(function: Callable[..., Any]) -> Any:
         try:
             compiled = njit(cache=True, **settings)(function)
         except RuntimeError as error:  # numba: "cannot cache function", no folder to write to
             if "cannot cache" not in str(error):
                 raise
             _remember("no folder for compiled code can be written to")
-            return njit(**settings)(function)  # type: ignore[no-any-return]
+            return njit(**settings)(function)
         _forgive(compiled)
-        return compiled  # type: ignore[no-any-return]
+        return compiled
 
     return decorate
 

@@ -10,7 +10,7 @@ from dataclasses import dataclass
 from typing import Any, TypeVar
 
 from kingpost.core.errors import SettingsError
-from kingpost.core.graph import Graph
+from kingpost.core.graph import Flow, Graph
 from kingpost.core.result import Iteration, Result
 from kingpost.core.watch import Watch
 
@@ -45,7 +45,7 @@ def option(
 class Settings:
     """Settings every iterative measure shares; each field says its range in its metadata."""
 
-    flow: str = option(
+    flow: Flow = option(
         "along",
         "score flows along the edges (a node is high when what points at it is high) or against",
         choices=("along", "against"),
@@ -58,7 +58,9 @@ class Settings:
         open_low=True,
         open_high=True,
     )
-    stop: str = option("bound", "stop at the error bound, or once the order of the top K is proven: order:K")
+    stop: str = option(
+        "bound", "stop at the error bound, or once the order of the top K is proven: order:K"
+    )
     max_sweeps: int = option(10_000, "give up after this many sweeps over the edges", low=1)
 
     def __post_init__(self) -> None:
@@ -119,7 +121,9 @@ class Measure:
     settings: type[Settings]
     solver: Callable[[Graph, Any, Watch], Solve]
 
-    def solve(self, graph: Graph, settings: Settings | None = None, watch: Watch | None = None) -> Solve:
+    def solve(
+        self, graph: Graph, settings: Settings | None = None, watch: Watch | None = None
+    ) -> Solve:
         """Start a solve; drive the generator, or hand it to :func:`finish`."""
         return self.solver(graph, settings or self.settings(), watch or Watch())
 

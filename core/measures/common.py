@@ -22,11 +22,17 @@ _REASONS = {
     Stop.CANCELLED: "cancelled; the proven error of what there is, is {bound:.1e}",
 }
 
+_UNPROVEN = {
+    Stop.STALLED: "rounding allows no progress; no error is proven",
+    Stop.LIMIT: "the limit of {limit:,} sweeps was reached; no error is proven",
+    Stop.CANCELLED: "cancelled; no error is proven",
+}
+
 
 def reason(stop: Stop, bound: float, settings: Settings) -> str:
     """Why a solve ended, in words."""
-    if stop is not Stop.CONVERGED and not np.isfinite(bound):
-        return _REASONS[stop].split("proven error")[0].rstrip(" ;,with") + "; no error is proven"
+    if not np.isfinite(bound) and stop in _UNPROVEN:
+        return _UNPROVEN[stop].format(limit=settings.max_sweeps)
     return _REASONS[stop].format(
         bound=bound, tol=settings.tol, limit=settings.max_sweeps, order=settings.stop_order
     )

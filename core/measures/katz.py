@@ -167,14 +167,16 @@ def _alpha(
         alpha = DEFAULT_FRACTION / mean
         return (
             alpha,
-            f"{alpha:.6g} = {DEFAULT_FRACTION} / the mean strength of nodes that are fed: the graph "
-            "has no cycle, so 1/rho does not exist and any alpha is legal",
+            f"{alpha:.6g} = {DEFAULT_FRACTION} / the mean strength of nodes that are fed: the "
+            "graph has no cycle, so 1/rho does not exist and any alpha is legal",
             None,
         )
     share = DEFAULT_FRACTION if fraction is None else fraction
     radius = yield from _logged(spectral_radius(graph, _RADIUS_WIDTH, watch), log)
     if radius is None:
-        return Refusal("cancelled before the spectral radius was known", "let it run, or give --alpha")
+        return Refusal(
+            "cancelled before the spectral radius was known", "let it run, or give --alpha"
+        )
     alpha = share / radius.high
     return (
         alpha,

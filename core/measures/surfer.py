@@ -7,8 +7,9 @@ out-weight) and ``w`` where those jump::
     x = d P^T x + d (a^T x) w + (1 - d) v,     sum(x) = 1
 
 Solved as a linear system without the dangling term: the pseudo-rank ``y = d P^T y + (1 - d) v``.
-For w = v the scores are ``y / sum(y)`` (Del Corso, Gulli, Romani 2005; Ipsen and Selee 2007); for
-another w they are ``y + t y_w`` with ``y_w = (I - d P^T)^-1 w`` and ``t = d a^T y / (1 - d a^T y_w)``.
+For w = v the scores are ``y / sum(y)`` (Del Corso, Gulli, Romani 2005; Ipsen and Selee 2007);
+for another w they are ``y + t y_w`` with ``y_w = (I - d P^T)^-1 w`` and
+``t = d a^T y / (1 - d a^T y_w)``.
 
 Error bounds hold for the full system, whose matrix ``M = I - d (P^T + w a^T)`` is an M-matrix
 with ``||M^-1||_1 <= 1 / (1 - d)``: the sum of all errors is at most ``||r||_1 / (1 - d)``, and
@@ -22,7 +23,6 @@ from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
-
 from numpy.typing import NDArray
 
 from kingpost.core.certify import UNIT, Residual, componentwise
@@ -85,17 +85,13 @@ def _solve(graph: Graph, settings: SurferSettings, watch: Watch) -> Solve:
     early = settings.stop_order is not None
     if jump.apart is None:
         judge = order_judge(settings, lambda y, r: jump.pseudo(y, r)[1])
-        found = yield from solve_linear(
-            system, judge, tol=settings.tol, early=early, **options
-        )
+        found = yield from solve_linear(system, judge, tol=settings.tol, early=early, **options)
         x, bound = jump.pseudo(found.x, found.residual)
         log, stop = found.log, found.stop
         leaked = max(0.0, 1.0 - float(found.x.sum()))
     else:
         # Half the tolerance for each of the two solves that are added up.
-        found = yield from solve_linear(
-            system, _plain_judge(d), tol=settings.tol / 2, **options
-        )
+        found = yield from solve_linear(system, _plain_judge(d), tol=settings.tol / 2, **options)
         jumped = yield from _after(
             found,
             solve_linear(
@@ -148,7 +144,7 @@ def _after(
 ) -> Generator[Iteration, None, Solution]:
     """Number the lines of a second solve on from the first."""
     last = before.log[-1]
-    lines = []
+    lines: list[Iteration] = []
     while True:
         try:
             line = next(work)
@@ -170,9 +166,7 @@ def _after(
 class Jump:
     """Where the walker jumps to, and what that makes of a solved linear system."""
 
-    def __init__(
-        self, graph: Graph, settings: SurferSettings, dangling: NDArray[np.bool_]
-    ) -> None:
+    def __init__(self, graph: Graph, settings: SurferSettings, dangling: NDArray[np.bool_]) -> None:
         self.graph, self.settings, self.dangling = graph, settings, dangling
         n = graph.n
         self.uniform = settings.teleport is None
@@ -200,9 +194,7 @@ class Jump:
             return y, Bound(BoundKind.NONE, float("inf"))
         spill = abs(float(r.value.sum())) + float(r.slack.sum())
         x = y / total
-        full = Residual(
-            r.value / total, (r.slack + self.teleport * spill) / total + 8 * UNIT * x
-        )
+        full = Residual(r.value / total, (r.slack + self.teleport * spill) / total + 8 * UNIT * x)
         return x, self._bound(x, full)
 
     def combined(self, y: Solution, w: Solution) -> tuple[Floats, Bound]:

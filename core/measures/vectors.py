@@ -35,7 +35,7 @@ def node_vector(graph: Graph, value: Any, name: str) -> Floats:
         vector = np.asarray(value, dtype=np.float64)
         if vector.shape != (graph.n,):
             raise SettingsError(
-                f"{name} has shape {vector.shape}; it takes one number for each of {graph.n:,} nodes"
+                f"{name} has shape {vector.shape}; it takes one number for each node ({graph.n:,})"
             )
     if not np.isfinite(vector).all():
         raise SettingsError(f"{name} holds a value that is NaN or infinite")

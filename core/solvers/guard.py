@@ -1,9 +1,9 @@
 """A positive vector that an M-matrix keeps positive: what turns any residual into a bound.
 
-With ``w > 0`` and ``M w >= h > 0`` (M = I - B, B nonnegative) every solution of ``M x = b`` obeys
-``|x - y| <= max_i(|r_i| / h_i) w`` for any y with residual r, whatever the signs of b and y; the
-same holds for ``M' x = b`` whenever ``|M'^-1| <= M^-1``, as for negative alpha.  That such a w exists
-also proves that the spectral radius of B is below 1.
+With ``w > 0`` and ``M w >= h > 0`` (M = I - B, B nonnegative) every solution of ``M x = b``
+obeys ``|x - y| <= max_i(|r_i| / h_i) w`` for any y with residual r, whatever the signs of b and y;
+the same holds for ``M' x = b`` whenever ``|M'^-1| <= M^-1``, as for negative alpha.  That such a w
+exists also proves that the spectral radius of B is below 1.
 """
 
 from __future__ import annotations
@@ -63,7 +63,8 @@ def find_guard(
             return 0.0, False
         if not (w[live] > 0).all():
             return float("inf"), False
-        return float((r.reach / g)[live].max()), False
+        given = g if len(g) == 1 else g[live]
+        return float((r.reach[live] / given).max()), False
 
     found: Solution = yield from solve(
         System(matrix, g, structure, flow),

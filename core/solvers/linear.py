@@ -133,9 +133,7 @@ def solve(
 class _Sweeper:
     """The iterate and everything that changes with it."""
 
-    def __init__(
-        self, system: System, watch: Watch, max_sweeps: int, start: Floats | None
-    ) -> None:
+    def __init__(self, system: System, watch: Watch, max_sweeps: int, start: Floats | None) -> None:
         self.watch, self.max_sweeps = watch, max_sweeps
         self.matrix, self.b = system.matrix, system.b
         self.plan = plan(system.structure, system.matrix.rows, system.flow)
@@ -232,10 +230,11 @@ class _Sweeper:
             for other, block in enumerate(others):
                 if other != number:
                     copy_rows(order, *block, self.z[other], self.z[number])
-            return gauss_seidel(  # type: ignore[no-any-return]
+            sums: tuple[float, float] = gauss_seidel(
                 rows.offsets, rows.neighbours, rows.weights, order, low, high,
                 self.b, self.matrix.scale, self.matrix.loops, self.z[number], self.x,
             )  # fmt: skip
+            return sums
 
         for step in stage.steps:
             self.watch.check()

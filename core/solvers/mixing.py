@@ -41,7 +41,7 @@ class Mixing:
         self._kept += 1
         s, t = self._factors(totals)
         total = self._sums[new] * (1 - s - t) + s * self._sums[one] + t * self._sums[two]
-        if not 0.2 < total / (self._sums[new] or 1.0) < 5.0:
+        if not 0.2 < total / (self._sums[new] or 1.0) < 1e4:
             s = t = 0.0  # a wild guess: go on from the plain sweep
         each(
             lambda block: extrapolate(

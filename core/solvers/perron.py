@@ -1,8 +1,9 @@
 """The dominant eigenvector of the strong components of a nonnegative matrix, with brackets.
 
-For every ``y > 0`` on an irreducible block, ``min (B y)_i / y_i <= rho <= max (B y)_i / y_i`` (Collatz
-1942, Wielandt 1950).  The bracket is what is claimed; power iteration with a shift (so that
-periodic blocks do not oscillate), dense or Krylov eigenvectors only supply the y.
+For every ``y > 0`` on an irreducible block, ``min (B y)_i / y_i <= rho <= max (B y)_i / y_i``
+(Collatz 1942, Wielandt 1950).  The bracket is what is claimed; power iteration, with a
+shift once iterates are seen to swing (periodic blocks), and dense or Krylov eigenvectors only
+supply the y.
 
 All cyclic components are bracketed at once: each product stays inside the components, and those
 whose upper end falls below the best lower end are dropped.
@@ -91,9 +92,7 @@ def bracket(
 
 
 class _Brackets:
-    def __init__(
-        self, matrix: Pull, structure: Structure, watch: Watch, only: int | None
-    ) -> None:
+    def __init__(self, matrix: Pull, structure: Structure, watch: Watch, only: int | None) -> None:
         self.matrix, self.structure, self.watch = matrix, structure, watch
         numbers = structure.cyclic if only is None else np.array([only], dtype=np.int64)
         y = np.zeros(matrix.n)
@@ -104,6 +103,8 @@ class _Brackets:
         self.stuck = False
         self._since = 0
         self._widths: list[float] = []
+        self._shift = 0.0  # of the middle of the bracket, once iterates are seen to swing
+        self._moves: list[float] = []
         self._tried: set[int] = set()
 
     def _choose(self, keep: NDArray[np.bool_]) -> None:
@@ -141,9 +142,7 @@ class _Brackets:
         def piece(part: tuple[int, int]) -> None:
             self.watch.check()
             if alone:
-                pull_rows(
-                    rows.offsets, rows.neighbours, rows.weights, self.nodes, *part, z, out
-                )
+                pull_rows(rows.offsets, rows.neighbours, rows.weights, self.nodes, *part, z, out)
             else:
                 pull_inside(
                     rows.offsets, rows.neighbours, rows.weights, self.nodes, *part, group, z, out
@@ -166,13 +165,15 @@ class _Brackets:
         state.low = np.fmax(state.low, low)
         state.high = np.fmin(state.high, high)
         middle = np.repeat((np.fmax(low, 0) + np.fmin(high, 1e300)) / 2, self.sizes)
-        after = product + 0.35 * middle * mine
+        after = product + self._shift * middle * mine
         top = np.repeat(np.maximum.reduceat(after, self.firsts), self.sizes)
         with np.errstate(invalid="ignore", divide="ignore"):
             after = after / top
         # An entry that underflows would leave the bracket open for good.
-        state.y[self.nodes] = np.maximum(np.nan_to_num(after), 1e-290)
+        after = np.maximum(np.nan_to_num(after), 1e-290)
+        state.y[self.nodes] = after
         state.steps += 1
+        self._watch_rate(float(np.abs(after - mine).sum()))
         keep = state.high >= state.low.max()
         if not keep.all():
             self._choose(keep)
@@ -190,17 +191,30 @@ class _Brackets:
         )
         state.log.append(line)
         recent = self._widths[-60:]
-        self.stuck = self._widths[-1] < 1e-13 and len(recent) > 20 and min(recent[:20]) <= min(
-            recent[20:]
+        self.stuck = (
+            self._widths[-1] < 1e-13 and len(recent) > 20 and min(recent[:20]) <= min(recent[20:])
         )
         return line
+
+    def _watch_rate(self, moved: float) -> None:
+        self._moves = [*self._moves[-7:], moved]
+        if len(self._moves) == 8 and self._shift == 0.0 and self.rate > 0.8:
+            self._shift = 0.35
+            self._moves = []
+
+    @property
+    def rate(self) -> float:
+        """Factor by which the vectors' movement falls a step, over the last few."""
+        if len(self._moves) < 4 or not self._moves[-4] > 0:
+            return 0.0
+        return float((self._moves[-1] / self._moves[-4]) ** (1 / 3))
 
     @property
     def slow(self) -> bool:
         """Whether a better vector is worth asking another solver for."""
         few = len(self.state.components) <= 64
         small = few and int(self.sizes.max()) <= _DENSE and self._since >= 3
-        large = len(self.state.components) <= _WIDE and self._since >= _PATIENCE
+        large = len(self.state.components) <= _WIDE and self._since >= _PATIENCE and self.rate > 0.5
         return (small or large) and self._widths[-1] > 1e-15
 
     def accelerate(self) -> None:

@@ -1,0 +1,372 @@
+"""Eigenvector centrality (Bonacich 1972): ``A^T x = rho x`` for flow along the edges, x >= 0.
+
+Unique only where one strong component dominates: it has the largest spectral radius rho, and
+nothing it feeds reaches that.  Then x is positive on that component and everything downstream
+of it, and zero elsewhere by structure.  Two components that tie for rho make every mixture of
+theirs a solution; an acyclic graph has rho = 0 and no solution at all.  Both are said, not
+computed.  Scores have Euclidean length 1.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Generator
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from kingpost.core.certify import Residual
+from kingpost.core.errors import Interrupted
+from kingpost.core.graph import Floats, Graph
+from kingpost.core.measures.base import Measure, Settings, Solve, option
+from kingpost.core.measures.common import (
+    Clock,
+    conventions,
+    empty,
+    proven_prefix,
+    reason,
+    refused,
+)
+from kingpost.core.operators import Pull, adjacency
+from kingpost.core.result import Bound, BoundKind, Iteration, Result, Stop
+from kingpost.core.solvers.linear import System
+from kingpost.core.solvers.linear import solve as solve_linear
+from kingpost.core.solvers.perron import Bracketed, bracket
+from kingpost.core.solvers.pinned import normalised_reach, perron_reach, pinned_guard, support
+from kingpost.core.structure import reachable
+from kingpost.core.text import count
+from kingpost.core.watch import Watch
+
+
+@dataclass(frozen=True, kw_only=True)
+class EigenvectorSettings(Settings):
+    """Settings of eigenvector centrality."""
+
+    component: str | None = option(
+        None, "a node: answer within its strong component instead of the dominating one"
+    )
+    certificate: str = option(
+        "componentwise",
+        "bound every score (componentwise), or only bracket the eigenvalue (bracket)",
+        choices=("componentwise", "bracket"),
+    )
+
+
+def solve(graph: Graph, settings: EigenvectorSettings, watch: Watch) -> Solve:
+    """Eigenvector scores, shape (n,), Euclidean length 1."""
+    if graph.n == 0:
+        return empty("eigenvector", graph, settings)
+    work = _Work(graph, settings, watch)
+    why = work.without_answer()
+    if why is None:
+        try:
+            why = yield from work.find()
+        except Interrupted:
+            return work.result(Stop.CANCELLED)
+    if why is not None:
+        return refused("eigenvector", graph, settings, *why, work.log)
+    try:
+        stop = yield from work.certify()
+    except Interrupted:
+        stop = Stop.CANCELLED
+    return work.result(stop)
+
+
+class _Work:
+    def __init__(self, graph: Graph, settings: EigenvectorSettings, watch: Watch) -> None:
+        self.graph, self.settings, self.watch = graph, settings, watch
+        self.clock = Clock()
+        self.structure = graph.structure
+        self.matrix = adjacency(graph, settings.flow)
+        self.log: list[Iteration] = []
+        self.x: Floats = np.zeros(graph.n)
+        self.rho = (0.0, float("inf"))
+        self.bound = Bound(BoundKind.NONE, float("inf"))
+        self.live: NDArray[np.bool_] = np.zeros(graph.n, dtype=bool)
+        self.chosen = -1
+        self.visits = self.sweeps = 0
+        self.clock.ready()
+
+    def without_answer(self) -> tuple[str, str] | None:
+        """Why there can be no answer at all, and what to use instead."""
+        structure, settings = self.structure, self.settings
+        if structure.acyclic:
+            return (
+                "the graph has no cycle, so its spectral radius is 0 and no eigenvector centrality "
+                "exists",
+                "use --measure katz, which counts walks and is exact here",
+            )
+        if settings.component is not None:
+            node = self.graph.find(settings.component)
+            self.chosen = int(structure.component[node])
+            if self.chosen not in structure.cyclic:
+                return (
+                    f"{self.graph.name(node, 60)} lies on no cycle, so its strong component has no "
+                    "eigenvector",
+                    "name a node on a cycle, or use --measure katz",
+                )
+        return None
+
+    def relay(
+        self, work: Generator[Iteration, None, Any], part: str
+    ) -> Generator[Iteration, None, Any]:
+        """Pass on the lines of a part of the work, numbered on."""
+        from dataclasses import replace
+
+        base, visits = self.sweeps, self.visits
+        offset = self.log[-1].seconds if self.log else 0.0
+        while True:
+            try:
+                line = next(work)
+            except StopIteration as end:
+                return end.value
+            line = replace(
+                line,
+                index=base + line.index,
+                edge_visits=visits + line.edge_visits,
+                seconds=offset + line.seconds,
+                eigenvalue=line.eigenvalue or self.rho,
+                part=part,
+            )
+            self.sweeps, self.visits = line.index, line.edge_visits
+            self.log.append(line)
+            yield line
+
+    def find(self) -> Generator[Iteration, None, tuple[str, str] | None]:
+        """The dominating component and its vector; a refusal where several tie."""
+        settings, structure = self.settings, self.structure
+        found: Bracketed = yield from self.relay(
+            bracket(
+                self.matrix, structure,
+                width=settings.tol, max_steps=settings.max_sweeps, watch=self.watch,
+                only=self.chosen if self.chosen >= 0 else None,
+            ),
+            "bracket",
+        )  # fmt: skip
+        self.rho = found.rho
+        if not found.decided:
+            winner = self._last_of_chain(found)
+            if winner is None:
+                return self._tie(found)
+            found = yield from self.relay(
+                bracket(
+                    self.matrix, structure,
+                    width=settings.tol, max_steps=settings.max_sweeps, watch=self.watch,
+                    only=winner,
+                ),
+                "bracket",
+            )  # fmt: skip
+            self.rho = found.rho
+        self.chosen = int(found.components[0])
+        self.x = found.y
+        self.limit = found.steps >= settings.max_sweeps
+        inside = support(structure, self.chosen, self.graph.n)
+        self.live = inside
+        if settings.component is None:
+            start = structure.members(self.chosen)
+            self.live = reachable(self.graph.push(settings.flow), start, self.watch)
+            if not np.array_equal(self.live, inside):
+                yield from self._downstream(inside, self.live & ~inside)
+        return None
+
+    def _last_of_chain(self, found: Bracketed) -> int | None:
+        """Of components that tie, the one all others feed: then it alone has a vector."""
+        if len(found.components) > 8:
+            return None
+        push = self.graph.push(self.settings.flow)
+        numbers = found.components.tolist()
+        last = numbers[-1] if self.settings.flow == "along" else numbers[0]
+        mark = int(self.structure.members(last)[0])
+        for number in numbers:
+            start = self.structure.members(number)[:1]
+            if number != last and not reachable(push, start, self.watch)[mark]:
+                return None
+        return int(last)
+
+    def _tie(self, found: Bracketed) -> tuple[str, str]:
+        sizes = self.structure.sizes[found.components]
+        low, high = found.rho
+        names = [
+            self.graph.name(int(self.structure.members(int(number))[0]), 40)
+            for number in found.components[:2]
+        ]
+        total = len(found.components)
+        verdict = (
+            f"{total:,} strong components (of {int(sizes.min()):,} to {int(sizes.max()):,} nodes, "
+            f"{names[0]} in one, {names[1]} in another) tie for the spectral radius, in "
+            f"[{low:.12g}, {high:.12g}], so the eigenvector is not unique"
+        )
+        return (
+            verdict,
+            f"answer within one with --component {names[0]}, or use --measure katz",
+        )
+
+    def _downstream(
+        self, inside: NDArray[np.bool_], below: NDArray[np.bool_]
+    ) -> Generator[Iteration, None, None]:
+        """Scores of what the dominating component feeds: ``(rho I - B) x = B x_D``."""
+        middle = 0.5 * (self.rho[0] + self.rho[1])
+        given = self.matrix.apply(self.x, self.watch) / middle
+        given[~below] = 0.0
+        scale = np.where(below, self.matrix.scale / middle, 0.0)
+        mass = float(self.x.sum())
+
+        def judge(x: Floats, r: Residual) -> tuple[float, bool]:
+            return r.norm / (mass + float(np.abs(x).sum())), False
+
+        found = yield from self.relay(
+            solve_linear(
+                System(Pull(self.matrix.rows, scale), given, self.structure, self.settings.flow),
+                judge,
+                tol=0.1 * self.settings.tol,
+                max_sweeps=self.settings.max_sweeps,
+                watch=self.watch,
+            ),
+            "downstream",
+        )
+        if found.stop is Stop.CANCELLED:
+            raise Interrupted("cancelled")
+        self.x = np.where(below, found.x, self.x)
+
+    def certify(self) -> Generator[Iteration, None, Stop]:
+        """Bound every score, sharpening the vector until the bound is what was asked for."""
+        settings = self.settings
+        low, high = self.rho
+        width = (high - low) / high
+        self.bound = Bound(BoundKind.BRACKET, width)
+        if settings.certificate == "bracket":
+            return Stop.CONVERGED if width <= settings.tol else self._short()
+        pin = int(
+            np.argmax(np.where(support(self.structure, self.chosen, self.graph.n), self.x, 0))
+        )
+        scale = np.where(self.live, self.matrix.scale, 0.0)
+        matrix = Pull(self.matrix.rows, scale)
+        guard = yield from self.relay(
+            pinned_guard(
+                matrix, self.structure, settings.flow, np.maximum(self.x, 0), pin, low,
+                max_sweeps=settings.max_sweeps, watch=self.watch,
+            ),
+            "certificate",
+        )  # fmt: skip
+        if guard is None:
+            return self._short()
+        best = float("inf")
+        for _ in range(200):
+            reach = perron_reach(matrix, self.x, self.rho, self.watch)
+            self.visits += matrix.stored
+            errors = np.where(guard.live, guard.factor(reach) * guard.w, 0.0)
+            errors = normalised_reach(self.x, errors, 2)
+            scores = self.x / np.linalg.norm(self.x)
+            value = float(errors.sum() / scores.sum())
+            self.bound = Bound(BoundKind.COMPONENTWISE, value, absolute=errors)
+            line = self._line(value)
+            yield line
+            if value <= settings.tol:
+                return Stop.CONVERGED
+            wanted = settings.stop_order
+            if wanted and proven_prefix(scores, self.bound, wanted) >= wanted:
+                return Stop.ORDER_PROVEN
+            if self.sweeps >= settings.max_sweeps:
+                return Stop.LIMIT
+            if not value < 0.7 * best:
+                return Stop.STALLED
+            best = min(best, value)
+            yield from self._polish(matrix, 12)
+        return Stop.STALLED
+
+    def _short(self) -> Stop:
+        return Stop.LIMIT if self.limit else Stop.STALLED
+
+    def _polish(self, matrix: Pull, steps: int) -> Generator[Iteration, None, None]:
+        """A few more power steps on the whole support, keeping the best bracket."""
+        low, high = self.rho
+        inside = support(self.structure, self.chosen, self.graph.n)
+        for _ in range(steps):
+            product = matrix.apply(self.x, self.watch)
+            self.visits += matrix.stored
+            self.sweeps += 1
+            middle = 0.5 * (low + high)
+            self.x = np.where(self.live, product + 0.35 * middle * self.x, 0.0)
+            self.x /= self.x.max()
+        product = matrix.apply(self.x, self.watch)
+        ratio = product[inside] / self.x[inside]
+        slack = 1e-16 * (matrix.rows.degrees[inside] / 4 + 8)
+        low = max(low, float((ratio * (1 - slack)).min()))
+        high = min(high, float((ratio * (1 + slack)).max()))
+        self.rho = (low, high)
+        yield self._line(float("nan"))
+
+    def _line(self, bound: float) -> Iteration:
+        low, high = self.rho
+        began = self.log[-1].seconds if self.log else 0.0
+        line = Iteration(
+            self.sweeps, (high - low) / high, bound, self.visits, max(began, self.elapsed),
+            eigenvalue=self.rho, part="certified",
+        )  # fmt: skip
+        self.log.append(line)
+        return line
+
+    @property
+    def elapsed(self) -> float:
+        """Seconds since the solve began."""
+        return self.clock.seconds().solve
+
+    def result(self, stop: Stop) -> Result:
+        """Everything found, as a Result."""
+        settings, graph = self.settings, self.graph
+        norm = float(np.linalg.norm(self.x))
+        scores = self.x / norm if norm > 0 else self.x
+        low, high = self.rho
+        words = reason(stop, self.bound.value, settings)
+        if self.bound.kind is BoundKind.BRACKET:
+            words = (
+                f"rho is known to {self.bound.value:.1e}; the scores themselves are not bounded "
+                "(--certificate componentwise bounds them)"
+            )
+        live = self.live
+        if live.any():
+            size = int(self.structure.sizes[self.chosen])
+            zero = int((~live).sum())
+            where = (
+                f"dominating strong component of {count(size, 'node')}, "
+                f"{count(int(live.sum()) - size, 'node')} downstream, "
+                f"{count(zero, 'node')} exactly 0"
+            )
+            period = self.structure.period(self.chosen)
+        else:
+            where, period = "not decided", 0
+        matrix = self.matrix
+        return Result(
+            measure="eigenvector",
+            settings=settings,
+            scores=scores,
+            stop=stop,
+            reason=words,
+            bound=self.bound,
+            log=tuple(self.log),
+            conventions=conventions(
+                graph,
+                settings,
+                component=where if settings.component is None else "of the node named: " + where,
+                rho=f"in [{low:.12g}, {high:.12g}]",
+                period=f"{period}" + (" (iterated with a shift)" if period > 1 else ""),
+                scores="Euclidean length 1",
+            ),
+            seconds=self.clock.seconds(),
+            facts={"rho": self.rho, "period": period},
+            exact_zero=~live if live.any() else None,
+            symmetry=lambda: _colours(matrix, live, self.watch),
+        )
+
+
+def _colours(matrix: Pull, live: NDArray[np.bool_], watch: Watch) -> NDArray[np.int64] | None:
+    from kingpost.core.colours import colours
+
+    if not live.any():
+        return None
+    kept = Pull(matrix.rows, np.where(live, matrix.scale, 0.0))
+    return colours(kept, live.astype(np.float64), watch)
+
+
+MEASURE = Measure("eigenvector", "E", "eigenvector", EigenvectorSettings, solve)

@@ -1,0 +1,87 @@
+"""Componentwise bounds for a Perron vector, by holding one node fixed.
+
+For ``B x = rho x`` with B irreducible on a component D, fix ``x_p = y_p`` at a node p of D.  The
+other scores of D, and of what D feeds, then solve ``(rho I - B_p) x = B[:, p] y_p``, whose matrix
+is an M-matrix: B_p has spectral radius below rho.  A guard w with ``(low I - B_p) w > 0``, low the
+lower end of a bracket of rho, therefore bounds every error by ``c w`` with
+``c = max |r| / ((low I - B_p) w)``.
+
+Reference: Berman and Plemmons, "Nonnegative Matrices in the Mathematical Sciences", 1979,
+ch. 6 (M-matrices: characterisation by a positive vector).
+"""
+
+from __future__ import annotations
+
+from collections.abc import Generator
+
+import numpy as np
+from numpy.typing import NDArray
+
+from kingpost.core.certify import UNIT
+from kingpost.core.graph import Floats, Flow
+from kingpost.core.operators import Pull
+from kingpost.core.result import Iteration
+from kingpost.core.solvers.guard import Guard, find_guard
+from kingpost.core.structure import Structure
+from kingpost.core.watch import Watch
+
+
+def pinned_guard(
+    matrix: Pull,
+    structure: Structure,
+    flow: Flow,
+    y: Floats,
+    pin: int,
+    low: float,
+    *,
+    max_sweeps: int,
+    watch: Watch,
+) -> Generator[Iteration, None, Guard | None]:
+    """A guard of ``I - B_p / low`` on the support of y (zero outside that of B's vector).
+
+    In proportion to y where that can be had: it bounds all scores equally well, relative to
+    their size.  Where scores span too many decades for it, flatter ones are tried.
+    """
+    scale = np.where(y > 0, matrix.scale / low, 0.0)
+    scale[pin] = 0.0
+    for power in (1.0, 0.5, 0.0):
+        wanted = np.where(y > 0, np.maximum(y, 0.0) ** power, 0.0)
+        guard = yield from find_guard(
+            Pull(matrix.rows, scale), structure, flow, wanted,
+            max_sweeps=max_sweeps, watch=watch, ignore=pin,
+        )  # fmt: skip
+        if guard is not None or watch.cancelled:
+            return guard
+    return None
+
+
+def perron_reach(matrix: Pull, y: Floats, rho: tuple[float, float], watch: Watch) -> Floats:
+    """The most ``|(B y)_i / rho - y_i|`` can be for any rho of the bracket; shape (n,)."""
+    low, high = rho
+    order = np.arange(matrix.n, dtype=np.uint32)
+    product, size = matrix.apply_exactly(y, order, 0, matrix.n, watch)
+    middle = 0.5 * (low + high)
+    gap = np.abs(product - middle * y) + 0.5 * (high - low) * np.abs(y)
+    reach: Floats = (gap + UNIT * (12 * size + 6 * middle * np.abs(y))) / low
+    return reach
+
+
+def normalised_reach(y: Floats, reach: Floats, order: int) -> Floats:
+    """Bounds of the errors of ``y / |y|`` from bounds of those of y; |.| is the norm of ``order``.
+
+    With ``d = |reach|``: ``|y/N - x/X| <= reach/X + y |1/N - 1/X|`` and ``X >= N - d``.
+    """
+    norm = float(np.linalg.norm(y, order))
+    spread = float(np.linalg.norm(reach, order)) * (1 + 1e-12)
+    if not spread < norm:
+        return np.full(len(y), np.inf)
+    least = norm - spread
+    bound: Floats = reach / least + np.abs(y) * (spread / (norm * least) + 8 * UNIT / norm)
+    return bound
+
+
+def support(structure: Structure, component: int, n: int) -> NDArray[np.bool_]:
+    """Members of a component as a mask, shape (n,)."""
+    inside = np.zeros(n, dtype=bool)
+    inside[structure.members(component)] = True
+    return inside
