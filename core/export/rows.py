@@ -56,14 +56,23 @@ def attribute_names(graph: Graph) -> list[str]:
 
 
 def attributes(graph: Graph) -> pa.Table | None:
-    """The node attributes under their output names, dictionaries decoded; None without any."""
+    """The node attributes under their output names, dictionaries and views decoded; None without any."""
     if graph.attributes is None or graph.attributes.num_columns == 0:
         return None
-    columns = [
-        pc.cast(column, column.type.value_type) if pa.types.is_dictionary(column.type) else column
-        for column in graph.attributes.columns
-    ]
+    columns = [_common(column) for column in graph.attributes.columns]
     return pa.table(columns, names=attribute_names(graph)).combine_chunks()
+
+
+def _common(column: pa.ChunkedArray) -> pa.ChunkedArray:
+    """A column without dictionaries and views, which not every reader and kernel takes."""
+    kind = column.type
+    if pa.types.is_dictionary(kind):
+        return _common(pc.cast(column, kind.value_type))
+    if pa.types.is_string_view(kind):
+        return pc.cast(column, pa.large_string())
+    if pa.types.is_binary_view(kind):
+        return pc.cast(column, pa.large_binary())
+    return column
 
 
 def schema(graph: Graph) -> pa.Schema:
@@ -116,8 +125,8 @@ def single(column: Any) -> pa.Array:
 def as_plain(column: pa.Array) -> pa.Array:
     """A column in types that text formats can hold.
 
-    Numbers, booleans and text stay; instants become ISO 8601 text, decimals and dates text,
-    bytes what :func:`id_text` makes of them, nested values JSON.
+    Numbers, booleans and text stay; instants become ISO 8601 text, spans of time seconds,
+    decimals and dates text, bytes what :func:`id_text` makes of them, nested values JSON.
     """
     kind = column.type
     is_ = pa.types
@@ -126,7 +135,12 @@ def as_plain(column: pa.Array) -> pa.Array:
     if is_.is_timestamp(kind):
         return pc.replace_substring(pc.cast(column, pa.string()), " ", "T", max_replacements=1)
     if is_.is_date(kind) or is_.is_time(kind):
-        return pc.cast(column, pa.string())
+        return pc.cast(column, pa.large_string())
+    if is_.is_duration(kind):
+        ticks = pc.cast(pc.cast(column, pa.int64()), pa.float64(), safe=False)
+        return pc.divide(ticks, {"s": 1.0, "ms": 1e3, "us": 1e6, "ns": 1e9}[kind.unit])
+    if is_.is_float16(kind):
+        return pc.cast(column, pa.float32())
     if (
         is_.is_integer(kind)
         or is_.is_floating(kind)

@@ -10,7 +10,7 @@ from kingpost.core.export.cells import plain_ascii, wrap
 from kingpost.core.export.digits import on_the_point, score_texts
 from kingpost.core.export.heading import RAIL, RAIL_ASCII, header, legend
 from kingpost.core.export.layout import Column, escaped, markdown_table, terminal_table
-from kingpost.core.export.rows import Ranking, attributes, degrees
+from kingpost.core.export.rows import Ranking, as_plain, attributes, degrees, single
 from kingpost.core.standing import UNRANKED
 from kingpost.core.text import count, id_text, visible
 
@@ -40,7 +40,7 @@ def columns(ranking: Ranking, *, ascii_only: bool = False) -> list[Column]:
         picked = extra.take(nodes)
         for title, values in zip(picked.column_names, picked.columns, strict=True):
             number = _is_number(values.type)
-            texts = [value_text(value) for value in values.to_pylist()]
+            texts = [value_text(value) for value in as_plain(single(values)).to_pylist()]
             found.append(Column(visible(title, 40), texts, ">" if number else "<", optional=True))
     return found
 

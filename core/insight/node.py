@@ -85,11 +85,10 @@ def look(
     ``results``.
     """
     lead = results[leading]
-    attributes = {} if graph.attributes is None else graph.attributes.slice(node, 1).to_pydict()
     return NodeView(
         node=node,
         label=graph.label(node),
-        attributes={name: values[0] for name, values in attributes.items()},
+        attributes=attributes(graph, node),
         in_degree=int(graph.inward.offsets[node + 1] - graph.inward.offsets[node]),
         out_degree=int(graph.outward.offsets[node + 1] - graph.outward.offsets[node]),
         in_strength=float(graph.inward.row(node)[1].sum()),
@@ -99,6 +98,20 @@ def look(
         inward=_neighbours(graph, graph.inward, node, lead, limit),
         outward=_neighbours(graph, graph.outward, node, lead, limit),
     )
+
+
+def attributes(graph: Graph, node: int) -> dict[str, Any]:
+    """The attributes of a node as Python values; what Python cannot hold exactly, as text."""
+    if graph.attributes is None:
+        return {}
+    found = {}
+    for name, column in zip(graph.attributes.column_names, graph.attributes.columns, strict=True):
+        value = column[node]
+        try:
+            found[name] = value.as_py()
+        except (ValueError, OverflowError):  # nanoseconds, years beyond 9999
+            found[name] = str(value.cast("string"))
+    return found
 
 
 def place(result: Result, node: int) -> Place:

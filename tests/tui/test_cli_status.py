@@ -156,6 +156,20 @@ def test_2_for_a_file_that_is_no_table(tmp_path: Path) -> None:
         assert "\x1b" not in done.stderr
 
 
+def test_2_rather_than_write_over_what_is_read(ring: Path, tmp_path: Path) -> None:
+    before = ring.read_bytes()
+    found = run("rank", str(ring).replace("ring", "r*g"), "--out", ring)
+    assert found.exit_code == 2
+    assert "being read" in one_sentence(found)
+    nodes = tmp_path / "nodes.csv"
+    nodes.write_text("id,x\na,1\n")
+    for words in (["--nodes", nodes], ["--teleport", nodes]):
+        done = run("rank", ring, *words, "--out", nodes)
+        assert done.exit_code == 2
+        assert "being read" in one_sentence(done)
+    assert ring.read_bytes() == before
+
+
 def test_3_gives_the_reason_and_what_to_use_instead(ring: Path, register: Any) -> None:
     def refuse(graph: Any, settings: Any, watch: Any) -> Iterator[Iteration]:
         yield Iteration(1, 1.0, 1.0, 1, 0.0)

@@ -21,7 +21,7 @@ def audit(edges: tuple[str, ...], **given: Any) -> int:
 
     out = given["out"]
     form = given["form"] or ("json" if out and out.lower().endswith(".json") else "table")
-    writing.check_places(form, out, inputs=edges)
+    writing.check_places(form, out, inputs=[*edges, *writing.named_files(given)])
     with Session(given["threads"]) as session:
         from kingpost.core.ingest import describe
 

@@ -34,7 +34,7 @@ def node(edges: tuple[str, ...], name: str | None, **given: Any) -> int:
 
     out = given["out"]
     form = given["form"] or ("json" if out and out.lower().endswith(".json") else "table")
-    writing.check_places(form, out, inputs=edges)
+    writing.check_places(form, out, inputs=[*edges, *writing.named_files(given)])
     leading = measure(given["measure"]).name
     measures = [measure(other) for other in NAMES]
     values = given_settings(given)

@@ -48,7 +48,7 @@ def answer(edges: tuple[str, ...], given: dict[str, Any]) -> int:
 
     out, log = given.get("out"), given.get("log")
     form = format_of(given.get("form"), out)
-    writing.check_places(form, out, log, edges)
+    writing.check_places(form, out, log, [*edges, *writing.named_files(given)])
     chosen = measure(given["measure"])
     values = given_settings(given)
     check_takers(values, [chosen])
@@ -56,6 +56,7 @@ def answer(edges: tuple[str, ...], given: dict[str, Any]) -> int:
 
     with Session(given["threads"]) as session:
         graph, load_seconds = session.load(edges, load_options(given))
+        writing.check_places(form, out, log, graph.origin.files)
         choice = build(chosen, values, graph)
         result = session.solve(chosen, graph, choice.settings, load_seconds)
         if result.refusal is not None:

@@ -5,7 +5,7 @@ from __future__ import annotations
 import os
 import shutil
 import sys
-from collections.abc import Callable, Iterable
+from collections.abc import Callable, Iterable, Mapping
 from typing import TYPE_CHECKING, Any, BinaryIO
 
 from kingpost.core.errors import OutputError
@@ -43,6 +43,12 @@ def check_places(
         check_target(log, inputs)
         if out is not None and os.path.realpath(log) == os.path.realpath(out):
             raise OutputError(f"--out and --log both name {out}; they need two files")
+
+
+def named_files(given: Mapping[str, Any]) -> list[str]:
+    """What options may name as files to be read: never to be written over."""
+    words = [given.get("nodes"), given.get("beta"), *(given.get("teleport") or ())]
+    return [word for word in words if word]
 
 
 def ascii_terminal() -> bool:

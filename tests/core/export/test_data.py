@@ -19,6 +19,8 @@ from handmade import HOSTILE, make_graph, make_result
 
 from kingpost.core.export import data
 from kingpost.core.export.rows import FIXED, Ranking
+from kingpost.core.export.table import table
+from kingpost.core.insight.node import look
 from kingpost.core.result import Bound, BoundKind
 
 EXPECTED = sorted(HOSTILE, key=str.encode)
@@ -43,12 +45,12 @@ def test_delimited_by_the_standard_librarys_reader(hostile: Ranking, delimiter: 
 @pytest.mark.parametrize("delimiter", [",", "\t"])
 def test_delimited_by_arrows_reader(hostile: Ranking, delimiter: str) -> None:
     blob = written(data.write_delimited, hostile, delimiter=delimiter)
-    table = pyarrow.csv.read_csv(
+    back = pyarrow.csv.read_csv(
         io.BytesIO(blob),
         parse_options=pyarrow.csv.ParseOptions(delimiter=delimiter, newlines_in_values=True),
         convert_options=pyarrow.csv.ConvertOptions(strings_can_be_null=False),
     )
-    assert table.column("node").to_pylist() == EXPECTED
+    assert back.column("node").to_pylist() == EXPECTED
 
 
 def test_delimited_made_safe_for_a_terminal_acts_on_none(hostile: Ranking) -> None:
@@ -60,10 +62,10 @@ def test_delimited_made_safe_for_a_terminal_acts_on_none(hostile: Ranking) -> No
 
 
 def test_parquet_keeps_names_scores_and_facts(hostile: Ranking) -> None:
-    table = pq.read_table(io.BytesIO(written(data.write_parquet, hostile)))
-    assert table.column("node").to_pylist() == EXPECTED
-    assert table.column("score").to_numpy().tolist() == hostile.result.scores.tolist()
-    facts = json.loads(table.schema.metadata[b"kingpost"])
+    back = pq.read_table(io.BytesIO(written(data.write_parquet, hostile)))
+    assert back.column("node").to_pylist() == EXPECTED
+    assert back.column("score").to_numpy().tolist() == hostile.result.scores.tolist()
+    facts = json.loads(back.schema.metadata[b"kingpost"])
     assert facts == json.loads(json.dumps(data.facts(hostile)))
 
 
@@ -159,8 +161,8 @@ def test_ids_keep_their_type_where_the_format_has_it(
     assert [row["node"] for row in rows] == as_json
     text = written(data.write_delimited, ranking).decode()
     assert [row[3] for row in csv.reader(io.StringIO(text))][1:] == as_text
-    table = pq.read_table(io.BytesIO(written(data.write_parquet, ranking)))
-    assert table.column("node").combine_chunks() == labels
+    back = pq.read_table(io.BytesIO(written(data.write_parquet, ranking)))
+    assert back.column("node").combine_chunks() == labels
 
 
 def test_attributes_of_any_type_reach_text_formats() -> None:
@@ -174,6 +176,9 @@ def test_attributes_of_any_type_reach_text_formats() -> None:
             "100% %s": pa.array([7, None]),
             "flag": pa.array([True, None]),
             "span": pa.array([dt.timedelta(seconds=90), None]),
+            "fine": pa.array([1_500_000_001, None], pa.timestamp("ns")),
+            "half": pa.array([np.float16(1.5), None], pa.float16()),
+            "view": pa.array(["x", None], pa.string_view()),
         }
     )
     graph = make_graph(pa.array(["a", "b"]), [(0, 1)], None, extra)
@@ -181,6 +186,8 @@ def test_attributes_of_any_type_reach_text_formats() -> None:
     first, second = json.loads(written(data.write_json, ranking))["rows"]
     assert first["when"].startswith("2024-05-06T07:08:09")
     assert second["when"] is None
+    assert (first["span"], second["span"]) == (90.0, None)
+    assert (first["fine"], first["half"]) == ("1970-01-01T00:00:01.500000001", 1.5)
     assert (first["kind"], second["kind"]) == ("x", "y")
     assert (first["100% %s"], second["100% %s"]) == (7, None)
     assert (first["flag"], second["flag"]) == (True, None)
@@ -191,6 +198,10 @@ def test_attributes_of_any_type_reach_text_formats() -> None:
     assert rows[0]["share"] == "nan"
     assert json.loads(rows[0]["tags"]) == ["a", "b"]
     assert rows[1]["when"] == ""
+    assert "00:00:01.500000001" in table(ranking, 400)
+    assert (
+        look(graph, 0, {"made": ranking.result}, "made").attributes["fine"].endswith("01.500000001")
+    )
     back = pq.read_table(io.BytesIO(written(data.write_parquet, ranking)))
     assert back.column("tags").to_pylist() == [["a", "b"], None]
 
