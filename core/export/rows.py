@@ -56,7 +56,7 @@ def attribute_names(graph: Graph) -> list[str]:
 
 
 def attributes(graph: Graph) -> pa.Table | None:
-    """The node attributes under their output names, dictionaries and views decoded; None without any."""
+    """The node attributes under their output names, in common types; None without any."""
     if graph.attributes is None or graph.attributes.num_columns == 0:
         return None
     columns = [_common(column) for column in graph.attributes.columns]
