@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 from kingpost.core.errors import InputError
 
 Codes = NDArray[np.uint32]
+Order = NDArray[np.int64]
 MOST_NODES = 2**32 - 1
 _SLOTS = 1 << 12
 
@@ -52,6 +53,10 @@ class WholeDictionary:
         return pa.array(words.view(np.int64) if pa.types.is_signed_integer(kind) else words).cast(
             kind
         )
+
+    def order(self) -> Order | None:
+        """No order quicker than Arrow's."""
+        return None
 
 
 class TextDictionary:
@@ -95,7 +100,10 @@ class TextDictionary:
                 row = int(state[0])
                 last = min(row + ids.BLOCK, len(offsets) - 1)
                 need = int(self.ends[self.known]) + int(offsets[last]) - int(offsets[row])
-                self.store.resize(max(2 * len(self.store), need), refcheck=False)
+                # Not resized in place: a new array gets large pages, which halve the time.
+                room = np.empty(max(2 * len(self.store), need), dtype=np.uint8)
+                room[: int(self.ends[self.known])] = self.store[: int(self.ends[self.known])]
+                self.store = room
         self.known = int(state[1])
 
     def absorb(self, other: TextDictionary) -> Codes:
@@ -103,6 +111,40 @@ class TextDictionary:
         codes = np.empty(other.known, dtype=np.uint32)
         self._encode(other.ends[: other.known + 1], other.store, codes, 0)
         return codes
+
+    def order(self) -> Order | None:
+        """Numbers in ascending order of the bytes; None where that takes a full comparison.
+
+        Two words of eight bytes after what all texts begin with tell most names apart.
+        """
+        from kingpost.core.kernels import ids
+
+        everyone = np.arange(self.known)
+        depth = ids.common_start(self.ends, self.known, self.store)
+
+        def look(items: Order, depth: int) -> tuple[NDArray[np.uint64], NDArray[np.uint8]]:
+            words = np.empty(len(items), dtype=np.uint64)
+            sizes = np.empty(len(items), dtype=np.uint8)
+            ids.words_at(self.ends, self.store, items, depth, words, sizes)
+            return words, sizes
+
+        words, _ = look(everyone, depth)
+        order = np.argsort(words)
+        words = words[order]
+        again = np.concatenate(([False], words[1:] == words[:-1]))
+        if not again.any():
+            return order
+        tied = again.copy()
+        tied[:-1] |= again[1:]
+        items = order[tied]
+        _, sizes = look(items, depth)
+        more, left = look(items, depth + 8)
+        keys = (left, more, sizes, np.cumsum(~again)[tied])
+        inner = np.lexsort(keys)
+        if np.all([key[inner][1:] == key[inner][:-1] for key in keys], axis=0).any():
+            return None
+        order[tied] = items[inner]
+        return order
 
     def ids(self, kind: pa.DataType) -> pa.Array:
         """What it knows, by number, as an array of the large type that goes with ``kind``."""
@@ -119,4 +161,4 @@ class TextDictionary:
 def _grown(known: int, size: int) -> int:
     if known > MOST_NODES - 1024:
         raise InputError(f"the table names more nodes than can be numbered ({MOST_NODES:,})")
-    return 4 * size if size < 1 << 20 else 2 * size
+    return 2 * size

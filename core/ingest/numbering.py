@@ -16,7 +16,13 @@ import pyarrow.compute as pc
 from numpy.typing import NDArray
 
 from kingpost.core.errors import InputError
-from kingpost.core.ingest.dictionaries import MOST_NODES, Codes, TextDictionary, WholeDictionary
+from kingpost.core.ingest.dictionaries import (
+    MOST_NODES,
+    Codes,
+    Order,
+    TextDictionary,
+    WholeDictionary,
+)
 from kingpost.core.ingest.idtypes import from_integers, integer_type, to_integers
 from kingpost.core.ingest.spread import each, spans
 from kingpost.core.watch import Watch
@@ -119,15 +125,17 @@ def _hashed(
     moved = known[0].absorb(known.pop())
     labels = known[0].ids(kind)
     check_size(len(labels))
+    watch.check()
+    order = known[0].order()
     known.clear()
-    labels, ranks = _sorted(labels, watch)
+    labels, ranks = _sorted(labels, watch, order)
     _renumber(codes[0], ranks, watch)
     _renumber(codes[1], ranks[moved], watch)
     return labels, codes[0], codes[1]
 
 
-def _sorted(labels: pa.Array, watch: Watch) -> tuple[pa.Array, Codes]:
-    """Ids in ascending order, and the place there of each as it stood before."""
+def _sorted(labels: pa.Array, watch: Watch, order: Order | None = None) -> tuple[pa.Array, Codes]:
+    """Ids in ascending order (given, or found here), and the place there of each."""
     watch.check()
     watch.report("sorting ids", 0, len(labels), "ids")
     if pa.types.is_string(labels.type) or pa.types.is_large_string(labels.type):
@@ -138,11 +146,12 @@ def _sorted(labels: pa.Array, watch: Watch) -> tuple[pa.Array, Codes]:
                 "the ids hold text that is not valid UTF-8; mend it, or cast the id columns to "
                 "binary"
             ) from None
-    order = pc.array_sort_indices(labels)
+    if order is None:
+        order = pc.array_sort_indices(labels).to_numpy()
     ranks = np.empty(len(labels), dtype=np.uint32)
-    ranks[order.to_numpy()] = np.arange(len(labels), dtype=np.uint32)
+    ranks[order] = np.arange(len(labels), dtype=np.uint32)
     watch.check()
-    return labels.take(order), ranks
+    return labels.take(pa.array(order)), ranks
 
 
 def _renumber(codes: Codes, ranks: Codes, watch: Watch) -> None:

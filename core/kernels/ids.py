@@ -14,7 +14,7 @@ import numpy as np
 
 from kingpost.core.kernels._compile import kernel
 
-BLOCK = 64
+BLOCK = 256
 _MIX = np.uint64(0x9E3779B97F4A7C15)  # 2^64 / golden ratio, odd
 _LOW = np.uint64(0xFFFFFFFF)
 _HALF = np.uint64(32)
@@ -98,7 +98,7 @@ def encode_whole(values: Any, codes: Any, at: int, table: Any, keys: Any, state:
         row += size
     state[0], state[1] = row, known
     state[2] = np.int64(touched & _LOW)  # so that the touching is not optimised away
-    return row == rows
+    return row == rows  # type: ignore[no-any-return]
 
 
 @kernel()
@@ -163,8 +163,8 @@ def _same_text(left: Any, at: Any, right: Any, to: Any, size: Any) -> bool:
         done += _EIGHT
     if done < size:
         if size >= _EIGHT:
-            return _word(left, at + size - _EIGHT) == _word(right, to + size - _EIGHT)
-        return _tail(left, at, at + size) == _tail(right, to, to + size)
+            return _word(left, at + size - _EIGHT) == _word(right, to + size - _EIGHT)  # type: ignore[no-any-return]
+        return _tail(left, at, at + size) == _tail(right, to, to + size)  # type: ignore[no-any-return]
     return True
 
 
@@ -191,7 +191,8 @@ def encode_text(
     mask = np.uint64(len(table) - 1)
     limit = min(len(hashes), len(table) // 2) - BLOCK
     block = np.empty(BLOCK, dtype=np.uint64)
-    entries = np.empty(BLOCK, dtype=np.uint64)
+    near = np.empty(BLOCK, dtype=np.uint64)
+    first = np.empty(BLOCK, dtype=np.uint64)
     touched = np.uint64(0)
     row, known = state[0], state[1]
     while row < rows and known <= limit:
@@ -199,14 +200,19 @@ def encode_text(
         if ends[known] + np.int64(offsets[row + size] - offsets[row]) > len(store):
             break
         for j in range(size):
-            key = _hash_text(data, np.uint64(offsets[row + j]), np.uint64(offsets[row + j + 1]))
-            block[j] = key
-            entries[j] = table[key & mask]
+            block[j] = _hash_text(
+                data, np.uint64(offsets[row + j]), np.uint64(offsets[row + j + 1])
+            )
+        # Short loops without branches, so that many of their waits for memory go on at once.
         for j in range(size):
-            if entries[j] != 0:
-                entries[j] = np.uint64(ends[(entries[j] & _LOW) - _ONE])
+            near[j] = table[block[j] & mask] & _LOW
         for j in range(size):
-            touched ^= np.uint64(store[entries[j]])
+            number = near[j]
+            near[j] = np.uint64(ends[number])
+            first[j] = np.uint64(ends[number - np.uint64(number != 0)])
+        for j in range(size):  # a text may begin on one line of the cache and end on the next
+            touched ^= np.uint64(store[first[j]])
+            touched ^= np.uint64(store[near[j] - np.uint64(near[j] != 0)])
         for j in range(size):
             key = block[j]
             begin = np.uint64(offsets[row + j])
@@ -236,7 +242,7 @@ def encode_text(
         row += size
     state[0], state[1] = row, known
     state[2] = np.int64(touched & _LOW)  # so that the touching is not optimised away
-    return row == rows
+    return row == rows  # type: ignore[no-any-return]
 
 
 @kernel()
@@ -244,8 +250,36 @@ def rebuild_text(hashes: Any, known: int, table: Any) -> None:
     """Fill an empty, larger table with the ids known."""
     mask = np.uint64(len(table) - 1)
     for i in range(known):
-        key = hashes[i]
-        slot = key & mask
+        slot = hashes[i] & mask
         while table[slot] != 0:
             slot = (slot + _ONE) & mask
-        table[slot] = (key & ~_LOW) | np.uint64(i + 1)
+        table[slot] = (hashes[i] & ~_LOW) | np.uint64(i + 1)
+
+
+@kernel()
+def common_start(ends: Any, known: int, store: Any) -> int:
+    """How many bytes all the texts of a store begin with alike."""
+    alike = ends[1] - ends[0] if known else 0
+    for i in range(1, known):
+        alike = min(alike, ends[i + 1] - ends[i])
+        k = 0
+        while k < alike and store[ends[0] + k] == store[ends[i] + k]:
+            k += 1
+        alike = k
+    return alike
+
+
+@kernel()
+def words_at(ends: Any, store: Any, items: Any, depth: int, words: Any, sizes: Any) -> None:
+    """Eight bytes from ``depth`` on, as numbers that order as the bytes do; missing ones are 0.
+
+    ``sizes`` gets how many of the eight there are.
+    """
+    for i in range(len(items)):
+        at = ends[items[i]] + depth
+        size = max(0, min(8, ends[items[i] + 1] - at))
+        word = np.uint64(0)
+        for k in range(size):
+            word |= np.uint64(store[at + k]) << np.uint64(56 - 8 * k)
+        words[i] = word
+        sizes[i] = size
