@@ -1,7 +1,7 @@
 """Which nodes must have exactly equal scores, because their equations are the same.
 
-The coarsest partition in which two nodes of a class have the same right-hand side, the same
-scale, and as many givers of every class with every weight.  The exact solution of
+The coarsest partition in which two nodes of a class have the same right-hand side and as many
+givers of every class with every scale and weight.  The exact solution of
 ``x = b + B x``, and the Perron vector of an irreducible B, are constant on its classes: this is
 what tells a true tie from two scores that the error bound cannot separate.
 
@@ -28,35 +28,35 @@ def colours(matrix: Pull, b: Floats, watch: Watch) -> NDArray[np.int64] | None:
     None where the partition is not stable after 200 rounds, or ``watch`` was cancelled: an
     unstable partition proves nothing.
     """
-    from kingpost.core.kernels.colour import refine
+    from kingpost.core.kernels.colour import gifts, refine
 
     rows = matrix.rows
     bits = None if rows.weights is None else rows.weights.view(np.uint64)
-    start = np.column_stack((np.broadcast_to(b, matrix.n), matrix.scale))
-    _, first = np.unique(start + 0.0, axis=0, return_inverse=True)  # + 0.0: -0 is 0
-    colour = first.astype(np.uint64).ravel()
-    found = int(first.max(initial=0)) + 1
-    if not matrix.scale.any():
-        return first.astype(np.int64).ravel()
+    scale_bits = (matrix.scale + 0.0).view(np.uint64)  # + 0.0: -0 is 0
+    kinds, start = np.unique(np.broadcast_to(b, matrix.n) + 0.0, return_inverse=True)
+    colour = start.ravel().astype(np.uint64)
+    found = len(kinds)
+    gift = np.empty_like(colour)
     for _ in range(_ROUNDS):
         if watch.cancelled:
             return None
         fresh = np.empty_like(colour)
+        gifts(colour, scale_bits, gift)
 
         def piece(
             part: tuple[int, int],
             colour: NDArray[np.uint64] = colour,
             fresh: NDArray[np.uint64] = fresh,
         ) -> None:
-            refine(rows.offsets, rows.neighbours, bits, *part, colour, fresh)
+            refine(rows.offsets, rows.neighbours, bits, *part, colour, gift, fresh)
 
         each(piece, matrix.pieces, watch.threads)
         ordered = np.sort(fresh)
-        kinds = int(np.count_nonzero(ordered[1:] != ordered[:-1])) + 1
-        if kinds == found:
+        seen = int(np.count_nonzero(ordered[1:] != ordered[:-1])) + 1
+        if seen == found:
             classes = np.unique(fresh, return_inverse=True)[1]
             return classes.astype(np.int64).ravel()
-        if kinds == matrix.n:
+        if seen == matrix.n:
             return None  # every node is unlike every other: there are no ties to prove
-        found, colour = kinds, fresh
+        found, colour = seen, fresh
     return None

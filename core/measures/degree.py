@@ -8,7 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from kingpost.core.certify import UNIT
-from kingpost.core.graph import Graph
+from kingpost.core.graph import Adjacency, Floats, Graph
 from kingpost.core.measures.base import Measure, Settings, Solve, option
 from kingpost.core.measures.common import Clock, conventions, empty
 from kingpost.core.result import Bound, BoundKind, Iteration, Result, Stop
@@ -39,15 +39,8 @@ def solve(graph: Graph, settings: DegreeSettings, watch: Watch) -> Solve:
     rows = graph.pull(settings.flow)
     counts = settings.counting == "edges" or rows.weights is None
     scores = rows.degrees.astype(np.float64) if counts else rows.strengths()
-    whole = counts or bool(
-        rows.weights is not None and (rows.weights == np.floor(rows.weights)).all()
-    )
-    exact = whole and float(scores.max(initial=0.0)) < 2.0**53
-    bound = (
-        Bound(BoundKind.EXACT, 0.0, absolute=0.0)
-        if exact
-        else Bound(BoundKind.EXACT, 2 * UNIT, relative=2 * UNIT)
-    )
+    bound = _bound(rows, scores, counts)
+    exact = bound.value == 0.0
     line = Iteration(1, 0.0, bound.value, graph.stored, time.perf_counter() - began)
     yield line
     way = "in" if settings.flow == "along" else "out"
@@ -64,6 +57,17 @@ def solve(graph: Graph, settings: DegreeSettings, watch: Watch) -> Solve:
         seconds=clock.seconds(),
         exact_zero=scores == 0,
     )
+
+
+def _bound(rows: Adjacency, scores: Floats, counts: bool) -> Bound:
+    """Exact where no sum was rounded: counts, multiples of 1/1024, rows of a single edge."""
+    if counts or rows.weights is None:
+        return Bound(BoundKind.EXACT, 0.0, absolute=0.0)
+    fine = rows.weights * 1024.0
+    if (fine == np.floor(fine)).all() and float(scores.max(initial=0.0)) < 2.0**42:
+        return Bound(BoundKind.EXACT, 0.0, absolute=0.0)
+    errors = np.where(rows.degrees > 1, 2 * UNIT * scores, 0.0)
+    return Bound(BoundKind.EXACT, 2 * UNIT, absolute=errors)
 
 
 MEASURE = Measure("degree", "D", "degree", DegreeSettings, solve)
