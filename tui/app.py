@@ -18,6 +18,7 @@ from kingpost.tui import actions, terminal
 
 terminal.prepare_environment()  # before textual is imported: it reads the environment then
 
+from textual import events  # noqa: E402
 from textual.app import App  # noqa: E402
 from textual.screen import Screen  # noqa: E402
 
@@ -173,6 +174,26 @@ class KingpostApp(App[int], inherit_bindings=False):
         from kingpost.tui.views.base import View
 
         return self.screen if isinstance(self.screen, View) else None
+
+    async def on_event(self, event: events.Event) -> None:
+        # Keys are carried out here, one after the other.  Forwarded to the views they would
+        # overtake each other: what is typed fast behind "/" would miss the prompt it opens.
+        if isinstance(event, (events.Key, events.Paste)) and not event.is_forwarded:
+            if self._screen_stack:
+                self.typed(event)
+            return
+        await super().on_event(event)
+
+    def typed(self, event: events.Key | events.Paste) -> None:
+        """Give a key or pasted text to the view on top."""
+        if isinstance(event, events.Key) and event.key.startswith("alt+"):
+            # No key here is a chord: an Escape and a letter that came in one packet look alike.
+            key = event.key.removeprefix("alt+")
+            self.typed(events.Key("escape", None))
+            event = events.Key(key, key if len(key) == 1 else None)
+        view = self.view
+        if view is not None:
+            view.take(event)
 
     def keymap(self, view: str) -> dict[str, str]:
         """Key -> action id of a view."""

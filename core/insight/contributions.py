@@ -19,7 +19,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from kingpost.core.graph import Adjacency, Flow, Floats, Graph, Neighbours
+from kingpost.core.graph import Adjacency, Floats, Flow, Graph, Neighbours
 from kingpost.core.result import Result
 
 _REST = {"surfer": "teleport", "katz": "beta"}
@@ -97,6 +97,8 @@ def _fact(result: Result, name: str, otherwise: float) -> float:
     value = result.facts.get(name)
     if value is None:
         value = getattr(result.settings, name, None)
+    if isinstance(value, tuple):  # a bracket: its middle
+        value = sum(value) / len(value)
     return otherwise if value is None else float(value)
 
 

@@ -51,3 +51,9 @@ def test_whole_scores_have_no_decimals():
 def test_what_is_not_known_is_a_dash():
     assert small(float("nan")) == "-"
     assert score_format(np.array([np.nan]), bound(0)).text(float("nan")) == "-"
+
+
+def test_steep_scores_carry_their_own_power():
+    form = score_format(np.array([0.7, 1e-9, 2e-9, 3e-9]), bound(1e-15))
+    assert [form.text(x) for x in (0.7, 2e-9)] == ["7.00e-01", "2.00e-09"]
+    assert form.unit == ""

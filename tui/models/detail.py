@@ -25,29 +25,33 @@ _SUPPORTS = 4
 _SEPARATOR = "   "
 
 
-def graph_line(graph: Graph, flow: str, shown: int) -> list[Piece]:
+def graph_line(graph: Graph, flow: str, shown: int, width: int) -> list[Piece]:
     """Graph, nodes, edges, flow; with how many rows a filter leaves."""
     rows = f"{graph.n:,} nodes" if shown == graph.n else f"{shown:,} of {graph.n:,} nodes"
-    return [
-        (f" {tame(graph.origin.name)}", "head"),
-        (f"   {rows}  {graph.m:,} edges   {flow_words(graph, flow)}", "plain"),
-    ]
+    name = tame(graph.origin.name)
+    counts = f"   {rows}  {graph.m:,} edges   "
+    words = flow_words(graph, flow)
+    if 1 + cell_len(name) + len(counts) + cell_len(words) > width:
+        counts, words = f"  {rows}  {graph.m:,} edges  ", words.removeprefix("score ")
+    return [(f" {name}", "head"), (f"{counts}{words}", "plain")]
 
 
 def terms_line(graph: Graph, result: Result, width: int) -> list[Piece]:
-    """Measure, settings, weights; what is proven. The proof is kept where space is short."""
+    """Measure, settings, weights; what is proven.  The proof is kept where space is short."""
     if result.refusal is not None:
         return [(f" {result.measure}", "strong"), ("   no answer here: see below", "bad")]
     words = settings_words(result.settings, result.facts)
     words = f" {words}," if words else ""
-    left = f"{words} weight {graph.origin.weight_words}"
     proof = f"order proven to {result.proven_order:,} of {graph.n:,}"
-    if not result.stop.accurate and str(result.stop) not in ("converged", "order proven"):
+    if not result.stop.accurate:
         proof = f"{result.stop}, bound {small(result.bound.value)}, {proof}"
-    room = width - len(result.measure) - cell_len(proof) - 5
+    room = max(width - len(result.measure) - cell_len(proof) - 3, 0)
+    left = f"{words} weight {graph.origin.weight_words}"
+    if cell_len(left) > room:
+        left = f"{words} by {graph.origin.weight_words}"
     return [
         (f" {result.measure}", "strong"),
-        (fit(left, max(room, 0)), "plain"),
+        (fit(left, room), "plain"),
         (f"  {proof}", "strong"),
     ]
 

@@ -47,6 +47,8 @@ def fields_of(settings: Settings) -> list[Field]:
 def _field(item: dataclasses.Field[Any], value: Any) -> Field:
     about: Mapping[str, Any] = item.metadata
     annotation = str(item.type)
+    if annotation == "Any" and value is not None:
+        annotation = type(value).__name__
     choices = tuple(about.get("choices") or ())
     optional = "None" in annotation
     if choices and isinstance(value, (str, type(None))):

@@ -31,6 +31,11 @@ def percent(share: float) -> str:
     return f"{100.0 * share:.0f}%"
 
 
+def middle(value: float | tuple[float, float]) -> float:
+    """A number, or the middle of a bracket."""
+    return sum(value) / 2.0 if isinstance(value, tuple) else float(value)
+
+
 def rank_range(first: int, last: int, width: int | None = None) -> str:
     """``4`` or ``4-9``; shortened units where the full digits would not fit ``width``."""
     if first == last:
@@ -48,12 +53,16 @@ def small(number: float) -> str:
 
 @dataclass(frozen=True, slots=True)
 class ScoreFormat:
-    """How the scores of one result are written: fixed decimals after scaling by a power of ten."""
+    """How the scores of one result are written: fixed decimals after scaling by a power of ten.
+
+    ``steep`` scores, whose median is lost beside the highest, each carry their own power.
+    """
 
     exponent: int = 0
     decimals: int = 4
     whole: bool = False
     width: int = 8
+    steep: bool = False
 
     def text(self, score: float) -> str:
         """One score; a dash where there is none."""
@@ -61,6 +70,8 @@ class ScoreFormat:
             return "-"
         if self.whole:
             return f"{score:,.0f}"
+        if self.steep:
+            return f"{score:.{self.decimals}e}"
         return f"{score / 10.0**self.exponent:.{self.decimals}f}"
 
     @property
@@ -84,6 +95,8 @@ def score_format(scores: Floats, bound: Bound) -> ScoreFormat:
     exponent = 0 if 1e-2 <= top < 1e5 else 3 * math.floor(math.log10(top) / 3)
     unit = 10.0**exponent
     middle = float(np.median(sample)) / unit
+    if middle < top / unit * 1e-5:
+        return ScoreFormat(decimals=2, width=8, steep=True)
     decimals = min(max(2 - math.floor(math.log10(middle)), 0), 6)
     decimals = min(decimals, _justified(scores, bound, unit))
     width = len(f"{top / unit:.{decimals}f}")

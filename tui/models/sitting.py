@@ -7,6 +7,7 @@ from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Any
 
 from kingpost.core.measures import NAMES, measure
+from kingpost.tui.models.numbers import middle
 
 if TYPE_CHECKING:
     from kingpost.core.graph import Graph
@@ -95,17 +96,29 @@ def settings_words(settings: Any, facts: Mapping[str, Any] | None = None) -> str
     """
     import dataclasses
 
+    facts = facts or {}
+    skipped = {"flow", "tol", "stop", "max_sweeps"}
     parts = []
+    if facts.get("alpha") is not None:
+        # What alpha came to says more than the setting it was made from.
+        skipped |= {"alpha", "alpha_fraction"}
+        rho = facts.get("rho")
+        share = f" = {facts['alpha'] * middle(rho):.3g}/rho" if rho else ""
+        parts.append(f"alpha {facts['alpha']:.3g}{share}")
+    elif facts.get("rho"):
+        parts.append(f"rho {middle(facts['rho']):.6g}")
     for item in dataclasses.fields(settings):
-        if item.name in ("flow", "tol", "stop", "max_sweeps"):
+        if item.name in skipped:
             continue
-        if item.name == "dangling" and (facts or {}).get("dangling nodes") == 0:
+        if item.name == "dangling" and facts.get("dangling nodes") == 0:
             continue
         value = getattr(settings, item.name)
         if value is None or value == {} or value == ():
             continue
         words = f"{value:g}" if isinstance(value, float) else _short(value)
-        parts.append(f"{item.name.replace('_', ' ')} {words}")
+        # The trade writes the damping as d.
+        name = "d=" if item.name == "damping" else item.name.replace("_", " ") + " "
+        parts.append(name + words)
     return ", ".join(parts)
 
 

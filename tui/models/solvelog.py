@@ -4,12 +4,13 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
+from itertools import groupby
 from typing import TYPE_CHECKING, Any
 
 from kingpost.core.standing import UNRANKED
 from kingpost.tui.models.chart import Series
 from kingpost.tui.models.columns import Column
-from kingpost.tui.models.numbers import compact, small
+from kingpost.tui.models.numbers import compact, middle, small
 
 if TYPE_CHECKING:
     from kingpost.core.result import Iteration, Result
@@ -31,10 +32,10 @@ class Sweeps:
             Column("visits", "read", 6, lambda at: compact(self.log[at].edge_visits), right=True),
             Column("seconds", "seconds", 7, lambda at: f"{self.log[at].seconds:.3f}", right=True),
         ]
-        if any(line.eigenvalue for line in self.log):
-            self.head.append(Column("rho", "spectral radius within", 27, self._bracket))
         if any(line.part for line in self.log):
             self.head.append(Column("part", "part", 22, self._part))
+        if any(line.eigenvalue for line in self.log):
+            self.head.append(Column("rho", "spectral radius within", 24, self._bracket))
 
     @property
     def count(self) -> int:
@@ -93,8 +94,14 @@ def series_of(
 
 
 def observed_factor(log: Sequence[Iteration]) -> float:
-    """Geometric mean of the residual's factor a sweep over the second half; NaN if unknown."""
-    lines = [line for line in log if math.isfinite(line.residual) and line.residual > 0.0]
+    """Geometric mean of the residual's factor a sweep; NaN if unknown.
+
+    Taken over the second half of the longest part: a method of several parts starts anew in
+    each.
+    """
+    parts = [list(lines) for _, lines in groupby(log, key=lambda line: line.part)]
+    lines = max(parts, key=len, default=[])
+    lines = [line for line in lines if math.isfinite(line.residual) and line.residual > 0.0]
     lines = lines[len(lines) // 2 :]
     if len(lines) < 2 or lines[-1].index == lines[0].index:
         return _NAN
@@ -113,7 +120,7 @@ def expected_factor(result: Result) -> tuple[float, str]:
         damping = getattr(result.settings, "damping", facts.get("damping"))
         return (float(damping), "the damping") if damping is not None else (_NAN, "")
     if result.measure == "katz" and facts.get("alpha") and facts.get("rho"):
-        return float(facts["alpha"]) * float(facts["rho"]), "alpha times the spectral radius"
+        return float(facts["alpha"]) * middle(facts["rho"]), "alpha times the spectral radius"
     return _NAN, ""
 
 

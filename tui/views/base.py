@@ -27,9 +27,16 @@ class View(Screen[Any], inherit_bindings=False):
     view = ""
     composed = False  # whether its widgets exist; events may come before they do
 
+    def __init__(self) -> None:
+        super().__init__()
+        self._early: list[events.Key | events.Paste] = []
+
     def on_mount(self) -> None:
         self.composed = True
         self.opened()
+        early, self._early = self._early, []
+        for event in early:
+            self.kingpost.typed(event)
 
     def opened(self) -> None:
         """Called once its widgets exist."""
@@ -55,17 +62,24 @@ class View(Screen[Any], inherit_bindings=False):
     def _doer(self, name: str) -> Any:
         return getattr(self, f"do_{name}", None) or getattr(self.app, f"do_{name}", None)
 
-    def on_key(self, event: events.Key) -> None:
-        action_id = self.kingpost.keymap(self.view).get(event.key)
-        if action_id is not None and self.possible(action_id):
-            event.stop()
-            self.do(action_id)
-        elif self.typed(event):
-            event.stop()
+    def take(self, event: events.Key | events.Paste) -> None:
+        """A key or pasted text for this view; kept until its widgets exist."""
+        if not self.composed:
+            self._early.append(event)
+        elif isinstance(event, events.Paste):
+            self.pasted(event.text)
+        else:
+            action_id = self.kingpost.keymap(self.view).get(event.key)
+            if action_id is not None and self.possible(action_id):
+                self.do(action_id)
+            else:
+                self.typed(event)
 
-    def typed(self, event: events.Key) -> bool:
+    def pasted(self, text: str) -> None:
+        """Text that was pasted: views that take text use it."""
+
+    def typed(self, event: events.Key) -> None:
         """A key that is no action: views that take text use it."""
-        return False
 
     def do(self, action_id: str) -> None:
         """Do an action by its id; a fault in it becomes a sentence, and the screen goes on."""

@@ -41,7 +41,7 @@ class SettingsView(View):
     def compose(self) -> ComposeResult:
         yield Line(id="head")
         yield Rule(id="top")
-        yield Line(id="fields", rows=len(self._fields))
+        yield Line(id="fields")
         yield Rule(id="middle")
         yield Line(id="meaning", rows=4)
         yield Rule(id="news")
@@ -104,18 +104,15 @@ class SettingsView(View):
             pieces.append((f" {found.reach}", "quiet"))
         return pieces
 
-    def typed(self, event: events.Key) -> bool:
+    def typed(self, event: events.Key) -> None:
         if self._field.kind in ("choice", "fixed"):
-            return False
+            return
         if self._writing[self._at].key(event.key, event.character):
             self._check()
-            return True
-        return False
 
-    def on_paste(self, event: events.Paste) -> None:
-        event.stop()
+    def pasted(self, text: str) -> None:
         if self._field.kind not in ("choice", "fixed"):
-            self._writing[self._at].insert(event.text[:1_000])
+            self._writing[self._at].insert(text)
             self._check()
 
     # ---- actions -----------------------------------------------------------------------------

@@ -48,9 +48,10 @@ class Choices:
         self.choices = list(choices)
         longest = max((len(choice.name) for choice in choices), default=4)
         width = min(max(longest, 6), 30)
+        most = max((len(choice.words) for choice in choices), default=1)
         self.head = [
             Column("name", "", width, lambda at: self.choices[at].name, frozen=True, stretch=width),
-            Column("words", "", 400, lambda at: self.choices[at].words),
+            Column("words", "", most, lambda at: self.choices[at].words),
         ]
 
     @property
@@ -160,12 +161,11 @@ class PromptSheet(Sheet):
         """The widget."""
         return self.query_one("#entry", Entry)
 
-    def typed(self, event: events.Key) -> bool:
-        return self.entry.typed(event)
+    def typed(self, event: events.Key) -> None:
+        self.entry.typed(event)
 
-    def on_paste(self, event: events.Paste) -> None:
-        event.stop()
-        self.entry.pasted(event.text)
+    def pasted(self, text: str) -> None:
+        self.entry.pasted(text)
 
     def do_prompt_take(self) -> None:
         self.dismiss(self.entry.writing.text)

@@ -83,7 +83,9 @@ class StandingsView(View):
     def _show_lines(self) -> None:
         model = self.model
         flow = self.kingpost.sitting.flow
-        self.query_one("#graph", Line).show(*detail.graph_line(model.graph, flow, model.count))
+        self.query_one("#graph", Line).show_by(
+            lambda width: detail.graph_line(model.graph, flow, model.count, width)
+        )
         self.query_one("#terms", Line).show_by(
             lambda width: detail.terms_line(model.graph, model.result, width)
         )

@@ -72,16 +72,14 @@ class Entry(Line):
     def on_resize(self) -> None:
         self.write()
 
-    def typed(self, event: events.Key) -> bool:
-        """Take a key; False if it means nothing here."""
-        taken = self.writing.key(event.key, event.character)
-        if taken:
+    def typed(self, event: events.Key) -> None:
+        """Take a key, if it means anything here."""
+        if self.writing.key(event.key, event.character):
             self.write()
-        return taken
 
     def pasted(self, text: str) -> None:
         """Take pasted text, up to the limit."""
-        self.writing.insert(text[:LIMIT])
+        self.writing.insert(text)
         self.write()
 
     def write(self) -> None:

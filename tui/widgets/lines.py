@@ -33,7 +33,7 @@ def strip_of(pieces: Iterable[Piece], width: int, looks: Looks) -> Strip:
     for text, role in pieces:
         size = cell_len(text)
         if size > left:
-            text = fit(text, left, glyphs=looks.glyphs)
+            text = fit(text.rstrip(), left, glyphs=looks.glyphs)
             size = left
         if size > 0:
             style = looks.styles.get(role, role)

@@ -20,6 +20,7 @@ from kingpost.tui.widgets.lines import Piece, looks_of, strip_of
 
 _GAP = "  "
 _LEAST_NAME = 8
+_SLIVER = 8  # a column of which fewer cells than this are in sight is not shown
 _RAIL_ROLES = ("proven", "open", "tied", "quiet")
 
 
@@ -203,11 +204,16 @@ class RowTable(Widget):
     def _shown_columns(self) -> list[tuple[int, Column]]:
         assert self._source is not None
         out, scrolled = [], 0
+        room = self.size.width - (2 if self._rail else 1)
         for at, column in enumerate(self._source.head):
             if not column.frozen:
                 scrolled += 1
                 if scrolled <= self._first:
                     continue
+                # A sliver of a column says nothing; a good part of a wide one does.
+                if room < min(self._widths[at], _SLIVER) and scrolled > self._first + 1:
+                    break
+            room -= self._widths[at] + len(_GAP)
             out.append((at, column))
         return out
 
