@@ -219,8 +219,9 @@ def _solve(
         value = float(reach.sum()) / total if total > 0 else 0.0
         return Bound(BoundKind.COMPONENTWISE, value, absolute=reach)
 
+    strongest = float(graph.push(flow).strengths().max(initial=0.0))
     found = yield from solve_linear(
-        System(matrix, b, structure, flow),
+        System(matrix, b, structure, flow, contraction=abs(alpha) * strongest),
         order_judge(settings, bounds),
         tol=settings.tol,
         max_sweeps=settings.max_sweeps,

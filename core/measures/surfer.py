@@ -78,7 +78,7 @@ def _solve(graph: Graph, settings: SurferSettings, watch: Watch) -> Solve:
     jump = Jump(graph, settings, strength == 0)
     structure = graph.structure
     clock.ready()
-    system = System(matrix, (1 - d) * jump.teleport, structure, settings.flow)
+    system = System(matrix, (1 - d) * jump.teleport, structure, settings.flow, contraction=d)
     options: dict[str, Any] = {
         "max_sweeps": settings.max_sweeps, "watch": watch, "gain": 0.5 * d / (1 - d)
     }  # fmt: skip

@@ -46,12 +46,19 @@ _ROUNDS = 12  # certifications before a bound that no longer falls counts as sta
 
 @dataclass(frozen=True)
 class System:
-    """``x = b + B x`` on a graph; ``b`` has shape (n,), or (1,) for a constant."""
+    """``x = b + B x`` on a graph; ``b`` has shape (n,), or (1,) for a constant.
+
+    ``contraction`` is a bound of B's column sums where there is one below 1 (the damping): then
+    every sweep has a bound of its own.  A Gauss-Seidel sweep that changes x by delta leaves a
+    residual of at most ``contraction |delta|_1``, so what is left of the error of a stage, given
+    what enters it, is at most ``contraction / (1 - contraction) |delta|_1``.
+    """
 
     matrix: Pull
     b: Floats
     structure: Structure
     flow: Flow
+    contraction: float | None = None
 
 
 @dataclass
@@ -143,6 +150,8 @@ class _Sweeper:
         # One copy of the scaled iterate for every block that is swept at the same time: each
         # sees its own new values and the others' old ones, however the threads run.
         self.z = np.tile(self.x * self.matrix.scale, (self.plan.lanes, 1))
+        q = system.contraction
+        self.reach = float("nan") if q is None or q >= 1.0 else q / (1.0 - q)
         self.sweeps = self.visits = 0
         self.rate = float("nan")
         self.gain = 1.0
@@ -204,7 +213,7 @@ class _Sweeper:
             share = moved / mass if mass > 0 else 0.0
             rates = [*rates[-2:], moved / before if before > 0 else 0.0]
             self.rate, before = rates[-1], moved
-            yield self.line(float("nan"), "", share)
+            yield self.line(share * self.reach, "", share)
             if share < _ROUNDING:
                 return
             rate = min(max(rates), 0.9999)
