@@ -9,6 +9,7 @@ from kingpost.core.graph import Account, Graph, Origin
 from kingpost.core.ingest.assemble import Ends, assemble
 from kingpost.core.ingest.columns import choose
 from kingpost.core.ingest.files import Part
+from kingpost.core.ingest.names import alike
 from kingpost.core.ingest.nodes import join_nodes
 from kingpost.core.ingest.numbering import number_ids
 from kingpost.core.ingest.options import LoadOptions
@@ -36,6 +37,9 @@ def build_graph(parts: list[Part], options: LoadOptions, watch: Watch | None = N
     notes = list(roles.notes)
     if len(built.outward.neighbours) == 0:
         notes.append("no edge is left: every row was a dropped loop or weighs nothing")
+    look_alike = alike(labels)
+    if look_alike is not None:
+        notes.append(look_alike)
     joined = join_nodes(options, labels, watch)
     watch.check()
     account = Account(

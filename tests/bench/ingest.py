@@ -3,10 +3,10 @@
     python tests/bench/ingest.py make FOLDER [--rows 16000000] [--nodes 1000000]
     python tests/bench/ingest.py run FOLDER
 
-Every measurement is a process of its own, reading and loading by turns, ``--rounds`` times: seconds
-are the best of all runs (``--times`` in each process) after one small load has compiled the loops,
-and so are the processor's seconds over all threads; memory is the greatest resident size less what the
-process held before, told per edge beside what the two columns occupy in memory.
+Every measurement is a process of its own, reading and loading by turns, ``--rounds`` times.
+Seconds, of the clock and of the processor over all threads, are the best of all runs (``--times``
+in each process) after one small load has compiled the loops.  Memory is the greatest resident
+size less what the process held before; like that of the columns it is told in bytes a row.
 """
 
 from __future__ import annotations
