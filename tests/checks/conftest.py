@@ -1,0 +1,8 @@
+"""The runners stand beside the tests that use them."""
+
+from __future__ import annotations
+
+import sys
+from pathlib import Path
+
+sys.path.insert(0, str(Path(__file__).parent))
