@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
@@ -59,6 +60,24 @@ class WholeDictionary:
         return None
 
 
+@dataclass
+class _Words:
+    """The dictionary met last, which of its words were seen, and their numbers."""
+
+    words: pa.Array
+    seen: NDArray[np.uint8]
+    numbers: Codes
+
+
+def _shared(left: pa.Array, right: pa.Array) -> bool:
+    """Whether two arrays are the same memory."""
+
+    def place(array: pa.Array) -> list[object]:
+        return [len(array), array.offset, *(part and part.address for part in array.buffers())]
+
+    return place(left) == place(right)
+
+
 class TextDictionary:
     """Numbers for byte strings, of which it keeps one copy each."""
 
@@ -68,9 +87,13 @@ class TextDictionary:
         self.ends = np.zeros(_SLOTS // 2 + 1, dtype=np.int64)
         self.store = np.empty(1 << 16, dtype=np.uint8)
         self.known = 0
+        self._words: _Words | None = None
 
     def encode(self, chunk: pa.Array, codes: Codes, at: int) -> None:
         """Write the numbers of a chunk without nulls to ``codes`` from ``at`` on."""
+        if pa.types.is_dictionary(chunk.type):
+            self._encode_dictionary(chunk, codes, at)
+            return
         _, ends, data = chunk.buffers()
         large = pa.types.is_large_string(chunk.type) or pa.types.is_large_binary(chunk.type)
         offsets = np.frombuffer(ends, dtype=np.int64 if large else np.int32)
@@ -78,6 +101,23 @@ class TextDictionary:
         # An array of empty texts only may come without a buffer.
         letters = np.frombuffer(data if data is not None and data.size else b"\0", dtype=np.uint8)
         self._encode(offsets, letters, codes, at)
+
+    def _encode_dictionary(self, chunk: pa.DictionaryArray, codes: Codes, at: int) -> None:
+        """Only words that rows use get numbers; batches mostly share one dictionary."""
+        from kingpost.core.kernels import ids
+
+        words = chunk.dictionary
+        if self._words is None or not _shared(self._words.words, words):
+            size = len(words)
+            self._words = _Words(words, np.zeros(size, np.uint8), np.empty(size, np.uint32))
+        indices = chunk.indices.to_numpy(zero_copy_only=True)
+        found = np.empty(min(len(indices), len(words)), dtype=np.int64)
+        found = found[: ids.collect(indices, self._words.seen, found)]
+        if len(found):
+            numbers = np.empty(len(found), dtype=np.uint32)
+            self.encode(words.take(pa.array(found)), numbers, 0)
+            self._words.numbers[found] = numbers
+        ids.renumber(indices, self._words.numbers, 0, len(indices), codes, at)
 
     def _encode(
         self, offsets: NDArray[Any], letters: NDArray[np.uint8], codes: Codes, at: int

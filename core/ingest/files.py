@@ -25,18 +25,22 @@ from kingpost.core.text import listed
 ENDINGS = (".parquet", ".parq", ".pq")
 _NULL_PARTITION = "__HIVE_DEFAULT_PARTITION__"
 BATCH_ROWS = 131_072
+_DICTIONARY_BYTES = 1_100_000  # what writers let a dictionary grow to, and a little
 
 Paths = str | os.PathLike[str] | Sequence[str | os.PathLike[str]]
 
 
 @dataclass(frozen=True)
 class Part:
-    """One file or table: its columns, its number of rows, and a reader of chosen columns."""
+    """One file or table: its columns, its number of rows, and a reader of chosen columns.
+
+    ``read(columns, encoded)`` may hand out text columns as Arrow dictionaries if ``encoded``.
+    """
 
     name: str
     schema: pa.Schema
     rows: int
-    read: Callable[[list[str]], Iterator[pa.RecordBatch]]
+    read: Callable[[list[str], bool], Iterator[pa.RecordBatch]]
     partitions: frozenset[str] = field(default_factory=frozenset)
     nulls: dict[str, int] = field(default_factory=dict)  # where known without reading
 
@@ -44,7 +48,7 @@ class Part:
 def parts_of_table(table: pa.Table, name: str) -> list[Part]:
     """A table in memory as a single part."""
 
-    def read(columns: list[str]) -> Iterator[pa.RecordBatch]:
+    def read(columns: list[str], encoded: bool) -> Iterator[pa.RecordBatch]:
         yield from table.select(columns).to_batches(max_chunksize=BATCH_ROWS)
 
     nulls = {item: table.column(at).null_count for at, item in enumerate(table.schema.names)}
@@ -128,16 +132,18 @@ def _whole(text: str) -> bool:
 def _open(file: str, partitions: dict[str, pa.Array]) -> Part:
     fragment, schema, rows = _footer(file)
     nulls = _null_counts(fragment)
+    repetitive = _repetitive(fragment, schema)
     extra = {name: value for name, value in partitions.items() if name not in schema.names}
     for name, value in extra.items():
         nulls[name] = rows * value.null_count
         schema = schema.append(pa.field(name, value.type))
 
-    def read(columns: list[str]) -> Iterator[pa.RecordBatch]:
+    def read(columns: list[str], encoded: bool) -> Iterator[pa.RecordBatch]:
         inside = [name for name in columns if name not in extra]
         read = 0
+        held = [name for name in inside if encoded and name in repetitive]
         try:
-            for batch in _scan(fragment, inside):
+            for batch in _scan(_fragment(file, held) if held else fragment, inside):
                 arrays = [
                     pa.repeat(extra[name][0], batch.num_rows)
                     if name in extra
@@ -166,6 +172,11 @@ def _scan(fragment: Any, columns: list[str]) -> Iterator[pa.RecordBatch]:
     ).to_batches()
 
 
+def _fragment(file: str, dictionaries: list[str]) -> Any:
+    form = ds.ParquetFileFormat(dictionary_columns=dictionaries)
+    return form.make_fragment(file, fs.LocalFileSystem())
+
+
 def _footer(file: str) -> tuple[Any, pa.Schema, int]:
     try:
         with open(file, "rb") as stream:
@@ -180,13 +191,33 @@ def _footer(file: str) -> tuple[Any, pa.Schema, int]:
     if head != b"PAR1":
         raise InputError(f"{file} is no Parquet file (it does not begin as one)")
     try:
-        fragment = ds.ParquetFileFormat().make_fragment(file, fs.LocalFileSystem())
+        fragment = _fragment(file, [])
         schema = fragment.physical_schema
         return fragment, schema, fragment.metadata.num_rows
     except (pa.ArrowException, OSError, ValueError) as error:
         raise InputError(
             f"{file} is a truncated or damaged Parquet file ({first_line(error)})"
         ) from None
+
+
+def _repetitive(fragment: Any, schema: pa.Schema) -> frozenset[str]:
+    """Text columns that are stored as dictionaries and indices, going by their sizes.
+
+    Reading those as they are stored saves making and hashing every text of every row.
+    """
+    footer = fragment.metadata
+    found = set()
+    for at in range(footer.num_columns):
+        name = footer.schema.column(at).path
+        if name not in schema.names or schema.field(name).type not in (pa.string(), pa.binary()):
+            continue
+        size = sum(
+            footer.row_group(group).column(at).total_uncompressed_size - _DICTIONARY_BYTES
+            for group in range(footer.num_row_groups)
+        )
+        if size < 3 * footer.num_rows:
+            found.add(name)
+    return frozenset(found)
 
 
 def _null_counts(fragment: Any) -> dict[str, int]:

@@ -153,6 +153,15 @@ def convert(values: pa.Array, kind: pa.DataType, column: str, where: str) -> pa.
         ) from None
 
 
+def convert_ids(values: pa.Array, kind: pa.DataType, column: str, where: str) -> pa.Array:
+    """Like :func:`convert`, but text and binary in a dictionary stay in it if it has no nulls."""
+    if pt.is_dictionary(values.type) and family(kind) in ("text", "binary"):
+        words = convert(values.dictionary, kind, column, where)
+        if words.null_count == 0 and not pt.is_fixed_size_binary(kind):
+            return pa.DictionaryArray.from_arrays(values.indices, words)
+    return convert(values, kind, column, where)
+
+
 def unwrap(values: pa.Array) -> pa.Array:
     """Values without dictionary, extension, run-end or view wrapping."""
     while True:

@@ -215,7 +215,7 @@ def _read(path: str, schema: pa.Schema, column: str, kind: pa.DataType) -> pa.Ta
     """The whole table; in text formats the ids are read as the type they have in the graph."""
     if _delimiter(path) is None:
         part = open_parts(path)[0]
-        batches = list(part.read(list(part.schema.names)))
+        batches = list(part.read(list(part.schema.names), False))
         return pa.Table.from_batches(batches, part.schema)
     table = _read_csv(path, {column: pa.string()})
     if family(kind) == "text":

@@ -13,7 +13,7 @@ from kingpost.core.errors import InputError, RowsError
 from kingpost.core.graph import Floats
 from kingpost.core.ingest.columns import Roles
 from kingpost.core.ingest.files import Part
-from kingpost.core.ingest.idtypes import convert, unwrap
+from kingpost.core.ingest.idtypes import convert_ids, unwrap
 from kingpost.core.text import count, id_text, visible
 from kingpost.core.watch import Watch
 
@@ -57,7 +57,7 @@ def read_rows(parts: list[Part], roles: Roles, bad_rows: str, watch: Watch) -> R
     columns = [roles.source, roles.target, *([roles.weight] if roles.weight else [])]
     for part in parts:
         name = _row_names(part.name if len(parts) > 1 else None, rows.read)
-        for batch in part.read(columns):
+        for batch in part.read(columns, True):
             watch.check()
             _take(rows, batch, roles, part.name, name)
             watch.report("reading rows", rows.read, total, "rows")
@@ -78,8 +78,8 @@ def _row_names(file: str | None, start: int) -> Callable[[int], str]:
 def _take(
     rows: Rows, batch: pa.RecordBatch, roles: Roles, where: str, name: Callable[[int], str]
 ) -> None:
-    source = convert(batch.column(0), roles.id_type, roles.source, where)
-    target = convert(batch.column(1), roles.id_type, roles.target, where)
+    source = convert_ids(batch.column(0), roles.id_type, roles.source, where)
+    target = convert_ids(batch.column(1), roles.id_type, roles.target, where)
     weights: Floats | None = None
     null_weight: NDArray[np.bool_] | None = None
     if roles.weight is not None:

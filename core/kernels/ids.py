@@ -54,6 +54,19 @@ def renumber(indices: Any, ranks: Any, first: int, last: int, codes: Any, at: in
 
 
 @kernel()
+def collect(indices: Any, seen: Any, found: Any) -> int:
+    """The indices whose ``seen`` is still 0, once each in order; it becomes 1."""
+    many = 0
+    for i in range(len(indices)):
+        at = np.uint64(indices[i])
+        if seen[at] == 0:
+            seen[at] = 1
+            found[many] = at
+            many += 1
+    return many
+
+
+@kernel()
 def _scramble(key: Any) -> Any:
     key = (key ^ (key >> _HALF)) * _MIX
     key = (key ^ (key >> np.uint64(29))) * _MIX

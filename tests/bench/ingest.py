@@ -23,22 +23,21 @@ import numpy as np
 import pyarrow as pa
 import pyarrow.parquet as pq
 
-KINDS = ("dense", "sparse", "text", "weighted")
+KINDS = ("dense", "weighted", "sparse", "text", "few")
 GROUP = 1 << 20
 
 
 def make(folder: Path, rows: int, nodes: int) -> None:
-    """Files of the same random edges: ids 0..n-1, scattered 64-bit ids, names of 25 characters."""
+    """Files of the same random edges.
+
+    Ids 0 to n-1 without and with a weight, scattered 64-bit ids, names of 25 characters, and
+    such names of a fiftieth of the nodes only.
+    """
     folder.mkdir(parents=True, exist_ok=True)
     rng = np.random.default_rng(1)
     scattered = rng.integers(-(2**62), 2**62, nodes)
     names = pa.array([f"node-{number:020d}" for number in rng.permutation(nodes)])
-    schema = {
-        "dense": pa.int64(),
-        "sparse": pa.int64(),
-        "text": pa.string(),
-        "weighted": pa.int64(),
-    }
+    schema = dict.fromkeys(KINDS, pa.int64()) | dict.fromkeys(("text", "few"), pa.string())
     writers = {}
     for kind, type_ in schema.items():
         fields = [("source", type_), ("target", type_)]
@@ -50,12 +49,12 @@ def make(folder: Path, rows: int, nodes: int) -> None:
         ends = [(rng.random(size) ** 2 * nodes).astype(np.int64) for _ in range(2)]
         weight = rng.random(size)
         for kind, writer in writers.items():
-            columns = [
-                names.take(pa.array(e))
-                if kind == "text"
-                else pa.array(scattered[e] if kind == "sparse" else e)
-                for e in ends
-            ]
+            columns = []
+            for end in ends:
+                if kind in ("text", "few"):
+                    columns.append(names.take(pa.array(end // 50 if kind == "few" else end)))
+                else:
+                    columns.append(pa.array(scattered[end] if kind == "sparse" else end))
             columns += [pa.array(weight)] if kind == "weighted" else []
             writer.write_table(pa.Table.from_arrays(columns, schema=writer.schema))
     for writer in writers.values():

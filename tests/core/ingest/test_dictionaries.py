@@ -2,11 +2,14 @@
 
 import numpy as np
 import pyarrow as pa
+import pyarrow.parquet as pq
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
+from kingpost.core.ingest import from_table, load
 from kingpost.core.ingest.dictionaries import TextDictionary, WholeDictionary
+from kingpost.core.ingest.files import open_parts
 from kingpost.core.kernels import ids
 
 
@@ -121,3 +124,52 @@ def test_names_alike_for_long_are_left_to_a_full_comparison():
     known = TextDictionary()
     encode(known, [pa.array(["x", "a" * 40 + "c", "a" * 40 + "b"])])
     assert known.order() is None
+
+
+@settings(max_examples=60, deadline=None)
+@given(st.data())
+def test_dictionary_arrays_number_only_what_rows_use(data):
+    known = TextDictionary()
+    rows, codes = [], []
+    for _ in range(data.draw(st.integers(1, 3))):
+        words = data.draw(st.lists(st.sampled_from(["a", "b", "", "unused", "é"]), min_size=1))
+        array = pa.array(words)
+        for _ in range(data.draw(st.integers(1, 3))):
+            at = data.draw(st.lists(st.integers(0, len(words) - 1), max_size=6))
+            chunk = pa.DictionaryArray.from_arrays(pa.array([0, *at], pa.int8()), array).slice(1)
+            codes += encode(known, [chunk])
+            rows += [words[index] for index in at]
+    wanted, labels = first_seen(rows)
+    # Words of one chunk are numbered before those of the next, in the order of first sight.
+    assert codes == wanted
+    assert known.ids(pa.string()).to_pylist() == labels
+
+
+@pytest.mark.parametrize("null", [None, "a"])
+def test_dictionary_columns_give_the_graph_of_plain_ones(null, tmp_path):
+    rng = np.random.default_rng(4)
+    names = [None if n == 7 else f"name {n}" for n in rng.integers(0, 50, 300_000).tolist()]
+    names = [null if name is None else name for name in names]
+    plain = pa.table({"source": pa.array(names), "target": pa.array(names[::-1])})
+    encoded = pa.table({name: plain[name].dictionary_encode() for name in plain.column_names})
+    pq.write_table(plain, tmp_path / "plain.parquet", row_group_size=100_000)
+    pq.write_table(plain, tmp_path / "whole.parquet", use_dictionary=False)
+    want = from_table(plain, bad_rows="skip")
+    for graph in (
+        from_table(encoded, bad_rows="skip"),
+        load(tmp_path / "plain.parquet", bad_rows="skip"),
+        load(tmp_path / "whole.parquet", bad_rows="skip"),
+    ):
+        assert graph.fingerprint == want.fingerprint
+        assert graph.account == want.account
+
+
+def test_which_columns_are_read_as_dictionaries(tmp_path):
+    few = [f"name {n % 50}" for n in range(500_000)]
+    many = [f"name {n}" for n in range(500_000)]
+    pq.write_table(pa.table({"few": few, "many": many}), tmp_path / "x.parquet")
+    part = open_parts(tmp_path / "x.parquet")[0]
+    batch = next(part.read(["few", "many"], True))
+    assert [pa.types.is_dictionary(item.type) for item in batch.schema] == [True, False]
+    batch = next(part.read(["few", "many"], False))
+    assert not any(pa.types.is_dictionary(item.type) for item in batch.schema)
