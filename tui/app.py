@@ -11,7 +11,7 @@ import signal
 import sys
 import traceback
 from collections.abc import Callable
-from typing import TYPE_CHECKING, Any, cast
+from typing import TYPE_CHECKING, Any
 
 from kingpost.core.text import visible
 from kingpost.tui import actions, terminal
@@ -22,22 +22,19 @@ from textual import events  # noqa: E402
 from textual.app import App  # noqa: E402
 from textual.screen import Screen  # noqa: E402
 
-from kingpost.tui.jobs import Job, Runner, solve_work  # noqa: E402
+from kingpost.tui.jobs import Job, Runner  # noqa: E402
+from kingpost.tui.views.base import View  # noqa: E402
 from kingpost.tui.views.loading import LoadingView  # noqa: E402
 
 if TYPE_CHECKING:
     from kingpost.core.graph import Graph
     from kingpost.core.ingest import LoadOptions
     from kingpost.core.measures.base import Settings
-    from kingpost.core.result import Result
+    from kingpost.tui.desk import Desk
     from kingpost.tui.models.sitting import Sitting
     from kingpost.tui.models.standings import Standings
-    from kingpost.tui.views.base import View
     from kingpost.tui.views.standings import StandingsView
 
-# Measures nobody asked for are solved too while the edges of all their sweeps are few: rulers
-# and rank columns then compare from the first minute.
-COMPANY_EDGES = 2_000_000
 FAULT = 70  # exit status of a fault of the program
 _PATIENCE = 2.0  # seconds that threads get to end on leaving
 
@@ -70,13 +67,10 @@ class KingpostApp(App[int], inherit_bindings=False):
         self.runner = Runner(self.call_later, threads)
         self.latest_news: tuple[str, str] = ("", "news")
         self.sentence = ""  # what is printed after leaving
-        self._sitting: Sitting | None = None
+        self._desk: Desk | None = None
         self._paths, self._load = paths, load
         self._measure, self._settings = measure, settings
         self._keymaps: dict[str, dict[str, str]] = {}
-        self._table: Standings | None = None
-        self._wanted: dict[str, Any] = {"sort": "rank", "turned": False, "text": ""}
-        self._prepared: tuple[Any, ...] = ()
 
     # ---- start and end -------------------------------------------------------------------------
 
@@ -101,30 +95,34 @@ class KingpostApp(App[int], inherit_bindings=False):
             words="reading the edge table",
         )
 
-    def _load_all(self, job: Job) -> Graph:
+    def _load_all(self, job: Job) -> tuple[Sitting, Settings | None]:
         from importlib import import_module
 
-        graph = self._load(job)
+        sitting = self.make_sitting(self._load(job), self._measure)
+        settings = self._settings() if callable(self._settings) else self._settings
+        import_module("kingpost.tui.desk")
         for name in ("standings", "node", "solvelog", "settings", "help", "sheets"):
             import_module(f"kingpost.tui.views.{name}")
-        return graph
-
-    def _stage(self, job: Job) -> None:
-        if isinstance(self.screen, LoadingView):
-            self.screen.stage(job)
-
-    def _loaded(self, graph: Graph) -> None:
-        self._sitting = self.make_sitting(graph, self._measure)
-        settings = self._settings() if callable(self._settings) else self._settings
-        if settings is not None:
-            self._sitting.settings[self._measure] = settings
-        self.solve(self._measure, settings)
+        return sitting, settings
 
     def make_sitting(self, graph: Graph, measure: str) -> Sitting:
         """The sitting over a graph just loaded."""
         from kingpost.tui.models.sitting import Sitting
 
         return Sitting(graph, measure)
+
+    def _stage(self, job: Job) -> None:
+        if isinstance(self.screen, LoadingView):
+            self.screen.stage(job)
+
+    def _loaded(self, made: tuple[Sitting, Settings | None]) -> None:
+        from kingpost.tui.desk import Desk
+
+        sitting, settings = made
+        if settings is not None:
+            sitting.settings[self._measure] = settings
+        self._desk = Desk(self.runner, sitting, self)
+        self._desk.solve(self._measure, settings)
 
     def _unreadable(self, sentence: str) -> None:
         self.sentence = sentence
@@ -154,7 +152,7 @@ class KingpostApp(App[int], inherit_bindings=False):
 
     def do_quit(self) -> None:
         """Quit: answered."""
-        self.leave(0 if self._sitting is not None else 130)
+        self.leave(0 if self._desk is not None else 130)
 
     def do_quit_now(self) -> None:
         """Quit from anywhere."""
@@ -163,16 +161,19 @@ class KingpostApp(App[int], inherit_bindings=False):
     # ---- what views ask ------------------------------------------------------------------------
 
     @property
+    def desk(self) -> Desk:
+        """The desk; there is one once the graph is loaded, and no view asks before."""
+        assert self._desk is not None
+        return self._desk
+
+    @property
     def sitting(self) -> Sitting:
-        """The sitting; views exist only once there is one."""
-        assert self._sitting is not None
-        return self._sitting
+        """The sitting at the desk."""
+        return self.desk.sitting
 
     @property
     def view(self) -> View | None:
         """The view on top."""
-        from kingpost.tui.views.base import View
-
         return self.screen if isinstance(self.screen, View) else None
 
     async def on_event(self, event: events.Event) -> None:
@@ -225,174 +226,59 @@ class KingpostApp(App[int], inherit_bindings=False):
             lane, work, done, words=words, failed=lambda s: self.news(s, "bad"), replace=True
         )
 
-    # ---- solving ---------------------------------------------------------------------------------
-
-    def solve(self, measure: str, settings: Settings | None, *, company: bool = False) -> None:
-        """Solve in the background, by default with the settings in force.
-
-        ``company`` is what nobody asked for: it gives way, and its faults are not reported.
-        """
-        if not company:
-            for other in self.runner.jobs("solve"):
-                if other.facts.get("company"):
-                    self.runner.cancel(other)
-        job = self.runner.start(
-            "solve",
-            solve_work(self.sitting, measure, settings),
-            lambda result: self._solved(result, company),
-            topic=f"solve:{measure}",
-            words=f"solving {measure}",
-            failed=lambda sentence: self._unsolved(sentence, company),
-            news=self._sweep,
-        )
-        job.facts.update(measure=measure, company=company)
-        if not company:
-            self._sweep(job)
-        self._refresh_views()
-
-    def _sweep(self, job: Job) -> None:
-        if isinstance(self.screen, LoadingView):
-            self.screen.stage(job)
-            return
-        if not job.facts.get("company"):
-            self.news(sweep_words(job))
-        from kingpost.tui.views.solvelog import SolveLogView
-
-        if isinstance(self.screen, SolveLogView):
-            self.screen.refreshed()
-
-    def _solved(self, result: Result, company: bool) -> None:
-        sitting = self.sitting
-        if company and result.stop == "cancelled":
-            return
-        first = self._table is None
-        shown = sitting.result
-        if result.refusal is not None and not first and not company:
-            sitting.record(result)
-            self.news(f"{result.measure} has no answer here", "bad")
-            self._refresh_views()
-            self.notice(f"{result.measure} has no answer here", result.refusal.sentence)
-            if shown is not None and result.measure == sitting.current:
-                sitting.results[result.measure] = shown  # the old standings stay usable
-            return
-        sitting.record(result)
-        if not company:
-            sitting.current = result.measure
-            if not first:
-                self.news(solved_words(result), "news" if result.stop.accurate else "bad")
-        self._want()
-
-    def _unsolved(self, sentence: str, company: bool) -> None:
-        if self._table is None and not company:
-            self.sentence = sentence
-            self.leave(2)
-        elif not company:
-            self.news(sentence, "bad")
-            self.notice("the solve failed", sentence)
-        self._refresh_views()
-
-    def _company(self) -> None:
-        """Queue the measures nobody asked for, where they cost little."""
-        sitting = self.sitting
-        if sitting.graph.stored > COMPANY_EDGES:
-            return
-        for name in sitting.names:
-            if name not in sitting.results:
-                self.solve(name, None, company=True)
-
     def can_solve_halt(self) -> bool:
         """Whether there is anything to halt."""
         job = self.solving or self.runner.current("load")
         return job is not None and not job.facts.get("company")
 
-    def halt(self) -> None:
+    def do_solve_halt(self) -> None:
         """Stop the solve, keeping its best iterate, or the loading."""
         job = self.solving or self.runner.current("load")
         if job is not None:
             self.runner.cancel(job)
+            self.news("halting")
 
-    def do_solve_halt(self) -> None:
-        """The key for it."""
-        self.halt()
-        self.news("halting")
+    # ---- what the desk tells -----------------------------------------------------------------
 
-    # ---- the table -------------------------------------------------------------------------------
+    def table_ready(self, table: Standings, first: bool) -> None:
+        """Show a table; the first one opens the standings."""
+        from kingpost.tui.views.standings import StandingsView
 
-    def arrange(self, **wanted: Any) -> None:
-        """Sort or filter: ``sort``, ``turned``, ``text``; computed in the background."""
-        self._wanted.update(wanted)
-        self._want()
-
-    def _want(self) -> None:
-        """Make the table that is wanted now; a newer wish replaces an older one at work."""
-        sitting, wanted, old = self.sitting, dict(self._wanted), self._table
-        result, others = sitting.result, sitting.others()
-        assert result is not None
-        version = (id(result), *(id(other) for other in others))
-        fresh = version != self._prepared
-
-        def work(job: Job) -> Any:
-            from kingpost.tui.models.standings import arrange, prepare
-
-            table = old
-            if table is None or fresh:
-                table = prepare(sitting.graph, result, others)
-            if table.column(wanted["sort"]) is None:
-                wanted["sort"], wanted["turned"] = "rank", False
-            arrangement = arrange(table, wanted["sort"], wanted["turned"], wanted["text"])
-            return table, arrangement, version
-
-        self.runner.start(
-            "table",
-            work,
-            self._tabled,
-            words="arranging the rows",
-            failed=lambda sentence: self.news(sentence, "bad"),
-            replace=True,
-        )
-
-    def _tabled(self, made: Any) -> None:
-        table, arrangement, self._prepared = made
-        old, self._table = self._table, table
-        if old is None:
-            table.adopt(arrangement)
-            table.cursor = 0
-            self._open_standings(table)
+        if first:
+            self.latest_news = ("", "news")
+            self.push_screen(StandingsView(table))
             return
-        if table is not old:
-            table.cursor = 0
-            node = old.node
-            table.arrangement = arrangement
-            row = None if node is None else table.row_of(node)
-            table.cursor = row or 0
-        else:
-            table.adopt(arrangement)
-        self._standings_view().show(table)
-        self._refresh_views()
+        self.standings.show(table)
+        self.refreshed()
 
-    def _open_standings(self, table: Standings) -> None:
-        from kingpost.tui.views.standings import StandingsView
+    def swept(self, job: Job) -> None:
+        """A solve has news: shown where its sweeps are."""
+        from kingpost.tui.views.solvelog import SolveLogView
 
-        self.latest_news = ("", "news")
-        self.push_screen(StandingsView(table))
-        self._company()
+        if isinstance(self.screen, LoadingView):
+            self.screen.stage(job)
+        elif isinstance(self.screen, SolveLogView):
+            self.screen.refreshed()
 
-    def _standings_view(self) -> StandingsView:
-        from kingpost.tui.views.standings import StandingsView
-
-        for screen in self.screen_stack:
-            if isinstance(screen, StandingsView):
-                return screen
-        raise LookupError("the standings are not open")
-
-    def _refresh_views(self) -> None:
-        from kingpost.tui.views.base import View
-
+    def refreshed(self) -> None:
+        """Tell every open view that results or jobs have changed."""
         for screen in self.screen_stack:
             if isinstance(screen, View):
                 screen.refreshed()
 
-    # ---- going from view to view -------------------------------------------------------------------
+    def no_start(self, sentence: str) -> None:
+        """There is nothing to show: leave with the reason."""
+        self.sentence = sentence
+        self.leave(2)
+
+    @property
+    def standings(self) -> StandingsView:
+        """The view everything else is reached from."""
+        from kingpost.tui.views.standings import StandingsView
+
+        return next(screen for screen in self.screen_stack if isinstance(screen, StandingsView))
+
+    # ---- going from view to view -------------------------------------------------------------
 
     def open_node(self, node: int) -> None:
         """Open the load path of a node."""
@@ -403,10 +289,9 @@ class KingpostApp(App[int], inherit_bindings=False):
     def close_node(self, node: int) -> None:
         """Back to the standings, with the cursor on the node one ended at."""
         self.pop_screen()
-        if self._table is not None:
-            row = self._table.row_of(node)
-            if row is not None:
-                self._standings_view().table.go(row)
+        row = self.standings.model.row_of(node)
+        if row is not None:
+            self.standings.table.go(row)
 
     def open_settings(self, measure: str) -> None:
         """Open the form of a measure's settings."""
@@ -422,24 +307,14 @@ class KingpostApp(App[int], inherit_bindings=False):
 
     def do_measure_choose(self) -> None:
         """Ask for the measure."""
-        from kingpost.tui.views.sheets import MeasureSheet
+        from kingpost.tui.views.sheets import Choice, MeasureSheet
 
-        sheet = MeasureSheet("measure", measure_choices(self), self.sitting.current)
-        self.push_screen(sheet, self._chosen)
+        choices = [Choice(*row) for row in self.desk.measures()]
+        self.push_screen(MeasureSheet("measure", choices, self.sitting.current), self._chosen)
 
     def _chosen(self, measure: str | None) -> None:
-        sitting = self.sitting
-        if measure is None:
-            return
-        result = sitting.results.get(measure)
-        if result is None:
-            self.solve(measure, None)
-        elif result.refusal is not None:
-            self.notice(f"{measure} has no answer here", result.refusal.sentence)
-        elif measure != sitting.current:
-            sitting.current = measure
-            self.news(solved_words(result))
-            self._want()
+        if measure is not None:
+            self.desk.choose(measure)
 
     def do_settings_change(self) -> None:
         """Ask for the settings of the measure shown."""
@@ -456,47 +331,6 @@ class KingpostApp(App[int], inherit_bindings=False):
         from kingpost.tui.views.help import HelpView
 
         self.push_screen(HelpView())
-
-
-def sweep_words(job: Job) -> str:
-    """How far a solve has come, for the rule."""
-    from kingpost.tui.models.numbers import small
-
-    if not job.log:
-        stage = f": {visible(job.progress.stage, 60)}" if job.progress else ""
-        return f"{job.words}{stage}"
-    line = job.log[-1]
-    proven = f", order proven to {line.proven:,}" if line.proven else ""
-    return f"{job.words}: sweep {line.index:,}, bound {small(line.bound)}{proven}"
-
-
-def solved_words(result: Result) -> str:
-    """What came of a solve, for the rule."""
-    from kingpost.tui.models.numbers import small
-
-    words = f"{result.measure}: {result.stop} after {result.sweeps:,} sweeps"
-    return f"{words}, bound {small(result.bound.value)}"
-
-
-def measure_choices(app: KingpostApp) -> list[Any]:
-    """A row for every measure: its letter, its title, and what is known of it."""
-    from kingpost.tui.views.sheets import Choice
-
-    sitting, choices = app.sitting, []
-    at_work = {job.facts.get("measure") for job in app.runner.jobs("solve")}
-    for name in sitting.names:
-        result = sitting.results.get(name)
-        found = sitting.measure(name)
-        if name in at_work:
-            state = "being solved"
-        elif result is None:
-            state = "not solved yet"
-        elif result.refusal is not None:
-            state = "no answer here"
-        else:
-            state = f"order proven to {result.proven_order:,}"
-        choices.append(Choice(name, f"{found.letter} {name}", f"{state.ljust(26)} {found.title}"))
-    return choices
 
 
 def run(
@@ -525,11 +359,10 @@ def run(
     os.environ.pop("NO_COLOR", None)
     app = KingpostApp(paths, load, measure, settings, threads=threads, looks=looks)
     try:
-        status = app.run(mouse=False)
+        status: int | None = app.run(mouse=False)
     except KeyboardInterrupt:
         status = 130
     ended = app.runner.shutdown(_PATIENCE)
-    status = cast("int | None", status)
     if status is None:
         status = app.return_code or 1
     if app.sentence:

@@ -68,7 +68,9 @@ class Runner:
     ``post`` must run a callable on the screen's thread soon, and may be called from any thread.
     """
 
-    def __init__(self, post: Callable[[Callable[[], None]], Any], threads: int | None = None) -> None:
+    def __init__(
+        self, post: Callable[[Callable[[], None]], Any], threads: int | None = None
+    ) -> None:
         self._post = post
         self._threads = threads
         self._ids = count(1)
@@ -166,7 +168,9 @@ class Runner:
             sentence = f"{job.words or job.lane} needs more memory than there is"
         except Exception as error:  # the screen must outlive any fault of the work
             job.trace = traceback.format_exc()
-            sentence = visible(f"{job.words or job.lane} failed: {type(error).__name__}: {error}", 300)
+            sentence = visible(
+                f"{job.words or job.lane} failed: {type(error).__name__}: {error}", 300
+            )
         self._post(lambda: self._settle(job, value, sentence))
 
     def _settle(self, job: Job, value: Any, sentence: str | None) -> None:
@@ -194,7 +198,9 @@ class Runner:
             job.news(job)
 
 
-def solve_work(sitting: Sitting, measure: str, settings: Settings | None) -> Callable[[Job], Result]:
+def solve_work(
+    sitting: Sitting, measure: str, settings: Settings | None
+) -> Callable[[Job], Result]:
     """The work of a solve: drives the generator, keeps its log on the job, returns the Result.
 
     Ranks are worked out here too, so that the screen never sorts.  A cancelled solve returns
@@ -212,7 +218,7 @@ def solve_work(sitting: Sitting, measure: str, settings: Settings | None) -> Cal
                 result: Result = end.value
                 break
             job.tell()
-        _ = result.standing.position
+        sitting.prepare(result)
         return result
 
     return work

@@ -75,9 +75,7 @@ def shares_given(graph: Graph, result: Result, node: int) -> tuple[Neighbours, F
     return near[order], weights[order], share[order]
 
 
-def _amounts(
-    graph: Graph, result: Result, flow: Flow, near: Neighbours, weights: Floats
-) -> Floats:
+def _amounts(graph: Graph, result: Result, flow: Flow, near: Neighbours, weights: Floats) -> Floats:
     scores = result.scores[near]
     if not np.isfinite(scores).all():
         return np.zeros(len(near))

@@ -178,7 +178,8 @@ def terminal(tmp_path: Path) -> Iterator[Callable[..., Terminal]]:
         env = {
             key: value
             for key, value in os.environ.items()
-            if not key.startswith(("LC_", "TEXTUAL")) and key not in ("LANG", "NO_COLOR", "COLORTERM")
+            if not key.startswith(("LC_", "TEXTUAL"))
+            and key not in ("LANG", "NO_COLOR", "COLORTERM")
         }
         env |= {
             "TERM": "xterm-256color",

@@ -12,7 +12,15 @@ import pyarrow.parquet as pq
 import pytest
 
 SAMPLES = Path(__file__).parents[2] / "sample_graphs"
-HOSTILE = ["\x1b[31mred", "[bold]x[/bold]", "\u202egnp.exe", "n" * 5_000, "🚢-ferry", "a\tb\nc", "日本の港"]
+HOSTILE = [
+    "\x1b[31mred",
+    "[bold]x[/bold]",
+    "\u202egnp.exe",
+    "n" * 5_000,
+    "🚢-ferry",
+    "a\tb\nc",
+    "日本の港",
+]
 
 
 def rows(terminal):
@@ -136,9 +144,7 @@ def test_what_cannot_be_read_is_one_sentence_on_a_clean_terminal(terminal, tmp_p
 
 def test_hostile_names_cannot_act(terminal, tmp_path):
     path = tmp_path / "hostile.parquet"
-    pq.write_table(
-        pa.table({"source": HOSTILE, "target": [HOSTILE[0]] * len(HOSTILE)}), path
-    )
+    pq.write_table(pa.table({"source": HOSTILE, "target": [HOSTILE[0]] * len(HOSTILE)}), path)
     run = terminal(path)
     run.shows("\\e[31mred", "[bold]x[/bold]", "\\u{202e}gnp.exe", "a\\tb\\nc", "? all keys")
     assert "nnnnnnnn…" in run.text

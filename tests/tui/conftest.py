@@ -10,6 +10,7 @@ from typing import Any
 import numpy as np
 import pyarrow as pa
 import pytest
+
 from kingpost.core.graph import Adjacency, Graph, Origin
 from kingpost.core.measures.base import Measure, Settings, option
 from kingpost.core.result import Bound, BoundKind, Iteration, Refusal, Result, Stop

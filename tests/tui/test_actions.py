@@ -6,6 +6,7 @@ import importlib
 import inspect
 
 import pytest
+
 from kingpost.tui import actions
 from kingpost.tui.app import KingpostApp
 from kingpost.tui.views.base import View

@@ -5,9 +5,16 @@ from __future__ import annotations
 import math
 
 import pytest
+
 from kingpost.core.result import Iteration
 from kingpost.tui.models.chart import Series, chart
-from kingpost.tui.models.solvelog import Sweeps, expected_factor, observed_factor, series_of, why_stopped
+from kingpost.tui.models.solvelog import (
+    Sweeps,
+    expected_factor,
+    observed_factor,
+    series_of,
+    why_stopped,
+)
 from kingpost.tui.terminal import ASCII, UNICODE
 
 
@@ -39,7 +46,9 @@ def test_a_geometric_decay_is_a_straight_line_down():
 
 
 def test_both_curves_the_tolerance_and_the_proven_order_are_told_apart_by_glyph():
-    rows = "\n".join(text(chart(series_of(falling(9, proven=lambda i: 10**i), 1e-6, 10**9), 70, 20)))
+    rows = "\n".join(
+        text(chart(series_of(falling(9, proven=lambda i: 10**i), 1e-6, 10**9), 70, 20))
+    )
     assert all(glyph in rows for glyph in "•○┈▁")
     assert " 1,000,0" in rows
 

@@ -6,10 +6,11 @@ from __future__ import annotations
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
+from rich.cells import cell_len
+
 from kingpost.core.text import visible
 from kingpost.tui.models.drawing import bar, cut, fit, ruler, tame, wrap
 from kingpost.tui.terminal import ASCII, UNICODE
-from rich.cells import cell_len
 
 
 @given(st.text(max_size=60), st.integers(0, 40), st.booleans(), st.sampled_from([UNICODE, ASCII]))

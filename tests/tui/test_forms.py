@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import pytest
+
 from kingpost.tui.models.forms import fields_of, validated
 
 

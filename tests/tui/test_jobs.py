@@ -6,6 +6,7 @@ import queue
 import threading
 
 import pytest
+
 from kingpost.core.errors import InputError
 from kingpost.tui.jobs import Runner, solve_work
 from kingpost.tui.models.sitting import Sitting
@@ -112,7 +113,10 @@ def test_news_come_while_it_runs(desk, graph, bench):
     seen, got = [], []
     sitting = Sitting(graph, "held", names=bench.names, find=bench.find)
     desk.runner.start(
-        "solve", solve_work(sitting, "held", None), got.append, news=lambda job: seen.append(len(job.log))
+        "solve",
+        solve_work(sitting, "held", None),
+        got.append,
+        news=lambda job: seen.append(len(job.log)),
     )
     desk.until(lambda: seen)
     bench.release.set()

@@ -8,6 +8,7 @@ from __future__ import annotations
 import asyncio
 
 import pytest
+
 from kingpost.core.errors import InputError
 from kingpost.tui import terminal
 from kingpost.tui.app import KingpostApp
@@ -57,7 +58,9 @@ async def test_standings_name_what_they_show(app):
     async with app.run_test(size=(80, 24)) as pilot:
         await opened(pilot)
         lines = app.shown().splitlines()
-        assert "hand_made.parquet   6 nodes  8 edges   score flows along caller -> callee" in lines[0]
+        assert (
+            "hand_made.parquet   6 nodes  8 edges   score flows along caller -> callee" in lines[0]
+        )
         assert "plain pull 0.5" in lines[1]
         assert "order proven to 6 of 6" in lines[1]
         assert lines[3].split() == ["rank▴", "node", "plain", "mirror", "in", "out", "team", "tier"]
@@ -124,7 +127,7 @@ async def test_another_measure_keeps_the_cursor_on_its_node(app):
 async def test_the_old_standings_stay_usable_while_solving_and_halting_keeps_the_best(app, bench):
     async with app.run_test(size=(80, 24)) as pilot:
         await opened(pilot)
-        app.solve("held", None)
+        app.desk.solve("held", None)
         await until(pilot, lambda: "solving held: sweep" in app.shown())
         await pilot.press("down")
         assert app.screen.model.result.measure == "plain"
@@ -136,6 +139,28 @@ async def test_the_old_standings_stay_usable_while_solving_and_halting_keeps_the
         await pilot.press("escape")
         await until(pilot, lambda: "cancelled" in app.shown().splitlines()[1])
         assert "held" in app.shown().splitlines()[1]
+
+
+async def test_what_comes_in_the_background_leaves_the_walk_alone(app):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await pilot.press("enter", "down", "down")
+        await until(pilot, lambda: "▸berth" in app.shown())
+        app.desk.solve("mirror", None, company=True)
+        await until(pilot, lambda: not app.runner.jobs("solve") and not app.runner.jobs("table"))
+        await pilot.pause()
+        assert "▸berth" in app.shown()
+
+
+async def test_another_flow_is_another_flow_for_every_measure(app):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        assert "mirror" in app.shown()
+        await pilot.press("c", *["down"] * 3, "right", "enter")
+        await until(pilot, lambda: "against caller -> callee" in app.shown())
+        await until(pilot, lambda: "mirror" in app.shown() and not app.runner.jobs("solve"))
+        flows = {result.settings.flow for result in app.sitting.results.values()}
+        assert flows == {"against"}
 
 
 async def test_a_refusal_is_said_in_words_and_the_old_standings_stay(app):
@@ -161,7 +186,7 @@ async def test_a_refusal_at_the_start_still_opens_the_standings(graph, bench):
 async def test_a_broken_solver_is_a_sentence(app):
     async with app.run_test(size=(80, 24)) as pilot:
         await opened(pilot)
-        app.solve("broken", None)
+        app.desk.solve("broken", None)
         await until(pilot, lambda: "RuntimeError: a \\e[31mbroken" in app.shown())
         await pilot.press("escape")
         await until(pilot, lambda: app.screen.view == "standings")
@@ -198,7 +223,9 @@ async def test_a_megabyte_pasted_is_cut(app):
         await opened(pilot)
         await pilot.press("slash")
         app.post_message(events.Paste("\x1b[31m" + "x" * 1_000_000))
-        await until(pilot, lambda: app.screen.view == "prompt" and len(app.screen.entry.writing.text) > 900)
+        await until(
+            pilot, lambda: app.screen.view == "prompt" and len(app.screen.entry.writing.text) > 900
+        )
         assert len(app.screen.entry.writing.text) <= 1_000
         assert "\x1b" not in app.screen.entry.writing.text
         await pilot.press("escape")
@@ -270,7 +297,9 @@ async def test_loading_can_be_cancelled(graph, bench):
 
 
 async def test_hostile_names_are_inert(make_graph, bench):
-    names = sorted(["\x1b[31mred", "[bold]x[/bold]", "\u202egnp.exe", "n" * 5_000, "🚢", "a\nb", "日本"])
+    names = sorted(
+        ["\x1b[31mred", "[bold]x[/bold]", "\u202egnp.exe", "n" * 5_000, "🚢", "a\nb", "日本"]
+    )
     graph = make_graph(names, [(i, 0, 1.0) for i in range(len(names))])
     app = Kingpost(graph, bench)
     async with app.run_test(size=(80, 24)) as pilot:

@@ -3,8 +3,9 @@
 from __future__ import annotations
 
 import pytest
-from kingpost.tui.terminal import ASCII, UNICODE, decide, keep_fault
 from rich.style import Style
+
+from kingpost.tui.terminal import ASCII, UNICODE, decide, keep_fault
 
 
 @pytest.mark.parametrize(
@@ -26,9 +27,7 @@ def test_line_drawing_follows_the_locale(environ, ascii_only):
 
 
 def test_ascii_glyphs_are_ascii():
-    assert all(
-        str(getattr(ASCII, name)).isascii() for name in ASCII.__slots__ if name != "ascii"
-    )
+    assert all(str(getattr(ASCII, name)).isascii() for name in ASCII.__slots__ if name != "ascii")
 
 
 @pytest.mark.parametrize("environ", [{"NO_COLOR": "1"}, {"TERM": "dumb"}])

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
+
 from kingpost.core.result import Bound, BoundKind
 from kingpost.tui.models.numbers import compact, percent, rank_range, score_format, small
 

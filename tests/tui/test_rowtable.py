@@ -2,13 +2,16 @@
 
 from __future__ import annotations
 
+import itertools
+
 import pytest
+from rich.cells import cell_len
+from textual.app import App
+
 from kingpost.core.standing import OPEN, PROVEN
 from kingpost.tui.models.columns import Column
 from kingpost.tui.terminal import decide
 from kingpost.tui.widgets.rowtable import RowTable
-from rich.cells import cell_len
-from textual.app import App
 
 
 class Millions:
@@ -85,7 +88,7 @@ async def test_the_window_jumps_half_a_page_at_its_edge():
         for _ in range(100):
             table.move(1)
             tops.append(table._top)
-        steps = {b - a for a, b in zip(tops, tops[1:], strict=False)}
+        steps = {b - a for a, b in itertools.pairwise(tops)}
         assert steps == {0, 10}
         for _ in range(100):
             table.move(-1)

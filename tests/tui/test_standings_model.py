@@ -6,6 +6,7 @@ import numpy as np
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
+
 from kingpost.core.standing import OPEN, PROVEN, TIED
 from kingpost.tui.models.standings import Found, arrange, prepare, search
 
@@ -87,11 +88,22 @@ def test_rail_of_the_standing(table):
 
 def test_ranks_as_ranges(table):
     rank = table.head[0]
-    assert [rank.text(table.item(row)) for row in range(6)] == ["1", "2-3", "2-3", "4", "5-6", "5-6"]
+    assert [rank.text(table.item(row)) for row in range(6)] == [
+        "1",
+        "2-3",
+        "2-3",
+        "4",
+        "5-6",
+        "5-6",
+    ]
 
 
-@given(st.lists(st.integers(0, 4), min_size=2, max_size=12), st.randoms(), st.sampled_from([0, 0.6]))
-def test_rail_in_any_arrangement_says_what_the_intervals_say(make_graph, make_result, scores, random, error):
+@given(
+    st.lists(st.integers(0, 4), min_size=2, max_size=12), st.randoms(), st.sampled_from([0, 0.6])
+)
+def test_rail_in_any_arrangement_says_what_the_intervals_say(
+    make_graph, make_result, scores, random, error
+):
     graph = make_graph([f"n{i:02d}" for i in range(len(scores))], [])
     table = prepare(graph, make_result(graph, scores, error=error))
     rows = list(range(len(scores)))

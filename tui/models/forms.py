@@ -37,7 +37,8 @@ class Field:
 
 def fields_of(settings: Settings) -> list[Field]:
     """Every field of the settings, those of the measure itself before those all share."""
-    own, shared = [], []
+    own: list[Field] = []
+    shared: list[Field] = []
     for item in dataclasses.fields(settings):
         found = _field(item, getattr(settings, item.name))
         (shared if item.name in ("tol", "stop", "max_sweeps") else own).append(found)
@@ -110,7 +111,10 @@ def validated(settings: Settings, texts: Mapping[str, str]) -> tuple[Settings | 
             values[found.name] = _value(found, text)
         except (ValueError, OverflowError):
             wanted = "a whole number" if found.kind == "whole" else "a number"
-            return None, f"{found.label} is {visible(text, 40)!r}; it takes {wanted} {found.reach}".rstrip()
+            return (
+                None,
+                f"{found.label} is {visible(text, 40)!r}; it takes {wanted} {found.reach}".rstrip(),
+            )
     try:
         return dataclasses.replace(settings, **values), ""
     except KingpostError as error:

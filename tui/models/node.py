@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+import math
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field
 from typing import Any
 
@@ -72,12 +73,23 @@ def centre(graph: Graph, result: Result, node: int, glyphs: Glyphs = UNICODE) ->
     near, weights, shares = shares_given(graph, result, node)
     feeders = Neighbours(
         given.neighbours,
-        _columns("gives to it", graph, result, given.neighbours, given.weights, given.share, cumulative, glyphs),
+        _columns(
+            "gives to it",
+            graph,
+            result,
+            given.neighbours,
+            given.weights,
+            given.share,
+            cumulative,
+            glyphs,
+        ),
     )
     receivers = Neighbours(
         near, _columns("it gives to", graph, result, near, weights, shares, None, glyphs)
     )
-    return NodeModel(node, graph.name(node, 200), _attributes(graph, node), feeders, receivers, given)
+    return NodeModel(
+        node, graph.name(node, 200), _attributes(graph, node), feeders, receivers, given
+    )
 
 
 def _attributes(graph: Graph, node: int) -> tuple[tuple[str, str], ...]:
@@ -123,17 +135,28 @@ def _columns(
         Column("share", "share", 5, lambda at: percent(float(shares[at])), right=True),
     ]
     if cumulative is not None:
-        columns.append(Column("cum", "cum", 4, lambda at: percent(float(cumulative[at])), right=True))
+        columns.append(
+            Column("cum", "cum", 4, lambda at: percent(float(cumulative[at])), right=True)
+        )
     columns.append(Column("rank", "rank", max(rank_width, 4), rank, right=True))
-    widest = max((len(_weight(float(w))) for w in weights[:200]), default=6)
+    weight = weight_format(weights)
+    widest = max((len(weight(float(w))) for w in weights[:200]), default=6)
     columns.append(
-        Column("weight", "weight", max(widest, 6), lambda at: _weight(float(weights[at])), right=True)
+        Column(
+            "weight", "weight", max(widest, 6), lambda at: weight(float(weights[at])), right=True
+        )
     )
     return columns
 
 
-def _weight(weight: float) -> str:
-    return f"{weight:,.0f}" if weight == int(weight) and weight < 1e12 else f"{weight:,.4g}"
+def weight_format(weights: Any) -> Callable[[float], str]:
+    """One number of decimals for a list of weights: about four digits at the heaviest."""
+    few = weights[:MANY]
+    if len(few) == 0 or bool(np.all(few == np.floor(few))):
+        return lambda weight: f"{weight:,.0f}"
+    decimals = min(max(3 - math.floor(math.log10(float(few.max()))), 0), 6)
+    least = 0.5 * 10.0**-decimals
+    return lambda weight: f"<{10.0**-decimals:g}" if weight < least else f"{weight:,.{decimals}f}"
 
 
 @dataclass

@@ -2,15 +2,17 @@
 
 from __future__ import annotations
 
+import dataclasses
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Any
 
+from kingpost.core.insight.contributions import contributions
 from kingpost.core.measures import NAMES, measure
-from kingpost.tui.models.numbers import middle
+from kingpost.tui.models.numbers import ScoreFormat, middle, score_format
 
 if TYPE_CHECKING:
-    from kingpost.core.graph import Graph
+    from kingpost.core.graph import Flow, Graph
     from kingpost.core.measures.base import Measure, Settings
     from kingpost.core.result import Result
 
@@ -26,23 +28,46 @@ class Sitting:
     solves: list[Result] = field(default_factory=list)
     names: Sequence[str] = NAMES
     find: Callable[[str], Measure] = measure
+    formats: dict[int, tuple[Result, ScoreFormat]] = field(default_factory=dict)
 
     def measure(self, name: str) -> Measure:
         """The measure of that name, by default from the registry."""
         return self.find(name)
 
     def settings_of(self, name: str) -> Settings:
-        """Settings in force for a measure; its defaults, with the flow now shown, at first."""
+        """Settings in force for a measure, at first its defaults; the flow is the one shown."""
+        flow: Flow = getattr(self.settings.get(self.current), "flow", "along")
         if name not in self.settings:
-            flow = getattr(self.settings.get(self.current), "flow", "along")
             self.settings[name] = self.measure(name).settings(flow=flow)
+        elif self.settings[name].flow != flow:
+            self.settings[name] = dataclasses.replace(self.settings[name], flow=flow)
         return self.settings[name]
+
+    def prepare(self, result: Result) -> None:
+        """Work out, away from the screen, what a result needs each time a row of it is shown."""
+        _ = result.standing.position, self.graph.m
+        self.formats[id(result)] = (result, score_format(result.scores, result.bound))
+        if self.graph.n and result.refusal is None:
+            contributions(self.graph, result, int(result.standing.order[0]))
+
+    def format_of(self, result: Result) -> ScoreFormat:
+        """How the scores of a prepared result are written."""
+        return self.formats[id(result)][1]
 
     def record(self, result: Result) -> None:
         """Keep a result as the latest of its measure."""
+        before = self.results.get(result.measure)
+        if before is not None:
+            self.formats.pop(id(before), None)
         self.results[result.measure] = result
         self.settings[result.measure] = result.settings
         self.solves.append(result)
+
+    def refuse(self, result: Result) -> None:
+        """Note that a measure has no answer; what the standings show stays as it is."""
+        self.solves.append(result)
+        if result.measure != self.current:
+            self.results[result.measure] = result
 
     @property
     def result(self) -> Result | None:
@@ -94,8 +119,6 @@ def settings_words(settings: Any, facts: Mapping[str, Any] | None = None) -> str
 
     What is done with dangling nodes is left out where ``facts`` say there are none.
     """
-    import dataclasses
-
     facts = facts or {}
     skipped = {"flow", "tol", "stop", "max_sweeps"}
     parts = []

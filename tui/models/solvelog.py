@@ -14,6 +14,7 @@ from kingpost.tui.models.numbers import compact, middle, small
 
 if TYPE_CHECKING:
     from kingpost.core.result import Iteration, Result
+    from kingpost.tui.jobs import Job
 
 _NAN = math.nan
 
@@ -24,7 +25,9 @@ class Sweeps:
     def __init__(self, log: Sequence[Iteration]) -> None:
         self.log = list(log)
         self.head = [
-            Column("index", "sweep", 6, lambda at: f"{self.log[at].index:,}", right=True, frozen=True),
+            Column(
+                "index", "sweep", 6, lambda at: f"{self.log[at].index:,}", right=True, frozen=True
+            ),
             Column("residual", "residual", 8, lambda at: small(self.log[at].residual), right=True),
             Column("bound", "bound", 8, lambda at: small(self.log[at].bound), right=True),
             Column("factor", "factor", 6, self._factor, right=True),
@@ -137,3 +140,21 @@ def why_stopped(result: Result) -> str:
     if math.isfinite(result.bound.value):
         parts.append(f"error bound {small(result.bound.value)} ({kind})")
     return "; ".join(parts)
+
+
+def sweep_words(job: Job) -> str:
+    """How far a solve has come, for the rule."""
+    from kingpost.core.text import visible
+
+    if not job.log:
+        stage = f": {visible(job.progress.stage, 60)}" if job.progress else ""
+        return f"{job.words}{stage}"
+    line = job.log[-1]
+    proven = f", order proven to {line.proven:,}" if line.proven else ""
+    return f"{job.words}: sweep {line.index:,}, bound {small(line.bound)}{proven}"
+
+
+def solved_words(result: Result) -> str:
+    """What came of a solve, for the rule."""
+    words = f"{result.measure}: {result.stop} after {result.sweeps:,} sweeps"
+    return f"{words}, bound {small(result.bound.value)}"

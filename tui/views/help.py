@@ -57,7 +57,7 @@ class HelpView(View):
         return self.query_one("#rows", RowTable)
 
     def opened(self) -> None:
-        proven, open_, tied, _ = self.looks.glyphs.rail
+        proven, open_, tied, _ = tuple(self.looks.glyphs.rail)
         self.query_one("#head", Line).show((" keys and signs", "head"))
         self.query_one("#rail", Line).show_rows(
             [

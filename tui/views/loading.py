@@ -44,7 +44,9 @@ class LoadingView(View):
 
     def opened(self) -> None:
         self.query_one("#head", Line).show((f" {self._file_name}", "head"), ("   opening", "plain"))
-        self.query_one("#stages", Line).show((f" {self.looks.glyphs.pointer} reading the edge table", "plain"))
+        self.query_one("#stages", Line).show(
+            (f" {self.looks.glyphs.pointer} reading the edge table", "plain")
+        )
         self.refresh_keys()
 
     def stage(self, job: Job) -> None:
@@ -81,7 +83,3 @@ class LoadingView(View):
         if progress.done or progress.total:
             pieces.append((f"{amount} {visible(progress.unit, 20)}", "plain"))
         return pieces
-
-    def do_solve_halt(self) -> None:
-        """Stop loading, or end the first solve with the iterate it has."""
-        self.kingpost.halt()

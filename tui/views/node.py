@@ -25,6 +25,7 @@ class NodeView(View):
         super().__init__()
         self.trail = Trail()
         self.trail.walk(node)
+        self._shown = (-1, 0)  # the node and the result at the centre
 
     def compose(self) -> ComposeResult:
         yield NodePanel(id="panel", cursor=True)
@@ -43,8 +44,13 @@ class NodeView(View):
         self.set_class(event.size.height < 14, "-low")
 
     def refreshed(self) -> None:
-        if self.composed:
-            self._centre(self.trail.nodes[self.trail.at])
+        if not self.composed:
+            return
+        node, result = self.trail.nodes[self.trail.at], self.kingpost.sitting.result
+        if self._shown == (node, id(result)):
+            self.panel.describe(self.kingpost.sitting, self._way())
+        else:
+            self._centre(node)
 
     def _centre(self, node: int) -> None:
         sitting, glyphs = self.kingpost.sitting, self.looks.glyphs
@@ -69,6 +75,7 @@ class NodeView(View):
     def _show(self, model: NodeModel) -> None:
         if not self.composed or not self.is_attached:
             return
+        self._shown = (model.node, id(self.kingpost.sitting.result))
         self.panel.show(self.kingpost.sitting, model, self._way())
         self.refresh_keys()
         self.tell(*self.kingpost.latest_news)

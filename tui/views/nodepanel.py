@@ -8,7 +8,6 @@ from textual.widget import Widget
 from kingpost.tui.models import detail
 from kingpost.tui.models.drawing import tame
 from kingpost.tui.models.node import NodeModel
-from kingpost.tui.models.numbers import score_format
 from kingpost.tui.models.sitting import Sitting
 from kingpost.tui.widgets.lines import Line, Rule, looks_of
 from kingpost.tui.widgets.rowtable import RowTable
@@ -59,9 +58,10 @@ class NodePanel(Widget):
         self.query_one("#centre", Rule).title(f"{glyphs.down} {tame(model.name, glyphs)}")
         if self._cursor:
             self.activate(self.feeders if model.feeders.count else self.receivers)
-        self._describe(sitting, came_by)
+        self.describe(sitting, came_by)
 
-    def _describe(self, sitting: Sitting, came_by: str) -> None:
+    def describe(self, sitting: Sitting, came_by: str) -> None:
+        """Write the lines about the node; the tables and the cursor stay."""
         model, glyphs = self.model, looks_of(self).glyphs
         assert model is not None
         result = sitting.result
@@ -71,7 +71,7 @@ class NodePanel(Widget):
         if result is None or result.refusal is not None:
             self.query_one("#what", Line).show()
             return
-        score = score_format(result.scores, result.bound)
+        score = sitting.format_of(result)
         self.query_one("#what", Line).show_by(
             lambda width: detail.what_line(sitting, result, model, score, width, glyphs)
         )

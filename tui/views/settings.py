@@ -90,7 +90,9 @@ class SettingsView(View):
         found, writing, glyphs = self._fields[at], self._writing[at], self.looks.glyphs
         here = at == self._at
         lead = glyphs.pointer if here else " "
-        pieces: list[Piece] = [(f"{lead} {found.label.ljust(_LABEL)} ", "strong" if here else "plain")]
+        pieces: list[Piece] = [
+            (f"{lead} {found.label.ljust(_LABEL)} ", "strong" if here else "plain")
+        ]
         if found.kind == "choice":
             for choice in found.choices:
                 chosen = choice == writing.text
@@ -150,7 +152,7 @@ class SettingsView(View):
         settings = self._valid
         if settings is not None:
             self.app.pop_screen()
-            self.kingpost.solve(self._measure, settings)
+            self.kingpost.desk.solve(self._measure, settings)
 
     def do_step_back(self) -> None:
         self.app.pop_screen()

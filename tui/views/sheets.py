@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import Any
 
 from textual import events
 from textual.app import ComposeResult
@@ -23,7 +24,7 @@ from kingpost.tui.widgets.rowtable import RowTable
 _MOST_ROWS = 12
 
 
-class Sheet(View, ModalScreen, inherit_bindings=False):
+class Sheet(View, ModalScreen[Any], inherit_bindings=False):
     """A view over the lower part of another; Escape closes it and changes nothing."""
 
     CSS_PATH = "sheets.tcss"

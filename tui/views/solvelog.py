@@ -72,7 +72,11 @@ class SolveLogView(View):
         name = str(job.facts.get("measure", job.words))
         self._head(name, "solving", job.facts.get("settings"))
         self._series(list(job.log), job.facts.get("settings"))
-        stage = f"{job.progress.stage}" if job.progress and not job.log else "h halts it and keeps the best iterate"
+        stage = (
+            f"{job.progress.stage}"
+            if job.progress and not job.log
+            else "h halts it and keeps the best iterate"
+        )
         self._why(stage)
 
     def _head(self, measure: str, state: str, settings: object) -> None:
@@ -95,7 +99,9 @@ class SolveLogView(View):
             (" order proven (right scale)", "plain"),
         )
 
-    def _series(self, log: Iterable[Iteration], settings: object, proven: int | None = None) -> None:
+    def _series(
+        self, log: Iterable[Iteration], settings: object, proven: int | None = None
+    ) -> None:
         lines = list(log)
         tol = getattr(settings, "tol", None)
         n = self.kingpost.sitting.graph.n

@@ -121,7 +121,9 @@ class StandingsView(View):
         if result.refusal is not None:
             sentence = visible(result.refusal.sentence)
             ruler.show_by(lambda width: [(f" {wrap(sentence, width - 2)[0]}", "strong")])
-            supports.show_by(lambda width: [(f" {' '.join(wrap(sentence, width - 2)[1:])}", "plain")])
+            supports.show_by(
+                lambda width: [(f" {' '.join(wrap(sentence, width - 2)[1:])}", "plain")]
+            )
             return
         if node is None:
             ruler.show()
@@ -221,7 +223,7 @@ class StandingsView(View):
             return
         arranged = self.model.arrangement
         turned = not arranged.turned if key == arranged.sort else False
-        self.kingpost.arrange(sort=key, turned=turned)
+        self.kingpost.desk.arrange(sort=key, turned=turned)
 
     def do_rows_filter(self) -> None:
         sheet = PromptSheet("keep names that contain", self.model.arrangement.text)
@@ -229,7 +231,7 @@ class StandingsView(View):
 
     def _filter(self, text: str | None) -> None:
         if text is not None and text != self.model.arrangement.text:
-            self.kingpost.arrange(text=text)
+            self.kingpost.desk.arrange(text=text)
 
     def do_find_ask(self) -> None:
         found = self.model.found
@@ -277,7 +279,9 @@ class StandingsView(View):
             return
         self.table.go(row)
         found = self.model.found
-        words = f"{found.place(row):,} of {len(found.rows):,} names with {visible(found.text, 40)!r}"
+        words = (
+            f"{found.place(row):,} of {len(found.rows):,} names with {visible(found.text, 40)!r}"
+        )
         self.kingpost.news(words)
 
     def can_step_back(self) -> bool:
@@ -290,4 +294,4 @@ class StandingsView(View):
             self.model.found = None
             self.table.refresh()
         elif self.model.arrangement.text:
-            self.kingpost.arrange(text="")
+            self.kingpost.desk.arrange(text="")

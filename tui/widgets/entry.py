@@ -22,7 +22,9 @@ class Writing:
         """Put text at the caret; line ends become spaces, other control characters are left out."""
         room = LIMIT - len(self.text)
         text = text[: max(room, 0)]
-        text = "".join(" " if c in "\r\n\t" else c for c in text if c in "\r\n\t" or c.isprintable())
+        text = "".join(
+            " " if c in "\r\n\t" else c for c in text if c in "\r\n\t" or c.isprintable()
+        )
         self.text = self.text[: self.caret] + text + self.text[self.caret :]
         self.caret += len(text)
 
@@ -86,4 +88,3 @@ class Entry(Line):
         """Show the text as it stands."""
         label: Piece = (f" {self._label}  ", "strong")
         self.show(label, *self.writing.pieces((self.size.width or 80) - len(self._label) - 4))
-

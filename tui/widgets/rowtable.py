@@ -52,7 +52,12 @@ class RowTable(Widget):
             self.table = table
 
     def __init__(
-        self, id: str | None = None, *, headings: bool = True, rail: bool = True, active: bool = True
+        self,
+        id: str | None = None,
+        *,
+        headings: bool = True,
+        rail: bool = True,
+        active: bool = True,
     ) -> None:
         super().__init__(id=id)
         self._source: Source | None = None
@@ -70,7 +75,12 @@ class RowTable(Widget):
     # ---- what it shows -------------------------------------------------------------------
 
     def show(
-        self, source: Source, row: int = 0, *, sorted_by: tuple[str, bool] = ("", False), empty: str = ""
+        self,
+        source: Source,
+        row: int = 0,
+        *,
+        sorted_by: tuple[str, bool] = ("", False),
+        empty: str = "",
     ) -> None:
         """Show a source with the cursor on ``row``; ``empty`` is said where it has no rows."""
         height = self._page
@@ -178,7 +188,10 @@ class RowTable(Widget):
                 spare -= max(extra, 0)
         room = self.size.width - lead - 10  # at least the score beside the frozen part
         for at, column in enumerate(head):
-            over = sum(w + len(_GAP) for w, c in zip(self._widths, head, strict=True) if c.frozen) - room
+            over = (
+                sum(w + len(_GAP) for w, c in zip(self._widths, head, strict=True) if c.frozen)
+                - room
+            )
             if column.frozen and column.stretch and over > 0:
                 self._widths[at] = max(self._widths[at] - over, _LEAST_NAME)
         scrolling = sum(not column.frozen for column in head)

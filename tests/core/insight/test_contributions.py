@@ -6,6 +6,7 @@ import networkx as nx
 import numpy as np
 import pyarrow as pa
 import pytest
+
 from kingpost.core.graph import Adjacency, Graph
 from kingpost.core.insight.contributions import contributions, shares_given
 from kingpost.core.measures.base import Settings
@@ -61,7 +62,9 @@ def test_surfer_terms_sum_to_networkx_pagerank(matrix, flow):
 
 def test_katz_terms_sum_to_networkx_katz(matrix):
     alpha = 0.5 / max(abs(np.linalg.eigvals(matrix)))
-    scores = nx.katz_centrality_numpy(digraph(matrix), alpha, 1.0, normalized=False, weight="weight")
+    scores = nx.katz_centrality_numpy(
+        digraph(matrix), alpha, 1.0, normalized=False, weight="weight"
+    )
     graph = graph_of(matrix)
     result = result_of("katz", [scores[i] for i in range(30)], alpha=alpha)
     for node in range(30):
