@@ -15,7 +15,7 @@ from kingpost.tui.commands.front import SectionOption
 
 F = TypeVar("F", bound=Callable[..., Any])
 
-MEASURES = ("surfer", "eigenvector", "katz", "degree")
+MEASURES = ("surfer", "eigenvector", "katz", "communicability", "degree")
 FORMATS = ("table", "json", "csv", "tsv", "markdown", "parquet")
 
 LOADING, MEASURE, OUTPUT = "Loading", "Measure", "Output"
@@ -29,6 +29,8 @@ SETTINGS = (
     "alpha",
     "alpha_fraction",
     "beta",
+    "inverse_temperature",
+    "scale",
     "counting",
     "component",
     "certificate",
@@ -167,6 +169,19 @@ measure = _stack(
         "--beta",
         metavar="B",
         help="katz: what every node has of itself: a number, a node attribute, or a file",
+    ),
+    _option(
+        MEASURE,
+        "--inverse-temperature",
+        type=float,
+        metavar="T",
+        help="communicability: T in e^(T A/rho), how much long walks count [1]",
+    ),
+    _option(
+        MEASURE,
+        "--scale",
+        metavar="WHAT",
+        help="communicability: divide A by its spectral radius (rho) or not (none) [rho]",
     ),
     _option(
         MEASURE,
