@@ -229,9 +229,10 @@ def _solve(
         early=settings.stop_order is not None,
     )
     bound = bounds(found.x, found.residual)
-    if found.stop is Stop.STALLED and np.isfinite(bound.value):
-        # What is left is rounding, and one large row must not set the bound of all others: a
-        # guard in proportion to each row's own residual carries it on only where it goes.
+    if found.stop is Stop.STALLED and np.isfinite(found.residual.reach).all():
+        # What is left is rounding, and one large row must not set the bound of all others (nor,
+        # where it is large beside beta, leave them without any): a guard in proportion to each
+        # row's own residual carries it on only where it goes.
         tight = yield from find_guard(
             adjacency(graph, flow, abs(alpha)), structure, flow, found.residual.reach,
             max_sweeps=settings.max_sweeps, watch=watch,
