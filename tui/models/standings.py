@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -21,6 +22,10 @@ from kingpost.tui.models import columns as make
 from kingpost.tui.models.columns import Column
 
 Rows = NDArray[np.int64]
+
+# numpy's indexed assignment keeps the interpreter to itself: long ones go in pieces, so that the
+# screen gets its turns meanwhile.
+_CHUNK = 100_000
 
 
 @dataclass(frozen=True)
@@ -185,32 +190,39 @@ def arrange(table: Standings, sort: str, turned: bool = False, text: str = "") -
     order = table.result.standing.order
     column = table.column(sort)
     if column is not None and column.keys is not None and (sort != "rank" or turned):
-        keys = column.keys()[order]
+        keys = np.take(column.keys(), order)
         falling = column.high_first != turned
         order = order[_stable(keys, falling)]
     if text:
-        order = order[containing(table.graph.labels, text)[order]]
+        kept = np.take(containing(table.graph.labels, text), order)
+        order = np.take(order, np.flatnonzero(kept))
     return _arranged(order, table.graph.n, sort, turned, text)
 
 
 def search(table: Standings, arrangement: Arrangement, text: str) -> Found:
     """Rows whose name contains ``text``, letter case apart; run it in a job."""
-    hits = containing(table.graph.labels, text)[arrangement.rows]
+    hits = np.take(containing(table.graph.labels, text), arrangement.rows)
     return Found(text, np.flatnonzero(hits))
 
 
 def _arranged(rows: Rows, n: int, sort: str, turned: bool, text: str) -> Arrangement:
     row_of = np.full(n, -1, dtype=np.int32)
-    row_of[rows] = np.arange(len(rows), dtype=np.int32)
+    for start in range(0, len(rows), _CHUNK):
+        some = rows[start : start + _CHUNK]
+        row_of[some] = np.arange(start, start + len(some), dtype=np.int32)
     return Arrangement(rows, row_of, sort, turned, text)
 
 
-def _stable(keys: NDArray[np.float64], falling: bool) -> Rows:
-    if not falling:
-        return np.argsort(keys, kind="stable")
-    if keys.dtype.kind == "u":
-        keys = keys.astype(np.float64)
-    return np.argsort(-keys, kind="stable")
+def _stable(keys: NDArray[Any], falling: bool) -> Rows:
+    if keys.dtype.kind in "iu" and len(keys):
+        low, high = int(keys.min()), int(keys.max())
+        if high - low < 1 << 16:
+            # Sixteen bits are sorted by digits, in one pass a digit.
+            keys = (high - keys if falling else keys - low).astype(np.uint16)
+            return np.argsort(keys, kind="stable")
+    if falling:
+        keys = -(keys.astype(np.float64) if keys.dtype.kind == "u" else keys)
+    return np.argsort(keys, kind="stable")
 
 
 def _before(flags: NDArray[np.bool_]) -> NDArray[np.int32]:
