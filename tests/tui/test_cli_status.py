@@ -216,6 +216,23 @@ def test_130_prints_the_best_iterate_of_an_interrupted_solve(ring: Path, registe
     assert signal.getsignal(signal.SIGINT) is before
 
 
+def test_130_while_ordering_keeps_the_scores(ring: Path, register: Any) -> None:
+    def solved(graph: Any, settings: Any, watch: Any) -> Iterator[Iteration]:
+        yield Iteration(1, 0.0, 0.1, 4, 0.0)
+
+        def ties() -> None:
+            signal.raise_signal(signal.SIGINT)
+
+        scores, bound = np.array([1.0, 1.0, 3.0]), Bound(BoundKind.L1, 0.1, absolute=0.1)
+        return Answer("odd", settings, scores, Stop.CONVERGED, "", bound, symmetry=ties)
+
+    register("odd", solved)
+    done = run("rank", ring, "--measure", "odd", "--format", "csv")
+    assert done.exit_code == 130
+    assert [row["node"] for row in csv.DictReader(done.stdout.splitlines())] == ["c", "a", "b"]
+    assert "ties may be missing" in one_sentence(done)
+
+
 def test_130_while_loading_leaves_nothing(
     ring: Path, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
 ) -> None:
@@ -289,7 +306,7 @@ def test_a_real_interrupt_of_a_real_process(ring: Path, tmp_path: Path) -> None:
         process.send_signal(signal.SIGINT)
         said = process.communicate(timeout=60)[1].decode()
     assert process.returncode == 130
-    assert said.splitlines() == ["kingpost: cancelled: cancelled on the way"]
+    assert said.splitlines() == ["kingpost: endless: cancelled: cancelled on the way"]
     assert [row["node"] for row in csv.DictReader(out.open())] == ["c", "b", "a"]
 
 

@@ -7,7 +7,7 @@ from typing import Any
 import click
 
 from kingpost.tui.commands import options
-from kingpost.tui.commands.front import ANSWERED, Sectioned, complain
+from kingpost.tui.commands.front import ANSWERED, Sectioned
 from kingpost.tui.commands.session import Session, load_options
 
 NEIGHBOURS = 20
@@ -69,6 +69,6 @@ def node(edges: tuple[str, ...], name: str | None, **given: Any) -> int:
             text = node_text(graph, view, flow, width, ascii_only=ascii_only)
         writing.write_text(text, out)
     for result in results.values():
-        if result.refusal is None and not result.stop.accurate:
-            complain(f"{result.measure}: {result.stop.value}: {result.reason}")
+        if result.refusal is None:
+            session.tell_shortfall(result)
     return status

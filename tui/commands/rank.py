@@ -73,8 +73,7 @@ def answer(edges: tuple[str, ...], given: dict[str, Any]) -> int:
             writing.write_log(result, log)
         writing.write_ranking(ranking, form, out, session.watch)
         status = session.status(result)
-    if status:
-        complain(f"{result.stop.value}: {result.reason}")
+    session.tell_shortfall(result)
     return status
 
 

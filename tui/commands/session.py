@@ -148,7 +148,11 @@ class Session:
         load_seconds: float = 0.0,
         on_iteration: Callable[[Iteration], None] | None = None,
     ) -> Result:
-        """The result of a measure, cancelled or not, with the time of loading filled in."""
+        """The result of a measure, cancelled or not, with the time of loading filled in.
+
+        Its order is established too, while Ctrl-C still leaves an answer: looking for ties in a
+        graph of millions of nodes takes a while.
+        """
 
         def watched(line: Iteration) -> None:
             self.line.iteration(measure.name, line)
@@ -156,14 +160,25 @@ class Session:
                 on_iteration(line)
 
         result = measure.rank(graph, settings, self.watch, watched)
-        self.line.clear()
         seconds = dataclasses.replace(result.seconds, load=load_seconds)
-        return dataclasses.replace(result, seconds=seconds)
+        result = dataclasses.replace(result, seconds=seconds)
+        if result.refusal is None:
+            self.line.show(f"{measure.name}  establishing the order")
+            _ = result.standing  # kept by the result
+        self.line.clear()
+        return result
 
     def check(self) -> None:
         """Raise Interrupted after a Ctrl-C: for where a solve that was stopped has no scores."""
         if self.interrupted:
             self.watch.check()
+
+    def tell_shortfall(self, result: Result) -> None:
+        """One line on standard error where the answer is less than was asked for."""
+        if not result.stop.accurate:
+            complain(f"{result.measure}: {result.stop.value}: {result.reason}")
+        elif self.interrupted:
+            complain(f"{result.measure}: interrupted; the scores are complete, ties may be missing")
 
     def status(self, result: Result) -> int:
         """The exit status that an answer deserves."""
