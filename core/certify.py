@@ -23,11 +23,14 @@ class Residual:
 
     ``slack`` covers, per row, the rounding of scale (3 u), of scale times score (u), of weight
     times that (u), of the compensated sum (2 u), and of the two last additions, doubled for
-    safety: ``12 u |B||y| + 6 u (|y| + |b|)``.
+    safety: ``12 u |B||y| + 6 u (|y| + |b|)``.  ``relative`` is set where y was solved in one pass
+    without a subtraction: then ``|x - y| <= relative y`` whatever the residual says (see
+    ``kernels.sweep.substitute_deep``).
     """
 
     value: Floats
     slack: Floats
+    relative: float | None = None
 
     @property
     def reach(self) -> Floats:
@@ -75,8 +78,11 @@ def componentwise(b: Floats, y: Floats, r: Residual) -> float:
     """
     least = (b - r.value) - r.slack * (1 + 8 * UNIT)  # a lower bound of M y
     live = y > 0
-    if not (y >= 0).all() or (least[live] <= 0).any():
+    if not (y >= 0).all():
         return float("inf")
+    if (least[live] <= 0).any():
+        return float("inf") if r.relative is None else r.relative
     if not live.any():
         return 0.0
-    return float((r.reach[live] / least[live]).max()) * (1 + 8 * UNIT)
+    c = float((r.reach[live] / least[live]).max()) * (1 + 8 * UNIT)
+    return c if r.relative is None else min(c, r.relative)

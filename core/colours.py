@@ -20,13 +20,14 @@ from kingpost.core.parallel import each
 from kingpost.core.watch import Watch
 
 _ROUNDS = 200
+_VISITS = 400_000_000  # edges read before the search for ties is given up on a large graph
 
 
 def colours(matrix: Pull, b: Floats, watch: Watch) -> NDArray[np.int64] | None:
     """Classes of nodes with the same equations, shape (n,), numbered from 0.
 
-    None where the partition is not stable after 200 rounds, or ``watch`` was cancelled: an
-    unstable partition proves nothing.
+    None where the partition is not stable after 200 rounds or 400 million edge visits, or
+    ``watch`` was cancelled: an unstable partition proves nothing.
     """
     from kingpost.core.kernels.colour import gifts, refine
 
@@ -37,7 +38,7 @@ def colours(matrix: Pull, b: Floats, watch: Watch) -> NDArray[np.int64] | None:
     colour = start.ravel().astype(np.uint64)
     found = len(kinds)
     gift = np.empty_like(colour)
-    for _ in range(_ROUNDS):
+    for _ in range(min(_ROUNDS, max(4, _VISITS // max(matrix.stored, 1)))):
         if watch.cancelled:
             return None
         fresh = np.empty_like(colour)

@@ -95,14 +95,32 @@ def stand(
 
 
 def _ordered(scores: Floats, symmetry: NDArray[np.int64] | None) -> NDArray[np.int64]:
-    order = np.argsort(-scores, kind="stable")
     if symmetry is None:
-        return order
+        return falling_order(scores)
     # Members of one class may differ in the last bits; they are brought together at the place
     # of their highest, so that a tie is never split by rounding.
     best = np.full(int(symmetry.max()) + 1, -np.inf)
     np.maximum.at(best, symmetry, scores)
-    return np.lexsort((np.arange(len(scores)), symmetry, -best[symmetry]))
+    keys = best[symmetry]
+    order = falling_order(keys)
+    ordered, group = keys[order], symmetry[order]
+    if ((ordered[1:] == ordered[:-1]) & (group[1:] != group[:-1])).any():
+        return np.lexsort((np.arange(len(scores)), symmetry, -keys))
+    return order
+
+
+def falling_order(values: Floats) -> NDArray[np.int64]:
+    """Positions of ``values`` from the highest, equal ones by position.
+
+    The same as a stable argsort, several times faster: an unstable one is, and the positions
+    inside runs of equal values are sorted afterwards as whole numbers.
+    """
+    order = np.argsort(-values)
+    ordered = values[order]
+    run = np.zeros(len(values), dtype=np.uint64)
+    np.cumsum(ordered[1:] != ordered[:-1], out=run[1:])
+    keys = np.sort(run << np.uint64(32) | order.astype(np.uint64))
+    return (keys & np.uint64(0xFFFFFFFF)).astype(np.int64)
 
 
 def _tied(

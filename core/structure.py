@@ -28,7 +28,9 @@ class Structure:
 
     Attributes:
         component: component number of each node, shape (n,), uint32.
-        order: all nodes, component by component, ascending inside, shape (n,), uint32.
+        order: all nodes, component by component, shape (n,), uint32; inside a component by
+            number, ascending or descending, whichever lets more edges lead onwards: ids often
+            grow with time, and sweeps settle sooner the fewer edges lead back.
         starts: where each component begins in ``order``, shape (components + 1,), int64.
         inner: number of stored edges inside each non-trivial component, in the order of
             ``cyclic``, shape (k,), int64.
@@ -67,7 +69,7 @@ class Structure:
         return np.diff(self.starts)
 
     def members(self, component: int) -> NDArray[np.uint32]:
-        """Nodes of one component, ascending."""
+        """Nodes of one component, in the order of ``order``."""
         return self.order[self.starts[component] : self.starts[component + 1]]
 
     def period(self, component: int) -> int:
@@ -110,7 +112,7 @@ def analyse(graph: Graph, watch: Watch | None = None) -> Structure:
         starts = np.zeros(found + 1, dtype=np.int64)
         np.cumsum(counts, out=starts[1:])
         order = np.empty(n, dtype=np.uint32)
-        kernels.group_order(component, starts[:-1].copy(), order)
+        kernels.group_order(component, starts[:-1].copy(), order, down > up)
     return _finish(component, order, starts, graph, watch)
 
 

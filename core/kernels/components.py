@@ -107,12 +107,14 @@ def strong(offsets, neighbours, state, index, cursor, stack, path, budget):  # t
 
 
 @kernel()
-def group_order(group, starts, order):  # type: ignore[no-untyped-def]
-    """Fill ``order`` with the nodes group by group, ascending inside; starts[g] moves to its end.
+def group_order(group, starts, order, falling):  # type: ignore[no-untyped-def]
+    """Fill ``order`` with the nodes group by group, ascending inside, or descending if ``falling``.
 
-    ``starts`` (int64, groups + 1) must hold where each group begins.
+    ``starts`` (int64, groups) must hold where each group begins; it moves to where it ends.
     """
-    for v in range(np.uint64(len(group))):
+    n = len(group)
+    for k in range(n):
+        v = np.uint64(n - 1 - k) if falling else np.uint64(k)
         g = np.uint64(group[v])
         order[starts[g]] = v
         starts[g] += 1

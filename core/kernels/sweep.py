@@ -90,6 +90,33 @@ def substitute(offsets, neighbours, weights, order, low, high, b, scale, loops, 
 
 
 @kernel()
+def substitute_deep(offsets, neighbours, weights, order, low, high, b, scale, z, x, depth):  # type: ignore[no-untyped-def]
+    """As :func:`substitute` without self-loops, keeping the length of the longest way to each row.
+
+    Where b and B have no negative entry nothing cancels: every row multiplies the relative error
+    of what it adds up by at most ``1 + 16 u``, so x is off by ``16 u (depth + 1) x`` at most.
+    Returns the greatest depth.
+    """
+    zero, one = np.uint64(0), np.uint64(1)
+    constant = len(b) == 1
+    deepest = np.uint32(0)
+    for k in range(np.uint64(low), np.uint64(high)):
+        i = np.uint64(order[k])
+        start, end = np.uint64(offsets[i]), np.uint64(offsets[i + one])
+        new, _ = _compensated(neighbours, weights, start, end, z)
+        longest = np.uint32(0)
+        while start < end:
+            longest = max(longest, np.uint32(depth[neighbours[start]] + np.uint32(1)))
+            start += one
+        new += b[zero] if constant else b[i]
+        x[i] = new
+        z[i] = new * scale[i]
+        depth[i] = longest
+        deepest = max(deepest, longest)
+    return deepest
+
+
+@kernel()
 def pull(offsets, neighbours, weights, low, high, z, y):  # type: ignore[no-untyped-def]
     """``y[i] = sum_j weight(j -> i) z[j]`` for rows ``low..high``."""
     for i in range(np.uint64(low), np.uint64(high)):

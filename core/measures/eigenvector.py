@@ -34,6 +34,7 @@ from kingpost.core.solvers.linear import System
 from kingpost.core.solvers.linear import solve as solve_linear
 from kingpost.core.solvers.perron import Bracketed, bracket
 from kingpost.core.solvers.pinned import normalised_reach, perron_reach, pinned_guard, support
+from kingpost.core.solvers.tied import same_radius
 from kingpost.core.structure import reachable
 from kingpost.core.text import count
 from kingpost.core.watch import Watch
@@ -66,6 +67,8 @@ def solve(graph: Graph, settings: EigenvectorSettings, watch: Watch) -> Solve:
             return work.result(Stop.CANCELLED)
     if why is not None:
         return refused("eigenvector", graph, settings, *why, work.log)
+    if work.open:
+        return work.result(Stop.LIMIT)
     try:
         stop = yield from work.certify()
     except Interrupted:
@@ -85,6 +88,7 @@ class _Work:
         self.bound = Bound(BoundKind.NONE, float("inf"))
         self.live: NDArray[np.bool_] = np.zeros(graph.n, dtype=bool)
         self.chosen = -1
+        self.open = False  # which component dominates was not found out
         self.visits = self.sweeps = 0
         self.clock.ready()
 
@@ -146,6 +150,9 @@ class _Work:
         )  # fmt: skip
         self.rho = found.rho
         if not found.decided:
+            if found.steps >= settings.max_sweeps:  # no verdict yet: nothing is said of a tie
+                self.x, self.open = found.y, True
+                return None
             winner = self._last_of_chain(found)
             if winner is None:
                 return self._tie(found)
@@ -172,7 +179,9 @@ class _Work:
 
     def _last_of_chain(self, found: Bracketed) -> int | None:
         """Of components that tie, the one all others feed: then it alone has a vector."""
-        if len(found.components) > 8:
+        if len(found.components) > 8 or not same_radius(
+            self.matrix, self.structure, found.components, self.watch
+        ):
             return None
         push = self.graph.push(self.settings.flow)
         numbers = found.components.tolist()
@@ -270,10 +279,32 @@ class _Work:
             if self.sweeps >= settings.max_sweeps:
                 return Stop.LIMIT
             if not value < 0.7 * best:
-                return Stop.STALLED
+                return (yield from self._tighten(matrix, pin, reach, best))
             best = min(best, value)
             yield from self._polish(matrix, 12)
         return Stop.STALLED
+
+    def _tighten(
+        self, matrix: Pull, pin: int, reach: Floats, best: float
+    ) -> Generator[Iteration, None, Stop]:
+        """Once only rounding is left: a guard in proportion to each row's own residual."""
+        settings = self.settings
+        guard = yield from self.relay(
+            pinned_guard(
+                matrix, self.structure, settings.flow, np.maximum(self.x, 0), pin, self.rho[0],
+                max_sweeps=settings.max_sweeps, watch=self.watch, g=reach,
+            ),
+            "certificate",
+        )  # fmt: skip
+        if guard is None:
+            return Stop.STALLED
+        errors = np.where(guard.live, guard.factor(reach) * guard.w, 0.0)
+        errors = normalised_reach(self.x, errors, 2)
+        value = float(errors.sum() / (self.x.sum() / np.linalg.norm(self.x)))
+        if value < best:
+            self.bound = Bound(BoundKind.COMPONENTWISE, value, absolute=errors)
+            yield self._line(value)
+        return Stop.CONVERGED if value <= settings.tol else Stop.STALLED
 
     def _short(self) -> Stop:
         return Stop.LIMIT if self.limit else Stop.STALLED

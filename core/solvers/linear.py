@@ -25,11 +25,11 @@ from __future__ import annotations
 
 import time
 from collections.abc import Callable, Generator
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 
-from kingpost.core.certify import Residual, residual
+from kingpost.core.certify import UNIT, Residual, residual
 from kingpost.core.errors import Interrupted
 from kingpost.core.graph import Floats, Flow
 from kingpost.core.operators import Pull
@@ -159,6 +159,10 @@ class _Sweeper:
         self._mixing: dict[int, Mixing] = {}
         self.floor = False  # whether the last pass went on until nothing moved any more
         self.diverged = False
+        tracked = not self.plan.swept and not len(self.matrix.loops)
+        tracked = tracked and bool((self.b >= 0).all() and (self.matrix.scale >= 0).all())
+        self.depth: int | None = 0 if tracked else None
+        self._depths = np.zeros(n if tracked else 0, dtype=np.uint32)
         self.log: list[Iteration] = []
         self.began = time.perf_counter()
 
@@ -185,11 +189,18 @@ class _Sweeper:
 
     def _substitute(self, stage: Stage) -> None:
         from kingpost.core.kernels.rows import copy_rows
-        from kingpost.core.kernels.sweep import substitute
+        from kingpost.core.kernels.sweep import substitute, substitute_deep
 
         rows, order = self.matrix.rows, self.plan.order
         for ((low, high),) in stage.steps:
             self.watch.check()
+            if self.depth is not None:
+                deepest = substitute_deep(
+                    rows.offsets, rows.neighbours, rows.weights, order, low, high,
+                    self.b, self.matrix.scale, self.z[0], self.x, self._depths,
+                )  # fmt: skip
+                self.depth = max(self.depth, int(deepest))
+                continue
             substitute(
                 rows.offsets, rows.neighbours, rows.weights, order, low, high,
                 self.b, self.matrix.scale, self.matrix.loops, self.z[0], self.x,
@@ -262,6 +273,8 @@ class _Sweeper:
         """The residual where rows were swept (or everywhere), and what the judge makes of it."""
         ranges = [(0, self.matrix.n)] if everywhere else self.plan.swept
         r = residual(self.matrix, self.b, self.x, self.plan.order, ranges, self.watch)
+        if self.depth is not None and not everywhere:
+            r = replace(r, relative=16 * UNIT * (self.depth + 1))
         self.visits += sum(s.edges for s in self.plan.stages if s.swept or everywhere)
         bound, enough = judge(self.x, r)
         if self._shares and np.isfinite(bound):

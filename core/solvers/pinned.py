@@ -36,16 +36,19 @@ def pinned_guard(
     *,
     max_sweeps: int,
     watch: Watch,
+    g: Floats | None = None,
 ) -> Generator[Iteration, None, Guard | None]:
     """A guard of ``I - B_p / low`` on the support of y (zero outside that of B's vector).
 
     In proportion to y where that can be had: it bounds all scores equally well, relative to
-    their size.  Where scores span too many decades for it, flatter ones are tried.
+    their size.  Where scores span too many decades for it, flatter ones are tried.  ``g`` asks
+    for another proportion (shape (n,)).
     """
     scale = np.where(y > 0, matrix.scale / low, 0.0)
     scale[pin] = 0.0
-    for power in (1.0, 0.5, 0.0):
-        wanted = np.where(y > 0, np.maximum(y, 0.0) ** power, 0.0)
+    shapes = (y, np.sqrt(np.maximum(y, 0.0)), np.ones(len(y))) if g is None else (g,)
+    for shape in shapes:
+        wanted = np.where(y > 0, shape, 0.0)
         guard = yield from find_guard(
             Pull(matrix.rows, scale), structure, flow, wanted,
             max_sweeps=max_sweeps, watch=watch, ignore=pin,
