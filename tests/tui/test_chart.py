@@ -5,6 +5,8 @@ from __future__ import annotations
 import math
 
 import pytest
+from hypothesis import given
+from hypothesis import strategies as st
 
 from kingpost.core.result import Iteration
 from kingpost.tui.models.chart import Series, chart
@@ -94,3 +96,28 @@ def test_the_table_of_sweeps(graph):
     assert text["residual"] == ["1.0e-01", "1.0e-02", "1.0e-03"]
     assert text["factor"] == ["", "0.100", "0.100"]
     assert text["proven"] == ["1", "2", "3"]
+
+
+@given(
+    st.lists(
+        st.tuples(
+            st.integers(0, 10_000),
+            st.floats(allow_nan=True, allow_infinity=True),
+            st.floats(allow_nan=True, allow_infinity=True),
+            st.one_of(st.none(), st.integers(0, 10**9)),
+        ),
+        max_size=30,
+    ),
+    st.integers(0, 90),
+    st.integers(0, 30),
+    st.sampled_from([None, 1e-10, 0.5]),
+)
+def test_any_log_can_be_drawn(lines, width, height, tolerance):
+    log = [Iteration(i, residual, bound, i, 0.0, proven) for i, residual, bound, proven in lines]
+    grid = chart(series_of(log, tolerance, 1000), width, height)
+    assert [len(row) for row in grid] == [width] * height
+    sweeps = Sweeps(log)
+    for column in sweeps.head:
+        for row in range(sweeps.count):
+            assert isinstance(column.text(row), str)
+    observed_factor(log)

@@ -75,7 +75,8 @@ def _range(series: Series) -> tuple[float, float]:
 
 
 def _columns(sweeps: Sequence[int], width: int) -> list[int]:
-    first, last = sweeps[0], sweeps[-1]
+    # A method of several stages may count anew in each.
+    first, last = min(sweeps), max(sweeps)
     if last == first:
         return [0] * len(sweeps)
     # Few sweeps keep some distance, but do not spread over the whole width.
@@ -121,7 +122,7 @@ def _framed(
         rows.append(row)
     foot = " " * _LEFT + glyphs.corner + glyphs.rule * width
     rows.append([(c, "rule") for c in foot.ljust(width + _LEFT + _RIGHT + 2)])
-    first, last = f"{series.sweeps[0]:,}", f"sweep {series.sweeps[-1]:,}"
+    first, last = f"{min(series.sweeps):,}", f"sweep {max(series.sweeps):,}"
     words = " " * (_LEFT + 1) + first + last.rjust(max(width - len(first), 0))
     rows.append([(c, "quiet") for c in words.ljust(width + _LEFT + _RIGHT + 2)])
     return rows

@@ -26,6 +26,9 @@ Rows = NDArray[np.int64]
 # numpy's indexed assignment keeps the interpreter to itself: long ones go in pieces, so that the
 # screen gets its turns meanwhile.
 _CHUNK = 100_000
+# So many other measures stand beside the score; more of them come after the attributes, which
+# would be out of sight otherwise.
+_NEAR = 2
 
 
 @dataclass(frozen=True)
@@ -160,13 +163,15 @@ def prepare(
     """
     standing = result.standing
     rail = standing.rail
+    ranks = [make.other_rank_column(other) for other in others if other.refusal is None]
     head = [
         make.rank_column(result),
         make.name_column(graph, standing.order),
         make.score_column(result),
-        *(make.other_rank_column(other) for other in others if other.refusal is None),
+        *ranks[:_NEAR],
         *make.degree_columns(graph),
         *make.attribute_columns(graph),
+        *ranks[_NEAR:],
     ]
     plain = _arranged(standing.order, graph.n, "rank", False, "")
     table = Standings(graph, result, head, _before(rail == PROVEN), _before(rail == TIED), plain)
