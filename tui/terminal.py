@@ -37,8 +37,6 @@ class Glyphs:
     corner: str
     rising: str
     falling: str
-    arrow: str
-    caret: str
 
 
 UNICODE = Glyphs(
@@ -60,8 +58,6 @@ UNICODE = Glyphs(
     corner="└",
     rising="▴",
     falling="▾",
-    arrow="->",
-    caret="▏",
 )
 ASCII = Glyphs(
     ascii=True,
@@ -82,8 +78,6 @@ ASCII = Glyphs(
     corner="+",
     rising="^",
     falling="v",
-    arrow="->",
-    caret="_",
 )
 
 # Only the terminal's own sixteen colours and its own background: they follow the reader's light
@@ -102,7 +96,6 @@ _COLOURED = {
     "rule": "dim",
     "news": "bold",
     "bad": "bold red",
-    "good": "green",
     "hit": "underline",
     "key": "bold",
     "letter": "bold",
@@ -117,7 +110,6 @@ _PLAIN = _COLOURED | {
     "open": "",
     "tied": "",
     "bad": "bold",
-    "good": "",
     "residual": "",
     "bound": "bold",
     "step": "",

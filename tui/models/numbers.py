@@ -56,6 +56,7 @@ class ScoreFormat:
     """How the scores of one result are written: fixed decimals after scaling by a power of ten.
 
     ``steep`` scores, whose median is lost beside the highest, each carry their own power.
+    ``rough`` scores show a digit that the bound does not prove, lest all of them read 0.
     """
 
     exponent: int = 0
@@ -63,6 +64,7 @@ class ScoreFormat:
     whole: bool = False
     width: int = 8
     steep: bool = False
+    rough: bool = False
 
     def text(self, score: float) -> str:
         """One score; a dash where there is none."""
@@ -76,8 +78,8 @@ class ScoreFormat:
 
     @property
     def unit(self) -> str:
-        """What the heading adds: empty, or the power of ten taken out."""
-        return f" 1e{self.exponent:+d}" if self.exponent else ""
+        """What the heading adds: a tilde for rough scores, the power of ten taken out."""
+        return " ~" * self.rough + (f" 1e{self.exponent:+d}" if self.exponent else "")
 
 
 def score_format(scores: Floats, bound: Bound) -> ScoreFormat:
@@ -98,9 +100,12 @@ def score_format(scores: Floats, bound: Bound) -> ScoreFormat:
     if middle < top / unit * 1e-5:
         return ScoreFormat(decimals=2, width=8, steep=True)
     decimals = min(max(2 - math.floor(math.log10(middle)), 0), 6)
-    decimals = min(decimals, _justified(scores, bound, unit))
+    least = min(max(1 - math.floor(math.log10(top / unit)), 0), decimals)
+    justified = _justified(scores, bound, unit)
+    rough = justified < least
+    decimals = max(min(decimals, justified), least)
     width = len(f"{top / unit:.{decimals}f}")
-    return ScoreFormat(exponent, decimals, False, width)
+    return ScoreFormat(exponent, decimals, False, width, rough=rough)
 
 
 def _justified(scores: Floats, bound: Bound, unit: float) -> int:

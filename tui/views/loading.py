@@ -48,6 +48,12 @@ class LoadingView(View):
             (f" {self.looks.glyphs.pointer} reading the edge table", "plain")
         )
         self.refresh_keys()
+        self.set_interval(1.0, self._tick)
+
+    def _tick(self) -> None:
+        if self.is_current:
+            self._time()
+            self.refresh_keys()
 
     def stage(self, job: Job) -> None:
         """Show the latest of a job: its stage and how far it is, or the sweeps of a solve."""
@@ -59,6 +65,7 @@ class LoadingView(View):
         elif job.words:
             self._stages.setdefault(job.words, Progress(job.words))
         self._show()
+        self.refresh_keys()
 
     def _show(self) -> None:
         shown = list(self._stages.values())[-_MOST_STAGES:]
@@ -66,6 +73,9 @@ class LoadingView(View):
         width = min(max(width, 12), 40)
         rows = [self._row(p, width, p is shown[-1]) for p in shown]
         self.query_one("#stages", Line).show_rows(rows)
+        self._time()
+
+    def _time(self) -> None:
         seconds = time.monotonic() - self._started
         self.query_one("#head", Line).show(
             (f" {self._file_name}", "head"), (f"   opening, {seconds:.0f} s", "plain")
