@@ -160,13 +160,21 @@ class Terminal:
             "mouse off": not re.search(rb"\x1b\[\?(1000|1003|1006)h", raw),
         }
 
+    def hang_up(self, deadline: float = DEADLINE) -> int:
+        """Drop the connection; the exit status of the program, which has nobody to talk to."""
+        for end in (self._slave, self._master):
+            os.close(end)
+        self._master = self._slave = -1
+        return self.process.wait(deadline)
+
     def close(self) -> None:
         """End the program if it still runs."""
         if self.process.poll() is None:
             self.process.kill()
             self.process.wait()
-        os.close(self._master)
-        os.close(self._slave)
+        if self._master >= 0:
+            os.close(self._master)
+            os.close(self._slave)
 
 
 @pytest.fixture
