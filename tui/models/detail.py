@@ -6,6 +6,7 @@ from typing import TYPE_CHECKING
 
 from rich.cells import cell_len
 
+from kingpost.core.text import visible
 from kingpost.tui.models.drawing import bar, fit, ruler, tame
 from kingpost.tui.models.numbers import ScoreFormat, percent, rank_range, small
 from kingpost.tui.models.sitting import Sitting, flow_words, settings_words
@@ -33,6 +34,8 @@ def graph_line(graph: Graph, flow: str, shown: int, width: int) -> list[Piece]:
     words = flow_words(graph, flow)
     if 1 + cell_len(name) + len(counts) + cell_len(words) > width:
         counts, words = f"  {rows}  {graph.m:,} edges  ", words.removeprefix("score ")
+    if 1 + cell_len(name) + len(counts) + cell_len(words) > width:
+        name = name.removesuffix(".parquet")
     return [(f" {name}", "head"), (f"{counts}{words}", "plain")]
 
 
@@ -46,14 +49,21 @@ def terms_line(graph: Graph, result: Result, width: int) -> list[Piece]:
     if not result.stop.accurate:
         proof = f"{result.stop}, bound {small(result.bound.value)}, {proof}"
     room = max(width - len(result.measure) - cell_len(proof) - 3, 0)
-    left = f"{words} weight {graph.origin.weight_words}"
-    if cell_len(left) > room:
-        left = f"{words} by {graph.origin.weight_words}"
+    origin = graph.origin
+    weighted = origin.weight is not None and origin.weight_as != "none"
+    left = f"{words} weight {origin.weight_words}" if weighted else f"{words} no weights"
+    if weighted and cell_len(left) > room:
+        left = f"{words} by {origin.weight_words}"
     return [
         (f" {result.measure}", "strong"),
         (fit(left, room), "plain"),
         (f"  {proof}", "strong"),
     ]
+
+
+def on_screen(sentence: str) -> str:
+    """A sentence of the core for the screen, where options are settings and have no dashes."""
+    return visible(sentence).replace("--", "")
 
 
 def ruler_line(sitting: Sitting, node: int, width: int, glyphs: Glyphs) -> list[Piece]:

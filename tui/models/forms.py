@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING, Any
 
 from kingpost.core.errors import KingpostError
 from kingpost.core.text import visible
+from kingpost.tui.models.detail import on_screen
 
 if TYPE_CHECKING:
     from kingpost.core.measures.base import Settings
@@ -118,7 +119,7 @@ def validated(settings: Settings, texts: Mapping[str, str]) -> tuple[Settings | 
     try:
         return dataclasses.replace(settings, **values), ""
     except KingpostError as error:
-        return None, error.sentence.replace("--", "")
+        return None, on_screen(error.sentence)
     except (TypeError, ValueError) as error:
         return None, visible(str(error), 200)
 

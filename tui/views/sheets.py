@@ -12,9 +12,9 @@ from textual.containers import Vertical
 from textual.screen import ModalScreen
 
 from kingpost.core.standing import UNRANKED
-from kingpost.core.text import visible
 from kingpost.tui.actions import CHOICE, NOTICE, PROMPT
 from kingpost.tui.models.columns import Column
+from kingpost.tui.models.detail import on_screen
 from kingpost.tui.models.drawing import wrap
 from kingpost.tui.views.base import View
 from kingpost.tui.widgets.entry import Entry
@@ -179,7 +179,7 @@ class NoticeSheet(Sheet):
 
     def __init__(self, title: str, text: str) -> None:
         super().__init__()
-        self._title, self._text = title, visible(text, 2_000)
+        self._title, self._text = title, on_screen(text[:2_000])
 
     def compose(self) -> ComposeResult:
         lines = wrap(self._text, max(self.app.size.width - 2, 10))

@@ -11,6 +11,7 @@ from textual.app import ComposeResult
 from kingpost.core.text import visible
 from kingpost.tui.actions import LOG
 from kingpost.tui.jobs import Job
+from kingpost.tui.models.detail import on_screen
 from kingpost.tui.models.drawing import wrap
 from kingpost.tui.models.solvelog import Sweeps, series_of, why_stopped
 from kingpost.tui.views.base import View
@@ -113,7 +114,7 @@ class SolveLogView(View):
         table.show(sweeps, row, empty="no sweeps: the answer was computed directly")
 
     def _why(self, sentence: str) -> None:
-        lines = wrap(visible(sentence), max((self.size.width or 80) - 2, 10))
+        lines = wrap(on_screen(sentence), max((self.size.width or 80) - 2, 10))
         self.query_one("#why", Line).show_rows([[(f" {line}", "plain")] for line in lines[:3]])
 
     def do_row_up(self) -> None:

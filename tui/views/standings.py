@@ -119,7 +119,7 @@ class StandingsView(View):
         glyphs = self.looks.glyphs
         ruler, supports = self.query_one("#ruler", Line), self.query_one("#supports", Line)
         if result.refusal is not None:
-            sentence = visible(result.refusal.sentence)
+            sentence = detail.on_screen(result.refusal.sentence)
             ruler.show_by(lambda width: [(f" {wrap(sentence, width - 2)[0]}", "strong")])
             supports.show_by(
                 lambda width: [(f" {' '.join(wrap(sentence, width - 2)[1:])}", "plain")]
