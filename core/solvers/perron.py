@@ -23,6 +23,7 @@ from kingpost.core.graph import Floats
 from kingpost.core.operators import Order, Pull, cut
 from kingpost.core.parallel import each
 from kingpost.core.result import Iteration
+from kingpost.core.solvers.pinned_sweeps import PinnedSweeps
 from kingpost.core.structure import Structure
 from kingpost.core.watch import Watch
 
@@ -87,7 +88,9 @@ def bracket(
             return state
         if state.steps >= max_steps or work.stuck:
             return state
-        if work.slow:
+        if work.settling:
+            yield from work.settle()
+        elif work.slow:
             work.accelerate()
 
 
@@ -105,6 +108,8 @@ class _Brackets:
         self._widths: list[float] = []
         self._shift = 0.0  # of the middle of the bracket, once iterates are seen to swing
         self._moves: list[float] = []
+        self._unsettled = 3
+        self._exact = False
         self._tried: set[int] = set()
 
     def _choose(self, keep: NDArray[np.bool_]) -> None:
@@ -152,15 +157,24 @@ class _Brackets:
         self.state.edge_visits += self.edges
         return out[self.nodes]
 
+    def _product_exactly(self, y: Floats) -> Floats:
+        product, _ = self.matrix.apply_exactly(y, self.nodes, 0, len(self.nodes), self.watch)
+        self.state.edge_visits += self.edges
+        return product[self.nodes]
+
     def step(self) -> Iteration:
         """One product: new brackets, the next vector, and who can no longer be dominating."""
         state = self.state
         mine = state.y[self.nodes]
-        product = self.product(state.y)
+        if self._exact:
+            # Once the vector is as good as it gets, the rounding of long rows is what is left.
+            product, slack = self._product_exactly(state.y), np.full(len(mine), 16 * UNIT)
+        else:
+            product, slack = self.product(state.y), self.slack
         with np.errstate(divide="ignore", invalid="ignore"):
             ratio = product / mine
-        low = np.minimum.reduceat(ratio * (1 - self.slack), self.firsts)
-        high = np.maximum.reduceat(ratio * (1 + self.slack), self.firsts)
+        low = np.minimum.reduceat(ratio * (1 - slack), self.firsts)
+        high = np.maximum.reduceat(ratio * (1 + slack), self.firsts)
         # Both hold at every step, so the best of all steps does.
         state.low = np.fmax(state.low, low)
         state.high = np.fmin(state.high, high)
@@ -173,27 +187,27 @@ class _Brackets:
         after = np.maximum(np.nan_to_num(after), 1e-290)
         state.y[self.nodes] = after
         state.steps += 1
-        self._watch_rate(float(np.abs(after - mine).sum()))
+        self._watch_rate(float(np.abs(after - mine).sum() / after.sum()))
         keep = state.high >= state.low.max()
         if not keep.all():
             self._choose(keep)
         lo, hi = state.rho
         self._widths.append((hi - lo) / hi if hi > 0 else 0.0)
         self._since += 1
-        line = Iteration(
-            state.steps,
-            self._widths[-1],
-            float("nan"),
-            state.edge_visits,
-            time.perf_counter() - self.began,
-            eigenvalue=(lo, hi),
-            part="bracket",
-        )
-        state.log.append(line)
+        line = self._line(self._widths[-1], "bracket")
         recent = self._widths[-60:]
         self.stuck = (
             self._widths[-1] < 1e-13 and len(recent) > 20 and min(recent[:20]) <= min(recent[20:])
         )
+        return line
+
+    def _line(self, residual: float, part: str) -> Iteration:
+        state = self.state
+        line = Iteration(
+            state.steps, residual, float("nan"), state.edge_visits,
+            time.perf_counter() - self.began, eigenvalue=state.rho, part=part,
+        )  # fmt: skip
+        state.log.append(line)
         return line
 
     def _watch_rate(self, moved: float) -> None:
@@ -208,6 +222,25 @@ class _Brackets:
         if len(self._moves) < 4 or not self._moves[-4] > 0:
             return 0.0
         return float((self._moves[-1] / self._moves[-4]) ** (1 / 3))
+
+    @property
+    def settling(self) -> bool:
+        """Whether one component is left and its vector close enough for pinned sweeps."""
+        alone = len(self.state.components) == 1 and len(self.nodes) > 1
+        return alone and self._unsettled > 0 and len(self._moves) > 2 and self._moves[-1] < 0.03
+
+    def settle(self) -> Generator[Iteration, None, None]:
+        """Pinned Gauss-Seidel sweeps; kept only if the vector they lead to is positive."""
+        self._unsettled -= 1
+        work = PinnedSweeps(self.matrix, self.nodes, self.state.y, self.watch)
+        lines = work.run()
+        for moved in lines:
+            self.state.steps += 1
+            self.state.edge_visits += self.edges
+            yield self._line(moved, "pinned sweep")
+        if work.sound:
+            self.state.y[self.nodes] = work.x[self.nodes] / work.x[self.nodes].max()
+            self._exact = True
 
     @property
     def slow(self) -> bool:
@@ -230,6 +263,7 @@ class _Brackets:
             vector = leading(self.matrix, nodes, self.state.y[nodes], self.watch, self._count)
             if vector is not None:
                 self.state.y[nodes] = vector
+                self._unsettled = 3
 
     def _count(self, edges: int) -> None:
         self.state.edge_visits += edges

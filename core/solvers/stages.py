@@ -73,12 +73,12 @@ def plan(structure: Structure, rows: Adjacency, flow: Flow) -> Plan:
             if run:
                 first, last = int(starts[run[0]]), int(starts[run[-1] + 1])
                 _once(stages, rows, order, at, first)
-                stages.append(_swept(rows, order, first, last))
+                stages.append(swept_stage(rows, order, first, last))
                 at, run = last, []
             if number < count:
                 first, last = int(starts[number]), int(starts[number + 1])
                 _once(stages, rows, order, at, first)
-                stages.append(_swept(rows, order, first, last))
+                stages.append(swept_stage(rows, order, first, last))
                 at = last
         else:
             run.append(number)
@@ -111,7 +111,8 @@ def _once(stages: list[Stage], rows: Adjacency, order: Order, low: int, high: in
         stages.append(Stage(low, high, False, edges, [[piece] for piece in pieces]))
 
 
-def _swept(rows: Adjacency, order: Order, low: int, high: int) -> Stage:
+def swept_stage(rows: Adjacency, order: Order, low: int, high: int) -> Stage:
+    """Rows ``order[low:high]`` to be swept, cut into the blocks of fixed lanes if they are many."""
     edges = _count(rows, order, low, high)
     if edges < _SPLIT:
         return Stage(low, high, True, edges, [[(low, high)]])
