@@ -141,6 +141,8 @@ class Desk:
     def arrange(self, **wanted: Any) -> None:
         """Sort or filter: ``sort``, ``turned``, ``text``."""
         self._wanted.update(wanted)
+        if self.solving is None:
+            self._front.news("")  # it was about the rows as they were
         self._make()
 
     def _make(self) -> None:

@@ -18,6 +18,7 @@ from typing import TYPE_CHECKING, Any
 from kingpost.core.errors import Interrupted, KingpostError
 from kingpost.core.text import visible
 from kingpost.core.watch import Progress, Watch
+from kingpost.tui.terminal import keep_fault
 
 if TYPE_CHECKING:
     from kingpost.core.measures.base import Settings
@@ -168,9 +169,11 @@ class Runner:
             sentence = f"{job.words or job.lane} needs more memory than there is"
         except Exception as error:  # the screen must outlive any fault of the work
             job.trace = traceback.format_exc()
+            place = keep_fault(job.trace)
             sentence = visible(
                 f"{job.words or job.lane} failed: {type(error).__name__}: {error}", 300
             )
+            sentence += f"; details are in {visible(place)}" if place else ""
         self._post(lambda: self._settle(job, value, sentence))
 
     def _settle(self, job: Job, value: Any, sentence: str | None) -> None:

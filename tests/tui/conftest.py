@@ -147,6 +147,12 @@ EDGES = [
 ATTRIBUTES = {"team": ["red", None, "blue", "red", "blue", "amber"], "tier": [3, 1, 2, None, 1, 2]}
 
 
+@pytest.fixture(autouse=True)
+def _state_of_its_own(tmp_path: Any, monkeypatch: pytest.MonkeyPatch) -> None:
+    """Logs of faults made on purpose stay out of the home folder."""
+    monkeypatch.setenv("XDG_STATE_HOME", str(tmp_path))
+
+
 @pytest.fixture
 def graph() -> Graph:
     """Six nodes, eight weighted edges, two attributes with a null each."""

@@ -43,7 +43,7 @@ class SettingsView(View):
         yield Rule(id="top")
         yield Line(id="fields")
         yield Rule(id="middle")
-        yield Line(id="meaning", rows=4)
+        yield Line(id="meaning")
         yield Rule(id="news")
         yield KeyLine(id="keys")
 
@@ -52,8 +52,9 @@ class SettingsView(View):
         self.query_one("#head", Line).show((title, "head"), ("   Enter solves with them", "plain"))
         self._show()
 
-    def on_resize(self) -> None:
-        self._show()
+    def on_resize(self, event: events.Resize) -> None:
+        self.set_class(event.size.height < 16, "-low")
+        self.call_after_refresh(self._show)
 
     @property
     def _field(self) -> Field:
@@ -73,7 +74,7 @@ class SettingsView(View):
     def _show(self) -> None:
         if not self.composed or not self.is_attached or not self._fields:
             return
-        height = max(self.size.height - 9, 3)
+        height = max(self.query_one("#fields", Line).size.height, 1)
         top = max(0, min(self._at - height + 1, len(self._fields) - height))
         rows = [self._row(at) for at in range(len(self._fields))][top:]
         self.query_one("#fields", Line).show_rows(rows)
