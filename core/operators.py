@@ -55,6 +55,12 @@ class Pull:
         found = diagonal(self.rows.offsets, self.rows.neighbours, self.rows.weights, values)
         return values * self.scale if found else np.empty(0)
 
+    def scaled(self, factor: float) -> Pull:
+        """``factor B``, without looking for the diagonal again."""
+        other = Pull(self.rows, self.scale * factor)
+        other.__dict__["loops"] = self.loops * factor
+        return other
+
     @cached_property
     def pieces(self) -> list[tuple[int, int]]:
         """Row ranges of about two million edges: the fixed blocks of every product."""
@@ -126,3 +132,28 @@ def walk(graph: Graph, flow: Flow, damping: float = 1.0) -> tuple[Pull, Floats]:
     scale = np.zeros(graph.n)
     np.divide(damping, strength, out=scale, where=strength > 0)
     return Pull(graph.pull(flow), scale), strength
+
+
+def told_apart(matrix: Pull, push: Adjacency) -> Pull:
+    """``matrix`` of a walk, with scales that differ wherever the exact out-strengths may.
+
+    For telling ties only: two strengths can be equal as floats and not as sums.  Whole numbers
+    below 2^53 are added up exactly; other nodes are alike where they give the same weights.
+    """
+    from kingpost.core.kernels.colour import refine
+
+    strength = push.strengths()
+    weights = push.weights
+    if weights is None or (
+        float(strength.max(initial=0.0)) < 2.0**53 and bool((weights == np.floor(weights)).all())
+    ):
+        return Pull(matrix.rows, np.where(matrix.scale != 0.0, strength, 0.0))
+    n = matrix.n
+    kinds = np.empty(n, dtype=np.uint64)
+    same = np.zeros(n, dtype=np.uint64)
+    refine(
+        push.offsets, push.neighbours, weights.view(np.uint64), 0, n,
+        same, np.ones(n, dtype=np.uint64), kinds,
+    )  # fmt: skip
+    number = np.unique(kinds, return_inverse=True)[1].ravel() + 1.0
+    return Pull(matrix.rows, np.where(matrix.scale != 0.0, number, 0.0))

@@ -24,6 +24,7 @@ from kingpost.core.measures.common import (
     order_judge,
     reason,
     refused,
+    relay,
 )
 from kingpost.core.measures.radius import Radius, spectral_radius
 from kingpost.core.measures.vectors import node_vector
@@ -83,7 +84,7 @@ def solve(graph: Graph, settings: KatzSettings, watch: Watch) -> Solve:
     done = yield from _solve(graph, settings, alpha, b, watch)
     if not np.isfinite(done.bound.value) and done.found.stop is not Stop.CANCELLED:
         # No proof that alpha is below 1/rho: find out whether it is above.
-        radius = radius or (yield from _logged(spectral_radius(graph, 1e-12, watch), log))
+        radius = radius or (yield from relay(spectral_radius(graph, 1e-12, watch), log))
         if radius is not None and abs(alpha) * radius.low >= 1.0:
             limit = 1 / radius.high
             return refused(
@@ -135,19 +136,6 @@ def _untouched(graph: Graph, settings: KatzSettings, b: Floats, watch: Watch) ->
     return ~reachable(graph.push(settings.flow), start, watch)
 
 
-def _logged(
-    work: Generator[Iteration, None, Radius | None], log: list[Iteration]
-) -> Generator[Iteration, None, Radius | None]:
-    while True:
-        try:
-            line = next(work)
-        except StopIteration as end:
-            found: Radius | None = end.value
-            return found
-        log.append(line)
-        yield line
-
-
 def _alpha(
     graph: Graph, settings: KatzSettings, watch: Watch, log: list[Iteration]
 ) -> Generator[Iteration, None, tuple[float, str, Radius | None] | Refusal]:
@@ -172,7 +160,7 @@ def _alpha(
             None,
         )
     share = DEFAULT_FRACTION if fraction is None else fraction
-    radius = yield from _logged(spectral_radius(graph, _RADIUS_WIDTH, watch), log)
+    radius = yield from relay(spectral_radius(graph, _RADIUS_WIDTH, watch), log)
     if radius is None:
         return Refusal(
             "cancelled before the spectral radius was known", "let it run, or give --alpha"
@@ -220,31 +208,65 @@ def _solve(
         return Bound(BoundKind.COMPONENTWISE, value, absolute=reach)
 
     strongest = float(graph.push(flow).strengths().max(initial=0.0))
-    found = yield from solve_linear(
-        System(matrix, b, structure, flow, contraction=abs(alpha) * strongest),
-        order_judge(settings, bounds),
-        tol=settings.tol,
-        max_sweeps=settings.max_sweeps,
-        watch=watch,
-        early=settings.stop_order is not None,
-    )
-    bound = bounds(found.x, found.residual)
-    if found.stop is Stop.STALLED and np.isfinite(found.residual.reach).all():
-        # What is left is rounding, and one large row must not set the bound of all others (nor,
-        # where it is large beside beta, leave them without any): a guard in proportion to each
-        # row's own residual carries it on only where it goes.
-        tight = yield from find_guard(
-            adjacency(graph, flow, abs(alpha)), structure, flow, found.residual.reach,
-            max_sweeps=settings.max_sweeps, watch=watch,
-        )  # fmt: skip
-        if tight is not None:
-            reach = tight.factor(found.residual.reach) * tight.w
-            value = float(reach.sum()) / (float(np.abs(found.x).sum()) or 1.0)
-            if value < bound.value:
-                bound = replace(bound, value=value, absolute=reach)
-            if value <= settings.tol:
-                found.stop = Stop.CONVERGED
+    system = System(matrix, b, structure, flow, contraction=abs(alpha) * strongest)
+    order = order_judge(settings, bounds)
+
+    def settled(x: Floats, r: Residual) -> tuple[float, bool]:
+        # A row that is large beside beta makes this bound a poor one long after the scores
+        # have settled: then a tighter one is worth more than further sweeps.
+        bound, enough = order(x, r)
+        return bound, enough or r.norm <= 0.2 * settings.tol * float(np.abs(x).sum())
+
+    start: Floats | None = None
+    log: list[Iteration] = []
+    for judge in (settled, order):
+        found = yield from relay(
+            solve_linear(
+                system,
+                judge,
+                tol=settings.tol,
+                max_sweeps=settings.max_sweeps,
+                watch=watch,
+                start=start,
+                early=settings.stop_order is not None and start is None,
+                gain=4.0,
+            ),
+            log,
+        )
+        bound = bounds(found.x, found.residual)
+        proven = settings.stop_order is not None and order(found.x, found.residual)[1]
+        if found.stop is Stop.ORDER_PROVEN and not proven:
+            found.stop = Stop.STALLED
+        if found.stop is not Stop.STALLED or not np.isfinite(found.residual.reach).all():
+            break
+        bound = yield from relay(_tight(graph, settings, alpha, found, bound, watch), log)
+        if bound.value <= settings.tol:
+            found.stop = Stop.CONVERGED
+            break
+        start = found.x
+    found.log = log
     return _Done(found, bound)
+
+
+def _tight(
+    graph: Graph,
+    settings: KatzSettings,
+    alpha: float,
+    found: Solution,
+    bound: Bound,
+    watch: Watch,
+) -> Generator[Iteration, None, Bound]:
+    """A bound by a guard in proportion to each row's own residual: it goes only where that goes."""
+    reach = found.residual.reach
+    guard = yield from find_guard(
+        adjacency(graph, settings.flow, abs(alpha)), graph.structure, settings.flow, reach,
+        max_sweeps=settings.max_sweeps, watch=watch,
+    )  # fmt: skip
+    if guard is None:
+        return bound
+    errors = guard.factor(reach) * guard.w
+    value = float(errors.sum()) / (float(np.abs(found.x).sum()) or 1.0)
+    return replace(bound, value=value, absolute=errors) if value < bound.value else bound
 
 
 MEASURE = Measure("katz", "K", "Katz", KatzSettings, solve)

@@ -22,7 +22,7 @@ from kingpost.core.graph import Floats, Flow, Graph
 from kingpost.core.measures.base import Solve
 from kingpost.core.measures.common import Clock, conventions, reason, refused
 from kingpost.core.measures.vectors import distribution
-from kingpost.core.operators import Pull, walk
+from kingpost.core.operators import Pull, told_apart, walk
 from kingpost.core.result import Bound, BoundKind, Iteration, Result
 from kingpost.core.solvers.guard import find_guard
 from kingpost.core.solvers.linear import System
@@ -141,8 +141,9 @@ def _colours(
     from kingpost.core.colours import colours
 
     matrix, _ = walk(graph, settings.flow)
-    kept = Pull(matrix.rows, np.where(inside, matrix.scale, 0.0))
-    return colours(kept, np.where(inside, 1.0 + landing, 0.0), watch)
+    apart = told_apart(matrix, graph.push(settings.flow))
+    kept = Pull(matrix.rows, np.where(inside, apart.scale, 0.0))
+    return colours(kept, np.where(inside, landing, -1.0), watch)
 
 
 def closed_class(

@@ -18,7 +18,6 @@ with ``||M^-1||_1 <= 1 / (1 - d)``: the sum of all errors is at most ``||r||_1 /
 
 from __future__ import annotations
 
-from collections.abc import Generator
 from dataclasses import dataclass, replace
 from typing import Any
 
@@ -29,10 +28,10 @@ from kingpost.core.certify import UNIT, Residual, componentwise
 from kingpost.core.colours import colours
 from kingpost.core.graph import Floats, Graph
 from kingpost.core.measures.base import Measure, Settings, Solve, option
-from kingpost.core.measures.common import Clock, conventions, empty, order_judge, reason
+from kingpost.core.measures.common import Clock, conventions, empty, order_judge, reason, relay
 from kingpost.core.measures.vectors import distribution
-from kingpost.core.operators import walk
-from kingpost.core.result import Bound, BoundKind, Iteration, Result, Stop
+from kingpost.core.operators import told_apart, walk
+from kingpost.core.result import Bound, BoundKind, Result, Stop
 from kingpost.core.solvers.linear import Judge, Solution, System
 from kingpost.core.solvers.linear import solve as solve_linear
 from kingpost.core.structure import reachable
@@ -76,7 +75,7 @@ def _solve(graph: Graph, settings: SurferSettings, watch: Watch) -> Solve:
     d = settings.damping
     matrix, strength = walk(graph, settings.flow, d)
     jump = Jump(graph, settings, strength == 0)
-    structure = graph.structure
+    structure, push = graph.structure, graph.push(settings.flow)
     clock.ready()
     system = System(matrix, (1 - d) * jump.teleport, structure, settings.flow, contraction=d)
     options: dict[str, Any] = {
@@ -92,14 +91,16 @@ def _solve(graph: Graph, settings: SurferSettings, watch: Watch) -> Solve:
     else:
         # Half the tolerance for each of the two solves that are added up.
         found = yield from solve_linear(system, _plain_judge(d), tol=settings.tol / 2, **options)
-        jumped = yield from _after(
-            found,
+        log = list(found.log)
+        jumped = yield from relay(
             solve_linear(
                 replace(system, b=jump.apart), _plain_judge(d), tol=settings.tol / 2, **options
             ),
+            log,
+            "jumps from dangling nodes",
         )
         x, bound = jump.combined(found, jumped)
-        log, stop = found.log + jumped.log, max(found.stop, jumped.stop, key=_severity)
+        stop = max(found.stop, jumped.stop, key=_severity)
         if stop is Stop.STALLED and bound.value <= settings.tol:
             stop = Stop.CONVERGED
         leaked = 0.0
@@ -121,7 +122,7 @@ def _solve(graph: Graph, settings: SurferSettings, watch: Watch) -> Solve:
             "share iterated": structure.share_iterated,
         },
         exact_zero=jump.unreached(watch),
-        symmetry=lambda: colours(matrix, jump.landing(), watch),
+        symmetry=lambda: colours(told_apart(matrix, push), jump.landing(), watch),
     )
 
 
@@ -137,30 +138,6 @@ def _plain_judge(damping: float) -> Judge:
 
 def _severity(stop: Stop) -> int:
     return [Stop.CONVERGED, Stop.ORDER_PROVEN, Stop.STALLED, Stop.LIMIT, Stop.CANCELLED].index(stop)
-
-
-def _after(
-    before: Solution, work: Generator[Iteration, None, Solution]
-) -> Generator[Iteration, None, Solution]:
-    """Number the lines of a second solve on from the first."""
-    last = before.log[-1]
-    lines: list[Iteration] = []
-    while True:
-        try:
-            line = next(work)
-        except StopIteration as end:
-            solution: Solution = end.value
-            solution.log = lines
-            return solution
-        line = replace(
-            line,
-            index=line.index + last.index,
-            edge_visits=line.edge_visits + last.edge_visits,
-            seconds=line.seconds + last.seconds,
-            part=f"jumps from dangling nodes{': ' * bool(line.part)}{line.part}",
-        )
-        lines.append(line)
-        yield line
 
 
 class Jump:
@@ -224,7 +201,8 @@ class Jump:
         """What tells nodes apart before any edge is looked at; shape (n,) or (1,)."""
         if self.apart is None:
             return self.teleport
-        return self.teleport + np.pi * self.apart
+        pairs = self.teleport + 1j * self.apart  # a sum of both would lose last bits
+        return np.unique(pairs, return_inverse=True)[1].astype(np.float64).ravel()
 
     def unreached(self, watch: Watch) -> NDArray[np.bool_] | None:
         """Nodes the walker never comes to, whose scores are exactly zero; None where all are."""
