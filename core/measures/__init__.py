@@ -13,6 +13,7 @@ _MODULES = {
     "surfer": "kingpost.core.measures.surfer",
     "eigenvector": "kingpost.core.measures.eigenvector",
     "katz": "kingpost.core.measures.katz",
+    "hits": "kingpost.core.measures.hits",
     "communicability": "kingpost.core.measures.communicability",
     "degree": "kingpost.core.measures.degree",
 }

@@ -15,7 +15,7 @@ from kingpost.tui.commands.front import SectionOption
 
 F = TypeVar("F", bound=Callable[..., Any])
 
-MEASURES = ("surfer", "eigenvector", "katz", "communicability", "degree")
+MEASURES = ("surfer", "eigenvector", "katz", "hits", "communicability", "degree")
 FORMATS = ("table", "json", "csv", "tsv", "markdown", "parquet")
 
 LOADING, MEASURE, OUTPUT = "Loading", "Measure", "Output"
@@ -29,6 +29,7 @@ SETTINGS = (
     "alpha",
     "alpha_fraction",
     "beta",
+    "role",
     "inverse_temperature",
     "scale",
     "counting",
@@ -172,6 +173,12 @@ measure = _stack(
     ),
     _option(
         MEASURE,
+        "--role",
+        metavar="WHAT",
+        help="hits: score authorities (authority) or hubs (hub) [authority]",
+    ),
+    _option(
+        MEASURE,
         "--inverse-temperature",
         type=float,
         metavar="T",
@@ -193,7 +200,7 @@ measure = _stack(
         MEASURE,
         "--component",
         metavar="NODE",
-        help="eigenvector: answer within the strong component of this node",
+        help="eigenvector, hits: answer within the component of this node",
     ),
     _option(
         MEASURE,
