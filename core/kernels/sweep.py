@@ -137,23 +137,42 @@ def pull_rows(offsets, neighbours, weights, order, low, high, z, y):  # type: ig
 
 @kernel()
 def _compensated(neighbours, weights, start, end, z):  # type: ignore[no-untyped-def]
-    """One row by compensated summation (Neumaier 1974): the sum, and the sum of magnitudes."""
+    """One row by compensated summation (two-sum; Knuth 1969): the sum, and that of magnitudes."""
     one = np.uint64(1)
-    total = 0.0
-    spill = 0.0
+    total = other = 0.0
+    spill = left = 0.0
     whole = 0.0
-    while start < end:
-        term = z[neighbours[start]]
+    # Two sums side by side: neighbouring terms need not wait for each other.
+    while start + one < end:
+        a = z[neighbours[start]]
+        b = z[neighbours[start + one]]
         if weights is not None:
-            term *= weights[start]
-        after = total + term
-        if abs(total) >= abs(term):
-            spill += (total - after) + term
-        else:
-            spill += (term - after) + total
+            a *= weights[start]
+            b *= weights[start + one]
+        start += one + one
+        after = total + a
+        back = after - total
+        spill += (total - (after - back)) + (a - back)
         total = after
-        whole += abs(term)
-        start += one
+        after = other + b
+        back = after - other
+        left += (other - (after - back)) + (b - back)
+        other = after
+        whole += abs(a) + abs(b)
+    if start < end:
+        a = z[neighbours[start]]
+        if weights is not None:
+            a *= weights[start]
+        after = total + a
+        back = after - total
+        spill += (total - (after - back)) + (a - back)
+        total = after
+        whole += abs(a)
+    after = total + other
+    back = after - total
+    spill += (total - (after - back)) + (other - back)
+    total = after
+    spill += left
     return total + spill, whole
 
 

@@ -9,55 +9,65 @@ from kingpost.core.operators import Order
 from kingpost.core.parallel import each
 from kingpost.core.solvers.stages import Stage
 
+_DEPTH = 3  # differences mixed; a fourth saved no sweep on the bench graphs
+_SUMS = [(0, 1, 2), (1, 3, 4), (2, 4, 5)]  # where kernels.mixing.record puts d_i . d_j
+
 
 class Mixing:
-    """Extrapolates from the last three sweeps; see :mod:`kingpost.core.solvers.linear`."""
+    """Extrapolates from the last four sweeps; see :mod:`kingpost.core.solvers.linear`."""
 
     def __init__(self, stage: Stage, order: Order, x: Floats, threads: int) -> None:
         self._order, self._base, self._threads = order, stage.low, threads
         self._pieces = [block for step in stage.steps for block in step if block[0] < block[1]]
         rows = stage.high - stage.low
         self._before: Floats = x[order[stage.low : stage.high]]
-        self._f, self._g = np.zeros((3, rows)), np.zeros((3, rows))
-        self._sums = [0.0, 0.0, 0.0]
+        self._f, self._g = np.zeros((4, rows)), np.zeros((4, rows))
+        self._totals = np.zeros(4)
         self._kept = 0
 
     def mix(self, x: Floats, scale: Floats, z: Floats) -> None:
         """Take the sweep that ended in ``x`` into account; move x, and z = scale x of all lanes."""
         from kingpost.core.kernels.mixing import extrapolate, record
 
-        new = self._kept % 3
-        one, two = (new - 1) % 3, (new - 2) % 3
-        totals = np.zeros(6)
-        for sums in each(
-            lambda block: record(
-                self._order, self._base, *block, x, self._before, self._f, self._g, new, one, two
+        new = self._kept & 3
+        parts = np.zeros((len(self._pieces), 10))
+        each(
+            lambda k: record(
+                self._order, self._base, *self._pieces[k], x, self._before, self._f, self._g,
+                new, parts[k],
             ),
-            self._pieces,
+            range(len(self._pieces)),
             self._threads,
-        ):
-            totals += sums
-        self._sums[new] = float(totals[5])
+        )  # fmt: skip
+        sums = parts.sum(axis=0)
+        self._totals[new] = sums[9]
+        factors = np.zeros(_DEPTH)
+        depth = min(self._kept, _DEPTH)
         self._kept += 1
-        s, t = self._factors(totals)
-        total = self._sums[new] * (1 - s - t) + s * self._sums[one] + t * self._sums[two]
-        if not 0.2 < total / (self._sums[new] or 1.0) < 1e4:
-            s = t = 0.0  # a wild guess: go on from the plain sweep
+        if depth and sums[0] > 0 and np.isfinite(sums).all():
+            factors[:depth] = _least_squares(sums, depth)
+            past = self._totals[[(new + 3) & 3, (new + 2) & 3, (new + 1) & 3]]
+            whole = sums[9] * (1 - factors.sum()) + factors @ past
+            if not 0.2 < whole / (sums[9] or 1.0) < 1e4:
+                factors[:] = 0.0  # a wild guess: go on from the plain sweep
         each(
             lambda block: extrapolate(
-                self._order, self._base, *block, x, self._before, self._g, new, one, two,
-                s, t, scale, z, len(z),
+                self._order, self._base, *block, x, self._before, self._g, new, *factors,
+                scale, z, len(z),
             ),
             self._pieces,
             self._threads,
         )  # fmt: skip
 
-    def _factors(self, totals: Floats) -> tuple[float, float]:
-        """Least-squares weights of the last one or two differences."""
-        a, b, c, p, q = (float(value) for value in totals[:5])
-        if self._kept < 2 or a <= 0.0:
-            return 0.0, 0.0
-        determinant = a * c - b * b
-        if self._kept < 3 or determinant <= 1e-12 * a * c:
-            return p / a, 0.0
-        return (p * c - q * b) / determinant, (a * q - b * p) / determinant
+
+def _least_squares(sums: Floats, depth: int) -> Floats:
+    """Weights of the last ``depth`` differences that best cancel the newest change."""
+    inner = sums[np.array(_SUMS)][:depth, :depth]
+    # Differences shrink by decades from sweep to sweep: compare their directions, not sizes.
+    size = np.sqrt(np.diag(inner))
+    size[size == 0] = 1.0
+    found, *_ = np.linalg.lstsq(
+        inner / np.outer(size, size), sums[6 : 6 + depth] / size, rcond=1e-13
+    )
+    weights: Floats = found / size
+    return weights
