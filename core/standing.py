@@ -84,7 +84,10 @@ def stand(
     tied = _tied(scores[order], zero[order], low == high, symmetry, order)
     settled = apart | tied
     open_at = np.flatnonzero(~settled)
-    proven = n if len(open_at) == 0 else int(open_at[0])
+    # A tie is proven as a whole or not at all: nodes equal to one that may have to give way
+    # may have to give way too.
+    group = np.flatnonzero(np.concatenate(([True], ~tied[:-1])))
+    proven = n if len(open_at) == 0 else int(group[group <= open_at[0]][-1])
 
     rail = np.where(apart, PROVEN, OPEN).astype(np.uint8)
     rail[tied] = TIED

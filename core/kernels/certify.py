@@ -66,6 +66,6 @@ def largest_ratio(b, y, value, slack):  # type: ignore[no-untyped-def]
                 worst = np.inf
             else:
                 worst = max(worst, (abs(value[i]) + slack[i]) / least)
-        elif not y[i] == 0.0:
+        elif y[i] != 0.0:
             return np.nan
     return worst

@@ -113,6 +113,11 @@ def relay(
         yield line
 
 
+def swept(log: list[Iteration]) -> int:
+    """Number of sweeps a log tells of."""
+    return log[-1].index if log else 0
+
+
 class Clock:
     """Seconds spent preparing and solving."""
 

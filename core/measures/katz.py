@@ -25,6 +25,7 @@ from kingpost.core.measures.common import (
     reason,
     refused,
     relay,
+    swept,
 )
 from kingpost.core.measures.radius import Radius, spectral_radius
 from kingpost.core.measures.vectors import node_vector
@@ -225,7 +226,7 @@ def _solve(
                 system,
                 judge,
                 tol=settings.tol,
-                max_sweeps=settings.max_sweeps,
+                max_sweeps=settings.max_sweeps - swept(log),
                 watch=watch,
                 start=start,
                 early=settings.stop_order is not None and start is None,
@@ -239,9 +240,14 @@ def _solve(
             found.stop = Stop.STALLED
         if found.stop is not Stop.STALLED or not np.isfinite(found.residual.reach).all():
             break
-        bound = yield from relay(_tight(graph, settings, alpha, found, bound, watch), log)
+        left = settings.max_sweeps - swept(log)
+        if left < 1:
+            break
+        bound = yield from relay(_tight(graph, settings, alpha, found, bound, left, watch), log)
         if bound.value <= settings.tol:
             found.stop = Stop.CONVERGED
+            break
+        if settings.max_sweeps - swept(log) < 1:
             break
         start = found.x
     found.log = log
@@ -254,13 +260,14 @@ def _tight(
     alpha: float,
     found: Solution,
     bound: Bound,
+    max_sweeps: int,
     watch: Watch,
 ) -> Generator[Iteration, None, Bound]:
     """A bound by a guard in proportion to each row's own residual: it goes only where that goes."""
     reach = found.residual.reach
     guard = yield from find_guard(
         adjacency(graph, settings.flow, abs(alpha)), graph.structure, settings.flow, reach,
-        max_sweeps=settings.max_sweeps, watch=watch,
+        max_sweeps=max_sweeps, watch=watch,
     )  # fmt: skip
     if guard is None:
         return bound
