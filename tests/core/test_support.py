@@ -40,4 +40,4 @@ def test_the_exact_perron_vector_of_a_path() -> None:
     assert nodes == list(range(6))
     assert abs(rho - 2 * exact.mpmath.cos(exact.mpmath.pi / 7)) < mpf(10) ** -50
     sines = [exact.mpmath.sin(k * exact.mpmath.pi / 7) for k in range(1, 7)]
-    assert max(abs(a / b - y[0] / sines[0]) for a, b in zip(y, sines)) < mpf(10) ** -45
+    assert max(abs(a / b - y[0] / sines[0]) for a, b in zip(y, sines, strict=True)) < mpf(10) ** -45

@@ -16,7 +16,7 @@ from graphs import to_networkx
 from mpmath import mpf
 
 from kingpost.core.graph import Graph
-from kingpost.core.result import Result
+from kingpost.core.result import BoundKind, Result
 from kingpost.core.standing import PROVEN, TIED, UNRANKED
 
 mpmath.mp.dps = 60
@@ -222,7 +222,11 @@ def confirm(result: Result, exact: Vector, *, informative: bool = True) -> None:
             assert mpf(float(low[i])) <= exact[i] + room, (i, float(exact[i] - scores[i]))
         if np.isfinite(high[i]):
             assert exact[i] - room <= mpf(float(high[i])), (i, float(exact[i] - scores[i]))
-    if np.isfinite(result.bound.value):
+    if result.bound.kind is BoundKind.BRACKET:  # of the eigenvalue: no score is claimed
+        assert result.bound.relative is None
+        assert result.bound.absolute is None
+        assert result.proven_order <= sum(x == 0 for x in exact)
+    elif np.isfinite(result.bound.value):
         off = sum((abs(a - b) for a, b in zip(scores, exact, strict=True)), mpf(0))
         whole = sum((abs(a) for a in scores), mpf(0))
         # The bound is a float itself: one rounding of its own.
@@ -261,9 +265,13 @@ def confirm_order(result: Result, exact: Vector) -> None:
     for k in np.flatnonzero(standing.rail == UNRANKED):
         node = standing.order[k]
         assert low[node] <= 0 <= high[node]
-    # The proven order is the first stretch without an open mark.
+    # The proven order is the first stretch without an open mark, less a tie that reaches it:
+    # nodes equal to one that may have to give way may have to give way too.
     settled = (standing.rail == PROVEN) | (standing.rail == TIED)
-    assert result.proven_order >= (n if settled.all() else int(np.argmin(settled)))
+    end = n if settled.all() else int(np.argmin(settled))
+    while 0 < end < n and standing.rail[end - 1] == TIED:
+        end -= 1
+    assert result.proven_order == end
 
 
 def _place(ordered: Vector, value: mpf, right: bool) -> int:

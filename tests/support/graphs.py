@@ -70,7 +70,9 @@ def to_networkx(graph: Graph) -> nx.Graph:
     other.add_nodes_from(range(graph.n))
     for u in range(graph.n):
         near, weights = graph.outward.row(u)
-        other.add_weighted_edges_from((u, int(v), float(w)) for v, w in zip(near, weights))
+        other.add_weighted_edges_from(
+            (u, int(v), float(w)) for v, w in zip(near, weights, strict=True)
+        )
     return other
 
 
