@@ -14,50 +14,110 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
-from kingpost.core.graph import Floats
-from kingpost.core.operators import Pull
+from kingpost.core.graph import Floats, Flow
+from kingpost.core.operators import Order, Pull
 from kingpost.core.parallel import each
+from kingpost.core.solvers.stages import Stage, plan, swept_stage
+from kingpost.core.structure import Structure
 from kingpost.core.watch import Watch
+
+Hashes = NDArray[np.uint64]
 
 _ROUNDS = 200
 _VISITS = 400_000_000  # edges read before the search for ties is given up on a large graph
 
 
-def colours(matrix: Pull, b: Floats, watch: Watch) -> NDArray[np.int64] | None:
+def colours(
+    matrix: Pull,
+    b: Floats,
+    watch: Watch,
+    structure: Structure | None = None,
+    flow: Flow = "along",
+) -> NDArray[np.int64] | None:
     """Classes of nodes with the same equations, shape (n,), numbered from 0.
 
-    None where the partition is not stable after 200 rounds or 400 million edge visits, or
-    ``watch`` was cancelled: an unstable partition proves nothing.
-    """
-    from kingpost.core.kernels.colour import gifts, refine
+    Given the ``structure`` of the graph (and the ``flow`` of the score), rows on no cycle are
+    coloured in one visit; cyclic stages, or everything, in rounds until no class splits.
 
-    rows = matrix.rows
+    None where that takes more than 200 rounds or 400 million edge visits, or ``watch`` was
+    cancelled: an unstable partition proves nothing.
+    """
+    from kingpost.core.kernels.colour import gifts, refine_once
+
+    rows, n = matrix.rows, matrix.n
     bits = None if rows.weights is None else rows.weights.view(np.uint64)
     scale_bits = (matrix.scale + 0.0).view(np.uint64)  # + 0.0: -0 is 0
-    kinds, start = np.unique(np.broadcast_to(b, matrix.n) + 0.0, return_inverse=True)
+    start = np.unique(np.broadcast_to(b, n) + 0.0, return_inverse=True)[1]
     colour = start.ravel().astype(np.uint64)
-    found = len(kinds)
     gift = np.empty_like(colour)
-    for _ in range(min(_ROUNDS, max(4, _VISITS // max(matrix.stored, 1)))):
-        if watch.cancelled:
-            return None
-        fresh = np.empty_like(colour)
-        gifts(colour, scale_bits, gift)
+    if structure is None:
+        order = np.arange(n, dtype=np.uint32)
+        stages = [swept_stage(rows, order, 0, n)] if n else []
+    else:
+        made = plan(structure, rows, flow)
+        order, stages = made.order, made.stages
+    gifts(order, 0, n, colour, scale_bits, gift)
+    visits = 0
+    for number, stage in enumerate(stages):
+        if stage.swept:
+            # Refined to different depths, colours of different stages mean different things:
+            # they must never be equal.
+            colour[order[stage.low : stage.high]] += np.uint64((number + 1) << 32)
+            gifts(order, stage.low, stage.high, colour, scale_bits, gift)
+            visits = _settle(matrix, bits, scale_bits, order, stage, colour, gift, visits, watch)
+            if visits < 0:
+                return None
+            continue
+        for ((low, high),) in stage.steps:
+            if watch.cancelled:
+                return None
+            refine_once(
+                rows.offsets, rows.neighbours, bits, order, low, high, scale_bits, colour, gift
+            )
+    classes = np.unique(colour, return_inverse=True)[1]
+    return classes.astype(np.int64).ravel()
 
-        def piece(
-            part: tuple[int, int],
-            colour: NDArray[np.uint64] = colour,
-            fresh: NDArray[np.uint64] = fresh,
-        ) -> None:
-            refine(rows.offsets, rows.neighbours, bits, *part, colour, gift, fresh)
 
-        each(piece, matrix.pieces, watch.threads)
-        ordered = np.sort(fresh)
-        seen = int(np.count_nonzero(ordered[1:] != ordered[:-1])) + 1
-        if seen == found:
-            classes = np.unique(fresh, return_inverse=True)[1]
-            return classes.astype(np.int64).ravel()
-        if seen == matrix.n:
-            return None  # every node is unlike every other: there are no ties to prove
-        found, colour = seen, fresh
-    return None
+def _settle(
+    matrix: Pull,
+    bits: Hashes | None,
+    scale_bits: Hashes,
+    order: Order,
+    stage: Stage,
+    colour: Hashes,
+    gift: Hashes,
+    visits: int,
+    watch: Watch,
+) -> int:
+    """Refine one stage until no class splits; returns the edge visits so far, or -1."""
+    from kingpost.core.kernels.colour import gifts, refine
+
+    rows, nodes = matrix.rows, order[stage.low : stage.high]
+    blocks = [block for step in stage.steps for block in step]
+    found = _distinct(colour[nodes])
+    fresh = np.empty_like(colour)
+    for number in range(_ROUNDS):
+        if watch.cancelled or (number > 3 and visits > _VISITS):
+            return -1
+        visits += stage.edges
+        each(
+            lambda block: refine(
+                rows.offsets, rows.neighbours, bits, order, *block, colour, gift, fresh
+            ),
+            blocks,
+            watch.threads,
+        )
+        mine = fresh[nodes]
+        seen = _distinct(mine)
+        stable = seen == found
+        found = seen
+        colour[nodes] = mine
+        gifts(order, stage.low, stage.high, colour, scale_bits, gift)
+        if stable or seen == len(nodes):
+            return visits
+    return -1
+
+
+def _distinct(values: Hashes) -> int:
+    ordered = np.sort(values)
+    return int(np.count_nonzero(ordered[1:] != ordered[:-1])) + 1

@@ -152,8 +152,8 @@ def told_apart(matrix: Pull, push: Adjacency) -> Pull:
     kinds = np.empty(n, dtype=np.uint64)
     same = np.zeros(n, dtype=np.uint64)
     refine(
-        push.offsets, push.neighbours, weights.view(np.uint64), 0, n,
-        same, np.ones(n, dtype=np.uint64), kinds,
+        push.offsets, push.neighbours, weights.view(np.uint64), np.arange(n, dtype=np.uint32),
+        0, n, same, np.ones(n, dtype=np.uint64), kinds,
     )  # fmt: skip
     number = np.unique(kinds, return_inverse=True)[1].ravel() + 1.0
     return Pull(matrix.rows, np.where(matrix.scale != 0.0, number, 0.0))

@@ -387,17 +387,19 @@ class _Work:
             seconds=self.clock.seconds(),
             facts={"rho": self.rho, "period": period},
             exact_zero=~live if live.any() else None,
-            symmetry=lambda: _colours(matrix, live, self.watch),
+            symmetry=lambda: _colours(graph, settings, matrix, live, self.watch),
         )
 
 
-def _colours(matrix: Pull, live: NDArray[np.bool_], watch: Watch) -> NDArray[np.int64] | None:
+def _colours(
+    graph: Graph, settings: EigenvectorSettings, matrix: Pull, live: NDArray[np.bool_], watch: Watch
+) -> NDArray[np.int64] | None:
     from kingpost.core.colours import colours
 
     if not live.any():
         return None
     kept = Pull(matrix.rows, np.where(live, matrix.scale, 0.0))
-    return colours(kept, live.astype(np.float64), watch)
+    return colours(kept, live.astype(np.float64), watch, graph.structure, settings.flow)
 
 
 MEASURE = Measure("eigenvector", "E", "eigenvector", EigenvectorSettings, solve)

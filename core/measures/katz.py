@@ -15,6 +15,7 @@ from typing import Any
 import numpy as np
 
 from kingpost.core.certify import Residual, componentwise
+from kingpost.core.colours import colours
 from kingpost.core.graph import Floats, Graph
 from kingpost.core.measures.base import Measure, Settings, Solve, option
 from kingpost.core.measures.common import (
@@ -29,7 +30,7 @@ from kingpost.core.measures.common import (
 )
 from kingpost.core.measures.radius import Radius, spectral_radius
 from kingpost.core.measures.vectors import node_vector
-from kingpost.core.operators import Pull, adjacency
+from kingpost.core.operators import adjacency
 from kingpost.core.result import Bound, BoundKind, Iteration, Refusal, Result, Stop
 from kingpost.core.solvers.guard import Guard, find_guard
 from kingpost.core.solvers.linear import Solution, System
@@ -119,14 +120,8 @@ def solve(graph: Graph, settings: KatzSettings, watch: Watch) -> Solve:
         seconds=clock.seconds(),
         facts=facts,
         exact_zero=_untouched(graph, settings, b, watch),
-        symmetry=lambda: _colours(matrix, b, watch),
+        symmetry=lambda: colours(matrix, b, watch, graph.structure, settings.flow),
     )
-
-
-def _colours(matrix: Pull, b: Floats, watch: Watch) -> Any:
-    from kingpost.core.colours import colours
-
-    return colours(matrix, b, watch)
 
 
 def _untouched(graph: Graph, settings: KatzSettings, b: Floats, watch: Watch) -> Any:

@@ -143,7 +143,7 @@ def _colours(
     matrix, _ = walk(graph, settings.flow)
     apart = told_apart(matrix, graph.push(settings.flow))
     kept = Pull(matrix.rows, np.where(inside, apart.scale, 0.0))
-    return colours(kept, np.where(inside, landing, -1.0), watch)
+    return colours(kept, np.where(inside, landing, -1.0), watch, graph.structure, settings.flow)
 
 
 def closed_class(

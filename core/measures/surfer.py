@@ -122,7 +122,9 @@ def _solve(graph: Graph, settings: SurferSettings, watch: Watch) -> Solve:
             "share iterated": structure.share_iterated,
         },
         exact_zero=jump.unreached(watch),
-        symmetry=lambda: colours(told_apart(matrix, push), jump.landing(), watch),
+        symmetry=lambda: colours(
+            told_apart(matrix, push), jump.landing(), watch, structure, settings.flow
+        ),
     )
 
 
