@@ -83,22 +83,23 @@ def write_delimited(
     plain = pa.schema(
         [(f.name, as_plain(pa.array([], f.type)).type) for f in schema(ranking.graph)]
     )
-    _write_csv(plain.empty_table(), sink, csv.WriteOptions(delimiter=delimiter))
+    sink.write(csv_bytes(plain.empty_table(), csv.WriteOptions(delimiter=delimiter)))
     body = csv.WriteOptions(delimiter=delimiter, include_header=False)
     for batch in _watched(ranking, watch):
         batch = _plain(batch)
         if safe:
-            batch = _each(batch, shown)
-        _write_csv(pa.Table.from_batches([batch]), sink, body)
+            batch = each_column(batch, shown)
+        sink.write(csv_bytes(pa.Table.from_batches([batch]), body))
 
 
-def _write_csv(table: pa.Table, sink: BinaryIO, options: Any) -> None:
+def csv_bytes(table: pa.Table, options: Any) -> memoryview:
+    """A table as delimited text."""
     from pyarrow import csv
 
     # Through memory: Arrow would hide a broken pipe or a full disk behind errors of its own.
     buffer = pa.BufferOutputStream()
     csv.write_csv(table, buffer, options)
-    sink.write(memoryview(buffer.getvalue()))
+    return memoryview(buffer.getvalue())
 
 
 def write_parquet(ranking: Ranking, sink: BinaryIO, watch: Watch | None = None) -> None:
@@ -106,12 +107,12 @@ def write_parquet(ranking: Ranking, sink: BinaryIO, watch: Watch | None = None) 
     import pyarrow.parquet as pq
 
     columns = schema(ranking.graph).with_metadata({"kingpost": dumps(facts(ranking))})
-    with pq.ParquetWriter(_Sink(sink), columns, compression="zstd") as writer:
+    with pq.ParquetWriter(ForwardOnly(sink), columns, compression="zstd") as writer:
         for batch in _watched(ranking, watch):
             writer.write_batch(batch.replace_schema_metadata(columns.metadata))
 
 
-class _Sink:
+class ForwardOnly:
     """A binary file for Arrow that is only ever written forwards, so that a pipe will do."""
 
     closed = False
@@ -154,8 +155,9 @@ def _watched(ranking: Ranking, watch: Watch | None) -> Iterator[pa.RecordBatch]:
 
 
 def _plain(batch: pa.RecordBatch) -> pa.RecordBatch:
-    return _each(batch, as_plain)
+    return each_column(batch, as_plain)
 
 
-def _each(batch: pa.RecordBatch, change: Callable[[pa.Array], pa.Array]) -> pa.RecordBatch:
+def each_column(batch: pa.RecordBatch, change: Callable[[pa.Array], pa.Array]) -> pa.RecordBatch:
+    """A batch with ``change`` applied to every column."""
     return pa.RecordBatch.from_arrays(list(map(change, batch.columns)), names=batch.schema.names)

@@ -18,7 +18,7 @@ F = TypeVar("F", bound=Callable[..., Any])
 MEASURES = ("surfer", "eigenvector", "katz", "hits", "communicability", "degree")
 FORMATS = ("table", "json", "csv", "tsv", "markdown", "parquet")
 
-LOADING, MEASURE, OUTPUT = "Loading", "Measure", "Output"
+LOADING, MEASURE, OUTPUT, QUESTION = "Loading", "Measure", "Output", "Question"
 
 # Names of the options whose values are fields of a measure's settings.
 SETTINGS = (
@@ -117,14 +117,7 @@ loading = _stack(
     ),
 )
 
-measure = _stack(
-    _option(
-        MEASURE,
-        "--measure",
-        default="surfer",
-        metavar="NAME",
-        help=f"{', '.join(MEASURES)} [surfer]",
-    ),
+settings = _stack(
     _option(
         MEASURE,
         "--flow",
@@ -223,6 +216,22 @@ measure = _stack(
     ),
     _option(MEASURE, "--max-sweeps", type=int, metavar="N", help="give up after N sweeps [10000]"),
 )
+
+measure = _stack(
+    _option(
+        MEASURE,
+        "--measure",
+        default="surfer",
+        metavar="NAME",
+        help=f"{', '.join(MEASURES)} [surfer]",
+    ),
+    settings,
+)
+
+
+def insight(*names: str, **about: Any) -> Callable[[F], F]:
+    """An option of one insight, under the heading of its question."""
+    return _option(QUESTION, *names, **about)
 
 
 def limit_of(top: int | str | None, default: int | None) -> int | None:

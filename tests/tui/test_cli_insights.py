@@ -1,0 +1,120 @@
+"""The commands of the insights, through click's runner."""
+
+from __future__ import annotations
+
+import csv
+import io
+import json
+from pathlib import Path
+
+import pyarrow as pa
+import pyarrow.parquet as pq
+import pytest
+from click.testing import CliRunner, Result
+
+from kingpost.tui.cli import cli
+
+SAMPLES = Path(__file__).parents[2] / "sample_graphs"
+HARBOUR = SAMPLES / "harbour_calls.parquet"
+FAILOVER = SAMPLES / "harbour_calls_failover.parquet"
+CALLS = ("--weight", "calls_per_min")
+
+
+def run(*words: object) -> Result:
+    return CliRunner().invoke(cli, [str(word) for word in words])
+
+
+def answered(*words: object) -> dict:
+    done = run(*words, "--format", "json")
+    assert done.exit_code == 0, done.stderr
+    return json.loads(done.stdout)
+
+
+def every_format(tmp_path: Path, sheet: str, *words: object) -> None:
+    """csv, tsv and parquet hold the same rows as json; text has every line within the width."""
+    rows = answered(*words)[sheet]
+    target = tmp_path / "answer.parquet"
+    assert run(*words, "--sheet", sheet, "--out", target).exit_code == 0
+    table = pq.read_table(target)
+    assert table.num_rows == len(rows)
+    assert list(table.column_names) == list(rows[0])
+    assert b"kingpost" in table.schema.metadata
+    for mark, form in ((",", "csv"), ("\t", "tsv")):
+        done = run(*words, "--sheet", sheet, "--format", form)
+        read = list(csv.DictReader(io.StringIO(done.stdout), delimiter=mark))
+        assert [row.keys() for row in read] == [row.keys() for row in rows]
+        key = next(iter(rows[0]))
+        assert [row[key] for row in read] == [str(row[key]) for row in rows]
+    text = run(*words).stdout
+    assert max(map(len, text.splitlines())) <= 100
+    assert run(*words, "--format", "markdown").exit_code == 0
+
+
+@pytest.fixture
+def nasty(tmp_path: Path) -> Path:
+    """Names that would act on a terminal or as markup."""
+    table = pa.table(
+        {
+            "source": ["\x1b[31mred", "[bold]x[/bold]", "a\u202eb", "\x1b[31mred"],
+            "target": ["[bold]x[/bold]", "a\u202eb", "\x1b[31mred", "a\u202eb"],
+        }
+    )
+    path = tmp_path / "nasty.parquet"
+    pq.write_table(table, path)
+    return path
+
+
+def harmless(done: Result) -> None:
+    assert done.exit_code == 0, done.stderr
+    assert "\x1b" not in done.stdout
+    assert "\u202e" not in done.stdout
+
+
+def test_agree(tmp_path: Path) -> None:
+    words = ("agree", HARBOUR, *CALLS, "--measures", "surfer,katz,degree")
+    found = answered(*words)
+    assert [(pair["a"], pair["b"]) for pair in found["pairs"]] == [
+        ("surfer", "katz"),
+        ("surfer", "degree"),
+        ("katz", "degree"),
+    ]
+    assert found["p"] == 0.98
+    assert len(found["nodes"]) == 10
+    assert found["nodes"][0]["surfer_rank_low"] >= 1
+    every_format(tmp_path, "pairs", *words)
+    every_format(tmp_path, "nodes", *words)
+    text = run(*words).stdout
+    assert "rank-biased overlap with p = 0.98" in text
+    assert "by that count" in text
+
+
+def test_agree_sets_a_refused_measure_aside(tmp_path: Path) -> None:
+    path = tmp_path / "chain.parquet"
+    pq.write_table(pa.table({"source": [1, 2], "target": [2, 3]}), path)
+    found = answered("agree", path)
+    assert "no cycle" in found["refused"]["eigenvector"]
+    alone = run("agree", path, "--measures", "eigenvector,degree")
+    assert alone.exit_code == 2
+    assert "two measures with an answer" in alone.stderr or "two measures" in str(alone.exception)
+
+
+@pytest.mark.parametrize(
+    ("words", "told"),
+    [
+        (["--measures", "surfer"], "at least two"),
+        (["--measures", "surfer,surfer"], "named twice"),
+        (["--measures", "surfer,pagerang"], "no measure is called"),
+        (["--persistence", "1"], "between 0 and 1"),
+        (["--measures", "surfer,degree", "--alpha", "0.1"], "takes no --alpha"),
+        (["--age", "vintage"], "no node attribute"),
+    ],
+)
+def test_agree_refuses_in_a_sentence(words: list[str], told: str) -> None:
+    done = run("agree", HARBOUR, *words)
+    assert done.exit_code == 2
+    assert told in done.stderr
+
+
+def test_agree_names_are_harmless(nasty: Path) -> None:
+    harmless(run("agree", nasty, "--measures", "surfer,degree"))
+    harmless(run("agree", nasty, "--measures", "surfer,degree", "--format", "markdown"))
