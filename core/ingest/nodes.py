@@ -67,7 +67,7 @@ def join_nodes(options: LoadOptions, labels: pa.Array, watch: Watch) -> Joined:
     rows = pa.array(first, mask=first < 0)
     notes = (f"took {column} of {path} as the node id (name it with --node-id)",) if guessed else ()
     return Joined(
-        attributes=table.drop_columns([column]).take(rows).combine_chunks(),
+        attributes=_without_views(table.drop_columns([column])).take(rows).combine_chunks(),
         column=column,
         rows=table.num_rows,
         joined=joined,
@@ -76,6 +76,13 @@ def join_nodes(options: LoadOptions, labels: pa.Array, watch: Watch) -> Joined:
         repeated=len(known) - joined,
         notes=notes,
     )
+
+
+def _without_views(table: pa.Table) -> pa.Table:
+    """Text and binary views as plain columns: Arrow cannot pick rows of views."""
+    plain = {pa.string_view(): pa.large_string(), pa.binary_view(): pa.large_binary()}
+    kinds = [field.with_type(plain.get(field.type, field.type)) for field in table.schema]
+    return table.cast(pa.schema(kinds))
 
 
 def read_values(path: str | os.PathLike[str], graph: Graph, column: str | None) -> Floats:

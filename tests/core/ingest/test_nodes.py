@@ -179,3 +179,18 @@ def test_load_joins_as_well(tmp_path):
     pq.write_table(EDGES, tmp_path / "edges.parquet")
     nodes = write(tmp_path / "nodes.parquet", {"id": ["a"], "x": [1]})
     assert load(tmp_path / "edges.parquet", nodes=nodes).attributes.num_rows == 4
+
+
+def test_attributes_that_are_views(tmp_path):
+    nodes = pa.table(
+        {
+            "id": ["a", "b", "x"],
+            "text": pa.array(["1", None, "3"], pa.string_view()),
+            "raw": pa.array([b"1", b"\xff", b"3"], pa.binary_view()),
+        }
+    )
+    pq.write_table(nodes, tmp_path / "nodes.parquet")
+    edges = pa.table({"source": ["a", "b", "c"], "target": ["b", "c", "a"]})
+    graph = from_table(edges, nodes=str(tmp_path / "nodes.parquet"))
+    assert graph.attributes.column("text").to_pylist() == ["1", None, None]
+    assert graph.attributes.column("raw").to_pylist() == [b"1", b"\xff", None]
