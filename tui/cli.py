@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import click
 
-from kingpost.tui.commands import agree, audit, node, rank, screen
+from kingpost.tui.commands import agree, audit, node, rank, screen, why
 from kingpost.tui.commands.front import BARE, Front
 
 EPILOG = """\
@@ -38,6 +38,7 @@ cli.commands[BARE] = screen.screen
 cli.add_command(rank.rank)
 cli.add_command(audit.audit)
 cli.add_command(node.node)
+cli.add_command(why.why)
 cli.add_command(agree.agree)
 
 

@@ -118,3 +118,45 @@ def test_agree_refuses_in_a_sentence(words: list[str], told: str) -> None:
 def test_agree_names_are_harmless(nasty: Path) -> None:
     harmless(run("agree", nasty, "--measures", "surfer,degree"))
     harmless(run("agree", nasty, "--measures", "surfer,degree", "--format", "markdown"))
+
+
+def test_why(tmp_path: Path) -> None:
+    words = ("why", FAILOVER, "lease-umpire", *CALLS)
+    found = answered(*words)
+    assert found["rank"] == [11, 11]
+    assert [row["node"] for row in found["terms"][:2]] == [
+        "seat-inventory-standby",
+        "snapshot-replay",
+    ]
+    assert sum(row["amount"] for row in found["terms"]) + found["gap"] == pytest.approx(
+        found["score"], abs=1e-15
+    )
+    assert abs(found["gap"]) <= found["gap_allowed"]
+    every_format(tmp_path, "terms", *words)
+    every_format(tmp_path, "paths", *words)
+    assert "> seat-inventory-standby > lease-umpire" in run(*words).stdout
+
+
+def test_why_than(tmp_path: Path) -> None:
+    words = ("why", FAILOVER, "lease-umpire", "--than", "seat-inventory", *CALLS)
+    found = answered(*words)
+    assert found["proven"] is True
+    assert sum(row["difference"] for row in found["terms"]) == pytest.approx(found["lead"])
+    assert found["sentence"] in " ".join(run(*words).stdout.split())
+    every_format(tmp_path, "terms", *words)
+
+
+def test_why_refuses_in_a_sentence(tmp_path: Path, nasty: Path) -> None:
+    assert "NAME" in run("why", HARBOUR).stderr
+    missing = run("why", HARBOUR, "lease-umpyre")
+    assert missing.exit_code == 2
+    assert "lease-umpire" in missing.stderr or "lease-umpire" in str(missing.exception)
+    unknown = run("why", HARBOUR, "identity", "--measure", "hits")
+    assert unknown.exit_code == 2
+    path = tmp_path / "chain.parquet"
+    pq.write_table(pa.table({"source": [1, 2], "target": [2, 3]}), path)
+    none = run("why", path, "2", "--measure", "eigenvector")
+    assert none.exit_code == 3
+    assert "no cycle" in none.stderr
+    harmless(run("why", nasty, "[bold]x[/bold]"))
+    harmless(run("why", nasty, "[bold]x[/bold]", "--than", "\x1b[31mred"))
