@@ -14,7 +14,8 @@ from hypothesis import strategies as st
 from reference import Refused, assert_sound, edges_of, expected
 
 from kingpost.core.errors import RowsError
-from kingpost.core.ingest import from_table, load
+from kingpost.core.ingest import from_table, load, spread
+from kingpost.core.watch import Watch
 
 TEXT = st.text(st.characters(exclude_categories=["Cs"]), max_size=4)
 KINDS = {
@@ -109,6 +110,29 @@ def test_a_table_in_memory_gives_what_the_reference_gives(made, policies):
             from_table(table, **policies)
         return
     agree(from_table(table, **policies), want)
+
+
+@settings(max_examples=100, deadline=None)
+@given(tables(), POLICIES, st.integers(1, 4), st.sampled_from([1, 3]))
+def test_pieces_and_threads_change_nothing(made, policies, piece, threads):
+    rows, pieces, weighted = made
+    try:
+        want = expected(rows, weighted=weighted, **policies)
+    except Refused:
+        return
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setattr(spread, "PIECE", piece)
+        graph = from_table(pa.concat_tables(pieces), watch=Watch(threads=threads), **policies)
+    agree(graph, want)
+
+
+def test_parallel_rows_meet_in_the_order_of_rows_across_pieces(monkeypatch):
+    monkeypatch.setattr(spread, "PIECE", 3)
+    weights = [float(at) for at in range(40, 0, -1)]
+    table = pa.table({"source": ["a"] * 40, "target": ["b"] * 40, "weight": weights})
+    for threads in (1, 3):
+        graph = from_table(table, parallel="first", watch=Watch(threads=threads))
+        assert graph.outward.weights.tolist() == [40.0]
 
 
 @settings(max_examples=60, deadline=None, suppress_health_check=[HealthCheck.too_slow])
