@@ -148,7 +148,7 @@ class _Work:
             ),
             "bracket",
         )  # fmt: skip
-        self.rho = found.rho
+        self._keep(found)
         if not found.decided:
             if found.steps >= settings.max_sweeps:  # no verdict yet: nothing is said of a tie
                 self.x, self.open = found.y, True
@@ -164,9 +164,8 @@ class _Work:
                 ),
                 "bracket",
             )  # fmt: skip
-            self.rho = found.rho
+            self._keep(found)
         self.chosen = int(found.components[0])
-        self.x = found.y
         self.limit = found.steps >= settings.max_sweeps
         inside = support(structure, self.chosen, self.graph.n)
         self.live = inside
@@ -176,6 +175,15 @@ class _Work:
             if not np.array_equal(self.live, inside):
                 yield from self._downstream(inside, self.live & ~inside)
         return None
+
+    def _keep(self, found: Bracketed) -> None:
+        """Take over what a bracket found, as the best there is if it was cancelled."""
+        self.rho, self.x = found.rho, found.y
+        if found.cancelled:
+            if np.isfinite(found.rho[1]):
+                low, high = found.rho
+                self.bound = Bound(BoundKind.BRACKET, (high - low) / high)
+            raise Interrupted("cancelled")
 
     def _last_of_chain(self, found: Bracketed) -> int | None:
         """Of components that tie, the one all others feed: then it alone has a vector."""
@@ -352,8 +360,8 @@ class _Work:
         words = reason(stop, self.bound.value, settings)
         if self.bound.kind is BoundKind.BRACKET:
             words = (
-                f"rho is known to {self.bound.value:.1e}; the scores themselves are not bounded "
-                "(--certificate componentwise bounds them)"
+                f"rho is known to a relative width of {self.bound.value:.1e}; the scores "
+                "themselves are not bounded (--certificate componentwise bounds them)"
             )
         live = self.live
         if live.any():

@@ -82,6 +82,9 @@ def solve(graph: Graph, settings: HitsSettings, watch: Watch) -> Solve:
     except Interrupted:
         return work.result(Stop.CANCELLED, watch)
     work.sigma = found.rho
+    if found.cancelled:
+        work.y = found.y
+        return work.result(Stop.CANCELLED, watch)
     if not found.decided:
         if found.steps < settings.max_sweeps:
             return refused("hits", graph, settings, *work.tie(found), work.ledger.log)

@@ -73,6 +73,8 @@ def solve(graph: Graph, settings: KatzSettings, watch: Watch) -> Solve:
         return empty("katz", graph, settings)
     clock, log = Clock(), list[Iteration]()
     chosen = yield from _alpha(graph, settings, watch, log)
+    if isinstance(chosen, Refusal) and watch.cancelled:
+        return _unstarted(graph, settings, chosen, clock, log)
     if isinstance(chosen, Refusal):
         return refused("katz", graph, settings, chosen.reason, chosen.instead, log)
     alpha, words, radius = chosen
@@ -124,10 +126,32 @@ def solve(graph: Graph, settings: KatzSettings, watch: Watch) -> Solve:
     )
 
 
+def _unstarted(
+    graph: Graph, settings: KatzSettings, why: Refusal, clock: Clock, log: list[Iteration]
+) -> Result:
+    """Cancelled before alpha was known: all there is, is the first term of the sum, beta."""
+    beta = settings.beta
+    return Result(
+        measure="katz",
+        settings=settings,
+        scores=np.full(graph.n, float(beta))
+        if isinstance(beta, int | float)
+        else node_vector(graph, beta, "--beta"),
+        stop=Stop.CANCELLED,
+        reason=f"{why.reason}; the scores are beta alone",
+        bound=Bound(BoundKind.NONE, float("inf")),
+        log=tuple(log),
+        conventions=conventions(graph, settings, scores="beta alone"),
+        seconds=clock.seconds(),
+    )
+
+
 def _untouched(graph: Graph, settings: KatzSettings, b: Floats, watch: Watch) -> Any:
     """Nodes no walk from a nonzero beta ends at: exactly zero."""
     if len(b) == 1:
         return np.ones(graph.n, dtype=bool) if b[0] == 0 else None
+    if watch.cancelled:
+        return None
     start = np.flatnonzero(b).astype(np.uint32)
     return ~reachable(graph.push(settings.flow), start, watch)
 

@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Generator
 from dataclasses import dataclass
 
-from kingpost.core.errors import Interrupted
 from kingpost.core.graph import Graph
 from kingpost.core.operators import adjacency
 from kingpost.core.result import Iteration
@@ -39,9 +38,8 @@ def spectral_radius(
         adjacency(graph, "along"), structure,
         width=width, max_steps=max_steps, watch=watch, separate=False,
     )  # fmt: skip
-    try:
-        found = yield from work
-    except Interrupted:
+    found = yield from work
+    if found.cancelled:
         return None
     radius = Radius(*found.rho)
     structure.cache["radius"] = width, radius

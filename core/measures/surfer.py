@@ -128,6 +128,10 @@ def _solve(graph: Graph, settings: SurferSettings, watch: Watch) -> Solve:
     )
 
 
+# What holds of any two probability vectors.
+_ANY = Bound(BoundKind.L1, 2.0, absolute=1.0)
+
+
 def _plain_judge(damping: float) -> Judge:
     """L1 error of a linear solve, relative to its own mass."""
 
@@ -171,6 +175,8 @@ class Jump:
         total = float(y.sum())
         if not total > 0:
             return y, Bound(BoundKind.NONE, float("inf"))
+        if not np.isfinite(r.slack[0]):
+            return y / total, _ANY
         spill = abs(float(r.value.sum())) + float(r.slack.sum())
         x = y / total
         full = Residual(r.value / total, (r.slack + self.teleport * spill) / total + 8 * UNIT * x)
@@ -180,6 +186,8 @@ class Jump:
         """Scores and their bound where dangling nodes jump elsewhere than teleport does."""
         d, apart = self.settings.damping, self.apart
         assert apart is not None
+        if not (np.isfinite(y.residual.slack[0]) and np.isfinite(w.residual.slack[0])):
+            return y.x / float(y.x.sum()), _ANY
         hang, back = float(y.x[self.dangling].sum()), float(w.x[self.dangling].sum())
         t = d * hang / (1 - d * back)
         x = y.x + t * w.x
@@ -196,8 +204,8 @@ class Jump:
         sum_bound = full.norm / (1 - d)
         c = componentwise((1 - d) * self.teleport, x, full)
         if np.isfinite(c):
-            return Bound(BoundKind.COMPONENTWISE, min(c, sum_bound), c, sum_bound)
-        return Bound(BoundKind.L1, sum_bound, absolute=sum_bound)
+            return Bound(BoundKind.COMPONENTWISE, min(c, sum_bound, 2.0), c, min(sum_bound, 1.0))
+        return Bound(BoundKind.L1, min(sum_bound, 2.0), absolute=min(sum_bound, 1.0))
 
     def landing(self) -> Floats:
         """What tells nodes apart before any edge is looked at; shape (n,) or (1,)."""
@@ -208,7 +216,7 @@ class Jump:
 
     def unreached(self, watch: Watch) -> NDArray[np.bool_] | None:
         """Nodes the walker never comes to, whose scores are exactly zero; None where all are."""
-        if self.uniform:
+        if self.uniform or watch.cancelled:
             return None
         aim = self.teleport if self.apart is None else self.teleport + self.apart
         start = np.flatnonzero(aim > 0).astype(np.uint32)

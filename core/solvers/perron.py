@@ -19,6 +19,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from kingpost.core.certify import UNIT
+from kingpost.core.errors import Interrupted
 from kingpost.core.graph import Floats
 from kingpost.core.operators import Order, Pull, cut
 from kingpost.core.parallel import each
@@ -44,6 +45,7 @@ class Bracketed:
     low: Floats
     high: Floats
     y: Floats
+    cancelled: bool = False
     steps: int = 0
     edge_visits: int = 0
     log: list[Iteration] = field(default_factory=list)
@@ -75,10 +77,19 @@ def bracket(
     component is proven dominating, or when rounding or ``max_steps`` allow no more.  ``only``
     names a single component to look at.
 
-    Raises:
-        Interrupted: if ``watch`` was cancelled.
+    If ``watch`` is cancelled the state so far is returned, marked ``cancelled``.
     """
     work = _Brackets(matrix, structure, watch, only)
+    try:
+        return (yield from _narrow(work, width, max_steps, separate))
+    except Interrupted:
+        work.state.cancelled = True
+        return work.state
+
+
+def _narrow(
+    work: _Brackets, width: float, max_steps: int, separate: bool
+) -> Generator[Iteration, None, Bracketed]:
     while True:
         yield work.step()
         state = work.state
