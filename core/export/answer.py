@@ -11,6 +11,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass, field
 from typing import Any, BinaryIO
 
+import numpy as np
 import pyarrow as pa
 
 from kingpost.core.errors import OutputError
@@ -25,6 +26,7 @@ from kingpost.core.export.table import name_text, rank_text, value_text
 from kingpost.core.text import listed, visible
 
 FORMATS = ("table", "json", "csv", "tsv", "markdown", "parquet")
+NAMES = 8  # columns that a column of ids is narrowed to at most
 CAUTION = (
     "caution: this is the structure of the table and no assessment of safety or of people; before "
     "acting on it follow the local change procedure and review"
@@ -58,7 +60,8 @@ class Field:
         numeric = pa.types.is_integer(kind) or pa.types.is_floating(kind)
         texts = self.texts
         if texts is None:
-            texts = [_cell(value) for value in self.values.to_pylist()]
+            show = _id if self.least == NAMES else _cell
+            texts = [show(value) for value in self.values.to_pylist()]
         align = self.align or (">" if numeric else "<")
         return Column(self.title or "", texts, align, self.least, self.optional)
 
@@ -128,18 +131,11 @@ def nodes_field(
     graph_labels: pa.Array, nodes: Any, name: str = "node", title: str | None = "node"
 ) -> Field:
     """Ids of some nodes, of the type they had in the table; -1 stands for none."""
-    indices = pa.array(nodes, pa.int64())
-    if len(indices) and (indices.to_numpy() < 0).any():
-        found = indices.to_numpy()
-        indices = pa.array(found, mask=found < 0)
-    labels = graph_labels.take(indices)
-    return labels_field(labels, name, title)
+    return Field(name, graph_labels.take(whole(nodes)), title, align="<", least=NAMES)
 
 
-def labels_field(labels: pa.Array, name: str = "node", title: str | None = "node") -> Field:
-    """A column of ids."""
-    texts = ["-" if value is None else name_text(value) for value in labels.to_pylist()]
-    return Field(name, labels, title, texts, align="<", least=8)
+def _id(value: Any) -> str:
+    return "-" if value is None else name_text(value)
 
 
 def _cell(value: Any) -> str:
@@ -152,6 +148,12 @@ def _cell(value: Any) -> str:
     if isinstance(value, float):
         return "-" if value != value else number(value)
     return value_text(value)
+
+
+def percent(part: float, decimals: int = 0) -> str:
+    """A share, without a sign on nothing."""
+    text = f"{part:.{decimals}%}"
+    return text.removeprefix("-") if float(text.rstrip("%")) == 0 else text
 
 
 def answer_text(answer: Answer, width: int = 80, *, ascii_only: bool = False) -> str:
@@ -290,8 +292,8 @@ def solve_facts(result: Any) -> dict[str, Any]:
 
 def whole(values: Sequence[int] | Any) -> pa.Array:
     """Whole numbers; -1 stands for none."""
-    listed_values = [None if int(value) < 0 else int(value) for value in values]
-    return pa.array(listed_values, pa.int64())
+    numbers = np.asarray(values, dtype=np.int64)
+    return pa.array(numbers, mask=numbers < 0)
 
 
 def reals(values: Sequence[float | None] | Any) -> pa.Array:

@@ -160,3 +160,39 @@ def test_why_refuses_in_a_sentence(tmp_path: Path, nasty: Path) -> None:
     assert "no cycle" in none.stderr
     harmless(run("why", nasty, "[bold]x[/bold]"))
     harmless(run("why", nasty, "[bold]x[/bold]", "--than", "\x1b[31mred"))
+
+
+def test_drift(tmp_path: Path) -> None:
+    words = ("drift", HARBOUR, FAILOVER, *CALLS)
+    found = answered(*words)
+    counts = found["counts"]
+    assert (counts["new"], counts["gone"]) == (1, 1)
+    assert len(found["moves"]) == sum(counts.values()) - counts["same"]
+    top = found["moves"][0]
+    assert (top["node"], top["change"], top["rank_before_low"], top["rank_after_high"]) == (
+        "seat-inventory-standby",
+        "risen",
+        370,
+        10,
+    )
+    assert {row["node"] for row in found["edges"]} >= {"seat-inventory-standby", "lease-umpire"}
+    every_format(tmp_path, "edges", *words)
+    done = run(*words)
+    text = " ".join(done.stdout.split())
+    assert "lease-umpire rose from rank 324 to 11" in text
+    assert "no assessment of safety" in text
+    target = tmp_path / "moves.parquet"
+    assert run(*words, "--out", target).exit_code == 0
+    assert pq.read_table(target).num_rows == len(found["moves"])
+
+
+def test_drift_refuses_in_a_sentence(tmp_path: Path, nasty: Path) -> None:
+    path = tmp_path / "numbers.parquet"
+    pq.write_table(pa.table({"source": [1, 2], "target": [2, 3]}), path)
+    done = run("drift", path, HARBOUR)
+    assert done.exit_code == 2
+    assert run("drift", path, path, "--measure", "eigenvector").exit_code == 3
+    assert run("drift", HARBOUR).exit_code == 2
+    harmless(run("drift", nasty, nasty))
+    same = answered("drift", HARBOUR, HARBOUR)
+    assert same["moves"] == []
