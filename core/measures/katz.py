@@ -8,6 +8,7 @@ the scores, and the scores are not normalised.
 
 from __future__ import annotations
 
+import math
 from collections.abc import Generator
 from dataclasses import dataclass, replace
 from typing import Any
@@ -16,6 +17,7 @@ import numpy as np
 
 from kingpost.core.certify import Residual, componentwise
 from kingpost.core.colours import colours
+from kingpost.core.errors import SettingsError
 from kingpost.core.graph import Floats, Graph
 from kingpost.core.measures.base import Measure, Settings, Solve, option
 from kingpost.core.measures.common import (
@@ -61,9 +63,10 @@ class KatzSettings(Settings):
 
     def __post_init__(self) -> None:
         super().__post_init__()
+        for name, value in (("--alpha", self.alpha), ("--beta", self.beta)):
+            if isinstance(value, int | float) and not math.isfinite(value):
+                raise SettingsError(f"{name} is {value}; it takes a finite number")
         if self.alpha is not None and self.alpha_fraction is not None:
-            from kingpost.core.errors import SettingsError
-
             raise SettingsError("--alpha and --alpha-fraction exclude each other; give one")
 
 
