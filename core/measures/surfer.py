@@ -54,8 +54,10 @@ class SurferSettings(Settings):
     teleport: Any = option(None, "where jumps land: any node alike, or weights by node")
 
 
-def solve(graph: Graph, settings: SurferSettings, watch: Watch) -> Solve:
-    """Scores of the random surfer: shape (n,), sum 1.
+def solve(
+    graph: Graph, settings: SurferSettings, watch: Watch, start: Floats | None = None
+) -> Solve:
+    """Scores of the random surfer: shape (n,), sum 1; ``start`` may be scores of a near problem.
 
     ``settings.dangling`` may also be an array of shape (n,) or a mapping from node id to weight
     and ``settings.teleport`` likewise.  At d = 1 the answer is the stationary distribution,
@@ -67,10 +69,10 @@ def solve(graph: Graph, settings: SurferSettings, watch: Watch) -> Solve:
         from kingpost.core.measures.stationary import solve_stationary
 
         return (yield from solve_stationary(graph, settings, watch))
-    return (yield from _solve(graph, settings, watch))
+    return (yield from _solve(graph, settings, watch, start))
 
 
-def _solve(graph: Graph, settings: SurferSettings, watch: Watch) -> Solve:
+def _solve(graph: Graph, settings: SurferSettings, watch: Watch, start: Floats | None) -> Solve:
     clock = Clock()
     d = settings.damping
     matrix, strength = walk(graph, settings.flow, d)
@@ -82,9 +84,13 @@ def _solve(graph: Graph, settings: SurferSettings, watch: Watch) -> Solve:
         "max_sweeps": settings.max_sweeps, "watch": watch, "gain": 0.5 * d / (1 - d)
     }  # fmt: skip
     early = settings.stop_order is not None
+    if start is not None:  # scores that sum to 1, on the scale of the pseudo-rank
+        start = start * ((1 - d) / (1 - d + d * float(start[jump.dangling].sum())))
     if jump.apart is None:
         judge = order_judge(settings, lambda y, r: jump.pseudo(y, r)[1])
-        found = yield from solve_linear(system, judge, tol=settings.tol, early=early, **options)
+        found = yield from solve_linear(
+            system, judge, tol=settings.tol, early=early, start=start, **options
+        )
         x, bound = jump.pseudo(found.x, found.residual)
         log, stop = found.log, found.stop
         leaked = max(0.0, 1.0 - float(found.x.sum()))
