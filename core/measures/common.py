@@ -3,9 +3,7 @@
 from __future__ import annotations
 
 import time
-from collections.abc import Callable, Generator
-from dataclasses import replace
-from typing import TypeVar
+from collections.abc import Callable
 
 import numpy as np
 
@@ -84,38 +82,6 @@ def conventions(graph: Graph, settings: Settings, **more: str) -> dict[str, str]
         else f"kept ({loops:,})",
         **more,
     }
-
-
-T = TypeVar("T")
-
-
-def relay(
-    work: Generator[Iteration, None, T], log: list[Iteration], part: str = ""
-) -> Generator[Iteration, None, T]:
-    """Pass on the lines of one part of a solve, numbered on from ``log``, and add them to it."""
-    before = log[-1] if log else None
-    while True:
-        try:
-            line = next(work)
-        except StopIteration as end:
-            found: T = end.value
-            return found
-        if before is not None:
-            line = replace(
-                line,
-                index=before.index + line.index,
-                edge_visits=before.edge_visits + line.edge_visits,
-                seconds=before.seconds + line.seconds,
-            )
-        if part:
-            line = replace(line, part=f"{part}: {line.part}" if line.part else part)
-        log.append(line)
-        yield line
-
-
-def swept(log: list[Iteration]) -> int:
-    """Number of sweeps a log tells of."""
-    return log[-1].index if log else 0
 
 
 class Clock:

@@ -11,7 +11,6 @@ from __future__ import annotations
 
 from collections.abc import Generator
 from dataclasses import dataclass
-from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -30,6 +29,7 @@ from kingpost.core.measures.common import (
 )
 from kingpost.core.operators import Pull, adjacency
 from kingpost.core.result import Bound, BoundKind, Iteration, Result, Stop
+from kingpost.core.solvers.ledger import Ledger
 from kingpost.core.solvers.linear import System
 from kingpost.core.solvers.linear import solve as solve_linear
 from kingpost.core.solvers.perron import Bracketed, bracket
@@ -66,7 +66,7 @@ def solve(graph: Graph, settings: EigenvectorSettings, watch: Watch) -> Solve:
         except Interrupted:
             return work.result(Stop.CANCELLED)
     if why is not None:
-        return refused("eigenvector", graph, settings, *why, work.log)
+        return refused("eigenvector", graph, settings, *why, work.ledger.log)
     if work.open:
         return work.result(Stop.LIMIT)
     try:
@@ -82,14 +82,13 @@ class _Work:
         self.clock = Clock()
         self.structure = graph.structure
         self.matrix = adjacency(graph, settings.flow)
-        self.log: list[Iteration] = []
+        self.ledger = Ledger()
         self.x: Floats = np.zeros(graph.n)
         self.rho = (0.0, float("inf"))
         self.bound = Bound(BoundKind.NONE, float("inf"))
         self.live: NDArray[np.bool_] = np.zeros(graph.n, dtype=bool)
         self.chosen = -1
         self.open = False  # which component dominates was not found out
-        self.visits = self.sweeps = 0
         self.clock.ready()
 
     def without_answer(self) -> tuple[str, str] | None:
@@ -112,35 +111,10 @@ class _Work:
                 )
         return None
 
-    def relay(
-        self, work: Generator[Iteration, None, Any], part: str
-    ) -> Generator[Iteration, None, Any]:
-        """Pass on the lines of a part of the work, numbered on."""
-        from dataclasses import replace
-
-        base, visits = self.sweeps, self.visits
-        offset = self.log[-1].seconds if self.log else 0.0
-        while True:
-            try:
-                line = next(work)
-            except StopIteration as end:
-                return end.value
-            line = replace(
-                line,
-                index=base + line.index,
-                edge_visits=visits + line.edge_visits,
-                seconds=offset + line.seconds,
-                eigenvalue=line.eigenvalue or self.rho,
-                part=part,
-            )
-            self.sweeps, self.visits = line.index, line.edge_visits
-            self.log.append(line)
-            yield line
-
     def find(self) -> Generator[Iteration, None, tuple[str, str] | None]:
         """The dominating component and its vector; a refusal where several tie."""
         settings, structure = self.settings, self.structure
-        found: Bracketed = yield from self.relay(
+        found: Bracketed = yield from self.ledger.relay(
             bracket(
                 self.matrix, structure,
                 width=settings.tol, max_steps=settings.max_sweeps, watch=self.watch,
@@ -156,7 +130,7 @@ class _Work:
             winner = self._last_of_chain(found)
             if winner is None:
                 return self._tie(found)
-            found = yield from self.relay(
+            found = yield from self.ledger.relay(
                 bracket(
                     self.matrix, structure,
                     width=settings.tol, max_steps=settings.max_sweeps, watch=self.watch,
@@ -232,7 +206,7 @@ class _Work:
         def judge(x: Floats, r: Residual) -> tuple[float, bool]:
             return r.norm / (mass + float(np.abs(x).sum())), False
 
-        found = yield from self.relay(
+        found = yield from self.ledger.relay(
             solve_linear(
                 System(Pull(self.matrix.rows, scale), given, self.structure, self.settings.flow),
                 judge,
@@ -259,7 +233,7 @@ class _Work:
         )
         scale = np.where(self.live, self.matrix.scale, 0.0)
         matrix = Pull(self.matrix.rows, scale)
-        guard = yield from self.relay(
+        guard = yield from self.ledger.relay(
             pinned_guard(
                 matrix, self.structure, settings.flow, np.maximum(self.x, 0), pin, low,
                 max_sweeps=settings.max_sweeps, watch=self.watch,
@@ -271,7 +245,7 @@ class _Work:
         best = float("inf")
         for _ in range(200):
             reach = perron_reach(matrix, self.x, self.rho, self.watch)
-            self.visits += matrix.stored
+            self.ledger.visits += matrix.stored
             errors = np.where(guard.live, guard.factor(reach) * guard.w, 0.0)
             errors = normalised_reach(self.x, errors, 2)
             scores = self.x / np.linalg.norm(self.x)
@@ -284,7 +258,7 @@ class _Work:
             wanted = settings.stop_order
             if wanted and proven_prefix(scores, self.bound, wanted) >= wanted:
                 return Stop.ORDER_PROVEN
-            if self.sweeps >= settings.max_sweeps:
+            if self.ledger.sweeps >= settings.max_sweeps:
                 return Stop.LIMIT
             if not value < 0.7 * best:
                 return (yield from self._tighten(matrix, pin, reach, best))
@@ -297,7 +271,7 @@ class _Work:
     ) -> Generator[Iteration, None, Stop]:
         """Once only rounding is left: a guard in proportion to each row's own residual."""
         settings = self.settings
-        guard = yield from self.relay(
+        guard = yield from self.ledger.relay(
             pinned_guard(
                 matrix, self.structure, settings.flow, np.maximum(self.x, 0), pin, self.rho[0],
                 max_sweeps=settings.max_sweeps, watch=self.watch, g=reach,
@@ -323,8 +297,8 @@ class _Work:
         inside = support(self.structure, self.chosen, self.graph.n)
         for _ in range(steps):
             product = matrix.apply(self.x, self.watch)
-            self.visits += matrix.stored
-            self.sweeps += 1
+            self.ledger.visits += matrix.stored
+            self.ledger.sweeps += 1
             middle = 0.5 * (low + high)
             self.x = np.where(self.live, product + 0.35 * middle * self.x, 0.0)
             self.x /= self.x.max()
@@ -338,18 +312,7 @@ class _Work:
 
     def _line(self, bound: float) -> Iteration:
         low, high = self.rho
-        began = self.log[-1].seconds if self.log else 0.0
-        line = Iteration(
-            self.sweeps, (high - low) / high, bound, self.visits, max(began, self.elapsed),
-            eigenvalue=self.rho, part="certified",
-        )  # fmt: skip
-        self.log.append(line)
-        return line
-
-    @property
-    def elapsed(self) -> float:
-        """Seconds since the solve began."""
-        return self.clock.seconds().solve
+        return self.ledger.line((high - low) / high, bound, "certified", self.rho)
 
     def result(self, stop: Stop) -> Result:
         """Everything found, as a Result."""
@@ -383,7 +346,7 @@ class _Work:
             stop=stop,
             reason=words,
             bound=self.bound,
-            log=tuple(self.log),
+            log=tuple(self.ledger.log),
             conventions=conventions(
                 graph,
                 settings,

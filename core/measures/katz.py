@@ -27,14 +27,13 @@ from kingpost.core.measures.common import (
     order_judge,
     reason,
     refused,
-    relay,
-    swept,
 )
 from kingpost.core.measures.radius import Radius, spectral_radius
 from kingpost.core.measures.vectors import node_vector
 from kingpost.core.operators import adjacency
 from kingpost.core.result import Bound, BoundKind, Iteration, Refusal, Result, Stop
 from kingpost.core.solvers.guard import Guard, find_guard
+from kingpost.core.solvers.ledger import Ledger
 from kingpost.core.solvers.linear import Solution, System
 from kingpost.core.solvers.linear import solve as solve_linear
 from kingpost.core.structure import reachable
@@ -74,12 +73,12 @@ def solve(graph: Graph, settings: KatzSettings, watch: Watch) -> Solve:
     """Katz scores, shape (n,).  ``settings.beta`` is a number, an array (n,) or a mapping."""
     if graph.n == 0:
         return empty("katz", graph, settings)
-    clock, log = Clock(), list[Iteration]()
-    chosen = yield from _alpha(graph, settings, watch, log)
+    clock, ledger = Clock(), Ledger()
+    chosen = yield from _alpha(graph, settings, watch, ledger)
     if isinstance(chosen, Refusal) and watch.cancelled:
-        return _unstarted(graph, settings, chosen, clock, log)
+        return _unstarted(graph, settings, chosen, clock, ledger)
     if isinstance(chosen, Refusal):
-        return refused("katz", graph, settings, chosen.reason, chosen.instead, log)
+        return refused("katz", graph, settings, chosen.reason, chosen.instead, ledger.log)
     alpha, words, radius = chosen
     beta = settings.beta
     b = (
@@ -88,17 +87,19 @@ def solve(graph: Graph, settings: KatzSettings, watch: Watch) -> Solve:
         else node_vector(graph, beta, "--beta")
     )
     clock.ready()
-    done = yield from _solve(graph, settings, alpha, b, watch)
+    done = yield from _solve(graph, settings, alpha, b, watch, ledger)
     if not np.isfinite(done.bound.value) and done.found.stop is not Stop.CANCELLED:
         # No proof that alpha is below 1/rho: find out whether it is above.
-        radius = radius or (yield from relay(spectral_radius(graph, 1e-12, watch), log))
+        radius = radius or (
+            yield from ledger.relay(spectral_radius(graph, 1e-12, watch), "spectral radius")
+        )
         if radius is not None and abs(alpha) * radius.low >= 1.0:
             limit = 1 / radius.high
             return refused(
                 "katz", graph, settings,
                 f"alpha = {alpha:.6g} is not below 1/rho = {limit:.6g}, so the sum over walks has "
                 "no limit",
-                f"give --alpha below {limit:.6g} or --alpha-fraction below 1", log,
+                f"give --alpha below {limit:.6g} or --alpha-fraction below 1", ledger.log,
             )  # fmt: skip
     facts: dict[str, Any] = {"alpha": alpha, "rate": done.found.rate}
     facts["share iterated"] = graph.structure.share_iterated
@@ -112,7 +113,7 @@ def solve(graph: Graph, settings: KatzSettings, watch: Watch) -> Solve:
         stop=done.found.stop,
         reason=reason(done.found.stop, done.bound.value, settings),
         bound=done.bound,
-        log=(*log, *done.found.log),
+        log=tuple(ledger.log),
         conventions=conventions(
             graph,
             settings,
@@ -130,7 +131,7 @@ def solve(graph: Graph, settings: KatzSettings, watch: Watch) -> Solve:
 
 
 def _unstarted(
-    graph: Graph, settings: KatzSettings, why: Refusal, clock: Clock, log: list[Iteration]
+    graph: Graph, settings: KatzSettings, why: Refusal, clock: Clock, ledger: Ledger
 ) -> Result:
     """Cancelled before alpha was known: all there is, is the first term of the sum, beta."""
     beta = settings.beta
@@ -143,7 +144,7 @@ def _unstarted(
         stop=Stop.CANCELLED,
         reason=f"{why.reason}; the scores are beta alone",
         bound=Bound(BoundKind.NONE, float("inf")),
-        log=tuple(log),
+        log=tuple(ledger.log),
         conventions=conventions(graph, settings, scores="beta alone"),
         seconds=clock.seconds(),
     )
@@ -160,7 +161,7 @@ def _untouched(graph: Graph, settings: KatzSettings, b: Floats, watch: Watch) ->
 
 
 def _alpha(
-    graph: Graph, settings: KatzSettings, watch: Watch, log: list[Iteration]
+    graph: Graph, settings: KatzSettings, watch: Watch, ledger: Ledger
 ) -> Generator[Iteration, None, tuple[float, str, Radius | None] | Refusal]:
     """alpha, how it was chosen in words, and the bracket of rho where one was needed."""
     if settings.alpha is not None:
@@ -183,7 +184,9 @@ def _alpha(
             None,
         )
     share = DEFAULT_FRACTION if fraction is None else fraction
-    radius = yield from relay(spectral_radius(graph, _RADIUS_WIDTH, watch), log)
+    radius = yield from ledger.relay(
+        spectral_radius(graph, _RADIUS_WIDTH, watch), "spectral radius"
+    )
     if radius is None:
         return Refusal(
             "cancelled before the spectral radius was known", "let it run, or give --alpha"
@@ -203,16 +206,19 @@ class _Done:
 
 
 def _solve(
-    graph: Graph, settings: KatzSettings, alpha: float, b: Floats, watch: Watch
+    graph: Graph, settings: KatzSettings, alpha: float, b: Floats, watch: Watch, ledger: Ledger
 ) -> Generator[Iteration, None, _Done]:
     matrix = adjacency(graph, settings.flow, alpha)
     structure, flow = graph.structure, settings.flow
     guard: Guard | None = None
     if alpha < 0 or (b <= 0).any():
         # Signs, or zeros in beta: the scores cannot prove themselves, another vector must.
-        guard = yield from find_guard(
-            adjacency(graph, flow, abs(alpha)), structure, flow, np.ones(1),
-            max_sweeps=settings.max_sweeps, watch=watch,
+        guard = yield from ledger.relay(
+            find_guard(
+                adjacency(graph, flow, abs(alpha)), structure, flow, np.ones(1),
+                max_sweeps=settings.max_sweeps, watch=watch,
+            ),
+            "certificate",
         )  # fmt: skip
         if guard is None:
             unproven = Bound(BoundKind.NONE, float("inf"))
@@ -241,20 +247,19 @@ def _solve(
         return bound, enough or r.norm <= 0.2 * settings.tol * float(np.abs(x).sum())
 
     start: Floats | None = None
-    log: list[Iteration] = []
+    limit = ledger.sweeps + settings.max_sweeps
     for judge in (settled, order):
-        found = yield from relay(
+        found = yield from ledger.relay(
             solve_linear(
                 system,
                 judge,
                 tol=settings.tol,
-                max_sweeps=settings.max_sweeps - swept(log),
+                max_sweeps=limit - ledger.sweeps,
                 watch=watch,
                 start=start,
                 early=settings.stop_order is not None and start is None,
                 gain=4.0,
-            ),
-            log,
+            )
         )
         bound = bounds(found.x, found.residual)
         proven = settings.stop_order is not None and order(found.x, found.residual)[1]
@@ -262,17 +267,18 @@ def _solve(
             found.stop = Stop.STALLED
         if found.stop is not Stop.STALLED or not np.isfinite(found.residual.reach).all():
             break
-        left = settings.max_sweeps - swept(log)
+        left = limit - ledger.sweeps
         if left < 1:
             break
-        bound = yield from relay(_tight(graph, settings, alpha, found, bound, left, watch), log)
+        bound = yield from ledger.relay(
+            _tight(graph, settings, alpha, found, bound, left, watch), "certificate"
+        )
         if bound.value <= settings.tol:
             found.stop = Stop.CONVERGED
             break
-        if settings.max_sweeps - swept(log) < 1:
+        if ledger.sweeps >= limit:
             break
         start = found.x
-    found.log = log
     return _Done(found, bound)
 
 

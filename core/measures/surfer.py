@@ -28,10 +28,11 @@ from kingpost.core.certify import UNIT, Residual, componentwise
 from kingpost.core.colours import colours
 from kingpost.core.graph import Floats, Graph
 from kingpost.core.measures.base import Measure, Settings, Solve, option
-from kingpost.core.measures.common import Clock, conventions, empty, order_judge, reason, relay
+from kingpost.core.measures.common import Clock, conventions, empty, order_judge, reason
 from kingpost.core.measures.vectors import distribution
 from kingpost.core.operators import told_apart, walk
 from kingpost.core.result import Bound, BoundKind, Result, Stop
+from kingpost.core.solvers.ledger import Ledger
 from kingpost.core.solvers.linear import Judge, Solution, System
 from kingpost.core.solvers.linear import solve as solve_linear
 from kingpost.core.structure import reachable
@@ -79,6 +80,7 @@ def _solve(graph: Graph, settings: SurferSettings, watch: Watch, start: Floats |
     jump = Jump(graph, settings, strength == 0)
     structure, push = graph.structure, graph.push(settings.flow)
     clock.ready()
+    ledger = Ledger()
     system = System(matrix, (1 - d) * jump.teleport, structure, settings.flow, contraction=d)
     options: dict[str, Any] = {
         "max_sweeps": settings.max_sweeps, "watch": watch, "gain": 0.5 * d / (1 - d)
@@ -88,21 +90,21 @@ def _solve(graph: Graph, settings: SurferSettings, watch: Watch, start: Floats |
         start = start * ((1 - d) / (1 - d + d * float(start[jump.dangling].sum())))
     if jump.apart is None:
         judge = order_judge(settings, lambda y, r: jump.pseudo(y, r)[1])
-        found = yield from solve_linear(
-            system, judge, tol=settings.tol, early=early, start=start, **options
+        found = yield from ledger.relay(
+            solve_linear(system, judge, tol=settings.tol, early=early, start=start, **options)
         )
         x, bound = jump.pseudo(found.x, found.residual)
-        log, stop = found.log, found.stop
+        stop = found.stop
         leaked = max(0.0, 1.0 - float(found.x.sum()))
     else:
         # Half the tolerance for each of the two solves that are added up.
-        found = yield from solve_linear(system, _plain_judge(d), tol=settings.tol / 2, **options)
-        log = list(found.log)
-        jumped = yield from relay(
+        found = yield from ledger.relay(
+            solve_linear(system, _plain_judge(d), tol=settings.tol / 2, **options)
+        )
+        jumped = yield from ledger.relay(
             solve_linear(
                 replace(system, b=jump.apart), _plain_judge(d), tol=settings.tol / 2, **options
             ),
-            log,
             "jumps from dangling nodes",
         )
         x, bound = jump.combined(found, jumped)
@@ -117,7 +119,7 @@ def _solve(graph: Graph, settings: SurferSettings, watch: Watch, start: Floats |
         stop=stop,
         reason=reason(stop, bound.value, settings),
         bound=bound,
-        log=tuple(log),
+        log=tuple(ledger.log),
         conventions=jump.conventions(leaked),
         seconds=clock.seconds(),
         facts={

@@ -46,9 +46,12 @@ class Ledger:
         return made
 
     def relay(
-        self, work: Generator[Iteration, None, T], part: str
+        self, work: Generator[Iteration, None, T], part: str = ""
     ) -> Generator[Iteration, None, T]:
-        """Pass on the lines of a part of the work and return what it returns."""
+        """Pass on the lines of a part of the work and return what it returns.
+
+        ``part`` names the part in every line, before what the line says itself.
+        """
         sweeps, visits = self.sweeps, self.visits
         while True:
             try:
@@ -61,7 +64,7 @@ class Ledger:
                 index=sweeps + line.index,
                 edge_visits=visits + line.edge_visits,
                 seconds=self.seconds,
-                part=part,
+                part=": ".join(dict.fromkeys(word for word in (part, line.part) if word)),
             )
             self.sweeps, self.visits = line.index, line.edge_visits
             self.log.append(line)

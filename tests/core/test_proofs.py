@@ -155,7 +155,14 @@ def test_limit_of_sweeps(graph: Graph, flow: str, sweeps: int, name: str) -> Non
             exact.confirm(result, truth, informative=False)
         elif result.refusal is None:
             assert not np.isfinite(result.bound.value) or result.bound.absolute is None
-    assert result.refusal is not None or result.sweeps <= sweeps + 1 or name == "eigenvector"
+    # The limit is one of sweeps that change the scores; finding out whether alpha is too large
+    # has a limit of its own.
+    used = sum(
+        1
+        for line in result.log
+        if not line.part.startswith("spectral") and not line.part.endswith("certified")
+    )
+    assert result.refusal is not None or used <= sweeps + 1 or name == "eigenvector"
 
 
 @pytest.mark.parametrize("name", ["karate", "karate weighted", "florentine", "davis"])
