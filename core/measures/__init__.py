@@ -3,9 +3,12 @@
 from __future__ import annotations
 
 from importlib import import_module
+from typing import TYPE_CHECKING
 
 from kingpost.core.errors import SettingsError
-from kingpost.core.measures.base import Measure
+
+if TYPE_CHECKING:
+    from kingpost.core.measures.base import Measure
 
 # name -> module that defines MEASURE; imported on first use, so that asking for one measure
 # does not load the solvers of all.
@@ -16,9 +19,15 @@ _MODULES = {
     "hits": "kingpost.core.measures.hits",
     "communicability": "kingpost.core.measures.communicability",
     "degree": "kingpost.core.measures.degree",
+    "reach": "kingpost.core.measures.reach",
+    "harmonic": "kingpost.core.measures.harmonic",
 }
 
 NAMES = tuple(_MODULES)
+
+# What is shown side by side without being asked for: the measures this tool is about, and the
+# strength they are compared with.  The others are solved on request.
+COMPANY = ("surfer", "eigenvector", "katz", "degree")
 
 
 def measure(name: str) -> Measure:
