@@ -6,6 +6,7 @@ from __future__ import annotations
 
 from typing import Any, Protocol
 
+from kingpost.core.measures import COMPANY, NAMES
 from kingpost.core.measures.base import Settings
 from kingpost.core.result import Result, Stop
 from kingpost.tui.jobs import Job, Runner, solve_work
@@ -97,7 +98,7 @@ class Desk:
         sitting = self.sitting
         if sitting.graph.stored > COMPANY_EDGES:
             return
-        for name in sitting.names:
+        for name in COMPANY if sitting.names is NAMES else sitting.names:
             result = sitting.results.get(name)
             # The flow is one for all: ranks under different flows do not compare.
             if result is None or getattr(result.settings, "flow", sitting.flow) != sitting.flow:

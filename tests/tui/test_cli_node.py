@@ -10,7 +10,7 @@ import pyarrow.parquet as pq
 import pytest
 from click.testing import CliRunner, Result
 
-from kingpost.core.measures import NAMES
+from kingpost.core.measures import COMPANY
 from kingpost.tui.cli import cli
 
 
@@ -44,8 +44,8 @@ def test_ranks_are_those_that_rank_gives(calls: Path) -> None:
     done = run("node", calls, "b", "--format", "json")
     assert done.exit_code == 0, done.stderr
     answer = json.loads(done.stdout)
-    assert list(answer["measures"]) == list(NAMES)
-    for name in NAMES:
+    assert list(answer["measures"]) == list(COMPANY)
+    for name in COMPANY:
         rows = json.loads(run("rank", calls, "--measure", name, "--format", "json").stdout)["rows"]
         row = next(row for row in rows if row["node"] == "b")
         found = answer["measures"][name]
@@ -74,7 +74,7 @@ def test_neighbours_are_ranked_by_the_measure_asked_for(calls: Path) -> None:
 def test_text_names_every_measure_and_both_sides(calls: Path) -> None:
     done = run("node", calls, "b")
     assert done.exit_code == 0
-    for words in (*NAMES, "pointing at it: 2 nodes", "it points at: 2 nodes", "surfer rank"):
+    for words in (*COMPANY, "pointing at it: 2 nodes", "it points at: 2 nodes", "surfer rank"):
         assert words in done.stdout, words
 
 

@@ -32,7 +32,32 @@ class Choice:
 
 def given_settings(given: Mapping[str, Any]) -> dict[str, Any]:
     """The measure options that were actually given, by the names of their fields."""
-    return {name: given[name] for name in SETTINGS if given.get(name) not in (None, ())}
+    values = {name: given[name] for name in SETTINGS if given.get(name) not in (None, ())}
+    for words in given.get("also") or ():
+        name, equals, text = words.partition("=")
+        name = name.strip().replace("-", "_")
+        if not equals or not name:
+            raise click.UsageError(f"--set {visible(words, 60)} is not of the form NAME=VALUE")
+        values[name] = Word(text)
+    return values
+
+
+class Word(str):
+    """A value of ``--set``: what it means depends on the field it is for."""
+
+    __slots__ = ()
+
+    def as_field(self, name: str, default: Any) -> Any:
+        """The value in the type of a field's default; text where the default is None."""
+        if isinstance(default, str) or default is None:
+            return str(self)
+        try:
+            return int(self) if isinstance(default, int) else float(self)
+        except ValueError:
+            kind = "a whole number" if isinstance(default, int) else "a number"
+            raise click.UsageError(
+                f"--set {name}={visible(self, 40)}: {name} takes {kind}"
+            ) from None
 
 
 def check_takers(values: Mapping[str, Any], measures: list[Measure]) -> None:
@@ -69,7 +94,12 @@ def build(measure: Measure, values: Mapping[str, Any], graph: Graph | None) -> C
         NodeNotFound: for a teleport that names neither a node nor a file.
     """
     names = field_names(measure)
-    mine = {name: value for name, value in values.items() if name in names}
+    defaults = {item.name: item.default for item in dataclasses.fields(measure.settings)}
+    mine = {
+        name: value.as_field(name, defaults[name]) if isinstance(value, Word) else value
+        for name, value in values.items()
+        if name in names
+    }
     remarks: dict[str, str] = {}
     if "teleport" in mine:
         mine["teleport"], remarks["teleport"] = _teleport(mine["teleport"], graph)

@@ -23,12 +23,12 @@ NEIGHBOURS = 20
 def node(edges: tuple[str, ...], name: str | None, **given: Any) -> int:
     """Show one node of EDGES: attributes, ranks, neighbours.
 
-    NAME is the node's id.  The ranks are those of every measure, each with the options it
-    takes; the ranks of the neighbours are those of --measure.
+    NAME is the node's id.  The ranks are those of surfer, eigenvector, katz, degree and
+    --measure, each with the options it takes; the ranks of the neighbours are those of --measure.
     """
     if name is None or not edges:
         raise click.UsageError("kingpost node takes EDGES... and then the NAME of one node")
-    from kingpost.core.measures import NAMES, measure
+    from kingpost.core.measures import COMPANY, measure
     from kingpost.tui.commands import writing
     from kingpost.tui.commands.choices import build, check_takers, given_settings
 
@@ -36,7 +36,7 @@ def node(edges: tuple[str, ...], name: str | None, **given: Any) -> int:
     form = given["form"] or ("json" if out and out.lower().endswith(".json") else "table")
     writing.check_places(form, out, inputs=[*edges, *writing.named_files(given)])
     leading = measure(given["measure"]).name
-    measures = [measure(other) for other in NAMES]
+    measures = [measure(other) for other in dict.fromkeys((*COMPANY, leading))]
     values = given_settings(given)
     check_takers(values, measures)
 

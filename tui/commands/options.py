@@ -1,7 +1,7 @@
 """Every option of the command line, once: name, type, help and the heading it stands under.
 
-This file must stay importable without numpy, so measures and the fields of their settings are
-named here in words; a test holds both lists equal to the registry's.
+This file must stay importable without numpy, so the fields of the measures' settings are named
+here in words.  A measure added later works without a line here: ``--set`` reaches every field.
 """
 
 from __future__ import annotations
@@ -11,11 +11,11 @@ from typing import Any, TypeVar
 
 import click
 
+from kingpost.core.measures import NAMES
 from kingpost.tui.commands.front import SectionOption
 
 F = TypeVar("F", bound=Callable[..., Any])
 
-MEASURES = ("surfer", "eigenvector", "katz", "hits", "communicability", "degree")
 FORMATS = ("table", "json", "csv", "tsv", "markdown", "parquet")
 
 LOADING, MEASURE, OUTPUT, QUESTION = "Loading", "Measure", "Output", "Question"
@@ -33,6 +33,11 @@ SETTINGS = (
     "inverse_temperature",
     "scale",
     "counting",
+    "attribute",
+    "itself",
+    "budget",
+    "log2m",
+    "seed",
     "component",
     "certificate",
     "tol",
@@ -191,6 +196,39 @@ settings = _stack(
     ),
     _option(
         MEASURE,
+        "--attribute",
+        metavar="COLUMN",
+        help="reach: add up this node attribute instead of counting nodes",
+    ),
+    _option(
+        MEASURE,
+        "--itself",
+        metavar="WHAT",
+        help="reach: whether a node is part of its own reach: apart or counted [apart]",
+    ),
+    _option(
+        MEASURE,
+        "--budget",
+        type=float,
+        metavar="VISITS",
+        help="reach, harmonic: edge visits up to which the answer is exact [2e9]",
+    ),
+    _option(
+        MEASURE,
+        "--log2m",
+        type=int,
+        metavar="M",
+        help="reach, harmonic: 2^M random ranks or counters for an estimate",
+    ),
+    _option(
+        MEASURE,
+        "--seed",
+        type=int,
+        metavar="N",
+        help="reach, harmonic: which random numbers an estimate draws [1]",
+    ),
+    _option(
+        MEASURE,
         "--component",
         metavar="NODE",
         help="eigenvector, hits: answer within the component of this node",
@@ -215,6 +253,14 @@ settings = _stack(
         help="bound: at --tol; order:K: once the order of the top K is proven [bound]",
     ),
     _option(MEASURE, "--max-sweeps", type=int, metavar="N", help="give up after N sweeps [10000]"),
+    _option(
+        MEASURE,
+        "--set",
+        "also",
+        multiple=True,
+        metavar="NAME=VALUE",
+        help="any setting of the measure by its name (repeatable)",
+    ),
 )
 
 measure = _stack(
@@ -223,7 +269,7 @@ measure = _stack(
         "--measure",
         default="surfer",
         metavar="NAME",
-        help=f"{', '.join(MEASURES)} [surfer]",
+        help=f"{', '.join(NAMES)} [surfer]",
     ),
     settings,
 )
