@@ -56,7 +56,7 @@ class KingpostApp(App[int], inherit_bindings=False):
         paths: list[str],
         load: Load,
         measure: str,
-        settings: Settings | Callable[[], Settings] | None,
+        settings: Settings | Callable[[Graph], Settings] | None,
         *,
         threads: int | None = None,
         looks: terminal.Looks | None = None,
@@ -99,7 +99,8 @@ class KingpostApp(App[int], inherit_bindings=False):
         from importlib import import_module
 
         sitting = self.make_sitting(self._load(job), self._measure)
-        settings = self._settings() if callable(self._settings) else self._settings
+        graph = sitting.graph
+        settings = self._settings(graph) if callable(self._settings) else self._settings
         import_module("kingpost.tui.desk")
         for name in ("standings", "node", "solvelog", "settings", "help", "sheets"):
             import_module(f"kingpost.tui.views.{name}")
@@ -337,15 +338,15 @@ def run(
     paths: list[str],
     load_options: LoadOptions | Callable[[], LoadOptions],
     measure: str,
-    settings: Settings | Callable[[], Settings] | None,
+    settings: Settings | Callable[[Graph], Settings] | None,
     *,
     threads: int | None = None,
     slow: bool = False,
 ) -> int:
     """Open the screen on some edge tables; returns the exit status.
 
-    Options and settings may be given as functions: they are then called in the loading job, so
-    that the first frame need not wait for the modules that define them.
+    Options and settings may be given as functions: they are then called in the loading job,
+    settings with the graph, so that the first frame need not wait for the modules they need.
     """
 
     def load(job: Job) -> Graph:

@@ -38,6 +38,9 @@ def cursor_name(terminal):
 
 def choose(terminal, name):
     """Take the row of a choice that begins with ``name``."""
+    terminal.until(
+        lambda: any(line[1:].startswith(name) for line in terminal.lines), f"the choice {name}"
+    )
     lines = terminal.lines
     marked = next(at for at, line in enumerate(lines) if re.match(r"▸\S", line))
     wanted = next(at for at, line in enumerate(lines) if line[1:].startswith(name))
@@ -46,12 +49,13 @@ def choose(terminal, name):
 
 
 def all_solved(terminal):
-    """Wait until no measure is at work in the background any more."""
+    """Wait until the measures that are solved unasked are no longer at work."""
     end = time.monotonic() + 60
     while True:
         terminal.press("m")
         terminal.shows("Enter take")
-        busy = "being solved" in terminal.text or "not solved yet" in terminal.text
+        company = [line for line in terminal.lines if re.match(r".[SEKD] \w", line)]
+        busy = any("being solved" in line or "not solved yet" in line for line in company)
         terminal.press("escape")
         terminal.shows("Enter node")
         if not busy:

@@ -22,6 +22,9 @@ if TYPE_CHECKING:
     from kingpost.core.measures.base import Measure, Settings
 
 
+_VECTORS = ("teleport", "beta")  # what they mean depends on the graph
+
+
 @dataclasses.dataclass(frozen=True)
 class Choice:
     """Settings of one measure, and a sentence for each value that came from elsewhere."""
@@ -86,8 +89,8 @@ def field_names(measure: Measure) -> set[str]:
 def build(measure: Measure, values: Mapping[str, Any], graph: Graph | None) -> Choice:
     """Settings of ``measure`` from the options it takes; the others are passed over.
 
-    Vectors may name nodes, attributes and files.  Without a ``graph`` (a screen reads its own
-    later) they can only be numbers, names and files of names.
+    Vectors may name nodes, attributes and files; without a ``graph`` they are passed over, and
+    only the ranges of the other values are checked.
 
     Raises:
         SettingsError: for a value out of range.
@@ -98,9 +101,11 @@ def build(measure: Measure, values: Mapping[str, Any], graph: Graph | None) -> C
     mine = {
         name: value.as_field(name, defaults[name]) if isinstance(value, Word) else value
         for name, value in values.items()
-        if name in names
+        if name in names and not (graph is None and name in _VECTORS)
     }
     remarks: dict[str, str] = {}
+    if graph is None:
+        return Choice(measure.settings(**mine))
     if "teleport" in mine:
         mine["teleport"], remarks["teleport"] = _teleport(mine["teleport"], graph)
     if "beta" in mine:
@@ -110,17 +115,10 @@ def build(measure: Measure, values: Mapping[str, Any], graph: Graph | None) -> C
     return Choice(measure.settings(**mine), remarks)
 
 
-def _teleport(words: tuple[str, ...], graph: Graph | None) -> tuple[Any, str]:
+def _teleport(words: tuple[str, ...], graph: Graph) -> tuple[Any, str]:
     """Nodes by name first, a file only where no node is called so."""
     from kingpost.core.errors import NodeNotFound
 
-    if graph is None:
-        if len(words) == 1 and os.path.isfile(words[0]):
-            raise click.UsageError(
-                "--teleport FILE needs the graph, which the screen loads later; name nodes, or "
-                "use kingpost rank"
-            )
-        return dict.fromkeys(words, 1.0), f"jumps go to {_few(words)}"
     try:
         nodes = [graph.find(word) for word in words]
     except NodeNotFound:
@@ -142,7 +140,7 @@ def _few(words: tuple[str, ...]) -> str:
     return listed([visible(word, 40) for word in words], 5)
 
 
-def _beta(word: str, graph: Graph | None) -> tuple[Any, str]:
+def _beta(word: str, graph: Graph) -> tuple[Any, str]:
     """A number, else the name of a node attribute, else a file."""
     try:
         number = float(word)
@@ -152,11 +150,6 @@ def _beta(word: str, graph: Graph | None) -> tuple[Any, str]:
         if math.isfinite(number):
             return number, ""
         raise click.UsageError(f"--beta is {word}; it takes a finite number")
-    if graph is None:
-        raise click.UsageError(
-            "--beta by attribute or file needs the graph, which the screen loads later; give a "
-            "number, or use kingpost rank"
-        )
     if graph.attributes is not None and word in graph.attributes.column_names:
         return _numbers(graph, word), f"by the node attribute {visible(word, 60)}"
     if os.path.isfile(word):

@@ -81,7 +81,7 @@ def build_early(chosen: Any, values: dict[str, Any]) -> None:
     """Refuse settings out of range before a large table is read for nothing."""
     from kingpost.tui.commands.choices import build
 
-    build(chosen, {k: v for k, v in values.items() if k not in ("teleport", "beta")}, None)
+    build(chosen, values, None)
 
 
 def format_of(form: str | None, out: str | None) -> str:

@@ -8,11 +8,16 @@ from typing import TYPE_CHECKING, Any
 
 import click
 
+from kingpost.core.errors import SettingsError
+from kingpost.core.measures import NAMES
 from kingpost.tui.commands import options
 from kingpost.tui.commands.front import Sectioned
 from kingpost.tui.commands.session import load_options
 
 if TYPE_CHECKING:
+    from collections.abc import Callable
+
+    from kingpost.core.graph import Graph
     from kingpost.core.measures.base import Settings
 
 
@@ -33,7 +38,8 @@ def screen(edges: tuple[str, ...], **given: Any) -> int:
 
     status: int = run(
         list(edges),
-        load_options(given),
+        # Made in the loading job: the first frame does not wait for Arrow.
+        lambda: load_options(given),
         given["measure"],
         settings_asked_for(given),
         threads=given["threads"],
@@ -41,8 +47,8 @@ def screen(edges: tuple[str, ...], **given: Any) -> int:
     return status
 
 
-def settings_asked_for(given: dict[str, Any]) -> Settings | None:
-    """Settings from the options given; None without any, so that the screen opens at once.
+def settings_asked_for(given: dict[str, Any]) -> Callable[[Graph], Settings] | None:
+    """What makes the settings once the graph is there; None without any, to open at once.
 
     Raises:
         click.UsageError, KingpostError: before a screen is opened, for what cannot be.
@@ -50,11 +56,20 @@ def settings_asked_for(given: dict[str, Any]) -> Settings | None:
     from kingpost.tui.commands.choices import given_settings
 
     values = given_settings(given)
-    if not values and given["measure"] in options.MEASURES:
+    if not values and given["measure"] in NAMES:
         return None
     from kingpost.core.measures import measure
     from kingpost.tui.commands.choices import build, check_takers
+    from kingpost.tui.commands.rank import build_early
 
     chosen = measure(given["measure"])
     check_takers(values, [chosen])
-    return build(chosen, values, None).settings
+    build_early(chosen, values)
+
+    def make(graph: Graph) -> Settings:
+        try:
+            return build(chosen, values, graph).settings
+        except click.UsageError as error:
+            raise SettingsError(error.format_message()) from None
+
+    return make

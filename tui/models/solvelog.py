@@ -108,8 +108,13 @@ def observed_factor(log: Sequence[Iteration]) -> float:
     lines = lines[len(lines) // 2 :]
     if len(lines) < 2 or lines[-1].index == lines[0].index:
         return _NAN
+    # Indices may fall where a log was put together from several: no factor a sweep then.
     sweeps = lines[-1].index - lines[0].index
-    return float((lines[-1].residual / lines[0].residual) ** (1.0 / sweeps))
+    if sweeps < 0:
+        return _NAN
+    # By logarithms: the quotient itself may leave the range of a float.
+    fall = math.log(lines[-1].residual) - math.log(lines[0].residual)
+    return math.exp(min(fall / sweeps, 700.0))
 
 
 def expected_factor(result: Result) -> tuple[float, str]:
