@@ -48,12 +48,15 @@ class LoadingView(View):
             (f" {self.looks.glyphs.pointer} reading the edge table", "plain")
         )
         self.refresh_keys()
-        self.set_interval(1.0, self._tick)
+        self._clock = self.set_interval(1.0, self._tick)
 
     def _tick(self) -> None:
-        if self.is_current:
-            self._time()
-            self.refresh_keys()
+        if self.app.screen is not self:
+            # Under another screen even a tick that does nothing repaints the whole terminal.
+            self._clock.stop()
+            return
+        self._time()
+        self.refresh_keys()
 
     def stage(self, job: Job) -> None:
         """Show the latest of a job: its stage and how far it is, or the sweeps of a solve."""
