@@ -141,7 +141,22 @@ PHASE, AT, WAVE, MET, LEVEL, VISITS = 0, 1, 2, 3, 4, 5
 
 
 @kernel()
-def search(offsets, neighbours, state, budget, seen, wave, fresh, front, near, marked, units, score, lost, residue):  # type: ignore[no-untyped-def]  # noqa: E501
+def search(
+    offsets,
+    neighbours,
+    state,
+    budget,
+    seen,
+    wave,
+    fresh,
+    front,
+    near,
+    marked,
+    units,
+    score,
+    lost,
+    residue,
+):  # type: ignore[no-untyped-def]
     """Breadth-first search from up to ``WIDTH`` sources at once, for about ``budget`` edges.
 
     Row v of ``seen``, ``wave``, ``fresh`` (uint64, n by WORDS) holds which sources have reached v,

@@ -90,7 +90,9 @@ def _exact(
             "none: lower ends only",
         )  # fmt: skip
     facts["greatest distance"] = max(found.levels - 1, 0)
-    words = f"counted exactly, in {count(found.blocks, 'search', 'searches')} from 512 nodes at once"
+    words = (
+        f"counted exactly, in {count(found.blocks, 'search', 'searches')} from 512 nodes at once"
+    )
     if found.levels <= 2:
         bound = Bound(BoundKind.EXACT, 0.0, absolute=0.0)  # whole numbers: no distance beyond 1
     else:
@@ -106,7 +108,9 @@ def _estimate(
 ) -> Result:
     error = ball_error(settings.log2m)
     radius = max(balls.radius, 1)
-    within = f"only what is within distance {radius:,} is part of the scores, which are low by the rest"
+    within = (
+        f"only what is within distance {radius:,} is part of the scores, which are low by the rest"
+    )
     if balls.cancelled:
         stop, words = Stop.CANCELLED, f"cancelled; {within}"
     elif not balls.settled:
@@ -126,16 +130,16 @@ def _estimate(
         "radius": radius,
     }
     confidence = (
-        f"relative standard error of each ball's size {error:.2%} (1.04 / sqrt(registers)); that of "
-        "the score is estimated to be no more, as it adds up balls with positive factors; no "
+        f"relative standard error of each ball's size {error:.2%} (1.04 / sqrt(registers)); that "
+        "of the score is estimated to be no more, as it adds up balls with positive factors; no "
         "order is proven"
     )
     bound = (
-        Bound(BoundKind.STATISTICAL, error) if balls.settled else Bound(BoundKind.NONE, float("inf"))
+        Bound(BoundKind.STATISTICAL, error)
+        if balls.settled
+        else Bound(BoundKind.NONE, float("inf"))
     )
-    return _result(
-        graph, settings, balls.score, stop, words, bound, log, clock, facts, confidence
-    )
+    return _result(graph, settings, balls.score, stop, words, bound, log, clock, facts, confidence)
 
 
 def _result(

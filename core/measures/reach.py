@@ -94,7 +94,9 @@ def _amounts(graph: Graph, name: str) -> Floats:
     if graph.attributes is None or name not in graph.attributes.column_names:
         columns = () if graph.attributes is None else graph.attributes.column_names
         have = ", ".join(visible(other, 40) for other in columns) or "none"
-        raise SettingsError(f"--attribute {shown}: no node attribute is called so; there are {have}")
+        raise SettingsError(
+            f"--attribute {shown}: no node attribute is called so; there are {have}"
+        )
     column = graph.attributes.column(name)
     try:
         values = pc.cast(column, pa.float64(), safe=False)
@@ -232,7 +234,9 @@ class _Work:
             "standard error": error,
             "ranks": done.ranks,
             "seed": settings.seed,
-            "nodes known exactly": int(np.diff(self.joined.begins)[sure].sum()) if self.whole else 0,
+            "nodes known exactly": int(np.diff(self.joined.begins)[sure].sum())
+            if self.whole
+            else 0,
         }
         return _Found(done.found, "least ranks", stop, words, None, error, facts)
 

