@@ -141,7 +141,7 @@ PHASE, AT, WAVE, MET, LEVEL, VISITS = 0, 1, 2, 3, 4, 5
 
 
 @kernel()
-def search(
+def search(  # type: ignore[no-untyped-def]
     offsets,
     neighbours,
     state,
@@ -156,7 +156,7 @@ def search(
     score,
     lost,
     residue,
-):  # type: ignore[no-untyped-def]
+):
     """Breadth-first search from up to ``WIDTH`` sources at once, for about ``budget`` edges.
 
     Row v of ``seen``, ``wave``, ``fresh`` (uint64, n by WORDS) holds which sources have reached v,

@@ -115,9 +115,9 @@ def size_of(row, powers):  # type: ignore[no-untyped-def]
 
 
 @kernel()
-def grow(
+def grow(  # type: ignore[no-untyped-def]
     offsets, neighbours, low, high, level, rows, grown, moved, moving, powers, top, ball, score
-):  # type: ignore[no-untyped-def]
+):
     """Balls of radius ``level`` from those one smaller, in the rows ``low..high``.
 
     A node's counter takes the greatest of its own and its neighbours' registers; only nodes
