@@ -1,8 +1,10 @@
-"""Helpers that several folders of tests share live in tests/support."""
+"""Settings of the whole test suite."""
 
-from __future__ import annotations
+import os
 
-import sys
-from pathlib import Path
+from hypothesis import settings
 
-sys.path.insert(0, str(Path(__file__).parent / "support"))
+# Where a change is judged the same examples are tried every time; at a desk new ones are.
+settings.register_profile("judged", derandomize=True)
+if os.environ.get("CI"):
+    settings.load_profile("judged")
