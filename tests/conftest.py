@@ -1,0 +1,8 @@
+"""Helpers that several folders of tests share live in tests/support."""
+
+from __future__ import annotations
+
+import sys
+from pathlib import Path
+
+sys.path.insert(0, str(Path(__file__).parent / "support"))
