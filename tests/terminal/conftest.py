@@ -96,13 +96,20 @@ class Terminal:
         return True
 
     def until(self, condition: Callable[[], object], what: str, deadline: float = DEADLINE) -> None:
-        """Wait until a condition holds on the screen."""
+        """Wait until a condition holds on a whole frame, not on half of one."""
         end = time.monotonic() + deadline
-        while not condition():
+        while not (condition() and self._whole() and condition()):
             if time.monotonic() > end:
                 raise AssertionError(f"waited for {what}; the screen shows\n{self.text}")
             if not self.pump(0.05) and not condition():
                 raise AssertionError(f"ended while waiting for {what}:\n{self.text}")
+
+    def _whole(self) -> bool:
+        """Take in the rest of a frame under way: a frame reaches the reader in several pieces."""
+        pieces = 0
+        while select.select([self._master], [], [], 0.03)[0] and pieces < 50 and self.pump(0.0):
+            pieces += 1
+        return True
 
     def shows(self, *texts: str, deadline: float = DEADLINE) -> None:
         """Wait until every text is on the screen."""
