@@ -4,12 +4,15 @@ from __future__ import annotations
 
 import os
 import time
-from typing import Any
+from collections.abc import Callable
+from typing import Any, TypeVar
 
 import click
 
 from kingpost.tui.commands.front import ANSWERED, Sectioned, SectionOption
 from kingpost.tui.commands.session import Session
+
+F = TypeVar("F", bound=Callable[..., Any])
 
 GRAPH, TABLE, OUTPUT = "Graph", "Table", "Output"
 
@@ -37,7 +40,7 @@ class Size(click.ParamType):  # type: ignore[type-arg]
         return size
 
 
-def _option(section: str, *names: str, **about: Any) -> Any:
+def _option(section: str, *names: str, **about: Any) -> Callable[[F], F]:
     return click.option(*names, cls=SectionOption, section=section, **about)
 
 
