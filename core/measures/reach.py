@@ -9,6 +9,7 @@ edges play no part.  Counted exactly on the condensation of the graph where that
 
 from __future__ import annotations
 
+import contextlib
 import time
 from collections.abc import Generator
 from dataclasses import dataclass, field
@@ -98,12 +99,16 @@ def _amounts(graph: Graph, name: str) -> Floats:
             f"--attribute {shown}: no node attribute is called so; there are {have}"
         )
     column = graph.attributes.column(name)
-    try:
-        values = pc.cast(column, pa.float64(), safe=False)
-    except pa.ArrowException:
-        values = None
-    if values is None or pa.types.is_string(column.type) or pa.types.is_large_string(column.type):
-        raise SettingsError(f"--attribute {shown}: that attribute is {column.type}, not a number")
+    kind = column.type.value_type if pa.types.is_dictionary(column.type) else column.type
+    values = None
+    # Text is refused even where it reads as a number: nobody declared it to be one.
+    if pa.types.is_boolean(kind) or pa.types.is_decimal(kind) or pa.types.is_primitive(kind):
+        with contextlib.suppress(pa.ArrowException):
+            values = pc.cast(column, pa.float64(), safe=False)
+    if values is None or pa.types.is_temporal(kind):
+        raise SettingsError(
+            f"--attribute {shown}: that attribute is {visible(str(column.type), 60)}, not a number"
+        )
     if values.null_count:
         raise SettingsError(
             f"--attribute {shown}: that attribute is empty for {values.null_count:,} of "
@@ -116,6 +121,13 @@ def _amounts(graph: Graph, name: str) -> Floats:
             f"--attribute {shown}: {count(len(bad), 'node')} of {graph.n:,} have a negative, NaN "
             f"or infinite value, such as {graph.name(int(bad[0]), 40)} with {amounts[bad[0]]:g}; "
             "reach adds up amounts from 0"
+        )
+    with np.errstate(over="ignore"):
+        most = float(amounts.sum()) * len(amounts)  # what all scores together may come to
+    if not np.isfinite(most):
+        raise SettingsError(
+            f"--attribute {shown}: its values add up to more than double precision holds (1e308); "
+            "give it in a larger unit"
         )
     return amounts
 
