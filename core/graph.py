@@ -11,6 +11,7 @@ from __future__ import annotations
 import hashlib
 from dataclasses import dataclass, field
 from functools import cached_property
+from importlib import import_module
 from typing import TYPE_CHECKING, Any, Literal
 
 import numpy as np
@@ -22,7 +23,9 @@ from kingpost.core.text import id_text, visible
 if TYPE_CHECKING:
     import pyarrow as pa
 
+    from kingpost.core.result import Result
     from kingpost.core.structure import Structure
+    from kingpost.core.watch import Watch
 
 Flow = Literal["along", "against"]
 Floats = NDArray[np.float64]
@@ -216,6 +219,25 @@ class Graph:
                 text = id_text(value).encode("utf-8", "surrogatepass")
                 digest.update(len(text).to_bytes(8, "little") + text)
         return digest.hexdigest()
+
+    def rank(self, measure: str = "surfer", watch: Watch | None = None, **settings: Any) -> Result:
+        """Solve one measure, with its settings by name.
+
+        Raises:
+            SettingsError: for a measure or setting that does not exist, or a value out of range.
+            Interrupted: if ``watch`` was cancelled before there was anything to keep.
+        """
+        # By name: what a graph is must not depend on what is measured on it.
+        solved: Result = import_module("kingpost.core.library").rank(
+            self, measure, watch, **settings
+        )
+        return solved
+
+    def __repr__(self) -> str:
+        kind = "directed" if self.directed else "undirected"
+        weighted = ", weighted" if self.weighted else ""
+        name = visible(self.origin.name, 60)
+        return f"<Graph {name}: {self.n:,} nodes, {self.m:,} edges, {kind}{weighted}>"
 
     def label(self, node: int) -> Any:
         """The id of a node as a Python value, exactly as it stood in the table."""

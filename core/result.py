@@ -6,6 +6,7 @@ from collections.abc import Callable, Mapping
 from dataclasses import dataclass, field
 from enum import StrEnum
 from functools import cached_property
+from importlib import import_module
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -14,6 +15,8 @@ from numpy.typing import NDArray
 from kingpost.core.graph import Floats
 
 if TYPE_CHECKING:
+    import pyarrow as pa
+
     from kingpost.core.standing import Standing
 
 
@@ -121,7 +124,8 @@ class Result:
     ``REFUSED``, and ``refusal`` says why.  ``exact_zero`` marks nodes whose score is zero by
     structure rather than by rounding; ``symmetry()`` gives classes of nodes whose equations are
     the same, so that their exact scores are equal (or None).  ``conventions`` names, in words,
-    every choice that other software may make otherwise.
+    every choice that other software may make otherwise.  ``labels`` are the ids of the nodes
+    where ``Graph.rank`` made the result.
     """
 
     measure: str
@@ -137,6 +141,33 @@ class Result:
     facts: Mapping[str, Any] = field(default_factory=dict)
     exact_zero: NDArray[np.bool_] | None = None
     symmetry: Callable[[], NDArray[np.int64] | None] | None = None
+    labels: pa.Array | None = None
+
+    def __repr__(self) -> str:
+        if self.refusal is not None:
+            return f"<Result {self.measure}: refused, {self.refusal.reason}>"
+        size = f"{len(self.scores):,} nodes"
+        return (
+            f"<Result {self.measure}: {size}, {self.stop.value}, error {self.bound.value:.1e} "
+            f"({self.bound.kind.value})>"
+        )
+
+    def to_arrow(self) -> pa.Table:
+        """All rows, highest score first: rank, rank_low, rank_high, node, score, bound, rail.
+
+        ``rank_low`` to ``rank_high`` are the ranks a node may truly have; ``bound`` is the most
+        its score may be off, null where nothing is known; ``rail`` says how the row stands
+        against the next: ``proven``, ``not proven``, ``tied``, ``not told from zero``.
+
+        Raises:
+            SettingsError: if the measure was refused, with the reason.
+        """
+        return self.top(len(self.scores))
+
+    def top(self, rows: int = 10) -> pa.Table:
+        """The first rows of :meth:`to_arrow`."""
+        # By name: what a result is must not depend on how it is shown.
+        return import_module("kingpost.core.library").table(self, rows)
 
     @property
     def sweeps(self) -> int:

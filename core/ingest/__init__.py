@@ -19,7 +19,27 @@ if TYPE_CHECKING:
     from kingpost.core.ingest.about import TableAbout
     from kingpost.core.watch import Watch
 
-__all__ = ["LoadOptions", "describe", "from_table", "load", "read_node_values"]
+__all__ = [
+    "LoadOptions",
+    "describe",
+    "from_edges",
+    "from_networkx",
+    "from_scipy",
+    "from_table",
+    "load",
+    "read_node_values",
+]
+
+_IN_MEMORY = ("from_edges", "from_networkx", "from_scipy")
+
+
+def __getattr__(name: str) -> Any:
+    if name in _IN_MEMORY:
+        from kingpost.core.ingest import memory
+
+        return getattr(memory, name)
+    raise AttributeError(f"module {__name__!r} has no attribute {name!r}")
+
 
 Paths = str | os.PathLike[str] | Sequence[str | os.PathLike[str]]
 
