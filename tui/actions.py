@@ -20,7 +20,8 @@ STANDINGS, NODE, LOG, FORM, CHOICE, PROMPT, NOTICE, HELP, LOADING = (
     "help",
     "loading",
 )
-_TABLES = (STANDINGS, NODE, LOG, CHOICE, HELP)
+COLUMNS = "columns"  # sheet that chooses them
+_TABLES = (STANDINGS, NODE, LOG, CHOICE, HELP, COLUMNS)
 _ROOMS = (STANDINGS, NODE, LOG, HELP)
 _TYPING = (FORM, PROMPT)
 
@@ -55,15 +56,15 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "columns.left",
         ("left",),
-        (STANDINGS, NODE, FORM),
-        "columns further left, or the choice before",
+        (STANDINGS, NODE, FORM, COLUMNS),
+        "columns further left, or the choice before; moves a column that is being arranged",
         group="Moving",
     ),
     Action(
         "columns.right",
         ("right",),
-        (STANDINGS, NODE, FORM),
-        "columns further right, or the next choice",
+        (STANDINGS, NODE, FORM, COLUMNS),
+        "columns further right, or the next choice; moves a column that is being arranged",
         group="Moving",
     ),
     Action("other.table", ("tab",), (NODE,), "to the other table", "other table", 30, "Moving"),
@@ -132,7 +133,7 @@ ACTIONS: tuple[Action, ...] = (
         "rows.filter",
         ("f",),
         (STANDINGS,),
-        "keep only the rows whose name contains a text; empty for all",
+        "keep only the rows that fulfil an SQL condition; empty for all",
         "filter",
         12,
         "Looking",
@@ -148,6 +149,24 @@ ACTIONS: tuple[Action, ...] = (
     ),
     Action("find.next", ("n",), (STANDINGS,), "next row found", "next found", 16, "Looking"),
     Action("find.before", ("p",), (STANDINGS,), "row found before", "found before", 17, "Looking"),
+    Action(
+        "columns.choose",
+        ("k",),
+        (STANDINGS,),
+        "columns to keep: which are shown, in which order",
+        "columns",
+        18,
+        "Looking",
+    ),
+    Action(
+        "column.switch",
+        ("enter",),
+        (COLUMNS,),
+        "show or hide the highlighted column",
+        "show or hide",
+        1,
+        "Asked something",
+    ),
     Action(
         "choice.take",
         ("enter",),
@@ -181,7 +200,7 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "step.back",
         ("escape",),
-        (STANDINGS, NODE, LOG, HELP, *_TYPING, CHOICE, NOTICE),
+        (STANDINGS, NODE, LOG, HELP, *_TYPING, CHOICE, NOTICE, COLUMNS),
         "one step back; nothing is lost",
         "back",
         4,
@@ -198,7 +217,7 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "quit.now",
         ("ctrl+c",),
-        (*_ROOMS, *_TYPING, CHOICE, NOTICE, LOADING),
+        (*_ROOMS, *_TYPING, CHOICE, NOTICE, LOADING, COLUMNS),
         "quit at once, from anywhere",
     ),
 )

@@ -102,7 +102,7 @@ class KingpostApp(App[int], inherit_bindings=False):
         graph = sitting.graph
         settings = self._settings(graph) if callable(self._settings) else self._settings
         import_module("kingpost.tui.desk")
-        for name in ("standings", "node", "solvelog", "settings", "help", "sheets"):
+        for name in ("standings", "node", "solvelog", "settings", "help", "sheets", "columns"):
             import_module(f"kingpost.tui.views.{name}")
         return sitting, settings
 

@@ -4,12 +4,15 @@ of it.  Knows the runner and the sitting, no screen: views and application are i
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from typing import Any, Protocol
 
+from kingpost.core.errors import SettingsError
 from kingpost.core.measures import COMPANY, NAMES
 from kingpost.core.measures.base import Settings
 from kingpost.core.result import Result, Stop
 from kingpost.tui.jobs import Job, Runner, solve_work
+from kingpost.tui.models.headings import Choice, choice_of, shown
 from kingpost.tui.models.sitting import Sitting
 from kingpost.tui.models.solvelog import solved_words, sweep_words
 from kingpost.tui.models.standings import Standings, arrange, prepare
@@ -47,7 +50,7 @@ class Desk:
     def __init__(self, runner: Runner, sitting: Sitting, front: Front) -> None:
         self.runner, self.sitting, self._front = runner, sitting, front
         self.table: Standings | None = None
-        self._wanted: dict[str, Any] = {"sort": "rank", "turned": False, "text": ""}
+        self._wanted: dict[str, Any] = {"sort": "rank", "turned": False, "where": ""}
         self._prepared: tuple[int, ...] = ()
 
     # ---- solving -----------------------------------------------------------------------------
@@ -139,14 +142,24 @@ class Desk:
 
     # ---- the table ---------------------------------------------------------------------------
 
-    def arrange(self, **wanted: Any) -> None:
-        """Sort or filter: ``sort``, ``turned``, ``text``."""
+    def arrange(self, wrong: Callable[[str], None] | None = None, **wanted: Any) -> None:
+        """Sort or filter: ``sort``, ``turned``, ``where`` (an SQL condition).
+
+        ``wrong`` is told what is wrong with a condition; the rows then stay as they were.
+        """
         self._wanted.update(wanted)
         if self.solving is None:
             self._front.news("")  # it was about the rows as they were
-        self._make()
+        self._make(wrong)
 
-    def _make(self) -> None:
+    def choose_columns(self, choice: Choice) -> None:
+        """Show other columns, or the same in another order; nothing is worked out anew."""
+        self.sitting.columns = choice
+        if self.table is not None:
+            self.table.head = shown(self.table.all, choice)
+            self._front.table_ready(self.table, False)
+
+    def _make(self, wrong: Callable[[str], None] | None = None) -> None:
         """Make the table that is wanted now; a newer wish replaces an older one at work."""
         sitting, wanted, old = self.sitting, dict(self._wanted), self.table
         result, others = sitting.result, sitting.others()
@@ -161,27 +174,45 @@ class Desk:
                 table = prepare(sitting.graph, result, others)
             if table.column(wanted["sort"]) is None:
                 wanted["sort"], wanted["turned"] = "rank", False
-            made = arrange(table, wanted["sort"], wanted["turned"], wanted["text"])
-            return table, made, version
+            lost = ""
+            try:
+                made = arrange(table, wanted["sort"], wanted["turned"], wanted["where"], job.watch)
+            except SettingsError as trouble:
+                if wrong is not None:
+                    raise
+                # A condition that these results cannot answer must not keep them from sight.
+                lost = trouble.sentence
+                made = arrange(table, wanted["sort"], wanted["turned"])
+            return table, made, version, lost
+
+        def failed(sentence: str) -> None:
+            self._wanted["where"] = old.arrangement.where if old is not None else ""
+            (wrong or (lambda told: self._front.news(told, "bad")))(sentence)
 
         self.runner.start(
             "table",
             work,
             self._made,
             words="arranging the rows",
-            failed=lambda sentence: self._front.news(sentence, "bad"),
+            failed=failed,
             replace=True,
         )
 
     def _made(self, made: Any) -> None:
-        table, arrangement, self._prepared = made
+        table, arrangement, self._prepared, lost = made
         old, self.table = self.table, table
         if old is not None and table is old:
             old.adopt(arrangement)
         else:
+            if self.sitting.columns.order:  # chosen by hand: columns new since then join it
+                self.sitting.columns = choice_of(table.all, self.sitting.columns)
+            table.head = shown(table.all, self.sitting.columns)
             table.arrangement = arrangement
             node = None if old is None else old.node
             table.cursor = (0 if node is None else table.row_of(node)) or 0
+        if lost:
+            self._wanted["where"] = ""
+            self._front.news(f"the filter is taken off: {lost}", "bad")
         self._front.table_ready(table, old is None)
         if old is None:
             self.keep_company()

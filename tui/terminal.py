@@ -37,6 +37,8 @@ class Glyphs:
     corner: str
     rising: str
     falling: str
+    levels: str  # bars that stand, from the lowest to the full one
+    here: str  # where something is on a line of such bars
 
 
 UNICODE = Glyphs(
@@ -58,6 +60,8 @@ UNICODE = Glyphs(
     corner="└",
     rising="▴",
     falling="▾",
+    levels="▁▂▃▄▅▆▇█",
+    here="◆",
 )
 ASCII = Glyphs(
     ascii=True,
@@ -78,6 +82,8 @@ ASCII = Glyphs(
     corner="+",
     rising="^",
     falling="v",
+    levels="._-=*#",
+    here="^",
 )
 
 # Only the terminal's own sixteen colours and its own background: they follow the reader's light

@@ -11,7 +11,7 @@ from kingpost.tui import actions
 from kingpost.tui.app import KingpostApp
 from kingpost.tui.views.base import View
 
-VIEWS = ("loading", "standings", "node", "solvelog", "settings", "sheets", "help")
+VIEWS = ("loading", "standings", "node", "solvelog", "settings", "sheets", "help", "columns")
 
 
 def view_classes():

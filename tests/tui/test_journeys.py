@@ -76,12 +76,46 @@ async def test_sort_find_and_filter(app):
         await pilot.press("slash", *"QU", "enter")
         await until(pilot, lambda: "1 of 1 names with 'QU'" in app.shown())
         assert app.screen.model.graph.label(app.screen.model.node) == "quay"
-        await pilot.press("f", "t", "enter")
+        await pilot.press("f", *"tiers > 1", "enter")
+        await until(pilot, lambda: "no column is called 'tiers' at character 1" in app.shown())
+        assert "   6 nodes" in app.shown()  # the rows stay as they were
+        await pilot.press(*["backspace"] * 5, *" > 1", "enter")
         await until(pilot, lambda: "3 of 6 nodes" in app.shown())
-        await pilot.press("f", "backspace", *"zz", "enter")
-        await until(pilot, lambda: "no name contains 'zz'" in app.shown())
+        assert "where tier > 1" in app.shown()
+        await pilot.press("f", *" and false", "enter")
+        await until(pilot, lambda: "no row fulfils the condition; f changes it" in app.shown())
         await pilot.press("escape", "escape")
         await until(pilot, lambda: "   6 nodes" in app.shown())
+        assert "where" not in app.shown()
+
+
+async def test_columns_are_shown_hidden_and_moved(app):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await pilot.press("k")
+        await until(pilot, lambda: "columns in their order" in app.shown())
+        await pilot.press("down", "enter", "e", "enter", *["left"] * 9)
+        await until(pilot, lambda: "mirror score " in app.shown())
+        await pilot.press("escape")
+        await until(pilot, lambda: app.screen.view == "standings")
+        heads = app.shown().splitlines()[3].split()
+        assert heads == ["rank▴", "node", "mirror", "score", "plain", "in", "out", "team", "tier"]
+        # Another measure keeps the choice.
+        await pilot.press("m", "down", "enter")
+        await until(pilot, lambda: app.screen.model.result.measure == "mirror")
+        heads = app.shown().splitlines()[3].split()
+        assert heads == ["rank▴", "node", "mirror", "in", "out", "team", "tier", "plain"]
+
+
+async def test_a_filter_that_new_results_cannot_answer_is_taken_off(app):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await pilot.press("f", *"plain_rank < 3", "enter")
+        await until(pilot, lambda: "2 of 6 nodes" in app.shown())
+        app.desk.sitting.results.pop("plain")
+        app.desk.choose("mirror")
+        await until(pilot, lambda: "the filter is taken off: no column" in app.shown())
+        assert "   6 nodes" in app.shown()
 
 
 async def test_walking_the_load_path_and_back(app):

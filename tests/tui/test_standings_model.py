@@ -7,6 +7,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
+from kingpost.core.errors import SettingsError
 from kingpost.core.standing import OPEN, PROVEN, TIED
 from kingpost.tui.models.standings import Found, arrange, prepare, search
 
@@ -52,8 +53,8 @@ def test_sorting(table, key, turned, expected):
     assert names(table, arrange(table, key, turned)) == expected
 
 
-def test_filter_ignores_letter_case_and_keeps_the_order(table):
-    arranged = arrange(table, "rank", text="E")
+def test_filter_keeps_the_order(table):
+    arranged = arrange(table, "rank", where="node ilike '%E%'")
     assert names(table, arranged) == ["gate", "fare", "berth", "ticket"]
     table.adopt(arranged)
     assert table.row_of(3) is None
@@ -65,7 +66,7 @@ def test_the_cursor_follows_its_node(table):
     node = table.node
     table.adopt(arrange(table, "node"))
     assert table.node == node == 4
-    table.adopt(arrange(table, "node", text="zzz"))
+    table.adopt(arrange(table, "node", where="false"))
     assert table.node is None
 
 
@@ -122,8 +123,45 @@ def test_rail_in_any_arrangement_says_what_the_intervals_say(
 
 
 def test_wishes_survive_a_new_result(graph, make_result, table):
-    table.adopt(arrange(table, "in", text="t"))
+    table.adopt(arrange(table, "in", where="node like '%t%'"))
     table.cursor = 1
     fresh = prepare(graph, make_result(graph, SCORES[::-1]), after=table)
-    assert (fresh.arrangement.sort, fresh.arrangement.text) == ("in", "t")
+    assert (fresh.arrangement.sort, fresh.arrangement.where) == ("in", "node like '%t%'")
     assert fresh.node == table.node
+
+
+@pytest.mark.parametrize(
+    ("where", "expected"),
+    [
+        ("rank <= 2", ["gate", "fare", "kiosk"]),  # the two at rank 2-3 may both be second
+        ("plain_rank = 1 or plain_score = 0.2", ["gate", "quay"]),
+        ("mirror_rank < 3", ["fare", "berth"]),
+        # In-degrees 1 2 4 1 0 0, out-degrees 2 1 1 1 2 1.
+        ("in_degree = 0", ["quay", "ticket"]),
+        ("in_degree > out_degree", ["gate", "fare"]),
+        ("team = 'red' and tier is not null", ["berth"]),
+        ("score > mirror_score", []),
+    ],
+)
+def test_conditions_over_ranks_scores_degrees_and_attributes(table, where, expected):
+    assert names(table, arrange(table, "rank", where=where)) == expected
+
+
+def test_a_condition_sorts_and_filters_at_once(table):
+    arranged = arrange(table, "node", where="tier >= 1")
+    assert names(table, arranged) == ["berth", "fare", "gate", "quay", "ticket"]
+
+
+def test_what_a_name_or_an_unsolved_measure_is_told(table):
+    with pytest.raises(SettingsError, match=r"for names: node like '%quay%'"):
+        arrange(table, "rank", where="quay")
+    with pytest.raises(SettingsError, match="katz is not solved yet"):
+        arrange(table, "rank", where="katz_rank < 4")
+
+
+def test_attributes_that_take_a_column_s_name_stay_reachable(make_graph, make_result):
+    graph = make_graph(["a", "b"], [(0, 1, 1.0)], {"rank": ["low", "high"], "In_Degree": [7, 8]})
+    table = prepare(graph, make_result(graph, [1.0, 2.0]))
+    assert names(table, arrange(table, "rank", where="attribute_rank = 'low'")) == ["a"]
+    assert names(table, arrange(table, "rank", where="attribute_in_degree = 8")) == ["b"]
+    assert names(table, arrange(table, "rank", where="rank = 1")) == ["b"]

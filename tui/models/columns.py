@@ -42,6 +42,7 @@ class Column:
     style: str = "plain"
     high_first: bool = False
     keys: Callable[[], NDArray[Any]] | None = None
+    optional: bool = False  # not shown unless it is chosen
 
 
 def rank_column(result: Result) -> Column:
@@ -106,6 +107,22 @@ def other_rank_column(result: Result) -> Column:
         lambda node: rank_range(*standing.range_of(node), width),
         right=True,
         keys=lambda: standing.position,
+    )
+
+
+def other_score_column(result: Result) -> Column:
+    """The score a node has in another measure; shown where it is chosen."""
+    form = score_format(result.scores, result.bound)
+    title = f"{result.measure} score{form.unit}"
+    return Column(
+        f"score:{result.measure}",
+        title,
+        max(form.width, len(title)),
+        lambda node: form.text(float(result.scores[node])),
+        right=True,
+        high_first=True,
+        keys=lambda: result.scores,
+        optional=True,
     )
 
 

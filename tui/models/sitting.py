@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING, Any
 
 from kingpost.core.insight.contributions import contributions
 from kingpost.core.measures import NAMES, measure
+from kingpost.tui.models.headings import Choice
 from kingpost.tui.models.numbers import ScoreFormat, middle, score_format
 
 if TYPE_CHECKING:
@@ -29,6 +30,7 @@ class Sitting:
     names: Sequence[str] = NAMES
     find: Callable[[str], Measure] = measure
     formats: dict[int, tuple[Result, ScoreFormat]] = field(default_factory=dict)
+    columns: Choice = field(default_factory=Choice)  # of the standings: what is shown, in order
 
     def measure(self, name: str) -> Measure:
         """The measure of that name, by default from the registry."""

@@ -18,8 +18,12 @@ from kingpost.core.graph import Graph
 from kingpost.core.labels import containing
 from kingpost.core.result import Result
 from kingpost.core.standing import OPEN, PROVEN, TIED, UNRANKED
+from kingpost.core.watch import Watch
 from kingpost.tui.models import columns as make
 from kingpost.tui.models.columns import Column
+from kingpost.tui.models.headings import shown
+from kingpost.tui.models.rowquery import kept
+from kingpost.tui.models.spread import Spread, spread_of
 
 Rows = NDArray[np.int64]
 
@@ -35,14 +39,15 @@ _NEAR = 2
 class Arrangement:
     """Which nodes are shown, and in which order.
 
-    ``rows[i]`` is the node in row i; ``row_of[node]`` its row or -1.
+    ``rows[i]`` is the node in row i; ``row_of[node]`` its row or -1; ``where`` the condition
+    that kept them, empty for all.
     """
 
     rows: Rows
     row_of: NDArray[np.int32]
     sort: str = "rank"
     turned: bool = False
-    text: str = ""
+    where: str = ""
 
 
 @dataclass(frozen=True)
@@ -78,21 +83,26 @@ class Found:
 class Standings:
     """The table of one result: what the row-window widget asks for, and the cursor.
 
-    Rows are addressed 0..count-1 in the present arrangement.
+    Rows are addressed 0..count-1 in the present arrangement.  ``all`` holds every column there
+    is, ``head`` those shown, in their order; ``spread`` how the scores are spread.
     """
 
     def __init__(
         self,
         graph: Graph,
         result: Result,
-        head: Sequence[Column],
+        others: Sequence[Result],
+        every: Sequence[Column],
         cuts: NDArray[np.int32],
         ties: NDArray[np.int32],
         arrangement: Arrangement,
     ) -> None:
         self.graph = graph
         self.result = result
-        self.head = list(head)
+        self.others = list(others)
+        self.all = list(every)
+        self.head = shown(self.all)
+        self.spread: Spread = spread_of(result)
         self._cuts = cuts
         self._ties = ties
         self.arrangement = arrangement
@@ -149,8 +159,8 @@ class Standings:
         self.cursor = min(self.cursor, max(self.count - 1, 0)) if row is None else row
 
     def column(self, key: str) -> Column | None:
-        """The column of that key."""
-        return next((column for column in self.head if column.key == key), None)
+        """The column of that key, shown or not."""
+        return next((column for column in self.all if column.key == key), None)
 
 
 def prepare(
@@ -158,13 +168,15 @@ def prepare(
 ) -> Standings:
     """Everything the table of ``result`` needs, O(n log n); run it in a job.
 
-    ``others`` get a column of ranks each; sort, filter and cursor are taken over from
-    ``after`` as far as they still make sense.
+    ``others`` get a column of ranks and one of scores each; sort, filter and cursor are taken
+    over from ``after`` as far as they still make sense.
     """
     standing = result.standing
     rail = standing.rail
-    ranks = [make.other_rank_column(other) for other in others if other.refusal is None]
-    head = [
+    others = [other for other in others if other.refusal is None]
+    ranks = [make.other_rank_column(other) for other in others]
+    scores = [make.other_score_column(other) for other in others]
+    every = [
         make.rank_column(result),
         make.name_column(graph, standing.order),
         make.score_column(result),
@@ -172,36 +184,49 @@ def prepare(
         *make.degree_columns(graph),
         *make.attribute_columns(graph),
         *ranks[_NEAR:],
+        *scores,
     ]
     plain = _arranged(standing.order, graph.n, "rank", False, "")
-    table = Standings(graph, result, head, _before(rail == PROVEN), _before(rail == TIED), plain)
+    table = Standings(
+        graph, result, others, every, _before(rail == PROVEN), _before(rail == TIED), plain
+    )
     if after is not None and after.graph is graph:
         old = after.arrangement
-        if old.text or old.sort != "rank" or old.turned:
+        if old.where or old.sort != "rank" or old.turned:
             sort = old.sort if table.column(old.sort) else "rank"
-            table.arrangement = arrange(table, sort, old.turned, old.text)
+            table.arrangement = arrange(table, sort, old.turned, old.where)
         node = after.node
         row = None if node is None else table.row_of(node)
         table.cursor = row or 0
     return table
 
 
-def arrange(table: Standings, sort: str, turned: bool = False, text: str = "") -> Arrangement:
-    """Sort by a column and keep the names that contain ``text``; run it in a job.
+def arrange(
+    table: Standings,
+    sort: str,
+    turned: bool = False,
+    where: str = "",
+    watch: Watch | None = None,
+) -> Arrangement:
+    """Sort by a column and keep the rows for which ``where``, SQL, is true; run it in a job.
 
     Equal values stand in the order of the standing.  ``turned`` reverses the column's own
     direction; what has no value stays last either way.
+
+    Raises:
+        SettingsError: if the condition cannot be used.
+        Interrupted: if ``watch`` was cancelled.
     """
+    mask = kept(table.graph, table.result, table.others, where, watch) if where else None
     order = table.result.standing.order
     column = table.column(sort)
     if column is not None and column.keys is not None and (sort != "rank" or turned):
         keys = np.take(column.keys(), order)
         falling = column.high_first != turned
         order = order[_stable(keys, falling)]
-    if text:
-        kept = np.take(containing(table.graph.labels, text), order)
-        order = np.take(order, np.flatnonzero(kept))
-    return _arranged(order, table.graph.n, sort, turned, text)
+    if mask is not None:
+        order = np.take(order, np.flatnonzero(np.take(mask, order)))
+    return _arranged(order, table.graph.n, sort, turned, where)
 
 
 def search(table: Standings, arrangement: Arrangement, text: str) -> Found:
@@ -210,12 +235,12 @@ def search(table: Standings, arrangement: Arrangement, text: str) -> Found:
     return Found(text, np.flatnonzero(hits))
 
 
-def _arranged(rows: Rows, n: int, sort: str, turned: bool, text: str) -> Arrangement:
+def _arranged(rows: Rows, n: int, sort: str, turned: bool, where: str) -> Arrangement:
     row_of = np.full(n, -1, dtype=np.int32)
     for start in range(0, len(rows), _CHUNK):
         some = rows[start : start + _CHUNK]
         row_of[some] = np.arange(start, start + len(some), dtype=np.int32)
-    return Arrangement(rows, row_of, sort, turned, text)
+    return Arrangement(rows, row_of, sort, turned, where)
 
 
 def _stable(keys: NDArray[Any], falling: bool) -> Rows:

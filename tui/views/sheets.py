@@ -143,17 +143,29 @@ class MeasureSheet(ChoiceSheet):
 
 
 class PromptSheet(Sheet):
-    """A line to write; dismissed with the text, or None."""
+    """A line to write; dismissed with the text, or None.
+
+    ``wrong`` says what is wrong with the text it starts with, ``hint`` what may be written.
+    """
 
     view = PROMPT
 
-    def __init__(self, label: str, text: str = "") -> None:
+    def __init__(self, label: str, text: str = "", *, hint: str = "", wrong: str = "") -> None:
         super().__init__()
         self._label, self._text = label, text
+        self._hint, self._wrong = on_screen(hint), on_screen(wrong)
 
     def compose(self) -> ComposeResult:
+        width = max(self.app.size.width - 2, 10)
+        rows = [[(f" {line}", "bad")] for line in wrap(self._wrong, width)[:4]]
+        rows += [[(f" {line}", "quiet")] for line in wrap(self._hint, width)[:4]]
+        rows = rows[: max(self.app.size.height - 4, 1)]
         with Vertical(id="sheet"):
             yield Rule()
+            if rows:
+                said = Line(id="said", rows=len(rows))
+                said.show_rows(rows)
+                yield said
             yield Entry(self._label, self._text, id="entry")
             yield KeyLine(id="keys")
 

@@ -9,15 +9,17 @@ from textual.containers import Horizontal
 from kingpost.core.insight.contributions import Contributions, contributions
 from kingpost.core.text import visible
 from kingpost.tui.actions import STANDINGS
-from kingpost.tui.models import detail
+from kingpost.tui.models import detail, rowquery
 from kingpost.tui.models.drawing import wrap
 from kingpost.tui.models.node import MANY, centre
 from kingpost.tui.models.standings import Found, Standings, search
 from kingpost.tui.views.base import View
+from kingpost.tui.views.columns import ColumnsSheet
 from kingpost.tui.views.nodepanel import NodePanel
 from kingpost.tui.views.sheets import Choice, ChoiceSheet, PromptSheet
 from kingpost.tui.widgets.lines import KeyLine, Line, Rule
 from kingpost.tui.widgets.rowtable import RowTable
+from kingpost.tui.widgets.spread import SpreadRule
 
 BESIDE = 150  # columns from which the node view stands beside the table
 LOW = 17  # lines below which only the table is shown
@@ -39,7 +41,7 @@ class StandingsView(View):
     def compose(self) -> ComposeResult:
         yield Line(id="graph")
         yield Line(id="terms")
-        yield Rule(id="top")
+        yield SpreadRule(id="top")
         with Horizontal(id="body"):
             yield RowTable(id="table")
             yield NodePanel(id="beside")
@@ -71,8 +73,8 @@ class StandingsView(View):
         arranged = table.arrangement
         column = table.column(arranged.sort)
         rising = bool(column and column.high_first == arranged.turned)
-        empty = f"no name contains {visible(arranged.text, 40)!r}; f asks again, Esc shows all rows"
-        if not arranged.text:
+        empty = "no row fulfils the condition; f changes it, Esc shows all rows"
+        if not arranged.where:
             empty = "the graph has no nodes"
         self.table.show(table, table.cursor, sorted_by=(arranged.sort, rising), empty=empty)
         self._detailed = None
@@ -89,6 +91,9 @@ class StandingsView(View):
         self.query_one("#terms", Line).show_by(
             lambda width: detail.terms_line(model.graph, model.result, width)
         )
+        where = model.arrangement.where
+        title = f"where {visible(where, 200)}" if where else ""
+        self.query_one("#top", SpreadRule).show_spread(title, model.spread)
 
     def refreshed(self) -> None:
         if not self.composed:
@@ -117,6 +122,7 @@ class StandingsView(View):
         node = self.model.node
         result = self.model.result
         glyphs = self.looks.glyphs
+        self.query_one("#top", SpreadRule).mark(None if node is None else result.scores[node])
         ruler, supports = self.query_one("#ruler", Line), self.query_one("#supports", Line)
         if result.refusal is not None:
             sentence = detail.on_screen(result.refusal.sentence)
@@ -226,12 +232,29 @@ class StandingsView(View):
         self.kingpost.desk.arrange(sort=key, turned=turned)
 
     def do_rows_filter(self) -> None:
-        sheet = PromptSheet("keep names that contain", self.model.arrangement.text)
-        self.app.push_screen(sheet, self._filter)
+        self._ask_filter(self.model.arrangement.where, "")
+
+    def _ask_filter(self, text: str, wrong: str) -> None:
+        model = self.model
+        known = rowquery.columns(model.graph, model.result, model.others)
+        hint = f"SQL over {', '.join(visible(name, 30) for name in known)}"
+        hint += "" if wrong else "; empty for all rows; e.g. rank <= 20 and node like 'a%'"
+        self.app.push_screen(PromptSheet("rows where", text, hint=hint, wrong=wrong), self._filter)
 
     def _filter(self, text: str | None) -> None:
-        if text is not None and text != self.model.arrangement.text:
-            self.kingpost.desk.arrange(text=text)
+        text = None if text is None else text.strip()
+        if text is not None and text != self.model.arrangement.where:
+            self.kingpost.desk.arrange(lambda wrong: self._refiltered(text, wrong), where=text)
+
+    def _refiltered(self, text: str, wrong: str) -> None:
+        """A condition that cannot be used comes back, with what is wrong, to be mended."""
+        if self.app.screen is self:
+            self._ask_filter(text, wrong)
+        else:
+            self.kingpost.news(wrong, "bad")
+
+    def do_columns_choose(self) -> None:
+        self.app.push_screen(ColumnsSheet())
 
     def do_find_ask(self) -> None:
         found = self.model.found
@@ -285,7 +308,9 @@ class StandingsView(View):
         self.kingpost.news(words)
 
     def can_step_back(self) -> bool:
-        return bool(self.kingpost.latest_news[0] or self.model.arrangement.text or self.model.found)
+        return bool(
+            self.kingpost.latest_news[0] or self.model.arrangement.where or self.model.found
+        )
 
     def do_step_back(self) -> None:
         if self.kingpost.latest_news[0] and not self.kingpost.solving:
@@ -293,5 +318,5 @@ class StandingsView(View):
         elif self.model.found is not None:
             self.model.found = None
             self.table.refresh()
-        elif self.model.arrangement.text:
-            self.kingpost.desk.arrange(text="")
+        elif self.model.arrangement.where:
+            self.kingpost.desk.arrange(where="")

@@ -1,0 +1,125 @@
+"""Rows kept by an SQL condition, against plain Python over the same rows."""
+
+from __future__ import annotations
+
+import threading
+
+import numpy as np
+import pyarrow as pa
+import pytest
+
+from kingpost.core.errors import Interrupted, SettingsError
+from kingpost.core.insight.predicate import matching
+from kingpost.core.watch import Watch
+
+RANK = [1, 2, 3, 4, 5, 6]
+SCORE = [0.5, 0.25, 0.125, 0.0625, float("nan"), 0.0]
+TEAM = ["red", None, "blue", "red", "it's", "amber"]
+COLUMNS = {
+    "rank": lambda: pa.array(RANK),
+    "score": lambda: pa.array(SCORE),
+    "team": lambda: pa.array(TEAM),
+    "Home Port": lambda: pa.array(["a", "b", "a", "b", "a", "b"]),
+    "seen": lambda: pa.array([True, False, True, None, True, False]),
+}
+
+
+def kept(text):
+    return matching(COLUMNS, 6, text).tolist()
+
+
+@pytest.mark.parametrize(
+    ("text", "expected"),
+    [
+        ("rank < 3", [i for i, r in enumerate(RANK) if r < 3]),
+        ("RANK between 2 and 4 and team = 'red'", [3]),
+        ("team is null", [1]),
+        ("team <> 'red'", [2, 4, 5]),  # null is neither red nor something else
+        ("team = 'it''s'", [4]),
+        ("\"Home Port\" = 'a' and rank > 1", [2, 4]),
+        ("seen", [0, 2, 4]),
+        ("not seen", [1, 5]),
+        ("null", []),
+        ("true", [0, 1, 2, 3, 4, 5]),
+        ("rank < 4 -- and more", [0, 1, 2]),
+        ("rank > (select avg(rank) from nodes)", [3, 4, 5]),
+        ("team like '%e%'", [0, 2, 3, 5]),
+    ],
+)
+def test_keeps_what_the_condition_says(text, expected):
+    assert kept(text) == expected
+
+
+@pytest.mark.parametrize(
+    ("text", "said"),
+    [
+        ("rnk < 3", "no column is called 'rnk' at character 1, near 'rnk'; did you mean rank?"),
+        ("rank < 3 and xyzzy = 2", "no column is called 'xyzzy' at character 14"),
+        ("rank <", "does not read as SQL"),
+        ("rank < 3 4", "does not read as SQL at character 10, near '4'"),
+        ("rank", "gives a number for each row, not true or false"),
+        ("team", "gives a text for each row"),
+        ("rank < 3; drop table nodes", "one condition is taken"),
+        ("rank < 3, true", "one condition is taken"),
+        ("rank < 3 order by rank", "one condition is taken"),
+        ("true) union select (1", "does not read as SQL"),
+        ("count(*) > 1", "one row at a time"),
+        ("row_number() over () < 2", "one row at a time"),
+        ("zap(rank) = 1", "there is no function 'zap' at character 1"),
+        ("", "no condition is written"),
+        ("team like '%a", "not finished"),
+        ("score < 'x'", "cannot be worked out"),
+    ],
+)
+def test_says_in_one_sentence_what_is_wrong(text, said):
+    with pytest.raises(SettingsError) as caught:
+        kept(text)
+    assert said in caught.value.sentence
+    assert "\n" not in caught.value.sentence
+
+
+@pytest.mark.parametrize(
+    "text",
+    [
+        "rank < (select count(*) from read_csv('/etc/passwd'))",
+        "team in (select * from '/etc/passwd')",
+        "rank < (select count(*) from glob('/*'))",
+        "(select content from read_text('/etc/hostname')) is not null",
+    ],
+)
+def test_reads_no_file(text):
+    with pytest.raises(SettingsError, match="nothing but the columns"):
+        kept(text)
+
+
+def test_python_variables_are_out_of_reach():
+    secret = pa.table({"x": [1]})
+    with pytest.raises(SettingsError):
+        kept("rank in (select x from secret)")
+    assert secret.num_rows == 1
+
+
+def test_only_the_columns_named_are_made():
+    made = []
+    columns = {
+        "rank": lambda: made.append("rank") or pa.array(RANK),
+        "other": lambda: made.append("other") or pa.array(RANK),
+    }
+    assert matching(columns, 6, "rank = 1").tolist() == [0]
+    assert made == ["rank"]
+
+
+def test_a_long_question_ends_when_asked():
+    watch = Watch(threads=1)
+    n = 200_000
+    columns = {"rank": lambda: pa.array(np.arange(n))}
+    threading.Timer(0.1, watch.cancel).start()
+    with pytest.raises(Interrupted):
+        # Every row against every other by a comparison that no hash can help.
+        matching(
+            columns,
+            n,
+            "(select count(*) from nodes a, nodes b where sin(a.rank) < cos(b.rank) * sqrt(b.rank))"
+            " > rank",
+            watch,
+        )
