@@ -9,7 +9,7 @@ from __future__ import annotations
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 
-STANDINGS, NODE, LOG, FORM, CHOICE, PROMPT, NOTICE, HELP, LOADING = (
+STANDINGS, NODE, LOG, FORM, CHOICE, PROMPT, NOTICE, HELP, LOADING, SHORTLIST = (
     "standings",
     "node",
     "log",
@@ -19,10 +19,12 @@ STANDINGS, NODE, LOG, FORM, CHOICE, PROMPT, NOTICE, HELP, LOADING = (
     "notice",
     "help",
     "loading",
+    "shortlist",
 )
 COLUMNS = "columns"  # sheet that chooses them
-_TABLES = (STANDINGS, NODE, LOG, CHOICE, HELP, COLUMNS)
-_ROOMS = (STANDINGS, NODE, LOG, HELP)
+_TABLES = (STANDINGS, NODE, LOG, CHOICE, HELP, COLUMNS, SHORTLIST)
+_ROOMS = (STANDINGS, NODE, LOG, HELP, SHORTLIST)
+_NODES = (STANDINGS, NODE, SHORTLIST)  # views in which a node is at hand
 _TYPING = (FORM, PROMPT)
 
 
@@ -56,14 +58,14 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "columns.left",
         ("left",),
-        (STANDINGS, NODE, FORM, COLUMNS),
+        (STANDINGS, NODE, FORM, COLUMNS, SHORTLIST),
         "columns further left, or the choice before; moves a column that is being arranged",
         group="Moving",
     ),
     Action(
         "columns.right",
         ("right",),
-        (STANDINGS, NODE, FORM, COLUMNS),
+        (STANDINGS, NODE, FORM, COLUMNS, SHORTLIST),
         "columns further right, or the next choice; moves a column that is being arranged",
         group="Moving",
     ),
@@ -72,7 +74,7 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "node.open",
         ("enter",),
-        (STANDINGS, NODE),
+        _NODES,
         "open the node; in Node, make the neighbour the centre",
         "node",
         1,
@@ -147,6 +149,60 @@ ACTIONS: tuple[Action, ...] = (
         13,
         "Looking",
     ),
+    Action(
+        "mark.toggle",
+        ("x",),
+        _NODES,
+        "mark the row's node (in Node, the centre) for the shortlist, or take the mark off",
+        "mark",
+        14,
+        "Keeping",
+    ),
+    Action(
+        "note.write",
+        ("i",),
+        _NODES,
+        "write a note on the node, which marks it",
+        "note",
+        22,
+        "Keeping",
+    ),
+    Action(
+        "shortlist.open",
+        ("o",),
+        (STANDINGS, NODE, LOG),
+        "the shortlist: the nodes marked, their notes and their ranks",
+        "shortlist",
+        21,
+        "Keeping",
+    ),
+    Action(
+        "shortlist.jump",
+        ("j",),
+        (SHORTLIST,),
+        "jump to the node's row in the standings",
+        "jump to it",
+        2,
+        "Keeping",
+    ),
+    Action(
+        "shortlist.write",
+        ("w",),
+        (SHORTLIST,),
+        "write the shortlist to a CSV file",
+        "write CSV",
+        13,
+        "Keeping",
+    ),
+    Action(
+        "text.copy",
+        ("y",),
+        _NODES,
+        "copy the node's name to the terminal's clipboard; once more: the whole row",
+        "copy",
+        24,
+        "Keeping",
+    ),
     Action("find.next", ("n",), (STANDINGS,), "next row found", "next found", 16, "Looking"),
     Action("find.before", ("p",), (STANDINGS,), "row found before", "found before", 17, "Looking"),
     Action(
@@ -200,7 +256,7 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "step.back",
         ("escape",),
-        (STANDINGS, NODE, LOG, HELP, *_TYPING, CHOICE, NOTICE, COLUMNS),
+        (STANDINGS, NODE, LOG, HELP, SHORTLIST, *_TYPING, CHOICE, NOTICE, COLUMNS),
         "one step back; nothing is lost",
         "back",
         4,
@@ -208,12 +264,12 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "help.open",
         ("question_mark",),
-        (STANDINGS, NODE, LOG),
+        (STANDINGS, NODE, LOG, SHORTLIST),
         "every key, in words",
         "all keys",
         90,
     ),
-    Action("quit", ("q",), (STANDINGS, NODE, LOG, HELP, LOADING), "quit", "quit", 91),
+    Action("quit", ("q",), (*_ROOMS, LOADING), "quit", "quit", 91),
     Action(
         "quit.now",
         ("ctrl+c",),

@@ -23,6 +23,7 @@ from textual.app import App  # noqa: E402
 from textual.screen import Screen  # noqa: E402
 
 from kingpost.tui.jobs import Job, Runner  # noqa: E402
+from kingpost.tui.keeping import Keeper  # noqa: E402
 from kingpost.tui.views.base import View  # noqa: E402
 from kingpost.tui.views.loading import LoadingView  # noqa: E402
 
@@ -31,6 +32,7 @@ if TYPE_CHECKING:
     from kingpost.core.ingest import LoadOptions
     from kingpost.core.measures.base import Settings
     from kingpost.tui.desk import Desk
+    from kingpost.tui.models.marks import Marks
     from kingpost.tui.models.sitting import Sitting
     from kingpost.tui.models.standings import Standings
     from kingpost.tui.views.standings import StandingsView
@@ -49,6 +51,7 @@ class KingpostApp(App[int], inherit_bindings=False):
         os.path.join(os.path.dirname(__file__), name) for name in ("app.tcss", "views/loading.tcss")
     ]
     ENABLE_COMMAND_PALETTE = False
+    HELPERS = (Keeper,)
     TITLE = "kingpost"
 
     def __init__(
@@ -68,9 +71,12 @@ class KingpostApp(App[int], inherit_bindings=False):
         self.latest_news: tuple[str, str] = ("", "news")
         self.sentence = ""  # what is printed after leaving
         self._desk: Desk | None = None
+        self._trouble = ""  # said once there is a view to say it in
         self._paths, self._load = paths, load
         self._measure, self._settings = measure, settings
         self._keymaps: dict[str, dict[str, str]] = {}
+        self.keeper = Keeper(self)
+        self.helpers = (self.keeper,)
 
     # ---- start and end -------------------------------------------------------------------------
 
@@ -95,16 +101,25 @@ class KingpostApp(App[int], inherit_bindings=False):
             words="reading the edge table",
         )
 
-    def _load_all(self, job: Job) -> tuple[Sitting, Settings | None]:
+    def _load_all(self, job: Job) -> tuple[Sitting, Settings | None, Marks, str]:
         from importlib import import_module
 
         sitting = self.make_sitting(self._load(job), self._measure)
         graph = sitting.graph
         settings = self._settings(graph) if callable(self._settings) else self._settings
         import_module("kingpost.tui.desk")
-        for name in ("standings", "node", "solvelog", "settings", "help", "sheets", "columns"):
+        for name in (
+            "standings",
+            "node",
+            "solvelog",
+            "settings",
+            "help",
+            "sheets",
+            "columns",
+            "shortlist",
+        ):
             import_module(f"kingpost.tui.views.{name}")
-        return sitting, settings
+        return sitting, settings, *self.keeper.fetch(self._paths, graph)
 
     def make_sitting(self, graph: Graph, measure: str) -> Sitting:
         """The sitting over a graph just loaded."""
@@ -116,10 +131,11 @@ class KingpostApp(App[int], inherit_bindings=False):
         if isinstance(self.screen, LoadingView):
             self.screen.stage(job)
 
-    def _loaded(self, made: tuple[Sitting, Settings | None]) -> None:
+    def _loaded(self, made: tuple[Sitting, Settings | None, Marks, str]) -> None:
         from kingpost.tui.desk import Desk
 
-        sitting, settings = made
+        sitting, settings, marks, self._trouble = made
+        self.keeper.begin(self._paths, marks)
         if settings is not None:
             sitting.settings[self._measure] = settings
         self._desk = Desk(self.runner, sitting, self)
@@ -132,7 +148,14 @@ class KingpostApp(App[int], inherit_bindings=False):
 
     def leave(self, status: int) -> None:
         """Leave with an exit status; the terminal is restored by the driver."""
+        self.sentence = self.keeper.close() or self.sentence
         self.exit(status)
+
+    def send(self, sequence: str) -> None:
+        """Send an escape sequence to the terminal itself."""
+        if self._driver is not None:
+            self._driver.write(sequence)
+            self._driver.flush()
 
     def fault(self, error: Exception, words: str) -> None:
         """A fault of the program that the screen survives: a sentence, and a log file."""
@@ -245,8 +268,9 @@ class KingpostApp(App[int], inherit_bindings=False):
         """Show a table; the first one opens the standings."""
         from kingpost.tui.views.standings import StandingsView
 
+        table.marks = self.keeper.marks
         if first:
-            self.latest_news = ("", "news")
+            self.latest_news = (self._trouble, "bad")
             self.push_screen(StandingsView(table))
             return
         self.standings.show(table)
@@ -266,6 +290,12 @@ class KingpostApp(App[int], inherit_bindings=False):
         for screen in self.screen_stack:
             if isinstance(screen, View):
                 screen.refreshed()
+
+    def marks_changed(self) -> None:
+        """Tell every open view that a mark was made or taken off."""
+        for screen in self.screen_stack:
+            if isinstance(screen, View):
+                screen.marks_changed()
 
     def no_start(self, sentence: str) -> None:
         """There is nothing to show: leave with the reason."""
@@ -288,11 +318,17 @@ class KingpostApp(App[int], inherit_bindings=False):
         self.push_screen(NodeView(node))
 
     def close_node(self, node: int) -> None:
-        """Back to the standings, with the cursor on the node one ended at."""
+        """Back, with the cursor of the standings on the node one ended at."""
         self.pop_screen()
+        self.jump_to(node)
+
+    def jump_to(self, node: int) -> bool:
+        """Put the cursor of the standings on a node; False if no row shows it."""
         row = self.standings.model.row_of(node)
-        if row is not None:
-            self.standings.table.go(row)
+        if row is None:
+            return False
+        self.standings.table.go(row)
+        return True
 
     def open_settings(self, measure: str) -> None:
         """Open the form of a measure's settings."""

@@ -39,6 +39,7 @@ class Glyphs:
     falling: str
     levels: str  # bars that stand, from the lowest to the full one
     here: str  # where something is on a line of such bars
+    mark: str  # beside the name of a node on the shortlist
 
 
 UNICODE = Glyphs(
@@ -62,6 +63,7 @@ UNICODE = Glyphs(
     falling="▾",
     levels="▁▂▃▄▅▆▇█",
     here="◆",
+    mark="★",
 )
 ASCII = Glyphs(
     ascii=True,
@@ -84,6 +86,7 @@ ASCII = Glyphs(
     falling="v",
     levels="._-=*#",
     here="^",
+    mark="*",
 )
 
 # Only the terminal's own sixteen colours and its own background: they follow the reader's light
@@ -103,6 +106,7 @@ _COLOURED = {
     "news": "bold",
     "bad": "bold red",
     "hit": "underline",
+    "mark": "bold",
     "key": "bold",
     "letter": "bold",
     "residual": "cyan",

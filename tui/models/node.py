@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Container, Sequence
 from dataclasses import dataclass, field
 from typing import Any
 
@@ -31,6 +31,7 @@ class Neighbours:
     def __init__(self, nodes: Any, head: Sequence[Column]) -> None:
         self.nodes = nodes
         self.head = list(head)
+        self.marks: Container[int] = ()
 
     @property
     def count(self) -> int:
@@ -50,8 +51,12 @@ class Neighbours:
         return UNRANKED
 
     def marked(self, row: int) -> bool:
-        """Nothing is marked here."""
+        """Nothing is found here."""
         return False
+
+    def kept(self, item: int) -> bool:
+        """Whether a neighbour is on the shortlist."""
+        return int(self.nodes[item]) in self.marks
 
 
 @dataclass(frozen=True)

@@ -92,6 +92,13 @@ class Sitting:
             and getattr(self.results[name].settings, "flow", "along") == self.flow
         ]
 
+    def measures_shown(self) -> list[str]:
+        """Names of the measures whose ranks are shown side by side, in the registry's order."""
+        shown = [result.measure for result in self.others()]
+        if self.result is not None and self.result.refusal is None:
+            shown.append(self.current)
+        return [name for name in self.names if name in shown]
+
     def ranks(self, node: int) -> dict[str, tuple[str, int, int]]:
         """Letter -> (measure, first rank, last rank) of a node in every answer shown."""
         found: dict[str, tuple[str, int, int]] = {}

@@ -7,7 +7,7 @@ looking up the few rows it shows.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Container, Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -108,6 +108,7 @@ class Standings:
         self.arrangement = arrangement
         self.found: Found | None = None
         self.cursor = 0
+        self.marks: Container[int] = ()
 
     @property
     def count(self) -> int:
@@ -150,6 +151,10 @@ class Standings:
     def marked(self, row: int) -> bool:
         """Whether the row was found by the last search."""
         return self.found is not None and self.found.holds(row)
+
+    def kept(self, node: int) -> bool:
+        """Whether a node is on the shortlist."""
+        return node in self.marks
 
     def adopt(self, arrangement: Arrangement) -> None:
         """Show another arrangement, keeping the cursor on its node if that is still shown."""

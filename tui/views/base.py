@@ -18,8 +18,9 @@ if TYPE_CHECKING:
 class View(Screen[Any], inherit_bindings=False):
     """A screen whose keys come from the registry.
 
-    An action ``row.down`` is done by the method ``do_row_down`` of the view, else of the app.
-    A method ``can_row_down`` says whether it is possible here and now.
+    An action ``row.down`` is done by the method ``do_row_down`` of the view, else of the app,
+    else of one of the app's helpers.  A method ``can_row_down`` says whether it is possible here
+    and now.
     """
 
     AUTO_FOCUS = None
@@ -54,13 +55,32 @@ class View(Screen[Any], inherit_bindings=False):
     def possible(self, action_id: str) -> bool:
         """Whether an action of this view can be done now."""
         name = action_id.replace(".", "_")
-        can = getattr(self, f"can_{name}", None) or getattr(self.app, f"can_{name}", None)
+        can = self._found(f"can_{name}")
         if can is not None and not can():
             return False
         return self._doer(name) is not None
 
     def _doer(self, name: str) -> Any:
-        return getattr(self, f"do_{name}", None) or getattr(self.app, f"do_{name}", None)
+        return self._found(f"do_{name}")
+
+    def _found(self, name: str) -> Any:
+        """A method of the view, else of the application, else of one of its helpers."""
+        for one in (self, self.app, *self.kingpost.helpers):
+            found = getattr(one, name, None)
+            if found is not None:
+                return found
+        return None
+
+    def node_at_hand(self) -> int | None:
+        """The node that marks, notes and copying are about, in views that have one."""
+        return None
+
+    def row_at_hand(self) -> list[str]:
+        """The cells of the row at hand, as shown, for copying."""
+        return []
+
+    def marks_changed(self) -> None:
+        """Called when the node at hand was marked or its mark taken off."""
 
     def take(self, event: events.Key | events.Paste) -> None:
         """A key or pasted text for this view; kept until its widgets exist."""

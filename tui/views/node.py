@@ -76,6 +76,8 @@ class NodeView(View):
         if not self.composed or not self.is_attached:
             return
         self._shown = (model.node, id(self.kingpost.sitting.result))
+        marks = self.kingpost.keeper.marks
+        model.feeders.marks = model.receivers.marks = self.panel.marks = marks
         self.panel.show(self.kingpost.sitting, model, self._way())
         self.refresh_keys()
         self.tell(*self.kingpost.latest_news)
@@ -87,6 +89,16 @@ class NodeView(View):
         if len(self.trail.before) > _WAY:
             names.insert(0, glyphs.ellipsis)
         return f" {glyphs.way} ".join(names)
+
+    def node_at_hand(self) -> int | None:
+        return self.trail.nodes[self.trail.at]
+
+    def row_at_hand(self) -> list[str]:
+        return self.kingpost.standings.cells_of(self.trail.nodes[self.trail.at])
+
+    def marks_changed(self) -> None:
+        if self.composed:
+            self.panel.describe(self.kingpost.sitting, self._way())
 
     # ---- actions -----------------------------------------------------------------------------
 

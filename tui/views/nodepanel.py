@@ -2,15 +2,21 @@
 
 from __future__ import annotations
 
+from typing import TYPE_CHECKING
+
 from textual.app import ComposeResult
 from textual.widget import Widget
 
+from kingpost.core.text import visible
 from kingpost.tui.models import detail
 from kingpost.tui.models.drawing import tame
 from kingpost.tui.models.node import NodeModel
 from kingpost.tui.models.sitting import Sitting
 from kingpost.tui.widgets.lines import Line, Rule, looks_of
 from kingpost.tui.widgets.rowtable import RowTable
+
+if TYPE_CHECKING:
+    from kingpost.tui.models.marks import Marks
 
 
 class NodePanel(Widget):
@@ -26,6 +32,7 @@ class NodePanel(Widget):
         super().__init__(id=id)
         self._cursor = cursor
         self.model: NodeModel | None = None
+        self.marks: Marks | None = None  # of the sitting, where there are any
 
     def compose(self) -> ComposeResult:
         yield Line(id="who")
@@ -52,10 +59,8 @@ class NodePanel(Widget):
     def show(self, sitting: Sitting, model: NodeModel, came_by: str = "") -> None:
         """Put a node at the centre."""
         self.model = model
-        glyphs = looks_of(self).glyphs
         self.feeders.show(model.feeders, 0, empty="nothing gives score to it")
         self.receivers.show(model.receivers, 0, empty="it gives score to nothing")
-        self.query_one("#centre", Rule).title(f"{glyphs.down} {tame(model.name, glyphs)}")
         if self._cursor:
             self.activate(self.feeders if model.feeders.count else self.receivers)
         self.describe(sitting, came_by)
@@ -65,6 +70,11 @@ class NodePanel(Widget):
         model, glyphs = self.model, looks_of(self).glyphs
         assert model is not None
         result = sitting.result
+        title = f"{glyphs.down} {tame(model.name, glyphs)}"
+        mark = None if self.marks is None else self.marks.of(model.node)
+        if mark is not None:
+            title += f" {glyphs.mark} {tame(visible(mark.note, 120), glyphs)}".rstrip()
+        self.query_one("#centre", Rule).title(title)
         self.query_one("#who", Line).show_by(
             lambda width: detail.who_line(model, came_by, width, glyphs)
         )

@@ -196,6 +196,20 @@ class StandingsView(View):
     def do_columns_right(self) -> None:
         self.table.sideways(1)
 
+    def node_at_hand(self) -> int | None:
+        return self.model.node
+
+    def row_at_hand(self) -> list[str]:
+        return [] if self.model.node is None else self.cells_of(self.model.node)
+
+    def cells_of(self, node: int) -> list[str]:
+        """What the table shows, or would show, of a node."""
+        return [column.text(node) for column in self.model.head]
+
+    def marks_changed(self) -> None:
+        if self.composed:
+            self.table.repaint()
+
     # ---- looking and investigating -------------------------------------------------------------
 
     def can_node_open(self) -> bool:

@@ -25,7 +25,10 @@ _RAIL_ROLES = ("proven", "open", "tied", "quiet")
 
 
 class Source(Protocol):
-    """What a table shows: ``count`` rows, each an item that the columns turn into text."""
+    """What a table shows: ``count`` rows, each an item that the columns turn into text.
+
+    A source may also have ``kept(item)``: whether the item is on the shortlist.
+    """
 
     head: list[Column]
 
@@ -114,6 +117,10 @@ class RowTable(Widget):
         if active != self._active:
             self._active = active
             self._paint(self._row)
+
+    def repaint(self) -> None:
+        """Repaint the row under the cursor: its mark has changed."""
+        self._paint(self._row)
 
     def item(self) -> int | None:
         """The item under the cursor."""
@@ -238,7 +245,8 @@ class RowTable(Widget):
         y = row - self._top + (1 if self._headings else 0)
         lead = 2 if self._rail else 1
         frozen = [w for w, c in zip(self._widths, self._source.head, strict=True) if c.frozen]
-        width = lead + sum(frozen) + len(_GAP) * (len(frozen) - 1)
+        # One cell more than the names take: the mark of a shortlisted node.
+        width = lead + sum(frozen) + len(_GAP) * (len(frozen) - 1) + 1
         self.refresh(Region(0, y, min(width, self.size.width), 1))
 
     def render_line(self, y: int) -> Strip:
@@ -284,6 +292,7 @@ class RowTable(Widget):
         pieces.append((glyphs.pointer if here else " ", "plain"))
         item = source.item(row)
         hit = source.marked(row)
+        kept = getattr(source, "kept", None)
         columns = self._shown_columns()
         for place, (at, column) in enumerate(columns):
             text = fit(column.text(item), self._widths[at], column.right, glyphs)
@@ -292,7 +301,11 @@ class RowTable(Widget):
                 # Two roles at once: a style in words is taken as it is.
                 role = f"{looks.styles[role]} {looks.styles['hit']}".strip()
             pieces.append((text, role))
-            if place < len(columns) - 1:
+            if column.frozen and column.stretch and kept is not None and kept(item):
+                # The mark stands in the gap behind the name, whether there is a column or not.
+                pieces.append((glyphs.mark, "mark"))
+                pieces.append((_GAP[1:], "plain"))
+            elif place < len(columns) - 1:
                 beside = here and column.frozen and columns[place + 1][1].frozen
                 pieces.append((_GAP, "cursor" if beside else "plain"))
         return pieces
