@@ -59,7 +59,8 @@ def write_private(path: Path, data: bytes) -> None:
             raise
     except OSError as trouble:
         why = trouble.strerror or str(trouble)
-        raise StateError(f"{path} cannot be written: {why}") from None
+        # The reason first: on a narrow screen the end of a sentence is cut.
+        raise StateError(f"nothing can be kept ({why}): {path}") from None
 
 
 def write_json(path: Path, value: Any) -> None:

@@ -200,6 +200,8 @@ def terminal(tmp_path: Path) -> Iterator[Callable[..., Terminal]]:
             "TERM": "xterm-256color",
             "LANG": "C.UTF-8",
             "XDG_STATE_HOME": str(tmp_path / "state"),
+            "XDG_CONFIG_HOME": str(tmp_path / "config"),
+            "XDG_CACHE_HOME": str(tmp_path / "cache"),
         }
         env |= environment
         argv = [sys.executable, "-m", "kingpost.tui", *map(str, arguments)]

@@ -149,8 +149,9 @@ ATTRIBUTES = {"team": ["red", None, "blue", "red", "blue", "amber"], "tier": [3,
 
 @pytest.fixture(autouse=True)
 def _state_of_its_own(tmp_path: Any, monkeypatch: pytest.MonkeyPatch) -> None:
-    """Logs of faults made on purpose stay out of the home folder."""
-    monkeypatch.setenv("XDG_STATE_HOME", str(tmp_path))
+    """Logs of faults, marks and sittings stay out of the home folder."""
+    for name in ("XDG_STATE_HOME", "XDG_CONFIG_HOME", "XDG_CACHE_HOME"):
+        monkeypatch.setenv(name, str(tmp_path / name.split("_")[1].lower()))
 
 
 @pytest.fixture

@@ -10,7 +10,7 @@ from textual import events
 from textual.app import ComposeResult
 
 from kingpost.core.standing import UNRANKED
-from kingpost.core.text import visible
+from kingpost.core.text import count, visible
 from kingpost.tui.actions import SHORTLIST
 from kingpost.tui.models import marks as model
 from kingpost.tui.models.columns import Column
@@ -133,8 +133,8 @@ class ShortlistView(View):
 
     def _describe(self) -> None:
         name = visible(self.kingpost.sitting.graph.origin.name, 40)
-        count = f"{len(self.marks):,} {'node' if len(self.marks) == 1 else 'nodes'} marked"
-        self.query_one("#head", Line).show((f" {name}", "head"), (f"   {count}", "plain"))
+        marked = f"   {count(len(self.marks), 'node')} marked"
+        self.query_one("#head", Line).show((f" {name}", "head"), (marked, "plain"))
         mark = self.mark
         line = self.query_one("#note", Line)
         if mark is None:
@@ -272,6 +272,6 @@ class ShortlistView(View):
         self.kingpost.background(
             "write",
             work,
-            lambda rows: self.kingpost.news(f"wrote {rows:,} rows to {visible(path, 60)}"),
+            lambda rows: self.kingpost.news(f"wrote {count(rows, 'row')} to {visible(path, 60)}"),
             words="writing the shortlist",
         )
