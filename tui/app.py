@@ -37,6 +37,18 @@ if TYPE_CHECKING:
     from kingpost.tui.models.standings import Standings
     from kingpost.tui.views.standings import StandingsView
 
+# Imported with the graph, so that opening one does not keep the screen waiting.
+_VIEWS = (
+    "standings",
+    "node",
+    "solvelog",
+    "settings",
+    "help",
+    "sheets",
+    "columns",
+    "shortlist",
+)
+
 FAULT = 70  # exit status of a fault of the program
 _PATIENCE = 2.0  # seconds that threads get to end on leaving
 

@@ -27,7 +27,7 @@ async def test_marking_noting_and_leaving_keeps_both_for_the_next_sitting(graph,
         await opened(pilot)
         await pilot.press("x")
         await until(pilot, lambda: "marked gate; 1 on the shortlist" in app.shown())
-        assert "gate  ◆" in app.shown()
+        assert "gate  ★" in app.shown()
         await pilot.press("down", "i", *"too few", "enter")
         await until(pilot, lambda: "noted on fare" in app.shown())
         await pilot.press("q")
@@ -37,8 +37,8 @@ async def test_marking_noting_and_leaving_keeps_both_for_the_next_sitting(graph,
     again = Kingpost(graph, bench)
     async with again.run_test(size=(80, 24)) as pilot:
         await opened(pilot)
-        assert again.shown().count("◆") == 2
-        await pilot.press("k")
+        assert again.shown().count("★") == 2
+        await pilot.press("o")
         await until(pilot, lambda: "2 nodes marked" in again.shown())
         assert "too few" in again.shown()
 
@@ -46,7 +46,7 @@ async def test_marking_noting_and_leaving_keeps_both_for_the_next_sitting(graph,
 async def test_the_shortlist_takes_off_and_puts_back_and_jumps(app):
     async with app.run_test(size=(80, 24)) as pilot:
         await opened(pilot)
-        await pilot.press("x", "down", "down", "x", "t", "k")
+        await pilot.press("x", "down", "down", "x", "t", "o")
         await until(pilot, lambda: "2 nodes marked" in app.shown())
         await pilot.press("x")
         await until(pilot, lambda: "1 node marked" in app.shown())
@@ -62,15 +62,15 @@ async def test_node_marks_its_centre_and_shows_the_note(app):
     async with app.run_test(size=(80, 24)) as pilot:
         await opened(pilot)
         await pilot.press("enter", "i", *"look", "enter")
-        await until(pilot, lambda: "▼ gate ◆ look" in app.shown())
+        await until(pilot, lambda: "▼ gate ★ look" in app.shown())
         await pilot.press("x")
-        await until(pilot, lambda: "◆" not in app.shown())
+        await until(pilot, lambda: "★" not in app.shown())
 
 
 async def test_an_empty_shortlist_says_what_to_do(app):
     async with app.run_test(size=(80, 24)) as pilot:
         await opened(pilot)
-        await pilot.press("k")
+        await pilot.press("o")
         await until(pilot, lambda: "no node is marked yet" in app.shown())
         assert "w write" not in app.shown()
         await pilot.press("x", "i", "w", "j", "enter", "escape")
@@ -81,7 +81,7 @@ async def test_the_shortlist_is_written_and_never_over_a_file_unasked(app, tmp_p
     monkeypatch.chdir(tmp_path)
     async with app.run_test(size=(80, 24)) as pilot:
         await opened(pilot)
-        await pilot.press("x", "k", "w", "enter")
+        await pilot.press("x", "o", "w", "enter")
         await until(pilot, lambda: "wrote 1 row to hand_made_shortlist.csv" in app.shown())
         target = tmp_path / "hand_made_shortlist.csv"
         rows = list(csv.reader(target.read_text().splitlines()))
@@ -110,7 +110,7 @@ async def test_marks_that_cannot_be_kept_are_said_and_said_again_on_leaving(
         await opened(pilot)
         await pilot.press("x")
         await until(pilot, lambda: "nothing can be kept (Not a directory)" in app.shown())
-        assert "gate  ◆" in app.shown()
+        assert "gate  ★" in app.shown()
         await pilot.press("q")
         await until(pilot, lambda: app._exit)
     assert app.sentence.startswith("the marks are lost: ")
