@@ -79,8 +79,11 @@ class Adjacency:
 class Account:
     """What became of every row of the edge table; travels with the graph.
 
-    ``rows_read = rows_kept + sum(skipped.values())``, and
-    ``Graph.m = rows_kept - loops_dropped - merged - zero_weight``, exactly.  Of the kept rows
+    ``rows_read = rows_kept + filtered + outside + sum(skipped.values())``, and
+    ``Graph.m = rows_kept - loops_dropped - merged - zero_weight``, exactly.  ``filtered`` rows
+    are those for which ``Origin.where`` is not true, ``filtered_null`` of them because it is
+    neither true nor false; a filtered row is not looked at any further.  ``outside`` rows have
+    an end that ``Origin.node_where`` left out.  Of the kept rows
     ``loops`` lead from a node to itself, and ``loops_dropped`` is 0 or all of these; ``merged``
     counts the other rows that were folded into an edge an earlier row had named; ``zero_weight``
     counts edges (after merging) that weigh 0: they carry nothing and are left out.  The ends of
@@ -88,9 +91,10 @@ class Account:
     every reason in ``skipped``, safe to print; so are ``notes``.
 
     ``nodes_rows = nodes_joined + nodes_unknown + nodes_repeated`` and
-    ``Graph.n = nodes_joined + nodes_missing`` where a nodes table was joined: rows that describe
-    a node, rows with a null id or one that no edge names, further rows of an id already met,
-    and nodes without a row.
+    ``Graph.n = nodes_joined + nodes_missing - nodes_filtered`` where a nodes table was joined:
+    rows that describe a node, rows with a null id or one that no edge names, further rows of an
+    id already met, and nodes without a row.  ``nodes_filtered`` nodes were left out by
+    ``Origin.node_where``, ``nodes_filtered_null`` of them because it is neither true nor false.
     """
 
     rows_read: int = 0
@@ -102,11 +106,15 @@ class Account:
     loops_dropped: int = 0
     zero_weight: int = 0
     filtered: int = 0
+    filtered_null: int = 0
+    outside: int = 0
     nodes_rows: int = 0
     nodes_joined: int = 0
     nodes_unknown: int = 0
     nodes_missing: int = 0
     nodes_repeated: int = 0
+    nodes_filtered: int = 0
+    nodes_filtered_null: int = 0
     notes: tuple[str, ...] = ()
 
 
@@ -124,6 +132,8 @@ class Origin:
     bad_rows: str = "refuse"
     nodes_file: str | None = None
     node_id: str | None = None
+    where: str | None = None
+    node_where: str | None = None
 
     @property
     def name(self) -> str:
@@ -132,6 +142,12 @@ class Origin:
             return "graph"
         first = self.files[0].rstrip("/").rsplit("/", 1)[-1]
         return first if len(self.files) == 1 else f"{first} +{len(self.files) - 1}"
+
+    @property
+    def where_words(self) -> str | None:
+        """The filters, in a few words; None where there are none."""
+        named = (("where", self.where), ("nodes where", self.node_where))
+        return "; ".join(f"{name}: {text}" for name, text in named if text is not None) or None
 
     @property
     def weight_words(self) -> str:

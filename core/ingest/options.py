@@ -13,6 +13,8 @@ CHOICES: dict[str, tuple[str, ...]] = {
     "weight_as": ("asis", "log1p", "inverse", "none"),
 }
 
+_NAMES = ("source", "target", "weight", "nodes", "node_id")
+
 
 @dataclass(frozen=True, kw_only=True)
 class LoadOptions:
@@ -34,6 +36,10 @@ class LoadOptions:
         weight_as: applied after merging: ``asis``; ``log1p``, the natural logarithm of 1 + w;
             ``inverse``, 1 / w, for weights that are distances; ``none``, the column is ignored
             and every row counts 1.
+        where: an SQL expression over the columns of the edge table; rows for which it is true
+            are read, the others are counted and otherwise not looked at.
+        node_where: an SQL expression over the columns of the nodes table; nodes for which it is
+            true stay, with the edges among them (the induced subgraph).
 
     Raises:
         SettingsError: for a value that is none of the choices.
@@ -49,6 +55,8 @@ class LoadOptions:
     loops: str = "keep"
     bad_rows: str = "refuse"
     weight_as: str = "asis"
+    where: str | None = None
+    node_where: str | None = None
 
     def __post_init__(self) -> None:
         for name, choices in CHOICES.items():
@@ -57,10 +65,10 @@ class LoadOptions:
                 flag = "--" + name.replace("_", "-")
                 raise SettingsError(f"{flag} is {value!r}; it takes {', '.join(choices)}")
         for item in fields(self):
-            if item.name in ("source", "target", "weight", "nodes", "node_id"):
-                value = getattr(self, item.name)
-                if value is not None and (not isinstance(value, str) or not value):
-                    flag = "--" + item.name.replace("_", "-")
+            value = getattr(self, item.name)
+            if item.name in _NAMES and value is not None:
+                flag = "--" + item.name.replace("_", "-")
+                if not isinstance(value, str) or not value:
                     raise SettingsError(f"{flag} is {value!r}; it takes a name")
         if self.source is not None and self.source == self.target:
             raise SettingsError(
