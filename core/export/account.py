@@ -17,7 +17,9 @@ def account_pairs(account: Account) -> list[tuple[str, str]]:
     if account.zero_weight:
         pairs.append(("left out", count(account.zero_weight, "edge") + " of weight zero"))
     if account.filtered:
-        pairs.append(("filtered", f"{account.filtered:,}"))
+        pairs.append(("filtered", _filtered(account)))
+    if account.nodes_filtered:
+        pairs.append(("nodes left out", _outside(account)))
     if account.nodes_rows:
         pairs.append(("node table", _joined(account)))
     return pairs
@@ -26,11 +28,29 @@ def account_pairs(account: Account) -> list[tuple[str, str]]:
 def losses(account: Account) -> list[str]:
     """Only what a user should hear unasked: rows that were skipped, node rows that met nobody."""
     found = [f"skipped {_skipped(account, reason)}" for reason in account.skipped]
+    if account.filtered:
+        found.append(f"filtered {_filtered(account)}")
+    if account.nodes_filtered:
+        found.append(f"left out {_outside(account)}")
     if account.zero_weight:
         found.append(f"left out {count(account.zero_weight, 'edge')} of weight zero")
     if account.nodes_unknown or account.nodes_repeated or account.nodes_missing:
         found.append(f"node table: {_joined(account)}")
     return found
+
+
+def _filtered(account: Account) -> str:
+    words = f"{count(account.filtered, 'row')} for which where is not true"
+    if account.filtered_null:
+        words += f", {account.filtered_null:,} of them because it is neither true nor false"
+    return words
+
+
+def _outside(account: Account) -> str:
+    words = f"{count(account.nodes_filtered, 'node')} for which node-where is not true"
+    if account.nodes_filtered_null:
+        words += f" ({account.nodes_filtered_null:,} neither true nor false)"
+    return f"{words}, and {count(account.outside, 'row')} that lead to or from one"
 
 
 def _skipped(account: Account, reason: str) -> str:

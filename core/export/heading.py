@@ -37,6 +37,8 @@ def graph_line(graph: Graph, flow: str | None = None) -> str:
     elif flow is not None:
         arrow = f"{visible(origin.source, 40)} -> {visible(origin.target, 40)}"
         parts.append(f"score flows {flow} {arrow}")
+    if origin.where_words is not None:
+        parts.append(visible(origin.where_words, 200))
     return "  ".join(parts)
 
 

@@ -34,21 +34,28 @@ Paths = str | os.PathLike[str] | Sequence[str | os.PathLike[str]]
 class Part:
     """One file or table: its columns, its number of rows, and a reader of chosen columns.
 
-    ``read(columns, encoded)`` may hand out text columns as Arrow dictionaries if ``encoded``.
+    ``read(columns, encoded, groups)`` may hand out text columns as Arrow dictionaries if
+    ``encoded``; with ``groups`` it reads these row groups only, whose numbers of rows the field
+    ``groups`` holds where the file has any.  ``limits(group, column)`` are the least and greatest
+    value of a column without nulls, as far as the file says so.
     """
 
     name: str
     schema: pa.Schema
     rows: int
-    read: Callable[[list[str], bool], Iterator[pa.RecordBatch]]
+    read: Callable[..., Iterator[pa.RecordBatch]]
     partitions: frozenset[str] = field(default_factory=frozenset)
     nulls: dict[str, int] = field(default_factory=dict)  # where known without reading
+    groups: tuple[int, ...] = ()
+    limits: Callable[[int, str], tuple[Any, Any] | None] = lambda group, column: None
 
 
 def parts_of_table(table: pa.Table, name: str) -> list[Part]:
     """A table in memory as a single part."""
 
-    def read(columns: list[str], encoded: bool) -> Iterator[pa.RecordBatch]:
+    def read(
+        columns: list[str], encoded: bool, groups: Sequence[int] | None = None
+    ) -> Iterator[pa.RecordBatch]:
         yield from table.select(columns).to_batches(max_chunksize=BATCH_ROWS)
 
     nulls = {item: table.column(at).null_count for at, item in enumerate(table.schema.names)}
@@ -138,12 +145,23 @@ def _open(file: str, partitions: dict[str, pa.Array]) -> Part:
         nulls[name] = rows * value.null_count
         schema = schema.append(pa.field(name, value.type))
 
-    def read(columns: list[str], encoded: bool) -> Iterator[pa.RecordBatch]:
+    sizes = tuple(
+        fragment.metadata.row_group(group).num_rows
+        for group in range(fragment.metadata.num_row_groups)
+    )
+
+    def read(
+        columns: list[str], encoded: bool, groups: Sequence[int] | None = None
+    ) -> Iterator[pa.RecordBatch]:
         inside = [name for name in columns if name not in extra]
         read = 0
         held = [name for name in inside if encoded and name in repetitive]
+        expected = rows if groups is None else sum(sizes[group] for group in groups)
         try:
-            for batch in _scan(_fragment(file, held) if held else fragment, inside):
+            source = _fragment(file, held) if held else fragment
+            if groups is not None:
+                source = source.subset(row_group_ids=list(groups))
+            for batch in _scan(source, inside):
                 arrays = [
                     pa.repeat(extra[name][0], batch.num_rows)
                     if name in extra
@@ -156,10 +174,30 @@ def _open(file: str, partitions: dict[str, pa.Array]) -> Part:
             raise InputError(
                 f"{file} is damaged: its rows cannot be read ({first_line(error)})"
             ) from None
-        if read != rows:
-            raise InputError(f"{file} is damaged: it holds {read:,} rows, its footer says {rows:,}")
+        if read != expected:
+            raise InputError(
+                f"{file} is damaged: it holds {read:,} rows, its footer says {expected:,}"
+            )
 
-    return Part(file, schema, rows, read, frozenset(extra), nulls)
+    def limits(group: int, column: str) -> tuple[Any, Any] | None:
+        if column in extra:
+            value = extra[column][0]
+            return (value.as_py(), value.as_py()) if value.is_valid else None
+        return _limits(fragment.metadata, group, column)
+
+    return Part(file, schema, rows, read, frozenset(extra), nulls, sizes, limits)
+
+
+def _limits(footer: Any, group: int, column: str) -> tuple[Any, Any] | None:
+    """Least and greatest value in a row group, where the footer knows and nothing is null."""
+    for at in range(footer.num_columns):
+        if footer.schema.column(at).path != column:
+            continue
+        about = footer.row_group(group).column(at).statistics
+        if about is None or not about.has_min_max or not about.has_null_count or about.null_count:
+            return None
+        return about.min, about.max
+    return None
 
 
 def _scan(fragment: Any, columns: list[str]) -> Iterator[pa.RecordBatch]:

@@ -33,6 +33,7 @@ class Joined:
 
     attributes: pa.Table | None = None
     column: str | None = None
+    file: str | None = None
     rows: int = 0
     joined: int = 0
     unknown: int = 0
@@ -69,6 +70,7 @@ def join_nodes(options: LoadOptions, labels: pa.Array, watch: Watch) -> Joined:
     return Joined(
         attributes=_without_views(table.drop_columns([column])).take(rows).combine_chunks(),
         column=column,
+        file=path,
         rows=table.num_rows,
         joined=joined,
         unknown=table.num_rows - len(known),

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
 from dataclasses import dataclass, field
 
 import numpy as np
@@ -14,6 +14,7 @@ from kingpost.core.graph import Floats
 from kingpost.core.ingest.columns import Roles
 from kingpost.core.ingest.files import Part
 from kingpost.core.ingest.idtypes import convert_ids, unwrap
+from kingpost.core.ingest.where import Filter, Kept
 from kingpost.core.text import count, id_text, visible
 from kingpost.core.watch import Watch
 
@@ -38,12 +39,16 @@ class Rows:
     weights: list[Floats] = field(default_factory=list)
     read: int = 0
     kept: int = 0
+    filtered: int = 0
+    filtered_null: int = 0
     skipped: dict[str, int] = field(default_factory=dict)
     examples: dict[str, list[str]] = field(default_factory=dict)
 
 
-def read_rows(parts: list[Part], roles: Roles, bad_rows: str, watch: Watch) -> Rows:
-    """Read the chosen columns of all parts.
+def read_rows(
+    parts: list[Part], roles: Roles, bad_rows: str, watch: Watch, chosen: Filter | None = None
+) -> Rows:
+    """Read the columns of all parts that serve, of the rows that ``chosen`` keeps.
 
     Raises:
         RowsError: if rows are bad and the policy is to refuse, or if no good row is left.
@@ -56,28 +61,42 @@ def read_rows(parts: list[Part], roles: Roles, bad_rows: str, watch: Watch) -> R
     rows = Rows()
     columns = [roles.source, roles.target, *([roles.weight] if roles.weight else [])]
     for part in parts:
-        name = _row_names(part.name if len(parts) > 1 else None, rows.read)
-        for batch in part.read(columns, True):
+        name = _row_names(part.name if len(parts) > 1 else None)
+        pieces = _whole(part, columns) if chosen is None else chosen.read(part, columns, watch)
+        for piece in pieces:
             watch.check()
-            _take(rows, batch, roles, part.name, name)
+            _take(rows, piece, roles, part.name, name)
             watch.report("reading rows", rows.read, total, "rows")
             if rows.skipped and bad_rows == "refuse":
                 # Nothing will be built from them: only the counts go on.
                 rows.source, rows.target, rows.weights = [], [], []
     if rows.skipped and (bad_rows == "refuse" or rows.kept == 0):
         raise RowsError(_refusal(rows, bad_rows))
+    if rows.kept == 0 and chosen is not None:
+        raise RowsError(_nothing_kept(rows, chosen))
     return rows
 
 
-def _row_names(file: str | None, start: int) -> Callable[[int], str]:
-    """Names of rows by their number over all files: counted from 1 within each file."""
+def _whole(part: Part, columns: list[str]) -> Iterator[Kept]:
+    start = 0
+    for batch in part.read(columns, True):
+        yield Kept(start, batch.num_rows, batch, None)
+        start += batch.num_rows
+
+
+def _row_names(file: str | None) -> Callable[[int], str]:
+    """Names of rows by their place in their file: counted from 1."""
     head = "row" if file is None else f"{file} row"
-    return lambda at: f"{head} {at + 1 - start:,}"
+    return lambda at: f"{head} {at + 1:,}"
 
 
-def _take(
-    rows: Rows, batch: pa.RecordBatch, roles: Roles, where: str, name: Callable[[int], str]
-) -> None:
+def _take(rows: Rows, piece: Kept, roles: Roles, where: str, name: Callable[[int], str]) -> None:
+    batch = piece.batch
+    rows.read += piece.rows
+    rows.filtered += piece.rows - (0 if batch is None else batch.num_rows)
+    rows.filtered_null += piece.unknown
+    if batch is None:
+        return
     source = convert_ids(batch.column(0), roles.id_type, roles.source, where)
     target = convert_ids(batch.column(1), roles.id_type, roles.target, where)
     weights: Floats | None = None
@@ -85,10 +104,9 @@ def _take(
     if roles.weight is not None:
         weights, null_weight = to_floats(batch.column(2))
     reason = _reasons(source, target, weights, null_weight)
-    start = rows.read
-    rows.read += batch.num_rows
     if reason is not None:
-        _count_bad(rows, reason, (source, target, weights), start, name)
+        at = np.arange(batch.num_rows) if piece.at is None else piece.at
+        _count_bad(rows, reason, (source, target, weights), at + piece.start, name)
         good = reason == 0
         mask = pa.array(good)
         source, target = source.filter(mask), target.filter(mask)
@@ -146,7 +164,7 @@ def _count_bad(
     rows: Rows,
     reason: NDArray[np.uint8],
     columns: tuple[pa.Array, pa.Array, Floats | None],
-    start: int,
+    places: NDArray[np.int64],
     name: Callable[[int], str],
 ) -> None:
     source, target, weights = columns
@@ -160,7 +178,7 @@ def _count_bad(
             ends = f"{_shown(source[int(row)])} -> {_shown(target[int(row)])}"
             if weights is not None and code > 3:
                 ends += f" weighs {weights[row]:g}"
-            examples.append(f"{name(start + int(row))}: {ends}")
+            examples.append(f"{name(int(places[row]))}: {ends}")
 
 
 def _shown(value: pa.Scalar) -> str:
@@ -183,3 +201,13 @@ def _refusal(rows: Rows, bad_rows: str) -> str:
     if bad_rows == "refuse":
         return f"{head}; mend them, or leave them out with --bad-rows skip"
     return f"{head}; no row is left"
+
+
+def _nothing_kept(rows: Rows, chosen: Filter) -> str:
+    null = ""
+    if rows.filtered_null:
+        null = f" (for {rows.filtered_null:,} of them it is neither true nor false)"
+    return (
+        f"--where {visible(chosen.expression.text, 80)!r} is true for none of "
+        f"{count(rows.read, 'row')}{null}; an edge table needs at least one"
+    )

@@ -9,6 +9,7 @@ functions whose value depends on their arguments alone.
 from __future__ import annotations
 
 import difflib
+import functools
 import json
 import threading
 from collections.abc import Iterator, Sequence
@@ -85,9 +86,7 @@ class Expression:
         Raises:
             InputError: for a column that the table lacks or holds twice.
         """
-        found: dict[str, None] = {}
-        for names in _column_names(self.tree, frozenset()):
-            found[self._resolve(names, schema, where)] = None
+        found = self.columns_of(self.tree, schema, where)
         lower = [name.lower() for name in found]
         twins = [name for name in found if lower.count(name.lower()) > 1]
         if twins:
@@ -95,7 +94,12 @@ class Expression:
                 f"{self.option} names columns of {where} that differ by case only, which SQL "
                 f"cannot tell apart: {listed(twins)}; rename one of them"
             )
-        return list(found)
+        return found
+
+    def columns_of(self, tree: Any, schema: pa.Schema, where: str) -> list[str]:
+        """Like :meth:`columns`, for a part of the syntax tree."""
+        names = _column_names(tree, frozenset())
+        return list(dict.fromkeys(self._resolve(path, schema, where) for path in names))
 
     def _resolve(self, names: Sequence[str], schema: pa.Schema, where: str) -> str:
         for name in names[:2] if len(names) > 1 and names[0].lower() == "edges" else names[:1]:
@@ -243,19 +247,8 @@ class Expression:
         return f"{self.option} does not read as one SQL expression{place}: {words}"
 
     def _check(self, tree: dict[str, Any]) -> None:
-        allowed = {
-            name
-            for name, kind, stability in self._connection.execute(
-                "SELECT function_name, function_type, stability FROM duckdb_functions()"
-            ).fetchall()
-            if kind == "macro" or (kind == "scalar" and stability != "VOLATILE")
-        }
-        known = {
-            name: kind
-            for name, kind in self._connection.execute(
-                "SELECT function_name, function_type FROM duckdb_functions()"
-            ).fetchall()
-        }
+        known = _catalogue()
+        allowed = {name for name, kind in known.items() if kind == "fine"}
         for node in _nodes(tree):
             kind = str(node.get("class", ""))
             if kind in _REFUSED:
@@ -267,7 +260,7 @@ class Expression:
             if not name or kind != "FUNCTION":
                 continue
             if name in _FLEETING or (name in known and name not in allowed):
-                if known.get(name) in ("aggregate", "window"):
+                if known.get(name) == "of many rows":
                     raise SettingsError(
                         f"{self.option} uses {name}, which is a value of many rows; it takes a "
                         "condition on each row by itself"
@@ -326,6 +319,24 @@ class _Interrupter:
     def __exit__(self, *_: object) -> None:
         self._done.set()
         self._thread.join()
+
+
+@functools.cache
+def _catalogue() -> dict[str, str]:
+    """The engine's functions: ``fine``, ``of many rows`` or ``fleeting``."""
+    found: dict[str, str] = {}
+    rows = _locked().execute(
+        "SELECT DISTINCT function_name, function_type, stability FROM duckdb_functions()"
+    )
+    for name, kind, stability in rows.fetchall():
+        word = "fleeting"
+        if kind == "macro" or (kind == "scalar" and stability != "VOLATILE"):
+            word = "fine"
+        elif kind in ("aggregate", "window"):
+            word = "of many rows"
+        if found.get(name) != "fine":
+            found[name] = word
+    return found
 
 
 def _locked() -> Any:

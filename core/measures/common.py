@@ -73,9 +73,11 @@ def conventions(graph: Graph, settings: Settings, **more: str) -> dict[str, str]
         flow = f"against {graph.origin.source} -> {graph.origin.target}: high is who points at"
     account = graph.account
     loops = graph.loop_count
+    filters = graph.origin.where_words
     return {
         "flow": flow,
         "weight": graph.origin.weight_words,
+        **({"rows": f"filtered, {filters}"} if filters is not None else {}),
         "parallel edges": f"{graph.origin.parallel} ({account.merged:,} rows merged)",
         "self-loops": f"dropped ({account.loops_dropped:,})"
         if graph.origin.loops == "drop"

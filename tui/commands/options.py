@@ -115,6 +115,18 @@ loading = _stack(
     ),
     _option(
         LOADING,
+        "--where",
+        metavar="SQL",
+        help="read only the rows of EDGES for which this SQL expression is true",
+    ),
+    _option(
+        LOADING,
+        "--node-where",
+        metavar="SQL",
+        help="keep only the nodes for which this expression over --nodes is true",
+    ),
+    _option(
+        LOADING,
         "--threads",
         type=Count(),
         metavar="N",

@@ -23,7 +23,10 @@ if TYPE_CHECKING:
     from kingpost.core.result import Iteration, Result
 
 # The names of loading options that go into LoadOptions as they are.
-_PLAIN = ("source", "target", "weight", "nodes", "node_id", "parallel", "loops", "bad_rows")
+_PLAIN = (
+    "source", "target", "weight", "nodes", "node_id", "parallel", "loops", "bad_rows", "where",
+    "node_where",
+)  # fmt: skip
 
 
 def load_options(given: dict[str, Any]) -> LoadOptions:

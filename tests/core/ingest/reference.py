@@ -141,10 +141,12 @@ def assert_sound(graph):
         assert (out.weights != 1).any()
         assert (out.weights > 0).all()
     a = graph.account
-    assert a.rows_read == a.rows_kept + sum(a.skipped.values())
+    assert a.rows_read == a.rows_kept + a.filtered + a.outside + sum(a.skipped.values())
+    assert 0 <= a.filtered_null <= a.filtered
     assert graph.m == a.rows_kept - a.loops_dropped - a.merged - a.zero_weight
     assert a.loops_dropped in (0, a.loops)
     assert set(a.examples) == set(a.skipped)
     assert a.nodes_rows == a.nodes_joined + a.nodes_unknown + a.nodes_repeated
     if graph.attributes is not None:
-        assert graph.attributes.num_rows == graph.n == a.nodes_joined + a.nodes_missing
+        assert graph.attributes.num_rows == graph.n
+        assert graph.n == a.nodes_joined + a.nodes_missing - a.nodes_filtered
