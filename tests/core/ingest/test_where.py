@@ -61,7 +61,7 @@ def truth(columns, condition):
     return [None if value is None else bool(value) for (value,) in found]
 
 
-@settings(max_examples=50, deadline=None)
+@settings(max_examples=30, deadline=None)
 @given(st.data(), conditions(), st.integers(1, 5), st.integers(1, 3))
 def test_the_rows_that_another_engine_keeps(data, condition, group_rows, parts):
     size = data.draw(st.integers(1, 16))
