@@ -22,8 +22,10 @@ STANDINGS, NODE, LOG, FORM, CHOICE, PROMPT, NOTICE, HELP, LOADING, SHORTLIST = (
     "shortlist",
 )
 COLUMNS = "columns"  # sheet that chooses them
-_TABLES = (STANDINGS, NODE, LOG, CHOICE, HELP, COLUMNS, SHORTLIST)
-_ROOMS = (STANDINGS, NODE, LOG, HELP, SHORTLIST)
+SOLVES, APART = "solves", "apart"  # every solve; how two of them differ
+_LISTS = (SHORTLIST, SOLVES, APART)  # views that are one table
+_TABLES = (STANDINGS, NODE, LOG, CHOICE, HELP, COLUMNS, *_LISTS)
+_ROOMS = (STANDINGS, NODE, LOG, HELP, *_LISTS)
 _NODES = (STANDINGS, NODE, SHORTLIST)  # views in which a node is at hand
 _TYPING = (FORM, PROMPT)
 
@@ -58,14 +60,14 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "columns.left",
         ("left",),
-        (STANDINGS, NODE, FORM, COLUMNS, SHORTLIST),
+        (STANDINGS, NODE, FORM, COLUMNS, *_LISTS),
         "columns further left, or the choice before; moves a column that is being arranged",
         group="Moving",
     ),
     Action(
         "columns.right",
         ("right",),
-        (STANDINGS, NODE, FORM, COLUMNS, SHORTLIST),
+        (STANDINGS, NODE, FORM, COLUMNS, *_LISTS),
         "columns further right, or the next choice; moves a column that is being arranged",
         group="Moving",
     ),
@@ -74,7 +76,7 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "node.open",
         ("enter",),
-        _NODES,
+        (*_NODES, APART),
         "open the node; in Node, make the neighbour the centre",
         "node",
         1,
@@ -89,7 +91,7 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "measure.choose",
         ("m",),
-        _ROOMS[:3],
+        (STANDINGS, NODE, LOG),
         "choose the measure; it is solved if it has not been",
         "measure",
         10,
@@ -114,10 +116,37 @@ ACTIONS: tuple[Action, ...] = (
         "Investigating",
     ),
     Action(
+        "solves.open",
+        ("z",),
+        (STANDINGS, NODE, LOG),
+        "every solve of this sitting: at work, waiting, done; compare two",
+        "all solves",
+        19,
+        "Investigating",
+    ),
+    Action(
+        "solve.pick",
+        ("enter",),
+        (SOLVES,),
+        "pick a solve to compare; on a second one, compare the two",
+        "compare",
+        1,
+        "Investigating",
+    ),
+    Action(
+        "log.keep",
+        ("w",),
+        (LOG,),
+        "write the log out to a new file, CSV, JSON or Parquet",
+        "write out",
+        12,
+        "Investigating",
+    ),
+    Action(
         "solve.halt",
         ("h",),
-        (STANDINGS, NODE, LOG, LOADING),
-        "halt the solve or loading; a solve keeps its best iterate",
+        (STANDINGS, NODE, LOG, SOLVES, LOADING),
+        "halt the solve or loading; a solve keeps its best iterate, a waiting one is taken out",
         "halt",
         3,
         "Investigating",
@@ -256,7 +285,7 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "step.back",
         ("escape",),
-        (STANDINGS, NODE, LOG, HELP, SHORTLIST, *_TYPING, CHOICE, NOTICE, COLUMNS),
+        (*_ROOMS, *_TYPING, CHOICE, NOTICE, COLUMNS),
         "one step back; nothing is lost",
         "back",
         4,
@@ -264,7 +293,7 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "help.open",
         ("question_mark",),
-        (STANDINGS, NODE, LOG, SHORTLIST),
+        (STANDINGS, NODE, LOG, *_LISTS),
         "every key, in words",
         "all keys",
         90,
@@ -307,7 +336,8 @@ def keymap(view: str, rebound: Mapping[str, tuple[str, ...]] | None = None) -> d
     """Key -> action id for one view; ``rebound`` gives other keys to some action ids."""
     rebound = rebound or {}
     found: dict[str, str] = {}
-    for action in ACTIONS:
+    # A key that was given to something else is no longer its former owner's.
+    for action in sorted(ACTIONS, key=lambda action: action.id not in rebound):
         if view not in action.views:
             continue
         for key in rebound.get(action.id, action.keys):

@@ -37,6 +37,9 @@ if TYPE_CHECKING:
     from kingpost.tui.models.standings import Standings
     from kingpost.tui.views.standings import StandingsView
 
+FAULT = 70  # exit status of a fault of the program
+_PATIENCE = 2.0  # seconds that threads get to end on leaving
+
 # Imported with the graph, so that opening one does not keep the screen waiting.
 _VIEWS = (
     "standings",
@@ -47,10 +50,8 @@ _VIEWS = (
     "sheets",
     "columns",
     "shortlist",
+    "solves",
 )
-
-FAULT = 70  # exit status of a fault of the program
-_PATIENCE = 2.0  # seconds that threads get to end on leaving
 
 Load = Callable[[Job], "Graph"]
 
@@ -120,16 +121,7 @@ class KingpostApp(App[int], inherit_bindings=False):
         graph = sitting.graph
         settings = self._settings(graph) if callable(self._settings) else self._settings
         import_module("kingpost.tui.desk")
-        for name in (
-            "standings",
-            "node",
-            "solvelog",
-            "settings",
-            "help",
-            "sheets",
-            "columns",
-            "shortlist",
-        ):
+        for name in _VIEWS:
             import_module(f"kingpost.tui.views.{name}")
         return sitting, settings, *self.keeper.fetch(self._paths, graph)
 
@@ -291,10 +283,11 @@ class KingpostApp(App[int], inherit_bindings=False):
     def swept(self, job: Job) -> None:
         """A solve has news: shown where its sweeps are."""
         from kingpost.tui.views.solvelog import SolveLogView
+        from kingpost.tui.views.solves import SolvesView
 
         if isinstance(self.screen, LoadingView):
             self.screen.stage(job)
-        elif isinstance(self.screen, SolveLogView):
+        elif isinstance(self.screen, (SolveLogView, SolvesView)):
             self.screen.refreshed()
 
     def refreshed(self) -> None:
@@ -332,7 +325,8 @@ class KingpostApp(App[int], inherit_bindings=False):
     def close_node(self, node: int) -> None:
         """Back, with the cursor of the standings on the node one ended at."""
         self.pop_screen()
-        self.jump_to(node)
+        if self.screen is self.standings:
+            self.jump_to(node)
 
     def jump_to(self, node: int) -> bool:
         """Put the cursor of the standings on a node; False if no row shows it."""
@@ -374,6 +368,12 @@ class KingpostApp(App[int], inherit_bindings=False):
         from kingpost.tui.views.solvelog import SolveLogView
 
         self.push_screen(SolveLogView())
+
+    def do_solves_open(self) -> None:
+        """Open the list of all solves."""
+        from kingpost.tui.views.solves import SolvesView
+
+        self.push_screen(SolvesView())
 
     def do_help_open(self) -> None:
         """Open the help."""

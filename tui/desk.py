@@ -73,12 +73,15 @@ class Desk:
             "solve",
             solve_work(self.sitting, measure, settings),
             lambda result: self._solved(result, company),
-            topic=f"solve:{measure}",
+            # Asked again with other settings a measure waits its turn, to be compared; the
+            # newest of them comes last, and stays.
+            topic=f"solve:{id(self)}:{measure}:{settings!r}",
             words=f"solving {measure}",
             failed=lambda sentence: self._unsolved(sentence, company),
             news=self._swept,
         )
-        job.facts.update(measure=measure, company=company)
+        used = settings or self.sitting.settings_of(measure)
+        job.facts.update(measure=measure, company=company, settings=used)
         if not company:
             self._swept(job)
         self._front.refreshed()

@@ -8,20 +8,10 @@ import inspect
 import pytest
 
 from kingpost.tui import actions
-from kingpost.tui.app import KingpostApp
+from kingpost.tui.app import _VIEWS, KingpostApp
 from kingpost.tui.views.base import View
 
-VIEWS = (
-    "loading",
-    "standings",
-    "node",
-    "solvelog",
-    "settings",
-    "sheets",
-    "help",
-    "columns",
-    "shortlist",
-)
+VIEWS = ("loading", *_VIEWS)
 
 
 def view_classes():

@@ -349,3 +349,87 @@ async def test_hostile_names_are_inert(make_graph, bench):
         await until(pilot, lambda: app.screen.view == "node")
         assert not {"\x1b", "\u202e"} & set(app.shown())
         assert app.screen.query_one("#news", Rule) is not None
+
+
+# ---- every solve of the sitting ----------------------------------------------------------------
+
+
+async def test_two_solves_are_compared(app):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await pilot.press("z")
+        await until(pilot, lambda: "solves of this sitting" in app.shown())
+        assert "3 done, 0 at work or waiting" in app.shown()
+        assert "the graph has no such eigenvector" in app.shown()  # why the newest stopped
+        await pilot.press("down", "enter", "down", "enter")
+        await until(pilot, lambda: app.screen.view == "apart")
+        lines = app.shown().splitlines()
+        assert lines[0].split() == ["first", "mirror"]
+        assert lines[1].split() == ["second", "plain"]
+        assert "Kendall's tau-b" in app.shown()
+        await pilot.press("enter")
+        await until(pilot, lambda: app.screen.view == "node")
+        await pilot.press("escape")
+        await until(pilot, lambda: app.screen.view == "apart")
+        await pilot.press("escape", "escape")
+        await until(pilot, lambda: app.screen.view == "standings")
+
+
+async def test_solves_queue_and_each_can_be_taken_out(app, bench):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        plain = app.bench.find("plain").settings
+        app.desk.solve("held", None)
+        app.desk.solve("plain", plain(pull=0.25))
+        app.desk.solve("plain", plain(pull=0.125))
+        await pilot.press("z")
+        await until(pilot, lambda: "3 at work or waiting" in app.shown())
+        await pilot.press("down")
+        await until(pilot, lambda: "waits for its turn; h takes it out" in app.shown())
+        assert "pull 0.25" in app.shown()
+        await pilot.press("h")
+        await until(pilot, lambda: "2 at work or waiting" in app.shown())
+        await pilot.press("up", "h")  # the one at work keeps its best iterate
+        await until(pilot, lambda: "0 at work or waiting" in app.shown())
+        assert [solve.settings.pull for solve in app.sitting.solves][-2:] == [0.5, 0.125]
+        assert app.sitting.results["plain"].settings.pull == 0.125
+
+
+async def test_a_stale_solve_never_overwrites_a_newer_one(app, bench):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        held = app.bench.find("held").settings
+        app.desk.solve("held", held(pull=0.25))
+        await until(pilot, bench.sweeping.is_set)
+        app.desk.solve("held", held(pull=0.25))  # the same again: the first is no longer wanted
+        app.desk.solve("plain", app.bench.find("plain").settings(pull=0.75))
+        bench.release.set()
+        await until(pilot, lambda: not app.runner.jobs("solve") and not app.runner.jobs("table"))
+        held_ones = [solve for solve in app.sitting.solves if solve.measure == "held"]
+        assert len(held_ones) == 1
+        assert str(held_ones[0].stop) == "converged"
+        assert app.sitting.current == "plain"
+
+
+async def test_a_log_is_written_to_a_file_that_is_new(app, tmp_path):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await pilot.press("l", "w")
+        await until(pilot, lambda: "write the log to  plain_log.csv" in app.shown())
+        name = tmp_path / "sweeps.csv"
+        await pilot.press(*["backspace"] * 13)
+        app.screen.pasted(str(name))
+        await pilot.press("enter")
+        await until(pilot, lambda: "written: " in app.shown())
+        assert name.read_text().count("\n") == 4
+        await pilot.press("w", *["backspace"] * 13)
+        app.screen.pasted(str(name))
+        await pilot.press("enter")
+        await until(pilot, lambda: "choose another name" in app.shown().replace("\n ", " "))
+
+
+async def test_the_form_says_what_a_solve_will_cost(app):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await pilot.press("c")
+        await until(pilot, lambda: "cost: " in app.shown())

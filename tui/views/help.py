@@ -7,7 +7,7 @@ from textual.app import ComposeResult
 from kingpost.core.standing import UNRANKED
 from kingpost.tui.actions import HELP, help_rows
 from kingpost.tui.models.columns import Column
-from kingpost.tui.views.base import View
+from kingpost.tui.views.rows import RowsView
 from kingpost.tui.widgets.lines import KeyLine, Line, Rule
 from kingpost.tui.widgets.rowtable import RowTable
 
@@ -37,7 +37,7 @@ class Keys:
         return False
 
 
-class HelpView(View):
+class HelpView(RowsView):
     """All keys; and what the proof rail's signs mean."""
 
     CSS_PATH = "help.tcss"
@@ -50,11 +50,6 @@ class HelpView(View):
         yield RowTable(id="rows", rail=False)
         yield Rule(id="news")
         yield KeyLine(id="keys")
-
-    @property
-    def table(self) -> RowTable:
-        """The widget."""
-        return self.query_one("#rows", RowTable)
 
     def opened(self) -> None:
         proven, open_, tied, _ = tuple(self.looks.glyphs.rail)
@@ -79,24 +74,3 @@ class HelpView(View):
             ]
         )
         self.table.show(Keys())
-
-    def do_row_up(self) -> None:
-        self.table.move(-1)
-
-    def do_row_down(self) -> None:
-        self.table.move(1)
-
-    def do_page_ahead(self) -> None:
-        self.table.page(1)
-
-    def do_page_return(self) -> None:
-        self.table.page(-1)
-
-    def do_row_first(self) -> None:
-        self.table.go(0)
-
-    def do_row_last(self) -> None:
-        self.table.go(self.table.count - 1)
-
-    def do_step_back(self) -> None:
-        self.app.pop_screen()

@@ -9,6 +9,7 @@ from textual.app import ComposeResult
 
 from kingpost.core.text import visible
 from kingpost.tui.actions import FORM
+from kingpost.tui.models.cost import cost_words, known_radius
 from kingpost.tui.models.drawing import fit, wrap
 from kingpost.tui.models.forms import Field, fields_of, validated
 from kingpost.tui.views.base import View
@@ -44,6 +45,7 @@ class SettingsView(View):
         yield Line(id="fields")
         yield Rule(id="middle")
         yield Line(id="meaning")
+        yield Line(id="cost", rows=2)
         yield Rule(id="news")
         yield KeyLine(id="keys")
 
@@ -86,6 +88,15 @@ class SettingsView(View):
         lines = wrap(f"{found.label}: {visible(found.words)} ({how})", (self.size.width or 80) - 2)
         self.query_one("#meaning", Line).show_rows([[(f" {line}", "plain")] for line in lines[:4]])
         self.query_one("#news", Rule).tell(self._wrong, "bad")
+        cost = wrap(self._cost(), (self.size.width or 80) - 2)
+        self.query_one("#cost", Line).show_rows([[(f" {line}", "quiet")] for line in cost[:2]])
+
+    def _cost(self) -> str:
+        sitting = self.kingpost.sitting
+        settings = self._valid or self._settings
+        before = sitting.results.get(self._measure)
+        rho = known_radius(sitting.results.values())
+        return cost_words(sitting.graph, self._measure, settings, before, rho)
 
     def _row(self, at: int) -> list[Piece]:
         found, writing, glyphs = self._fields[at], self._writing[at], self.looks.glyphs

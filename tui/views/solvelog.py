@@ -13,17 +13,19 @@ from kingpost.tui.actions import LOG
 from kingpost.tui.jobs import Job
 from kingpost.tui.models.detail import on_screen
 from kingpost.tui.models.drawing import wrap
+from kingpost.tui.models.keeping import keep_log
 from kingpost.tui.models.solvelog import Sweeps, series_of, why_stopped
-from kingpost.tui.views.base import View
+from kingpost.tui.views.rows import RowsView
+from kingpost.tui.views.sheets import PromptSheet
 from kingpost.tui.widgets.lines import KeyLine, Line, Rule
 from kingpost.tui.widgets.residual import ResidualChart
 from kingpost.tui.widgets.rowtable import RowTable
 
 if TYPE_CHECKING:
-    from kingpost.core.result import Iteration
+    from kingpost.core.result import Iteration, Result
 
 
-class SolveLogView(View):
+class SolveLogView(RowsView):
     """The solve at work, else the latest solve of the measure the standings show."""
 
     CSS_PATH = "solvelog.tcss"
@@ -34,15 +36,10 @@ class SolveLogView(View):
         yield Line(id="legend")
         yield ResidualChart(id="chart")
         yield Rule(id="top")
-        yield RowTable(id="sweeps", rail=False)
+        yield RowTable(id="rows", rail=False)
         yield Line(id="why", rows=3)
         yield Rule(id="news")
         yield KeyLine(id="keys")
-
-    @property
-    def table(self) -> RowTable:
-        """The table of sweeps."""
-        return self.query_one("#sweeps", RowTable)
 
     def opened(self) -> None:
         self.refreshed()
@@ -80,13 +77,48 @@ class SolveLogView(View):
         )
         self._why(stage)
 
+    def can_log_keep(self) -> bool:
+        result = self.kingpost.sitting.result
+        return self.kingpost.solving is None and result is not None and bool(result.log)
+
+    def do_log_keep(self) -> None:
+        result = self.kingpost.sitting.result
+        if result is not None:
+            self._ask_name(result, f"{result.measure}_log.csv", "")
+
+    def _ask_name(self, result: Result, name: str, wrong: str) -> None:
+        hint = "ends in .csv, .json or .parquet; a file that exists is never written over"
+        sheet = PromptSheet("write the log to", name, hint=hint, wrong=wrong)
+
+        def named(text: str | None) -> None:
+            if text is not None:
+                self.kingpost.runner.start(
+                    "keep",
+                    lambda job: keep_log(result, text),
+                    lambda path: self.kingpost.news(f"written: {visible(path, 200)}"),
+                    words="writing the log",
+                    failed=lambda sentence: self._not_kept(result, text, sentence),
+                )
+
+        self.app.push_screen(sheet, named)
+
+    def _not_kept(self, result: Result, name: str, sentence: str) -> None:
+        if self.app.screen is self:
+            self._ask_name(result, name, sentence)
+        else:
+            self.kingpost.news(sentence, "bad")
+
     def _head(self, measure: str, state: str, settings: object) -> None:
         tol = getattr(settings, "tol", None)
         asked = f", bound asked for {tol:g}" if isinstance(tol, float) else ""
         self.query_one("#head", Line).show(
             (f" solve log of {visible(measure, 40)}", "head"), (f"   {state}{asked}", "plain")
         )
+
+    def _legend(self, known: int) -> None:
+        """``known``: for how many sweeps the order proven is known."""
         glyphs = self.looks.glyphs
+        proven = "order proven (right scale)" if known > 1 else "order proven, known at the end"
         self.query_one("#legend", Line).show(
             (f" {glyphs.residual}", "residual"),
             (" residual  ", "plain"),
@@ -97,7 +129,7 @@ class SolveLogView(View):
             (glyphs.tolerance * 3, "quiet"),
             (" asked for  ", "plain"),
             (glyphs.step * 2, "step"),
-            (" order proven (right scale)", "plain"),
+            (f" {proven}", "plain"),
         )
 
     def _series(
@@ -106,34 +138,15 @@ class SolveLogView(View):
         lines = list(log)
         tol = getattr(settings, "tol", None)
         n = self.kingpost.sitting.graph.n
+        self._legend(sum(line.proven is not None for line in lines))
         self.query_one("#chart", ResidualChart).show(series_of(lines, tol, n, proven))
         table = self.table
         at_end = table.row >= table.count - 1
         sweeps = Sweeps(lines)
         row = sweeps.count - 1 if at_end else table.row
         table.show(sweeps, row, empty="no sweeps: the answer was computed directly")
+        self.refresh_keys()
 
     def _why(self, sentence: str) -> None:
         lines = wrap(on_screen(sentence), max((self.size.width or 80) - 2, 10))
         self.query_one("#why", Line).show_rows([[(f" {line}", "plain")] for line in lines[:3]])
-
-    def do_row_up(self) -> None:
-        self.table.move(-1)
-
-    def do_row_down(self) -> None:
-        self.table.move(1)
-
-    def do_page_ahead(self) -> None:
-        self.table.page(1)
-
-    def do_page_return(self) -> None:
-        self.table.page(-1)
-
-    def do_row_first(self) -> None:
-        self.table.go(0)
-
-    def do_row_last(self) -> None:
-        self.table.go(self.table.count - 1)
-
-    def do_step_back(self) -> None:
-        self.app.pop_screen()
