@@ -167,7 +167,7 @@ class ApartView(RowsView):
 
     def __init__(self, found: Differences) -> None:
         super().__init__()
-        self._found = found
+        self._apart = found
 
     def compose(self) -> ComposeResult:
         yield Line(id="head")
@@ -180,7 +180,7 @@ class ApartView(RowsView):
         yield KeyLine(id="keys")
 
     def opened(self) -> None:
-        found = self._found
+        found = self._apart
         self.query_one("#head", Line).show((" first   ", "plain"), (_title(found.a), "head"))
         self.query_one("#second", Line).show((" second  ", "plain"), (_title(found.b), "head"))
         self.table.show(found, 0, empty="the graph has no nodes")
@@ -192,7 +192,7 @@ class ApartView(RowsView):
 
     def _write(self) -> None:
         if self.composed and self.is_attached:
-            lines = wrap(self._found.words, max((self.size.width or 80) - 2, 10))[:2]
+            lines = wrap(self._apart.words, max((self.size.width or 80) - 2, 10))[:2]
             self.query_one("#why", Line).show_rows([[(f" {line}", "plain")] for line in lines])
 
     def can_node_open(self) -> bool:
