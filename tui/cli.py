@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import click
 
-from kingpost.tui.commands import agree, audit, drift, node, rank, screen, synth, why
+from kingpost.tui.commands import agree, audit, drift, node, rank, screen, spectrum, synth, why
 from kingpost.tui.commands.front import BARE, Front
 
 EPILOG = """\
@@ -40,6 +40,7 @@ cli.add_command(audit.audit)
 cli.add_command(node.node)
 cli.add_command(why.why)
 cli.add_command(agree.agree)
+cli.add_command(spectrum.spectrum)
 cli.add_command(drift.drift)
 cli.add_command(synth.synth)
 
