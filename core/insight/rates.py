@@ -43,7 +43,8 @@ def observed_rate(log: Sequence[Iteration]) -> Rate | None:
     fewer than three sweeps.
     """
     best: list[Iteration] = []
-    head, stretch = None, []
+    stretch: list[Iteration] = []
+    head = None
     for line in [*log, None]:
         if line is not None and not (math.isfinite(line.residual) and line.residual > 0):
             continue

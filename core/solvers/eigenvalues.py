@@ -188,5 +188,5 @@ def _within(vectors: Floats, residuals: Floats) -> float | None:
     defect += 2 * k * (size + 8) * UNIT
     if not defect < 0.5:
         return None
-    whole = float(np.linalg.norm(residuals)) / (1 - defect) ** 0.5
+    whole = float(np.linalg.norm(residuals)) / float(np.sqrt(1 - defect))
     return whole * (1 + 1e-12)
