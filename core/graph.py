@@ -24,6 +24,7 @@ if TYPE_CHECKING:
     import pyarrow as pa
 
     from kingpost.core.result import Result
+    from kingpost.core.store.results import Drawer
     from kingpost.core.structure import Structure
     from kingpost.core.watch import Watch
 
@@ -174,6 +175,8 @@ class Graph:
     attributes: pa.Table | None = None
     account: Account = field(default_factory=Account)
     origin: Origin = field(default_factory=Origin)
+    # Where results of this very graph are kept, if anywhere; a changed copy has none.
+    drawer: Drawer | None = field(default=None, init=False, compare=False, repr=False)
 
     @property
     def n(self) -> int:

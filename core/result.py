@@ -125,7 +125,8 @@ class Result:
     structure rather than by rounding; ``symmetry()`` gives classes of nodes whose equations are
     the same, so that their exact scores are equal (or None).  ``conventions`` names, in words,
     every choice that other software may make otherwise.  ``labels`` are the ids of the nodes
-    where ``Graph.rank`` made the result.
+    where ``Graph.rank`` made the result.  ``solved_on`` is None for what was solved just now;
+    else the result comes from the store, and it says when it was solved (ISO 8601, UTC).
     """
 
     measure: str
@@ -142,6 +143,7 @@ class Result:
     exact_zero: NDArray[np.bool_] | None = None
     symmetry: Callable[[], NDArray[np.int64] | None] | None = None
     labels: pa.Array | None = None
+    solved_on: str | None = None
 
     def __repr__(self) -> str:
         if self.refusal is not None:
