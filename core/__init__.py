@@ -30,6 +30,7 @@ _HOMES = {
     "from_networkx": "ingest.memory",
     "from_scipy": "ingest.memory",
     "measure": "measures",
+    "open_graph": "open",
     "agree": "insight.agree",
     "audit": "insight.audit:examine",
     "drift": "insight.drift",

@@ -18,6 +18,7 @@ A measure that has no answer on a graph returns a Result all the same; it says w
 
 from __future__ import annotations
 
+import contextlib
 import dataclasses
 import difflib
 from typing import Any
@@ -25,11 +26,13 @@ from typing import Any
 import numpy as np
 import pyarrow as pa
 
-from kingpost.core.errors import SettingsError
+from kingpost.core.errors import Interrupted, SettingsError
 from kingpost.core.graph import Graph
 from kingpost.core.measures import measure as find_measure
+from kingpost.core.measures.base import finish
 from kingpost.core.result import Result
 from kingpost.core.standing import OPEN, PROVEN, TIED, UNRANKED
+from kingpost.core.store.results import keep_result, solve
 from kingpost.core.text import visible
 from kingpost.core.watch import Watch
 
@@ -55,7 +58,12 @@ def rank(
                 f"{measure} has no setting {visible(name, 40)!r}; {advice}"
                 f"it takes {', '.join(sorted(known))}"
             )
-    result = chosen.rank(graph, chosen.settings(**settings), watch)
+    watch = watch or Watch()
+    result = finish(solve(chosen, graph, chosen.settings(**settings), watch))
+    if graph.drawer is not None and result.refusal is None:
+        _ = result.standing  # it is kept with its order
+        with contextlib.suppress(Interrupted):  # the answer is there, kept or not
+            keep_result(chosen, graph, result, watch)
     return dataclasses.replace(result, labels=graph.labels)
 
 

@@ -11,6 +11,7 @@ from kingpost.core.watch import Watch
 if TYPE_CHECKING:
     from kingpost.core.graph import Graph
     from kingpost.core.ingest import LoadOptions
+    from kingpost.core.ingest.about import TableAbout
     from kingpost.core.store.shelf import Shelf
 
 Store = bool | str | os.PathLike[str]
@@ -57,6 +58,21 @@ def open_graph(
     if shelf is None:
         return ingest.load(named, chosen, watch)
     return _through(shelf, named, chosen, watch, tell)
+
+
+def describe(paths: str | os.PathLike[str] | Sequence[str | os.PathLike[str]]) -> TableAbout:
+    """What the files of some edge tables, or of the table a pack was made from, hold.
+
+    Raises:
+        InputError: for files that cannot be used, or a damaged pack.
+    """
+    from kingpost.core import ingest
+    from kingpost.core.store import pack
+
+    given = [paths] if isinstance(paths, str | os.PathLike) else list(paths)
+    named = [os.fspath(path) for path in given]
+    packed = pack.pack_among(named)
+    return ingest.describe(named) if packed is None else pack.describe(packed)
 
 
 def _shelf(store: Store, tell: Callable[[str], None]) -> Shelf | None:

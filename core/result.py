@@ -126,7 +126,8 @@ class Result:
     the same, so that their exact scores are equal (or None).  ``conventions`` names, in words,
     every choice that other software may make otherwise.  ``labels`` are the ids of the nodes
     where ``Graph.rank`` made the result.  ``solved_on`` is None for what was solved just now;
-    else the result comes from the store, and it says when it was solved (ISO 8601, UTC).
+    else the result comes from the store, and it says when it was solved (ISO 8601, UTC);
+    ``known_standing`` is its order, which came with it.
     """
 
     measure: str
@@ -144,6 +145,7 @@ class Result:
     symmetry: Callable[[], NDArray[np.int64] | None] | None = None
     labels: pa.Array | None = None
     solved_on: str | None = None
+    known_standing: Standing | None = field(default=None, repr=False, compare=False)
 
     def __repr__(self) -> str:
         if self.refusal is not None:
@@ -186,6 +188,8 @@ class Result:
         """Order, rank ranges and what is proven about them; computed on first use and kept."""
         from kingpost.core.standing import stand
 
+        if self.known_standing is not None:
+            return self.known_standing
         first = stand(self.scores, self.bound, self.exact_zero)
         if first.proven == len(self.scores) or self.symmetry is None:
             return first

@@ -2,7 +2,30 @@
 
 from __future__ import annotations
 
+import hashlib
+import os
+import shutil
 import sys
+import tempfile
 from pathlib import Path
 
+import pytest
+
 sys.path.insert(0, str(Path(__file__).parent / "support"))
+
+_SHELVES = tempfile.mkdtemp(prefix="kingpost-tests-")
+
+
+def pytest_runtest_setup(item: pytest.Item) -> None:
+    """Every test has a cache folder of its own, empty and far from the user's."""
+    shelf = hashlib.blake2b(item.nodeid.encode(), digest_size=8).hexdigest()
+    os.environ["KINGPOST_CACHE_DIR"] = os.path.join(_SHELVES, shelf)
+
+
+def pytest_runtest_teardown(item: pytest.Item) -> None:
+    """Nothing that was kept outlives the test."""
+    shutil.rmtree(os.environ["KINGPOST_CACHE_DIR"], ignore_errors=True)
+
+
+def pytest_unconfigure() -> None:
+    shutil.rmtree(_SHELVES, ignore_errors=True)

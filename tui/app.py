@@ -390,6 +390,7 @@ def run(
     *,
     threads: int | None = None,
     slow: bool = False,
+    store: bool = True,
 ) -> int:
     """Open the screen on some edge tables; returns the exit status.
 
@@ -398,10 +399,12 @@ def run(
     """
 
     def load(job: Job) -> Graph:
-        from kingpost.core.ingest import load as load_tables
+        from kingpost.core.open import open_graph
 
         options = load_options() if callable(load_options) else load_options
-        return load_tables(paths, options, job.watch)
+        return open_graph(paths, options=options, watch=job.watch, store=store, tell=notes.append)
+
+    notes: list[str] = []
 
     looks = terminal.decide(slow=slow)
     # The framework's own reading of NO_COLOR paints greys; our styles have no colour then.
@@ -414,6 +417,8 @@ def run(
     ended = app.runner.shutdown(_PATIENCE)
     if status is None:
         status = app.return_code or 1
+    for note in notes:  # the screen goes without; it is told where it stays to be read
+        print(f"kingpost: note: {visible(note)}", file=sys.stderr)
     if app.sentence:
         print(f"kingpost: {app.sentence}", file=sys.stderr)
     if not ended:

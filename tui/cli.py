@@ -4,7 +4,19 @@ from __future__ import annotations
 
 import click
 
-from kingpost.tui.commands import agree, audit, drift, node, rank, screen, spectrum, synth, why
+from kingpost.tui.commands import (
+    agree,
+    audit,
+    drift,
+    node,
+    pack,
+    rank,
+    screen,
+    shelf,
+    spectrum,
+    synth,
+    why,
+)
 from kingpost.tui.commands.front import BARE, Front
 
 EPILOG = """\
@@ -15,8 +27,8 @@ kingpost rank calls.parquet --out ranks.csv
 kingpost audit calls.parquet              what the table holds and how the graph is built
 kingpost node calls.parquet billing       one node: ranks, who points at it, at whom it points
 
-EDGES are Parquet files, folders or patterns; a file that is called like a command is reached
-as ./rank.  Node names that begin with a dash follow after --.
+EDGES are Parquet files, folders or patterns, or the folder of one pack; a file that is called
+like a command is reached as ./rank.  Node names that begin with a dash follow after --.
 
 \b
 Exit status: 0 answered; 1 answered without reaching the accuracy asked for;
@@ -43,6 +55,8 @@ cli.add_command(agree.agree)
 cli.add_command(spectrum.spectrum)
 cli.add_command(drift.drift)
 cli.add_command(synth.synth)
+cli.add_command(pack.pack)
+cli.add_command(shelf.shelf)
 
 
 def main() -> None:

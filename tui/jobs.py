@@ -7,6 +7,7 @@ topic only the newest may deliver: an older result that comes late is dropped.
 
 from __future__ import annotations
 
+import contextlib
 import threading
 import time
 import traceback
@@ -211,9 +212,11 @@ def solve_work(
     """
 
     def work(job: Job) -> Result:
+        from kingpost.core.store.results import keep_result, solve
+
         chosen = sitting.measure(measure)
         job.facts["settings"] = used = settings or sitting.settings_of(measure)
-        lines = chosen.solve(sitting.graph, used, job.watch)
+        lines = solve(chosen, sitting.graph, used, job.watch)
         while True:
             try:
                 job.log.append(next(lines))
@@ -222,6 +225,8 @@ def solve_work(
                 break
             job.tell()
         sitting.prepare(result)
+        with contextlib.suppress(Interrupted):  # the answer is there, kept or not
+            keep_result(chosen, sitting.graph, result, job.watch)
         return result
 
     return work

@@ -287,6 +287,7 @@ def solve_facts(result: Any) -> dict[str, Any]:
         "bound_kind": result.bound.kind.value,
         "proven_order": result.proven_order if result.refusal is None else None,
         "seconds": jsonable(dataclasses.asdict(result.seconds)),
+        "from_store_solved_on": result.solved_on,
     }
 
 

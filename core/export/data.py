@@ -43,6 +43,7 @@ def facts(ranking: Ranking) -> dict[str, Any]:
             "bound_kind": result.bound.kind.value,
             "proven_order": result.proven_order,
             "seconds": jsonable(dataclasses.asdict(result.seconds)),
+            "from_store_solved_on": result.solved_on,
         },
     }
 

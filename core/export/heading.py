@@ -77,7 +77,7 @@ def header(ranking: Ranking) -> list[str]:
         graph_line(graph, flow),
         f"{result.measure}  {settings_words(result.settings)}  "
         f"weight: {visible(graph.origin.weight_words, 60)}",
-        f"{result.stop.value}: {visible(result.reason)}",
+        f"{result.stop.value}: {visible(result.reason)}{kept_words(result)}",
         f"error at most {small(bound.value)} of the sum of the scores ({kind})"
         if bound.kind is not BoundKind.NONE
         else "error: no bound is known",
@@ -86,6 +86,11 @@ def header(ranking: Ranking) -> list[str]:
     if words := _conventions(ranking):
         lines.append(f"conventions  {words}")
     return lines
+
+
+def kept_words(result: Any) -> str:
+    """Where a result was not solved just now: that it was kept, and since when."""
+    return "" if result.solved_on is None else f"; from the store, solved on {result.solved_on}"
 
 
 def _conventions(ranking: Ranking) -> str:

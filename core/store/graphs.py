@@ -110,7 +110,7 @@ def content_of(graph: Graph, digests: Mapping[str, str]) -> str:
 
 def _write_adjacency(draft: Draft, name: str, rows: Adjacency) -> None:
     draft.arrays(f"{name}_offsets.arrow", {"offset": rows.offsets})
-    columns = {"neighbour": rows.neighbours}
+    columns: dict[str, Any] = {"neighbour": rows.neighbours}
     if rows.weights is not None:
         columns["weight"] = rows.weights
     draft.arrays(f"{name}_edges.arrow", columns)

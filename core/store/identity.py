@@ -69,9 +69,7 @@ def identify(paths: Sequence[str], options: Any) -> Identity | None:
 
 def _lasting(path: str) -> bool:
     """Not a pipe, a device or standard input, which give their bytes once."""
-    return path != "-" and (
-        not os.path.exists(path) or os.path.isfile(path) or os.path.isdir(path)
-    )
+    return path != "-" and (not os.path.exists(path) or os.path.isfile(path) or os.path.isdir(path))
 
 
 def _of_file(path: str) -> dict[str, Any] | None:

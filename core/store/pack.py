@@ -11,6 +11,7 @@ from typing import Any
 
 from kingpost.core.errors import InputError, OutputError, SettingsError
 from kingpost.core.graph import Graph
+from kingpost.core.ingest.about import ColumnAbout, TableAbout
 from kingpost.core.store.graphs import checked_ranges, read_graph, write_graph
 from kingpost.core.store.results import KIND, Drawer
 from kingpost.core.store.sealed import (
@@ -63,21 +64,21 @@ def open_pack(
     if options is not None:
         _same_options(path, options, about.get("options", {}))
     also = Path(path) / RESULTS
-    graph.__dict__["drawer"] = Drawer(
-        str(about["content"]), shelf, also if also.is_dir() else None
-    )
+    graph.__dict__["drawer"] = Drawer(str(about["content"]), shelf, also if also.is_dir() else None)
     return graph
 
 
-def described(path: str) -> dict[str, Any]:
-    """What the manifest of a pack says.
+def describe(path: str) -> TableAbout:
+    """What the edge table of a pack held, as it was when the pack was made.
 
     Raises:
         InputError: if it is damaged.
     """
     try:
-        return dict(read_manifest(Path(path), "graph")["about"])
-    except StoreTrouble as error:
+        table = dict(read_manifest(Path(path), "graph")["about"]["table"])
+        columns = tuple(ColumnAbout(**column) for column in table.pop("columns"))
+        return TableAbout(columns=columns, **table)
+    except (StoreTrouble, KeyError, TypeError) as error:
         raise InputError(
             f"the pack {path} cannot be used: {error}; make it again with kingpost pack"
         ) from None
@@ -107,7 +108,7 @@ def write_pack(
     graph: Graph,
     folder: str,
     options: Any,
-    table: dict[str, Any] | None = None,
+    table: TableAbout,
     watch: Watch | None = None,
 ) -> int:
     """Write a graph, with the results kept of it, as a pack; the number of results.
@@ -122,7 +123,7 @@ def write_pack(
     watch = watch or Watch()
     check_place(folder)
     place = Path(folder).absolute()
-    more = {"options": plain_options(options), "table": table}
+    more = {"options": plain_options(options), "table": dataclasses.asdict(table)}
     try:
         with making(place, watch, private=False, over=is_pack) as draft:
             write_graph(graph, draft, watch, more)
@@ -169,12 +170,10 @@ def _same_options(path: str, options: Any, made: dict[str, Any]) -> None:
         value = getattr(options, item.name)
         if value in (getattr(plain, item.name), made.get(item.name)):
             continue
-        was = made.get(item.name)
         raise SettingsError(
-            f"{path} is a pack, made with {item.name.replace('_', ' ')} "
-            f"{'as guessed' if was is None else repr(was)}; loading options are for edge tables, "
-            "leave them out or pack the table again"
+            f"{path} is a pack, made with {item.name}={made.get(item.name)}; loading options are "
+            "for edge tables: leave them out, or pack the table again"
         )
 
 
-__all__ = ["FORMAT", "check_place", "described", "open_pack", "pack_among", "write_pack"]
+__all__ = ["FORMAT", "check_place", "describe", "open_pack", "pack_among", "write_pack"]

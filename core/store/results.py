@@ -250,13 +250,13 @@ def read_result(place: Path, graph: Graph, settings: Any, watch: Watch) -> Resul
             facts=about["facts"],
             exact_zero=None if zero is None else zero.astype(bool),
             solved_on=about["solved_on"],
-        )
-        result.__dict__["standing"] = Standing(
-            order=column["order"].astype(np.int64),
-            rail=column["rail"],
-            first=column["first"].astype(np.int64),
-            last=column["last"].astype(np.int64),
-            proven=about["proven"],
+            known_standing=Standing(
+                order=column["order"].astype(np.int64),
+                rail=column["rail"],
+                first=column["first"].astype(np.int64),
+                last=column["last"].astype(np.int64),
+                proven=about["proven"],
+            ),
         )
     except (pa.ArrowException, ValueError, KeyError, TypeError, IndexError) as error:
         raise StoreTrouble(f"its parts do not fit together ({error})") from None

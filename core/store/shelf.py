@@ -24,8 +24,8 @@ if TYPE_CHECKING:
     from kingpost.core.graph import Graph
     from kingpost.core.store.identity import Identity
 
-LIMIT = 20 * 2**30  # bytes
-SPARE = 256 * 2**20  # bytes left free on the disk for everybody else
+LIMIT = 20 * 10**9  # bytes
+SPARE = 250 * 10**6  # bytes left free on the disk for everybody else
 
 
 @dataclass(frozen=True)
@@ -158,7 +158,10 @@ class Shelf:
     # ---- looking and clearing ----------------------------------------------------------------
 
     def entries(self, *, about: bool = True) -> list[Entry]:
-        """Everything that is kept, graphs first, the latest used first; ``about`` reads manifests."""
+        """Everything that is kept, graphs first, the latest used first.
+
+        Manifests are read only if ``about``.
+        """
         found = [_entry("graph", place, about) for place in _folders(self.graphs)]
         for content in _folders(self.results):
             found.extend(_entry("result", place, about) for place in _folders(content))
@@ -172,27 +175,35 @@ class Shelf:
             with contextlib.suppress(OSError):
                 entry.place.parent.rmdir()  # only if it was the last
 
-    def clear(self, names: Sequence[str] = ()) -> list[Entry]:
-        """Take away all, or graphs of these names (or keys) with their results; what has gone.
+    def chosen(self, names: Sequence[str] = ()) -> list[Entry]:
+        """All entries, or the graphs of these names (or keys) with their results.
 
         Raises:
             StoreTrouble: for a name that nothing on the shelf has.
         """
         entries = self.entries()
-        going = entries
-        if names:
-            going = []
-            for name in names:
-                meant = [entry for entry in entries if _is_called(entry, name)]
-                if not meant:
-                    raise StoreTrouble(f"nothing on the shelf is called {name}")
-                contents = {entry.content for entry in meant if entry.content}
-                going += [e for e in entries if e in meant or e.content in contents]
-        gone = list({entry.place: entry for entry in going}.values())
+        if not names:
+            return entries
+        contents, places = set(), set()
+        for name in names:
+            meant = [entry for entry in entries if _is_called(entry, name)]
+            if not meant:
+                raise StoreTrouble(f"nothing on the shelf is called {name}")
+            places |= {entry.place for entry in meant}
+            contents |= {entry.content for entry in meant if entry.kind == "graph"} - {""}
+        return [e for e in entries if e.place in places or e.content in contents]
+
+    def clear(self, names: Sequence[str] = ()) -> list[Entry]:
+        """Take away what :meth:`chosen` names, by default all; what has gone.
+
+        Raises:
+            StoreTrouble: for a name that nothing on the shelf has.
+        """
+        gone = self.chosen(names)
         for entry in gone:
             self.take_away(entry)
         if not names:
-            for folder in (self.graphs, self.results):
+            for folder in (self.graphs, self.results, *_folders(self.results)):
                 sweep(folder)
         return gone
 

@@ -202,6 +202,7 @@ def terminal(tmp_path: Path) -> Iterator[Callable[..., Terminal]]:
             "XDG_STATE_HOME": str(tmp_path / "state"),
             "XDG_CONFIG_HOME": str(tmp_path / "config"),
             "XDG_CACHE_HOME": str(tmp_path / "cache"),
+            "KINGPOST_CACHE_DIR": str(tmp_path / "cache"),
         }
         env |= environment
         argv = [sys.executable, "-m", "kingpost.tui", *map(str, arguments)]

@@ -23,7 +23,7 @@ def audit(edges: tuple[str, ...], **given: Any) -> int:
     form = given["form"] or ("json" if out and out.lower().endswith(".json") else "table")
     writing.check_places(form, out, inputs=[*edges, *writing.named_files(given)])
     with Session(given["threads"]) as session:
-        from kingpost.core.ingest import describe
+        from kingpost.core.open import describe
 
         described = describe(list(edges))
         graph, _ = session.load(edges, load_options(given))

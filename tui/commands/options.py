@@ -76,6 +76,30 @@ def _stack(*decorators: Callable[[F], F]) -> Callable[[F], F]:
     return apply
 
 
+_NO_STORE = "kingpost.no_store"
+
+
+def _without_store(ctx: click.Context, param: click.Parameter, given: bool) -> None:
+    # Kept with the context, so that no command has to hand it on.
+    if given:
+        ctx.meta[_NO_STORE] = True
+
+
+def store_wanted() -> bool:
+    """Whether the command that runs now may use the store."""
+    ctx = click.get_current_context(silent=True)
+    return ctx is None or not ctx.meta.get(_NO_STORE, False)
+
+
+no_store = _option(
+    LOADING,
+    "--no-store",
+    is_flag=True,
+    expose_value=False,
+    callback=_without_store,
+    help="read and solve anew, and keep nothing for next time",
+)
+
 edges = click.argument("edges", nargs=-1, required=True, metavar="EDGES...")
 
 loading = _stack(
@@ -132,6 +156,7 @@ loading = _stack(
         metavar="N",
         help="threads to use [all this process may]",
     ),
+    no_store,
 )
 
 settings = _stack(

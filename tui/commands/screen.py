@@ -43,6 +43,7 @@ def screen(edges: tuple[str, ...], **given: Any) -> int:
         given["measure"],
         settings_asked_for(given),
         threads=given["threads"],
+        store=options.store_wanted(),
     )
     return status
 

@@ -12,9 +12,11 @@ from collections.abc import Callable
 from types import FrameType, TracebackType
 from typing import TYPE_CHECKING, Any, Self
 
+from kingpost.core.errors import Interrupted
 from kingpost.core.text import visible
 from kingpost.core.watch import Progress, Watch
 from kingpost.tui.commands.front import ANSWERED, INTERRUPTED, SHORT_OF_ACCURACY, complain
+from kingpost.tui.commands.options import store_wanted
 
 if TYPE_CHECKING:
     from kingpost.core.graph import Graph
@@ -99,6 +101,7 @@ class Session:
         self.line = StatusLine()
         self.watch = Watch(self.line.progress, threads=threads)
         self.interrupted = False
+        self.store = store_wanted()
         self._before: Any = None
 
     def __enter__(self) -> Self:
@@ -131,15 +134,17 @@ class Session:
 
     def load(self, paths: tuple[str, ...], options: LoadOptions) -> tuple[Graph, float]:
         """The graph and the seconds it took; what was guessed or lost is told on standard error."""
-        from kingpost.core.ingest import load
+        from kingpost.core.open import open_graph
 
-        began = time.perf_counter()
-        graph = load(list(paths), options, self.watch)
+        began, notes = time.perf_counter(), list[str]()
+        graph = open_graph(
+            list(paths), options=options, watch=self.watch, store=self.store, tell=notes.append
+        )
         taken = time.perf_counter() - began
         self.line.clear()
         from kingpost.core.export.account import losses
 
-        for note in [*graph.account.notes, *losses(graph.account)]:
+        for note in [*notes, *graph.account.notes, *losses(graph.account)]:
             complain(f"note: {note}")
         return graph, taken
 
@@ -162,12 +167,19 @@ class Session:
             if on_iteration is not None:
                 on_iteration(line)
 
-        result = measure.rank(graph, settings, self.watch, watched)
+        from kingpost.core.measures.base import finish
+        from kingpost.core.store.results import keep_result, solve
+
+        result = finish(solve(measure, graph, settings, self.watch), watched)
         seconds = dataclasses.replace(result.seconds, load=load_seconds)
         result = dataclasses.replace(result, seconds=seconds)
         if result.refusal is None:
             self.line.show(f"{measure.name}  establishing the order")
             _ = result.standing  # kept by the result
+            with contextlib.suppress(Interrupted):  # the answer is there, kept or not
+                note = keep_result(measure, graph, result, self.watch)
+                if note is not None:
+                    complain(f"note: {note}")
         self.line.clear()
         return result
 

@@ -135,6 +135,8 @@ def expected_factor(result: Result) -> tuple[float, str]:
 def why_stopped(result: Result) -> str:
     """One sentence: why it stopped, at what rate it converged, what rate was to be expected."""
     parts = [f"{result.stop}: {result.reason}".rstrip(": ")]
+    if result.solved_on:
+        parts.append(f"from the store, solved on {result.solved_on}")
     observed = observed_factor(result.log)
     expected, origin = expected_factor(result)
     if math.isfinite(observed):
@@ -162,4 +164,5 @@ def sweep_words(job: Job) -> str:
 def solved_words(result: Result) -> str:
     """What came of a solve, for the rule."""
     words = f"{result.measure}: {result.stop} after {result.sweeps:,} sweeps"
-    return f"{words}, bound {small(result.bound.value)}"
+    words = f"{words}, bound {small(result.bound.value)}"
+    return words + (f"; from the store, solved on {result.solved_on}" if result.solved_on else "")
