@@ -100,6 +100,7 @@ def test_json_has_the_promised_keys(ranking: Callable[..., Ranking]) -> None:
         "bound_kind",
         "proven_order",
         "seconds",
+        "from_store_solved_on",
     ]
     assert list(answer["solve"]["seconds"]) == ["load", "prepare", "solve"]
     assert [list(row) for row in answer["rows"]] == [list(FIXED)] * 2
