@@ -23,7 +23,8 @@ STANDINGS, NODE, LOG, FORM, CHOICE, PROMPT, NOTICE, HELP, LOADING, SHORTLIST = (
 )
 COLUMNS = "columns"  # sheet that chooses them
 SOLVES, APART = "solves", "apart"  # every solve; how two of them differ
-_LISTS = (SHORTLIST, SOLVES, APART)  # views that are one table
+WAY, PLATE = "way", "plate"  # from one node to another; everything known of one
+_LISTS = (SHORTLIST, SOLVES, APART, WAY, PLATE)  # views that are one table
 _TABLES = (STANDINGS, NODE, LOG, CHOICE, HELP, COLUMNS, *_LISTS)
 _ROOMS = (STANDINGS, NODE, LOG, HELP, *_LISTS)
 _NODES = (STANDINGS, NODE, SHORTLIST)  # views in which a node is at hand
@@ -71,12 +72,20 @@ ACTIONS: tuple[Action, ...] = (
         "columns further right, or the next choice; moves a column that is being arranged",
         group="Moving",
     ),
-    Action("other.table", ("tab",), (NODE,), "to the other table", "other table", 30, "Moving"),
+    Action(
+        "other.table",
+        ("tab",),
+        (NODE, WAY),
+        "to the other table, or way",
+        "other one",
+        30,
+        "Moving",
+    ),
     Action("field.next", ("tab",), (FORM,), "to the next field", "next field", 30, "Moving"),
     Action(
         "node.open",
         ("enter",),
-        (*_NODES, APART),
+        (*_NODES, APART, WAY, PLATE),
         "open the node; in Node, make the neighbour the centre",
         "node",
         1,
@@ -87,6 +96,24 @@ ACTIONS: tuple[Action, ...] = (
     ),
     Action(
         "walk.on", ("v",), (NODE,), "walk the way again, forth", "walk forth", 8, "Investigating"
+    ),
+    Action(
+        "node.plate",
+        ("d",),
+        (STANDINGS, NODE, SHORTLIST, APART, WAY),
+        "details: everything known of the node, its neighbourhood drawn",
+        "details",
+        9,
+        "Investigating",
+    ),
+    Action(
+        "way.find",
+        ("u",),
+        (STANDINGS, NODE, SHORTLIST),
+        "shortest way from the node to another, marked or named",
+        "way to",
+        17,
+        "Investigating",
     ),
     Action(
         "measure.choose",

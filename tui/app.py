@@ -24,6 +24,7 @@ from textual.screen import Screen  # noqa: E402
 
 from kingpost.tui.jobs import Job, Runner  # noqa: E402
 from kingpost.tui.keeping import Keeper  # noqa: E402
+from kingpost.tui.routes import Routes  # noqa: E402
 from kingpost.tui.views.base import View  # noqa: E402
 from kingpost.tui.views.loading import LoadingView  # noqa: E402
 
@@ -51,6 +52,8 @@ _VIEWS = (
     "columns",
     "shortlist",
     "solves",
+    "way",
+    "plate",
 )
 
 Load = Callable[[Job], "Graph"]
@@ -64,7 +67,7 @@ class KingpostApp(App[int], inherit_bindings=False):
         os.path.join(os.path.dirname(__file__), name) for name in ("app.tcss", "views/loading.tcss")
     ]
     ENABLE_COMMAND_PALETTE = False
-    HELPERS = (Keeper,)
+    HELPERS = (Keeper, Routes)
     TITLE = "kingpost"
 
     def __init__(
@@ -89,7 +92,7 @@ class KingpostApp(App[int], inherit_bindings=False):
         self._measure, self._settings = measure, settings
         self._keymaps: dict[str, dict[str, str]] = {}
         self.keeper = Keeper(self)
-        self.helpers = (self.keeper,)
+        self.helpers = (self.keeper, Routes(self))
 
     # ---- start and end -------------------------------------------------------------------------
 
@@ -321,6 +324,20 @@ class KingpostApp(App[int], inherit_bindings=False):
         from kingpost.tui.views.node import NodeView
 
         self.push_screen(NodeView(node))
+
+    def walk_to(self, node: int) -> None:
+        """Walk on to a node: in the Node view beneath what is open, else in a new one."""
+        from kingpost.tui.views.node import NodeView
+
+        below = [at for at, view in enumerate(self.screen_stack) if isinstance(view, NodeView)]
+        if not below:
+            self.open_node(node)
+            return
+        for _ in self.screen_stack[below[-1] + 1 :]:
+            self.pop_screen()
+        view = self.screen_stack[below[-1]]
+        assert isinstance(view, NodeView)
+        view.walk(node)
 
     def close_node(self, node: int) -> None:
         """Back, with the cursor of the standings on the node one ended at."""

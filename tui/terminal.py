@@ -39,6 +39,8 @@ class Glyphs:
     falling: str
     levels: str  # bars that stand, from the lowest to the full one
     here: str  # where something is on a line of such bars
+    gives: str  # into a standing line of a drawing
+    takes: str
     mark: str  # beside the name of a node on the shortlist
 
 
@@ -63,6 +65,8 @@ UNICODE = Glyphs(
     falling="▾",
     levels="▁▂▃▄▅▆▇█",
     here="◆",
+    gives="●",
+    takes="◀",
     mark="★",
 )
 ASCII = Glyphs(
@@ -86,6 +90,8 @@ ASCII = Glyphs(
     falling="v",
     levels="._-=*#",
     here="^",
+    gives="o",
+    takes="<",
     mark="*",
 )
 

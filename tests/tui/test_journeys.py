@@ -433,3 +433,57 @@ async def test_the_form_says_what_a_solve_will_cost(app):
         await opened(pilot)
         await pilot.press("c")
         await until(pilot, lambda: "cost: " in app.shown())
+
+
+# ---- ways and plates -----------------------------------------------------------------------------
+
+
+async def test_the_way_to_a_named_node_is_stepped_through(app):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await pilot.press("enter")
+        await until(pilot, lambda: "▼ gate" in app.shown())
+        assert "ranks  P plain 1" in app.shown()
+        await pilot.press("u", *"zz", "enter")
+        await until(pilot, lambda: "no name contains 'zz'; try another" in app.shown())
+        await pilot.press("backspace", "backspace", *"quay", "enter")
+        await until(pilot, lambda: "1 step against the edges" in app.shown())
+        assert "(none along them)" in app.shown()
+        await pilot.press("down")
+        await until(pilot, lambda: "▸   1  quay" in app.shown())
+        await pilot.press("enter")
+        await until(pilot, lambda: "▼ quay" in app.shown())
+        assert "came by: gate" in app.shown()
+        await pilot.press("b")
+        await until(pilot, lambda: "forth: quay" in app.shown())
+
+
+async def test_marked_nodes_are_offered_as_ends_of_a_way(app):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await pilot.press("down", "down", "x", "t", "u")
+        await until(pilot, lambda: "another node, by its name" in app.shown())
+        name = app.sitting.graph.label(app.screen_stack[-2].model.item(2))
+        assert f"▸{name}" in app.shown()
+        await pilot.press("enter")
+        await until(pilot, lambda: f"way from gate to {name}" in app.shown())
+        await until(pilot, lambda: "steps a" in app.shown() or "step a" in app.shown())
+        await pilot.press("escape")
+        await until(pilot, lambda: app.screen.view == "standings")
+
+
+async def test_a_plate_leads_on_to_a_neighbour(app):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await pilot.press("d")
+        await until(pilot, lambda: "gives into a line" in app.shown())
+        assert "team" in app.shown()
+        assert "▼ gate" in app.shown()
+        await pilot.press("e")
+        await until(pilot, lambda: "Enter node" in app.shown())
+        node = app.screen.node_at_hand()
+        await pilot.press("enter")
+        await until(pilot, lambda: app.screen.view == "node")
+        assert app.screen.node_at_hand() == node
+        await pilot.press("escape", "escape")
+        await until(pilot, lambda: app.screen.view == "standings")

@@ -157,7 +157,7 @@ def attribute_columns(graph: Graph) -> list[Column]:
     ]
 
 
-def attribute_text(value: Any) -> str:
+def attribute_text(value: Any, limit: int = 4 * _WIDEST_ATTRIBUTE) -> str:
     """An attribute's value, safe to show; a number with few digits; nothing for null."""
     if value is None:
         return ""
@@ -165,7 +165,7 @@ def attribute_text(value: Any) -> str:
         return f"{value:.6g}"
     if isinstance(value, int) and not isinstance(value, bool):
         return str(value)  # years and codes are integers too: no thousands separators
-    return visible(id_text(value), 4 * _WIDEST_ATTRIBUTE)
+    return visible(id_text(value), limit)
 
 
 def _attribute_column(name: str, values: Any, n: int) -> Column:

@@ -149,15 +149,29 @@ def parts_words(given: Contributions) -> str:
     return "  ".join(f"{name} {percent(share)}" for name, share in given.parts.items())
 
 
-def who_line(model: NodeModel, came_by: str, width: int, glyphs: Glyphs) -> list[Piece]:
+def who_line(model: NodeModel, way: str, width: int, glyphs: Glyphs) -> list[Piece]:
     """Name and attributes of a node, and the way one came."""
     about = "   ".join(f"{name} {value}" for name, value in model.attributes if value)
-    way = f"came by: {came_by}" if came_by else ""
     room = max(width - cell_len(way) - 3, 8)
     name = tame(model.name, glyphs)
     name = fit(name, min(cell_len(name), max(room // 2, 8)), glyphs=glyphs)
     left = fit(f"   {tame(about, glyphs)}", max(room - cell_len(name), 0), glyphs=glyphs)
     return [(f" {name}", "head"), (left, "plain"), (f" {way}", "quiet")]
+
+
+def ranks_line(sitting: Sitting, node: int, width: int, glyphs: Glyphs) -> list[Piece]:
+    """The node's rank in every measure, in figures; as many as fit, the rest counted."""
+    pieces: list[Piece] = [(" ranks  ", "plain")]
+    used, found = 8, sitting.ranks(node)
+    for done, (letter, (name, first, last)) in enumerate(found.items()):
+        text = f"{name} {rank_range(first, last)}   "
+        more = f"+{len(found) - done:,} more"
+        if used + 2 + cell_len(text) + (len(more) if done < len(found) - 1 else 0) > width:
+            pieces.append((more, "quiet"))
+            break
+        pieces += [(f"{letter} ", "letter"), (text, "plain")]
+        used += 2 + cell_len(text)
+    return pieces
 
 
 def what_line(

@@ -196,3 +196,8 @@ class Trail:
     def before(self) -> list[int]:
         """The nodes passed on the way here."""
         return self.nodes[: max(self.at, 0)]
+
+    @property
+    def ahead(self) -> int | None:
+        """The node one comes to by going forth again."""
+        return self.nodes[self.at + 1] if self.at + 1 < len(self.nodes) else None

@@ -88,7 +88,12 @@ class NodeView(View):
         names = [fit(name, 16, glyphs=glyphs).rstrip() for name in names]
         if len(self.trail.before) > _WAY:
             names.insert(0, glyphs.ellipsis)
-        return f" {glyphs.way} ".join(names)
+        words = [f"came by: {f' {glyphs.way} '.join(names)}"] if names else []
+        ahead = self.trail.ahead
+        if ahead is not None:
+            name = tame(graph.name(ahead, 24), glyphs)
+            words.append(f"forth: {fit(name, 16, glyphs=glyphs).rstrip()}")
+        return "   ".join(words)
 
     def node_at_hand(self) -> int | None:
         return self.trail.nodes[self.trail.at]
@@ -135,8 +140,12 @@ class NodeView(View):
     def do_node_open(self) -> None:
         node = self.panel.neighbour()
         if node is not None:
-            self.trail.walk(node)
-            self._centre(node)
+            self.walk(node)
+
+    def walk(self, node: int) -> None:
+        """Make a node the centre; the way walked so far grows by it."""
+        self.trail.walk(node)
+        self._centre(node)
 
     def can_walk_back(self) -> bool:
         return self.trail.at > 0

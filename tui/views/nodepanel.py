@@ -37,6 +37,8 @@ class NodePanel(Widget):
     def compose(self) -> ComposeResult:
         yield Line(id="who")
         yield Line(id="what")
+        if self._cursor:
+            yield Line(id="ranks")
         yield RowTable(id="feeders", rail=False, active=self._cursor)
         yield Rule(id="centre")
         yield RowTable(id="receivers", rail=False, active=False)
@@ -56,16 +58,16 @@ class NodePanel(Widget):
         """The table that has the cursor."""
         return self.receivers if self.receivers.active else self.feeders
 
-    def show(self, sitting: Sitting, model: NodeModel, came_by: str = "") -> None:
+    def show(self, sitting: Sitting, model: NodeModel, way: str = "") -> None:
         """Put a node at the centre."""
         self.model = model
         self.feeders.show(model.feeders, 0, empty="nothing gives score to it")
         self.receivers.show(model.receivers, 0, empty="it gives score to nothing")
         if self._cursor:
             self.activate(self.feeders if model.feeders.count else self.receivers)
-        self.describe(sitting, came_by)
+        self.describe(sitting, way)
 
-    def describe(self, sitting: Sitting, came_by: str) -> None:
+    def describe(self, sitting: Sitting, way: str) -> None:
         """Write the lines about the node; the tables and the cursor stay."""
         model, glyphs = self.model, looks_of(self).glyphs
         assert model is not None
@@ -76,11 +78,13 @@ class NodePanel(Widget):
             title += f" {glyphs.mark} {tame(visible(mark.note, 120), glyphs)}".rstrip()
         self.query_one("#centre", Rule).title(title)
         self.query_one("#who", Line).show_by(
-            lambda width: detail.who_line(model, came_by, width, glyphs)
+            lambda width: detail.who_line(model, way, width, glyphs)
         )
         if result is None or result.refusal is not None:
             self.query_one("#what", Line).show()
             return
+        for ranks in self.query("#ranks").results(Line):
+            ranks.show_by(lambda width: detail.ranks_line(sitting, model.node, width, glyphs))
         score = sitting.format_of(result)
         self.query_one("#what", Line).show_by(
             lambda width: detail.what_line(sitting, result, model, score, width, glyphs)
