@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 
@@ -56,7 +57,7 @@ def shortest_way(
     if nodes is None:
         return None
     weights, along = [], []
-    for u, v in zip(nodes[:-1], nodes[1:], strict=True):
+    for u, v in pairwise(nodes):
         forth = course != "against" and _weight(graph.outward, u, v) is not None
         weight = _weight(graph.outward, u, v) if forth else _weight(graph.outward, v, u)
         weights.append(0.0 if weight is None else weight)

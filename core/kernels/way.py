@@ -37,9 +37,9 @@ def step(offsets, neighbours, queue, head, tail, before, goal, budget):  # type:
 
 
 @kernel()
-def step_either(
+def step_either(  # type: ignore[no-untyped-def]
     out_offsets, out_near, in_offsets, in_near, queue, head, tail, before, goal, budget
-):  # type: ignore[no-untyped-def]
+):
     """As :func:`step`, over edges in both directions, those along them first."""
     one = np.uint64(1)
     while head < tail and budget > 0:
