@@ -141,14 +141,14 @@ def told_apart(matrix: Pull, push: Adjacency) -> Pull:
     below 2^53 are added up exactly; other nodes are alike where they give the same weights.
     """
     from kingpost.core.kernels.colour import refine
+    from kingpost.core.kernels.strength import whole_sums
 
-    strength = push.strengths()
-    weights = push.weights
-    if weights is None or (
-        float(strength.max(initial=0.0)) < 2.0**53 and bool((weights == np.floor(weights)).all())
-    ):
+    weights, n = push.weights, matrix.n
+    strength = np.empty(n)
+    if weights is None:
+        strength = push.strengths()
+    if weights is None or whole_sums(push.offsets, weights, strength):
         return Pull(matrix.rows, np.where(matrix.scale != 0.0, strength, 0.0))
-    n = matrix.n
     kinds = np.empty(n, dtype=np.uint64)
     same = np.zeros(n, dtype=np.uint64)
     refine(

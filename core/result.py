@@ -122,8 +122,9 @@ class Result:
 
     ``scores`` has shape (n,), float64, in the graph's numbering; it is all NaN when ``stop`` is
     ``REFUSED``, and ``refusal`` says why.  ``exact_zero`` marks nodes whose score is zero by
-    structure rather than by rounding; ``symmetry()`` gives classes of nodes whose equations are
-    the same, so that their exact scores are equal (or None).  ``conventions`` names, in words,
+    structure rather than by rounding; ``symmetry(pools)`` gives classes of nodes whose equations
+    are the same, so that their exact scores are equal (or None); nodes of different pools are
+    known to differ.  ``conventions`` names, in words,
     every choice that other software may make otherwise.  ``labels`` are the ids of the nodes
     where ``Graph.rank`` made the result.  ``solved_on`` is None for what was solved just now;
     else the result comes from the store, and it says when it was solved (ISO 8601, UTC);
@@ -142,7 +143,7 @@ class Result:
     refusal: Refusal | None = None
     facts: Mapping[str, Any] = field(default_factory=dict)
     exact_zero: NDArray[np.bool_] | None = None
-    symmetry: Callable[[], NDArray[np.int64] | None] | None = None
+    symmetry: Callable[[NDArray[np.uint32] | None], NDArray[np.int64] | None] | None = None
     labels: pa.Array | None = None
     solved_on: str | None = None
     known_standing: Standing | None = field(default=None, repr=False, compare=False)
@@ -186,18 +187,11 @@ class Result:
     @cached_property
     def standing(self) -> Standing:
         """Order, rank ranges and what is proven about them; computed on first use and kept."""
-        from kingpost.core.standing import stand
+        from kingpost.core.standing import settle
 
         if self.known_standing is not None:
             return self.known_standing
-        first = stand(self.scores, self.bound, self.exact_zero)
-        if first.proven == len(self.scores) or self.symmetry is None:
-            return first
-        # Equal scores can be told from unproven ones only by why they are equal.
-        classes = self.symmetry()
-        if classes is None:
-            return first
-        return stand(self.scores, self.bound, self.exact_zero, classes)
+        return settle(self.scores, self.bound, self.exact_zero, self.symmetry)
 
     @property
     def proven_order(self) -> int:

@@ -17,6 +17,15 @@ def mix(value):  # type: ignore[no-untyped-def]
 
 
 @kernel()
+def scatter(order, low, high, pool, stage, colour):  # type: ignore[no-untyped-def]
+    """Colours that differ wherever pool, stage or the colour so far does."""
+    for k in range(np.uint64(low), np.uint64(high)):
+        j = np.uint64(order[k])
+        place = mix(np.uint64(pool[j]) + np.uint64(stage) * np.uint64(0xD1B54A32D192ED03))
+        colour[j] = mix(colour[j] + place + np.uint64(0x9E3779B97F4A7C15))
+
+
+@kernel()
 def _gift(colour, scale_bits):  # type: ignore[no-untyped-def]
     if scale_bits == np.uint64(0):
         return np.uint64(0)

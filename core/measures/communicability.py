@@ -170,14 +170,18 @@ def _result(
         seconds=clock.seconds(),
         facts=facts,
         exact_zero=np.zeros(graph.n, dtype=bool),
-        symmetry=lambda: _colours(matrix, watch or Watch()),
+        symmetry=lambda pools: _colours(matrix, watch or Watch(), pools),
     )
 
 
-def _colours(matrix: Pull, watch: Watch) -> NDArray[np.int64] | None:
+def _colours(
+    matrix: Pull, watch: Watch, pools: NDArray[np.uint32] | None
+) -> NDArray[np.int64] | None:
     from kingpost.core.colours import colours
 
-    return colours(matrix, np.ones(1), watch) if np.isfinite(matrix.scale).all() else None
+    return (
+        colours(matrix, np.ones(1), watch, pools=pools) if np.isfinite(matrix.scale).all() else None
+    )
 
 
 MEASURE = Measure("communicability", "C", "total communicability", CommunicabilitySettings, solve)

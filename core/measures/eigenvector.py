@@ -358,19 +358,24 @@ class _Work:
             seconds=self.clock.seconds(),
             facts={"rho": self.rho, "period": period},
             exact_zero=~live if live.any() else None,
-            symmetry=lambda: _colours(graph, settings, matrix, live, self.watch),
+            symmetry=lambda pools: _colours(graph, settings, matrix, live, self.watch, pools),
         )
 
 
 def _colours(
-    graph: Graph, settings: EigenvectorSettings, matrix: Pull, live: NDArray[np.bool_], watch: Watch
+    graph: Graph,
+    settings: EigenvectorSettings,
+    matrix: Pull,
+    live: NDArray[np.bool_],
+    watch: Watch,
+    pools: NDArray[np.uint32] | None,
 ) -> NDArray[np.int64] | None:
     from kingpost.core.colours import colours
 
     if not live.any():
         return None
     kept = Pull(matrix.rows, np.where(live, matrix.scale, 0.0))
-    return colours(kept, live.astype(np.float64), watch, graph.structure, settings.flow)
+    return colours(kept, live.astype(np.float64), watch, graph.structure, settings.flow, pools)
 
 
 MEASURE = Measure("eigenvector", "E", "eigenvector", EigenvectorSettings, solve)

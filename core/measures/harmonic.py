@@ -99,7 +99,7 @@ def _exact(
         bound = Bound(BoundKind.EXACT, _ROUNDINGS, relative=_ROUNDINGS)
     return _result(
         graph, settings, found.score, Stop.CONVERGED, words, bound, log, clock, facts,
-        "exact but for rounding", lambda: same_sums(found),
+        "exact but for rounding", lambda pools: same_sums(found),
     )  # fmt: skip
 
 

@@ -194,7 +194,7 @@ class _Work:
             seconds=self.clock.seconds(),
             facts={"sigma": self.sigma},
             exact_zero=zero,
-            symmetry=None if inside is None else lambda: self._colours(inside, watch),
+            symmetry=None if inside is None else lambda pools: self._colours(inside, watch),
         )
 
     def _colours(self, inside: NDArray[np.bool_], watch: Watch) -> NDArray[np.int64] | None:

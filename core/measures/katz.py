@@ -126,7 +126,7 @@ def solve(graph: Graph, settings: KatzSettings, watch: Watch) -> Solve:
         seconds=clock.seconds(),
         facts=facts,
         exact_zero=_untouched(graph, settings, b, watch),
-        symmetry=lambda: colours(matrix, b, watch, graph.structure, settings.flow),
+        symmetry=lambda pools: colours(matrix, b, watch, graph.structure, settings.flow, pools),
     )
 
 

@@ -296,7 +296,7 @@ class _Work:
                 **found.facts,
             },
             exact_zero=zero,
-            symmetry=None if exact else lambda: self._classes(apart),
+            symmetry=None if exact else lambda pools: self._classes(apart),
         )
 
     def _bound(self, found: _Found, scores: Floats) -> Bound:

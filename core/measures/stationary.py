@@ -111,7 +111,7 @@ def solve_stationary(graph: Graph, settings: SurferSettings, watch: Watch) -> So
         seconds=clock.seconds(),
         facts={"damping": 1.0, "dangling nodes": int(dangling.sum()), "rate": done.rate},
         exact_zero=~inside,
-        symmetry=lambda: _colours(graph, settings, inside, landing, watch),
+        symmetry=lambda pools: _colours(graph, settings, inside, landing, watch, pools),
     )
 
 
@@ -137,13 +137,15 @@ def _colours(
     inside: NDArray[np.bool_],
     landing: Floats,
     watch: Watch,
+    pools: NDArray[np.uint32] | None,
 ) -> NDArray[np.int64] | None:
     from kingpost.core.colours import colours
 
     matrix, _ = walk(graph, settings.flow)
     apart = told_apart(matrix, graph.push(settings.flow))
     kept = Pull(matrix.rows, np.where(inside, apart.scale, 0.0))
-    return colours(kept, np.where(inside, landing, -1.0), watch, graph.structure, settings.flow)
+    start = np.where(inside, landing, -1.0)
+    return colours(kept, start, watch, graph.structure, settings.flow, pools)
 
 
 def closed_class(

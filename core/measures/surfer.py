@@ -130,8 +130,8 @@ def _solve(graph: Graph, settings: SurferSettings, watch: Watch, start: Floats |
             "share iterated": structure.share_iterated,
         },
         exact_zero=jump.unreached(watch),
-        symmetry=lambda: colours(
-            told_apart(matrix, push), jump.landing(), watch, structure, settings.flow
+        symmetry=lambda pools: colours(
+            told_apart(matrix, push), jump.landing(), watch, structure, settings.flow, pools
         ),
     )
 

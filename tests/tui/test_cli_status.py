@@ -220,7 +220,7 @@ def test_130_while_ordering_keeps_the_scores(ring: Path, register: Any) -> None:
     def solved(graph: Any, settings: Any, watch: Any) -> Iterator[Iteration]:
         yield Iteration(1, 0.0, 0.1, 4, 0.0)
 
-        def ties() -> None:
+        def ties(pools: Any) -> None:
             signal.raise_signal(signal.SIGINT)
 
         scores, bound = np.array([1.0, 1.0, 3.0]), Bound(BoundKind.L1, 0.1, absolute=0.1)
