@@ -27,7 +27,7 @@ from kingpost.core.watch import Watch
 
 COUNT = 6
 _WIDTH = 1e-9  # relative, of the bracket of rho
-MEASURES = ("surfer", "eigenvector", "katz", "hits", "communicability")
+MEASURES = ("surfer", "eigenvector", "katz", "hits", "communicability", "votes")
 
 
 @dataclass(frozen=True, slots=True)
@@ -160,6 +160,8 @@ def _ask(graph: Graph, measure: str, settings: Any, watch: Watch, result: Result
         return _surfer(graph, settings, watch)
     if measure == "hits":
         return _hits(graph, result)
+    if measure == "votes":
+        return _votes(graph, settings, watch, result)
     radius = finish(
         spectral_radius(graph, _WIDTH, watch),
         lambda line: watch.report("bracketing the spectral radius", line.index, unit="steps"),
@@ -266,6 +268,26 @@ def _hits(graph: Graph, result: Result | None) -> _Asked:
         unit, singular=True, power=2, notes=notes,
         radius=None if result is None else result.facts.get("sigma"),
     )  # fmt: skip
+
+
+def _votes(graph: Graph, settings: Any, watch: Watch, result: Result | None) -> _Asked:
+    from kingpost.core.measures.votes import ballot
+
+    made = ballot(graph, settings, watch)
+    groups = int(np.count_nonzero(made.structure.sizes > 1))
+    notes = ["entries are rounded: their own errors, of some 1e-14 each, are not in the residuals"]
+    if groups > 1:
+        notes.append(f"{groups:,} groups of nodes never met: each has a vector of its own")
+    radius = None if result is None else result.facts.get("rho")
+    if settings.division == "vote" and groups:
+        radius = 1.0, 1.0
+    return _Asked(
+        Inside(made.matrix, made.structure, False),
+        f"votes among those who met: link {settings.link}, division {settings.division}",
+        graph.n,
+        radius=radius,
+        notes=tuple(notes),
+    )
 
 
 def _told(measure: str, asked: _Asked, found: Pairs, count: int, result: Result | None) -> Spectrum:
