@@ -320,7 +320,7 @@ class _Work:
             symmetry=self._classes if ready else None,
         )
 
-    def _classes(self) -> NDArray[np.int64] | None:
+    def _classes(self, pools: NDArray[np.uint32] | None) -> NDArray[np.int64] | None:
         """Nodes with the same outcomes against nodes with the same outcomes, and so on."""
         from kingpost.core.colours import colours
         from kingpost.core.kernels.votes import code
@@ -336,7 +336,7 @@ class _Work:
             return None
         rows = Adjacency(starts, neighbours, won)
         pairs = Pull(rows, self.inside.astype(np.float64))
-        return colours(pairs, self.inside.astype(np.float64), self.watch)
+        return colours(pairs, self.inside.astype(np.float64), self.watch, pools=pools)
 
 
 MEASURE = Measure("votes", "V", "ratings by votes", VotesSettings, solve)
