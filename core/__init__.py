@@ -35,7 +35,9 @@ _HOMES = {
     "audit": "insight.audit:examine",
     "drift": "insight.drift",
     "look": "insight.node",
+    "read_scores": "ingest.scores",
     "than": "insight.why",
+    "verify": "insight.verify",
     "why": "insight.why",
 }
 

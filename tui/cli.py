@@ -15,6 +15,7 @@ from kingpost.tui.commands import (
     shelf,
     spectrum,
     synth,
+    verify,
     why,
 )
 from kingpost.tui.commands.front import BARE, Front
@@ -54,6 +55,7 @@ cli.add_command(why.why)
 cli.add_command(agree.agree)
 cli.add_command(spectrum.spectrum)
 cli.add_command(drift.drift)
+cli.add_command(verify.verify)
 cli.add_command(synth.synth)
 cli.add_command(pack.pack)
 cli.add_command(shelf.shelf)
