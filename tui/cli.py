@@ -15,6 +15,7 @@ from kingpost.tui.commands import (
     shelf,
     spectrum,
     synth,
+    trial,
     verify,
     why,
 )

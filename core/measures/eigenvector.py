@@ -54,11 +54,13 @@ class EigenvectorSettings(Settings):
     )
 
 
-def solve(graph: Graph, settings: EigenvectorSettings, watch: Watch) -> Solve:
-    """Eigenvector scores, shape (n,), Euclidean length 1."""
+def solve(
+    graph: Graph, settings: EigenvectorSettings, watch: Watch, start: Floats | None = None
+) -> Solve:
+    """Eigenvector scores, shape (n,), length 1; ``start`` may be those of a near problem."""
     if graph.n == 0:
         return empty("eigenvector", graph, settings)
-    work = _Work(graph, settings, watch)
+    work = _Work(graph, settings, watch, start)
     why = work.without_answer()
     if why is None:
         try:
@@ -77,8 +79,11 @@ def solve(graph: Graph, settings: EigenvectorSettings, watch: Watch) -> Solve:
 
 
 class _Work:
-    def __init__(self, graph: Graph, settings: EigenvectorSettings, watch: Watch) -> None:
+    def __init__(
+        self, graph: Graph, settings: EigenvectorSettings, watch: Watch, start: Floats | None
+    ) -> None:
         self.graph, self.settings, self.watch = graph, settings, watch
+        self.start = start
         self.clock = Clock()
         self.structure = graph.structure
         self.matrix = adjacency(graph, settings.flow)
@@ -118,7 +123,7 @@ class _Work:
             bracket(
                 self.matrix, structure,
                 width=settings.tol, max_steps=settings.max_sweeps, watch=self.watch,
-                only=self.chosen if self.chosen >= 0 else None,
+                only=self.chosen if self.chosen >= 0 else None, start=self.start,
             ),
             "bracket",
         )  # fmt: skip
@@ -134,7 +139,7 @@ class _Work:
                 bracket(
                     self.matrix, structure,
                     width=settings.tol, max_steps=settings.max_sweeps, watch=self.watch,
-                    only=winner,
+                    only=winner, start=self.start,
                 ),
                 "bracket",
             )  # fmt: skip

@@ -69,8 +69,11 @@ class KatzSettings(Settings):
             raise SettingsError("--alpha and --alpha-fraction exclude each other; give one")
 
 
-def solve(graph: Graph, settings: KatzSettings, watch: Watch) -> Solve:
-    """Katz scores, shape (n,).  ``settings.beta`` is a number, an array (n,) or a mapping."""
+def solve(graph: Graph, settings: KatzSettings, watch: Watch, start: Floats | None = None) -> Solve:
+    """Katz scores, shape (n,); ``start`` may be scores of a near problem.
+
+    ``settings.beta`` is a number, an array (n,) or a mapping.
+    """
     if graph.n == 0:
         return empty("katz", graph, settings)
     clock, ledger = Clock(), Ledger()
@@ -87,7 +90,7 @@ def solve(graph: Graph, settings: KatzSettings, watch: Watch) -> Solve:
         else node_vector(graph, beta, "--beta")
     )
     clock.ready()
-    done = yield from _solve(graph, settings, alpha, b, watch, ledger)
+    done = yield from _solve(graph, settings, alpha, b, watch, ledger, start)
     if not np.isfinite(done.bound.value) and done.found.stop is not Stop.CANCELLED:
         # No proof that alpha is below 1/rho: find out whether it is above.
         radius = radius or (
@@ -206,7 +209,13 @@ class _Done:
 
 
 def _solve(
-    graph: Graph, settings: KatzSettings, alpha: float, b: Floats, watch: Watch, ledger: Ledger
+    graph: Graph,
+    settings: KatzSettings,
+    alpha: float,
+    b: Floats,
+    watch: Watch,
+    ledger: Ledger,
+    start: Floats | None,
 ) -> Generator[Iteration, None, _Done]:
     matrix = adjacency(graph, settings.flow, alpha)
     structure, flow = graph.structure, settings.flow
@@ -246,7 +255,7 @@ def _solve(
         bound, enough = order(x, r)
         return bound, enough or r.norm <= 0.2 * settings.tol * float(np.abs(x).sum())
 
-    start: Floats | None = None
+    early = settings.stop_order is not None
     limit = ledger.sweeps + settings.max_sweeps
     for judge in (settled, order):
         found = yield from ledger.relay(
@@ -257,7 +266,7 @@ def _solve(
                 max_sweeps=limit - ledger.sweeps,
                 watch=watch,
                 start=start,
-                early=settings.stop_order is not None and start is None,
+                early=early,
                 gain=4.0,
             )
         )
@@ -278,7 +287,7 @@ def _solve(
             break
         if ledger.sweeps >= limit:
             break
-        start = found.x
+        start, early = found.x, False
     return _Done(found, bound)
 
 

@@ -70,16 +70,17 @@ def bracket(
     watch: Watch,
     only: int | None = None,
     separate: bool = True,
+    start: Floats | None = None,
 ) -> Generator[Iteration, None, Bracketed]:
     """Bracket the spectral radius of ``matrix``; needs at least one cyclic component.
 
     Ends when the bracket's relative width is at most ``width`` and (with ``separate``) one
     component is proven dominating, or when rounding or ``max_steps`` allow no more.  ``only``
-    names a single component to look at.
+    names a single component to look at, ``start`` (n,) gives first vectors where it is positive.
 
     If ``watch`` is cancelled the state so far is returned, marked ``cancelled``.
     """
-    work = _Brackets(matrix, structure, watch, only)
+    work = _Brackets(matrix, structure, watch, only, start)
     try:
         return (yield from _narrow(work, width, max_steps, separate))
     except Interrupted:
@@ -106,7 +107,14 @@ def _narrow(
 
 
 class _Brackets:
-    def __init__(self, matrix: Pull, structure: Structure, watch: Watch, only: int | None) -> None:
+    def __init__(
+        self,
+        matrix: Pull,
+        structure: Structure,
+        watch: Watch,
+        only: int | None,
+        start: Floats | None,
+    ) -> None:
         self.matrix, self.structure, self.watch = matrix, structure, watch
         numbers = structure.cyclic if only is None else np.array([only], dtype=np.int64)
         y = np.zeros(matrix.n)
@@ -114,6 +122,11 @@ class _Brackets:
         self.began = time.perf_counter()
         self._choose(np.ones(len(numbers), dtype=bool))
         y[self.nodes] = 1.0
+        if start is not None:
+            # Any positive vector will do; tiny entries might be lost to underflow.
+            near = start[self.nodes]
+            top = float(near.max(initial=0.0)) or 1.0
+            y[self.nodes] = np.where(near > 0, np.maximum(near / top, 1e-200), 1.0)
         self.stuck = False
         self._since = 0
         self._widths: list[float] = []
