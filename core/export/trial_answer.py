@@ -63,7 +63,8 @@ def trial_answer(graph: Graph, result: Result, found: Trial, top: int | None) ->
         f"{after.bound.kind.value} error of at most {after.bound.value:.1e} of the scores",
         f"{counts['risen']:,} risen, {counts['fallen']:,} fallen; {same:,} where the ranks "
         "possible before and after overlap: no change",
-        f"ranks count the {count(len(found.nodes), 'node')} that stay: a gap that closes is no rise",
+        f"ranks count the {count(len(found.nodes), 'node')} that stay: a gap that closes is no "
+        "rise",
     ]
     tail = [moved_words(found)]
     for kind in (RISEN, FALLEN):
@@ -193,9 +194,9 @@ def losses_answer(
     head = [
         *_head(graph, result),
         f"what the loss of each of the first {len(rows):,} would do, one at a time",
-        "reach it: nodes from which edges lead to it; cut off: those that lose every way to what it "
-        "leads to. leads to: nodes it leads to; cut off: those that lose every way from those that "
-        "reached it",
+        "reach it: nodes from which edges lead to it; cut off: those that lose every way to what "
+        "it leads to. leads to: nodes it leads to; cut off: those that lose every way from those "
+        "that reached it",
     ]
     facts = {
         **graph_facts(graph),

@@ -16,8 +16,12 @@ WARM = "warm start"
 COLD = "solved anew"
 
 
-def starts_warm(name: str) -> bool:
-    """Whether the solver of a measure takes scores to start from."""
+def starts_warm(name: str, settings: Any) -> bool:
+    """Whether the solver of a measure makes use of scores to start from."""
+    if name == "surfer":
+        mode, own = settings.dangling, settings.teleport is not None
+        apart = not isinstance(mode, str) or (mode == "uniform" and own)
+        return settings.damping < 1.0 and not apart
     return "start" in inspect.signature(measure(name).solver).parameters
 
 
@@ -28,7 +32,7 @@ def solve_near(
 
     ``start`` are scores of a near problem, shape (n,), or None.
     """
-    if start is None or not starts_warm(name):
+    if start is None or not starts_warm(name, settings):
         return finish(measure(name).solve(graph, settings, watch), _reporter(watch)), COLD
     solver: Callable[..., Any] = measure(name).solver
     return finish(solver(graph, settings, watch, start), _reporter(watch)), WARM

@@ -34,7 +34,7 @@ from kingpost.core.measures.vectors import distribution, node_vector
 from kingpost.core.result import Result, Seconds, Stop
 from kingpost.core.watch import Watch
 
-LOOSER = 4  # how much more error is allowed after a change than before
+LOOSER = 16  # how much more error is allowed after a change than before
 
 
 @dataclass(frozen=True)
@@ -98,7 +98,7 @@ def trial(
     Args:
         result: scores of any measure on ``graph``.
         updates: those of ``result``, where many trials share them.
-        tol: proven error asked for after the change, as a share of the sum of the scores; four
+        tol: proven error asked for after the change, as a share of the sum of the scores; sixteen
             times what was asked for before where None, for an update adds to the error before.
             Where it proves less, the changed graph is solved.
 
@@ -155,7 +155,7 @@ def resolve(
     settings = dataclasses.replace(settings, tol=tol)
     began = time.perf_counter()
     updates = updates or Updates(graph, result)
-    found = updates.after(edit, watch, tol=tol / LOOSER)
+    found = updates.after(edit, watch, tol=tol / 2)
     if found is None or found.bound.value > tol:
         visits = 0 if found is None else found.edge_visits
         start = (result.scores if found is None else found.scores)[nodes]

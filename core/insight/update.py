@@ -84,6 +84,9 @@ class Updates:
         self._r, self._g = np.zeros((n, 2)), np.zeros((n, 2))
         self._change, self._spread = np.zeros(n), np.zeros(n)
         self._loops = graph.loop_count > 0
+        self._scale = self._system.scale.copy()
+        self._sources = np.empty(0, np.int64)  # whose scales differ
+        self._unsure = 0.0, 0.0  # bounds of |(B' - B) (x* - x)|, summed: by node, by the sum
         self._stale = False  # whether an update that was given up left something in them
         self._blocked, self._touched = np.zeros(n, dtype=bool), np.zeros(n, dtype=bool)
 
@@ -112,7 +115,7 @@ class Updates:
             self._spread.fill(0.0)
         self._stale = True
         scale, marks = self._marked(edit)
-        visits = self._seed(edit, scale, marks)
+        visits = self._seed(scale, marks)
         floor = self._floor(tol)
         drained = self._drain(self._r, self._change, scale, marks, floor, visits, watch)
         if drained is None:
@@ -133,12 +136,11 @@ class Updates:
             keys, factors = keys[order], factors[order]
         self._blocked[list(edit.nodes)] = True
         self._touched[keys >> 32] = True
-        scale = self._system.scale
-        if self._system.damping is not None:
-            scale = scale.copy()
-        return scale, (self._blocked, self._touched, keys, factors)
+        self._scale[self._sources] = self._system.scale[self._sources]
+        self._sources = self._changed(edit, keys)
+        return self._scale, (self._blocked, self._touched, keys, factors)
 
-    def _sources(self, edit: Edit, keys: Ints) -> Ints:
+    def _changed(self, edit: Edit, keys: Ints) -> Ints:
         """Nodes that give otherwise than before."""
         assert self._system is not None
         changed = [np.array(edit.nodes, dtype=np.int64), keys >> 32]
@@ -147,13 +149,14 @@ class Updates:
             changed += [self._pull.row(node)[0].astype(np.int64) for node in edit.nodes]
         return np.unique(np.concatenate(changed))
 
-    def _seed(self, edit: Edit, scale: Floats, marks: tuple[Any, ...]) -> int:
+    def _seed(self, scale: Floats, marks: tuple[Any, ...]) -> int:
         """The residual that the change leaves in the old scores; returns the edges read."""
         from kingpost.core.kernels.push import seed, strengths_of
 
         system, rows = self._system, self._push
         assert system is not None
-        sources = self._sources(edit, marks[2])
+        sources = self._sources
+        self._unsure = 0.0, 0.0
         if len(sources) == 0:
             return 0
         edges = rows.offsets, rows.neighbours, rows.weights
@@ -165,12 +168,11 @@ class Updates:
             scale[sources] = 0.0
             scale[sources[left > 0]] = system.damping / left[left > 0]
             visits = int((rows.offsets[sources + 1] - rows.offsets[sources]).sum())
-        return visits + int(
-            seed(
-                *edges, sources, *marks, system.scale, scale, self.result.scores, self._reach,
-                self._r,
-            )
-        )  # fmt: skip
+        read, unsure, largest = seed(
+            *edges, sources, *marks, system.scale, scale, self.result.scores, self._reach, self._r
+        )
+        self._unsure = unsure, largest * system.total
+        return visits + int(read)
 
     def _drain(
         self,
@@ -245,7 +247,7 @@ class Updates:
             watch.threads,
         )  # fmt: skip
         self._stale = False
-        kappa = max(worst for _, worst in parts) * _SUMS
+        kappa = max(part[2] for part in parts) * _SUMS
         mass = float(y.sum())
         if not mass > 0 or (system.damping is None and not np.isfinite(kappa)):
             return None
@@ -254,13 +256,14 @@ class Updates:
             own *= _SUMS
             value = float(own.sum()) / mass * _SUMS
             return Updated(y, Bound(BoundKind.COMPONENTWISE, value, absolute=own), visits)
-        off = (
-            system.total
-            + 4 * UNIT * mass
-            + sum(total for total, _ in parts) / (1.0 - system.damping)
-        )
+        # The error before, as the change hands it on: node by node, or by its sum and the largest
+        # change of a column.
+        by_node, by_sum = self._unsure
+        left = sum(part[0] for part in parts) * _SUMS
+        left += min(0.0, by_sum - by_node / _SUMS)
+        off = system.total + 4 * UNIT * mass + left / (1.0 - system.damping)
         if np.isfinite(kappa):
-            off = min(off, float(own.sum()) + kappa * mass)
+            off = min(off, sum(part[1] for part in parts) + kappa * mass)
         off *= _SUMS
         if not off < 0.5 * mass:
             return None

@@ -39,10 +39,13 @@ def seed(  # type: ignore[no-untyped-def]
 ):  # fmt: skip
     """Put ``(B' - B) x`` into ``r``, with a bound of its rounding and of ``|B' - B| reach``.
 
-    ``sources`` are the nodes whose columns changed.  Returns the number of edges read.
+    ``sources`` are the nodes whose columns changed.  Returns the number of edges read, the sum of
+    ``|B' - B| reach``, and the largest sum of a column of ``|B' - B|``.
     """
     visits = 0
+    unsure = largest = 0.0
     for u in sources:
+        column = 0.0
         for e in range(offsets[u], offsets[u + 1]):
             v = np.int64(neighbours[e])
             if blocked[v]:
@@ -58,12 +61,14 @@ def seed(  # type: ignore[no-untyped-def]
             step = change * x[u]
             # Rounding: of scale (3 u), product, factor, difference and step, and of the sum.
             size = abs(old) + abs(new)
+            wide = abs(change) + 8 * UNIT * size
             r[v, 0] += step
-            r[v, 1] += abs(change) * reach[u] + UNIT * (
-                8 * size * (abs(x[u]) + reach[u]) + abs(r[v, 0])
-            )
+            r[v, 1] += wide * reach[u] + UNIT * (8 * size * abs(x[u]) + abs(r[v, 0]))
+            column += wide
+        unsure += column * reach[u]
+        largest = max(largest, column)
         visits += offsets[u + 1] - offsets[u]
-    return visits
+    return visits, unsure, largest
 
 
 @kernel()
@@ -161,10 +166,10 @@ def settle(low, high, scores, reach, kept, blocked, r, g, change, spread, y, own
     """Rows ``low..high`` of ``y = scores + change`` and of ``own``, what is known of its error.
 
     Of the residuals that are left (in ``r`` and ``g``, both cleared on the way): returns the sum
-    of those of ``r``, bounds included, and the largest ratio of all to what the row keeps,
-    infinity where that is not positive or y is not (``kept`` empty: always).
+    of those of ``r``, bounds included, the sum of ``own``, and the largest ratio of all to what
+    the row keeps, infinity where that is not positive or y is not (``kept`` empty: always).
     """
-    total = worst = 0.0
+    total = known = worst = 0.0
     for i in range(low, high):
         left = abs(r[i, 0])
         bound = r[i, 1]
@@ -177,13 +182,14 @@ def settle(low, high, scores, reach, kept, blocked, r, g, change, spread, y, own
             continue
         y[i] = max(value, 0.0)  # the exact ones are not negative
         own[i] = wide + 4 * UNIT * y[i]
+        known += own[i]
         total += left + bound
         least = (kept[i] - left) - bound if len(kept) > 0 else 0.0
         if least > 0.0 and value > 0.0:
             worst = max(worst, (left + spill) / least)
         else:
             worst = np.inf
-    return total, worst
+    return total, known, worst
 
 
 @kernel()

@@ -196,3 +196,85 @@ def test_drift_refuses_in_a_sentence(tmp_path: Path, nasty: Path) -> None:
     harmless(run("drift", nasty, nasty))
     same = answered("drift", HARBOUR, HARBOUR)
     assert same["moves"] == []
+
+
+def test_trial(tmp_path: Path) -> None:
+    words = ("trial", HARBOUR, *CALLS, "--without", "audit-trail")
+    found = answered(*words)
+    assert found["trial"]["without"] == ["audit-trail"]
+    assert len(found["standings"]) == found["graph"]["nodes"] - 1
+    assert found["standings"][0]["node"] == "identity"
+    assert found["counts"]["risen"] == sum(row["change"] == "risen" for row in found["moves"])
+    assert 0 < found["mass_moved"] < 1
+    assert found["after"]["error_bound"] <= 1e-10
+    every_format(tmp_path, "standings", *words)
+    text = " ".join(run(*words).stdout.split())
+    assert "structure, not traffic engineering" in text
+    assert "follow the local change procedure" in text
+    assert "trial: without audit-trail" in text
+    target = tmp_path / "moves.parquet"
+    assert run(*words, "--sheet", "moves", "--out", target).exit_code == 0
+    assert pq.read_table(target).num_rows == len(found["moves"])
+
+
+def test_trial_of_edges() -> None:
+    words = ("trial", HARBOUR, *CALLS, "--measure", "katz")
+    pair = ("tide-gauge-bridge", "tide-gauge-poller")
+    halved = answered(*words, "--scale-edge", *pair, "0.5")
+    assert halved["trial"]["edges"] == [{"source": pair[0], "target": pair[1], "factor": 0.5}]
+    gone = answered(*words, "--without-edge", *pair, "--top", "5")
+    assert gone["trial"]["edges"][0]["factor"] == 0
+    assert len(gone["standings"]) == 5
+    assert gone["mass_moved"] > halved["mass_moved"] > 0
+    assert any("alpha is held" in note for note in gone["notes"])
+
+
+def test_trial_of_each(tmp_path: Path) -> None:
+    words = ("trial", HARBOUR, *CALLS, "--each", "3")
+    found = answered(*words)
+    assert [row["node"] for row in found["losses"]] == ["audit-trail", "clock-signal", "identity"]
+    assert all(row["upstream"] > 300 for row in found["losses"])
+    every_format(tmp_path, "losses", *words)
+    every_format(tmp_path, "risers", *words)
+    assert "357 nodes lose it" in " ".join(run(*words).stdout.split())
+
+
+@pytest.mark.parametrize(
+    ("words", "told"),
+    [
+        ([], "name what to change"),
+        (["--without", "identity", "--each", "3"], "name what to change"),
+        (["--without", "identitee"], "did you mean identity"),
+        (["--without-edge", "identity"], "requires 2 arguments"),
+        (["--without-edge", "identity", "identity"], "is not in the graph"),
+        (["--scale-edge", "identity", "key-chest", "x"], "not a valid float"),
+        (["--each", "2", "--sheet", "moves"], "losses and risers"),
+    ],
+)
+def test_trial_refuses_in_a_sentence(words: list[str], told: str) -> None:
+    done = run("trial", HARBOUR, *words)
+    assert done.exit_code == 2
+    assert told in done.stderr or told in str(done.exception)
+
+
+def test_trial_of_odd_names(nasty: Path, tmp_path: Path) -> None:
+    harmless(run("trial", nasty, "--without", "a\u202eb"))
+    harmless(run("trial", nasty, "--without-edge", "\x1b[31mred", "[bold]x[/bold]"))
+    harmless(run("trial", nasty, "--each", "3"))
+    path = tmp_path / "arrows.parquet"
+    names = {"source": ["-a", "a->b", "a=1"], "target": ["a->b", "a=1", "-a"]}
+    pq.write_table(pa.table(names), path)
+    found = answered(
+        "trial", path, "--without-edge", "-a", "a->b", "--scale-edge", "a->b", "a=1", "2"
+    )
+    assert [edge["target"] for edge in found["trial"]["edges"]] == ["a->b", "a=1"]
+
+
+def test_trial_that_leaves_no_answer(tmp_path: Path) -> None:
+    path = tmp_path / "ring.parquet"
+    pq.write_table(pa.table({"source": [1, 2, 3], "target": [2, 3, 1]}), path)
+    done = run("trial", path, "--measure", "eigenvector", "--without", "2")
+    assert done.exit_code == 3
+    assert "no cycle" in done.stderr
+    rows = answered("trial", path, "--measure", "eigenvector", "--each", "1")["losses"]
+    assert "no cycle" in rows[0]["refused"]
