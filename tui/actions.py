@@ -24,11 +24,31 @@ STANDINGS, NODE, LOG, FORM, CHOICE, PROMPT, NOTICE, HELP, LOADING, SHORTLIST = (
 COLUMNS = "columns"  # sheet that chooses them
 SOLVES, APART = "solves", "apart"  # every solve; how two of them differ
 WAY, PLATE = "way", "plate"  # from one node to another; everything known of one
+DOING = "doing"  # sheet that lists every action
 _LISTS = (SHORTLIST, SOLVES, APART, WAY, PLATE)  # views that are one table
 _TABLES = (STANDINGS, NODE, LOG, CHOICE, HELP, COLUMNS, *_LISTS)
 _ROOMS = (STANDINGS, NODE, LOG, HELP, *_LISTS)
 _NODES = (STANDINGS, NODE, SHORTLIST)  # views in which a node is at hand
-_TYPING = (FORM, PROMPT)
+_TYPING = (FORM, PROMPT, DOING)
+_LINES = (FORM, DOING)  # views of lines in which one types
+
+# Views as they are named in a sentence.
+VIEW_WORDS = {
+    STANDINGS: "Standings",
+    NODE: "Node",
+    LOG: "Solve log",
+    FORM: "Settings",
+    CHOICE: "a choice",
+    PROMPT: "a question",
+    NOTICE: "a notice",
+    HELP: "Help",
+    LOADING: "Loading",
+    SHORTLIST: "Shortlist",
+    COLUMNS: "Columns",
+    SOLVES: "All solves",
+    APART: "Two solves",
+    DOING: "Do anything",
+}
 
 
 @dataclass(frozen=True, slots=True)
@@ -50,9 +70,13 @@ class Action:
 
 
 ACTIONS: tuple[Action, ...] = (
-    Action("row.up", ("up",), (*_TABLES, FORM), "one row up (upstream in Node)", group="Moving"),
+    Action("row.up", ("up",), (*_TABLES, *_LINES), "one row up (upstream in Node)", group="Moving"),
     Action(
-        "row.down", ("down",), (*_TABLES, FORM), "one row down (downstream in Node)", group="Moving"
+        "row.down",
+        ("down",),
+        (*_TABLES, *_LINES),
+        "one row down (downstream in Node)",
+        group="Moving",
     ),
     Action("page.ahead", ("a", "pagedown"), _TABLES, "a page ahead", group="Moving"),
     Action("page.return", ("r", "pageup"), _TABLES, "return a page", group="Moving"),
@@ -318,6 +342,23 @@ ACTIONS: tuple[Action, ...] = (
         4,
     ),
     Action(
+        "deed.take",
+        ("enter",),
+        (DOING,),
+        "do the highlighted action",
+        "do it",
+        1,
+        "Asked something",
+    ),
+    Action(
+        "do.anything",
+        ("d",),
+        (*_ROOMS, LOADING),
+        "do anything: every action by name, found by a few letters",
+        "do anything",
+        89,
+    ),
+    Action(
         "help.open",
         ("question_mark",),
         (STANDINGS, NODE, LOG, *_LISTS),
@@ -359,33 +400,56 @@ def key_words(key: str) -> str:
     return _KEY_WORDS.get(key, key)
 
 
-def keymap(view: str, rebound: Mapping[str, tuple[str, ...]] | None = None) -> dict[str, str]:
-    """Key -> action id for one view; ``rebound`` gives other keys to some action ids."""
-    rebound = rebound or {}
+Bound = Mapping[str, tuple[str, ...]]  # action id -> keys given by the user
+
+
+def keys_in(view: str, action: Action, bound: Bound | None = None) -> tuple[str, ...]:
+    """The keys of an action in a view: letters are no keys where text is typed."""
+    bound = bound or {}
+    keys = bound.get(action.id, action.keys)
+    if action.id not in bound:
+        # A key that was given to something else is no longer its former owner's.
+        taken = {key for one, given in bound.items() if view in BY_ID[one].views for key in given}
+        keys = tuple(key for key in keys if key not in taken)
+    if view in _TYPING:
+        return tuple(key for key in keys if len(key) > 1 and key not in ("slash", "question_mark"))
+    return keys
+
+
+def keymap(view: str, bound: Bound | None = None) -> dict[str, str]:
+    """Key -> action id for one view; ``bound`` gives other keys to some action ids."""
     found: dict[str, str] = {}
-    # A key that was given to something else is no longer its former owner's.
-    for action in sorted(ACTIONS, key=lambda action: action.id not in rebound):
-        if view not in action.views:
-            continue
-        for key in rebound.get(action.id, action.keys):
-            found.setdefault(key, action.id)
+    for action in ACTIONS:
+        if view in action.views:
+            for key in keys_in(view, action, bound):
+                found.setdefault(key, action.id)
     return found
 
 
-def key_line(view: str, possible: Iterable[str]) -> list[tuple[str, str]]:
+def key_line(
+    view: str, possible: Iterable[str], bound: Bound | None = None
+) -> list[tuple[str, str]]:
     """(key, words) for the foot of a view, most useful first, of the actions possible now."""
     now = set(possible)
     chosen = [a for a in ACTIONS if view in a.views and a.words and a.id in now]
-    return [(key_words(a.keys[0]), a.words) for a in sorted(chosen, key=lambda a: a.order)]
+    return [
+        (key_words(keys[0]), action.words)
+        for action in sorted(chosen, key=lambda a: a.order)
+        if (keys := keys_in(view, action, bound))
+    ]
 
 
-def help_rows() -> list[tuple[str, str, str]]:
+def help_rows(bound: Bound | None = None) -> list[tuple[str, str, str]]:
     """(group, keys, meaning) of every action, grouped, in the order of the registry."""
     groups: dict[str, list[Action]] = {}
     for action in ACTIONS:
         groups.setdefault(action.group, []).append(action)
     return [
-        (group, " ".join(key_words(key) for key in action.keys), action.means)
+        (
+            group,
+            " ".join(key_words(key) for key in (bound or {}).get(action.id, action.keys)),
+            action.means,
+        )
         for group, actions in groups.items()
         for action in actions
     ]

@@ -10,7 +10,7 @@ import os
 import signal
 import sys
 import traceback
-from collections.abc import Callable
+from collections.abc import Callable, Mapping
 from typing import TYPE_CHECKING, Any
 
 from kingpost.core.text import visible
@@ -54,6 +54,7 @@ _VIEWS = (
     "solves",
     "way",
     "plate",
+    "doing",
 )
 
 Load = Callable[[Job], "Graph"]
@@ -91,6 +92,7 @@ class KingpostApp(App[int], inherit_bindings=False):
         self._paths, self._load = paths, load
         self._measure, self._settings = measure, settings
         self._keymaps: dict[str, dict[str, str]] = {}
+        self._bound: dict[str, tuple[str, ...]] = {}
         self.keeper = Keeper(self)
         self.helpers = (self.keeper, Routes(self))
 
@@ -230,8 +232,13 @@ class KingpostApp(App[int], inherit_bindings=False):
     def keymap(self, view: str) -> dict[str, str]:
         """Key -> action id of a view."""
         if view not in self._keymaps:
-            self._keymaps[view] = actions.keymap(view)
+            self._keymaps[view] = actions.keymap(view, self._bound)
         return self._keymaps[view]
+
+    @property
+    def bound(self) -> Mapping[str, tuple[str, ...]]:
+        """Action id -> keys, of the actions that the user has bound otherwise."""
+        return self._bound
 
     @property
     def solving(self) -> Job | None:
@@ -391,6 +398,14 @@ class KingpostApp(App[int], inherit_bindings=False):
         from kingpost.tui.views.solves import SolvesView
 
         self.push_screen(SolvesView())
+
+    def do_do_anything(self) -> None:
+        """List every action, to be found by name."""
+        from kingpost.tui.views.doing import DoingSheet
+
+        view = self.view
+        if view is not None:
+            self.push_screen(DoingSheet(view), lambda deed: view.do(deed) if deed else None)
 
     def do_help_open(self) -> None:
         """Open the help."""

@@ -119,6 +119,15 @@ _COLOURED = {
     "bound": "bold yellow",
     "step": "green",
 }
+# On a light background yellow and cyan are hard to read.
+_ON_LIGHT = _COLOURED | {
+    "head": "bold blue",
+    "bar": "blue",
+    "open": "magenta",
+    "tied": "blue",
+    "residual": "blue",
+    "bound": "bold magenta",
+}
 _PLAIN = _COLOURED | {
     "head": "bold",
     "bar": "",
@@ -147,17 +156,32 @@ def decide(
     codeset: str | None = None,
     *,
     slow: bool = False,
+    ascii_only: bool = False,
+    coloured: bool = True,
+    background: str = "",
 ) -> Looks:
     """Looks for an environment: ``NO_COLOR`` (any non-empty value) means no colour at all.
 
     Line drawing falls back to ASCII where the locale is not UTF-8 or ``KINGPOST_ASCII`` is set.
+    ``background`` is light or dark; some terminals tell it in ``COLORFGBG``.
     """
     environ = os.environ if environ is None else environ
     if codeset is None:
         codeset = locale_codeset(environ)
     plain = codeset.lower().replace("-", "") != "utf8" or bool(environ.get("KINGPOST_ASCII"))
-    colour = not environ.get("NO_COLOR") and environ.get("TERM", "") not in ("dumb", "vt100")
-    return Looks(ASCII if plain else UNICODE, colour, slow, _COLOURED if colour else _PLAIN)
+    plain = plain or ascii_only
+    colour = coloured and not environ.get("NO_COLOR")
+    colour = colour and environ.get("TERM", "") not in ("dumb", "vt100")
+    styles = _COLOURED if (background or background_of(environ)) != "light" else _ON_LIGHT
+    return Looks(ASCII if plain else UNICODE, colour, slow, styles if colour else _PLAIN)
+
+
+def background_of(environ: Mapping[str, str]) -> str:
+    """``light`` or ``dark`` where ``COLORFGBG`` (foreground;...;background) tells, else empty."""
+    last = environ.get("COLORFGBG", "").rpartition(";")[2]
+    if not last.isdigit():
+        return ""
+    return "light" if int(last) in (7, *range(9, 16)) else "dark"
 
 
 def locale_codeset(environ: Mapping[str, str]) -> str:

@@ -117,7 +117,7 @@ class View(Screen[Any], inherit_bindings=False):
             return
         possible = [a.id for a in actions.ACTIONS if self.view in a.views and self.possible(a.id)]
         for line in self.query(KeyLine):
-            line.keys(actions.key_line(self.view, possible))
+            line.keys(actions.key_line(self.view, possible, self.kingpost.bound))
 
     def tell(self, text: str, role: str = "news") -> None:
         """Show news in the rule above the keys, where the view has one."""

@@ -5,7 +5,7 @@ from __future__ import annotations
 from textual.app import ComposeResult
 
 from kingpost.core.standing import UNRANKED
-from kingpost.tui.actions import HELP, help_rows
+from kingpost.tui.actions import HELP, Bound, help_rows
 from kingpost.tui.models.columns import Column
 from kingpost.tui.views.rows import RowsView
 from kingpost.tui.widgets.lines import KeyLine, Line, Rule
@@ -15,8 +15,8 @@ from kingpost.tui.widgets.rowtable import RowTable
 class Keys:
     """The rows of the help as a source for the row-window table."""
 
-    def __init__(self) -> None:
-        self.rows = help_rows()
+    def __init__(self, bound: Bound) -> None:
+        self.rows = help_rows(bound)
         self.head = [
             Column("keys", "key", 11, lambda at: self.rows[at][1], frozen=True),
             Column("means", "what it does", 66, lambda at: self.rows[at][2]),
@@ -73,4 +73,4 @@ class HelpView(RowsView):
                 ],
             ]
         )
-        self.table.show(Keys())
+        self.table.show(Keys(self.kingpost.bound))

@@ -98,6 +98,11 @@ class RowTable(Widget):
         self.refresh()
 
     @property
+    def source(self) -> Source | None:
+        """What it shows."""
+        return self._source
+
+    @property
     def row(self) -> int:
         """The row under the cursor."""
         return self._row
