@@ -28,6 +28,10 @@ class InputError(KingpostError):
     """A file or table that cannot be used: missing, broken, empty, of the wrong shape or types."""
 
 
+class UnclearColumns(InputError):
+    """A table whose columns could be read in more than one way: somebody has to choose."""
+
+
 class RowsError(InputError):
     """Rows that were refused: null ids, or negative, NaN or infinite weights."""
 

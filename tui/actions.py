@@ -334,6 +334,24 @@ ACTIONS: tuple[Action, ...] = (
         "notice.close", ("enter",), (NOTICE,), "close the notice", "close", 1, "Asked something"
     ),
     Action(
+        "sitting.resume",
+        ("enter",),
+        (LOADING,),
+        "take up the sitting that was kept: view, order, filter, settings",
+        "take it up",
+        1,
+        "Asked something",
+    ),
+    Action(
+        "sitting.fresh",
+        ("g",),
+        (LOADING,),
+        "go afresh: begin a new sitting (marks and notes stay)",
+        "go afresh",
+        2,
+        "Asked something",
+    ),
+    Action(
         "step.back",
         ("escape",),
         (*_ROOMS, *_TYPING, CHOICE, NOTICE, COLUMNS),

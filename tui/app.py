@@ -6,11 +6,12 @@ the loading job, after the first frame has named the file.
 
 from __future__ import annotations
 
+import contextlib
 import os
 import signal
 import sys
 import traceback
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Mapping, Sequence
 from typing import TYPE_CHECKING, Any
 
 from kingpost.core.text import visible
@@ -22,8 +23,11 @@ from textual import events  # noqa: E402
 from textual.app import App  # noqa: E402
 from textual.screen import Screen  # noqa: E402
 
+from kingpost.tui.config import Config  # noqa: E402
 from kingpost.tui.jobs import Job, Runner  # noqa: E402
 from kingpost.tui.keeping import Keeper  # noqa: E402
+from kingpost.tui.opening import ASK, FRESH, Load, Loaded, Opener  # noqa: E402
+from kingpost.tui.resuming import Resumer  # noqa: E402
 from kingpost.tui.routes import Routes  # noqa: E402
 from kingpost.tui.views.base import View  # noqa: E402
 from kingpost.tui.views.loading import LoadingView  # noqa: E402
@@ -33,7 +37,6 @@ if TYPE_CHECKING:
     from kingpost.core.ingest import LoadOptions
     from kingpost.core.measures.base import Settings
     from kingpost.tui.desk import Desk
-    from kingpost.tui.models.marks import Marks
     from kingpost.tui.models.sitting import Sitting
     from kingpost.tui.models.standings import Standings
     from kingpost.tui.views.standings import StandingsView
@@ -57,8 +60,6 @@ _VIEWS = (
     "doing",
 )
 
-Load = Callable[[Job], "Graph"]
-
 
 class KingpostApp(App[int], inherit_bindings=False):
     """Controller of the views; holds the sitting and the runner of background work."""
@@ -68,38 +69,43 @@ class KingpostApp(App[int], inherit_bindings=False):
         os.path.join(os.path.dirname(__file__), name) for name in ("app.tcss", "views/loading.tcss")
     ]
     ENABLE_COMMAND_PALETTE = False
-    HELPERS = (Keeper, Routes)
+    HELPERS = (Keeper, Opener, Resumer, Routes)
+    VIEWS = _VIEWS
     TITLE = "kingpost"
 
     def __init__(
         self,
         paths: list[str],
-        load: Load,
+        load: Load | None,
         measure: str,
         settings: Settings | Callable[[Graph], Settings] | None,
         *,
+        options: LoadOptions | Callable[[], LoadOptions] | None = None,
+        kept: str = FRESH,
+        store: bool = True,
         threads: int | None = None,
         looks: terminal.Looks | None = None,
+        config: Config | None = None,
     ) -> None:
         super().__init__(ansi_color=True)
         self.theme = "ansi-dark"
         self.looks = looks or terminal.decide()
+        self.config = config or Config()
         self.runner = Runner(self.call_later, threads)
         self.latest_news: tuple[str, str] = ("", "news")
         self.sentence = ""  # what is printed after leaving
         self._desk: Desk | None = None
-        self._trouble = ""  # said once there is a view to say it in
-        self._paths, self._load = paths, load
-        self._measure, self._settings = measure, settings
+        self._trouble = self.config.trouble  # said once there is a view to say it in
         self._keymaps: dict[str, dict[str, str]] = {}
-        self._bound: dict[str, tuple[str, ...]] = {}
         self.keeper = Keeper(self)
-        self.helpers = (self.keeper, Routes(self))
+        self.resumer = Resumer(self)
+        self.opener = Opener(self, paths, load, options, measure, settings, kept, store)
+        self.helpers = (self.keeper, self.opener, self.resumer, Routes(self))
 
     # ---- start and end -------------------------------------------------------------------------
 
     def get_default_screen(self) -> Screen[Any]:
-        return LoadingView(self._paths)
+        return LoadingView(self.opener.paths)
 
     def on_mount(self) -> None:
         loop = self._loop
@@ -110,25 +116,7 @@ class KingpostApp(App[int], inherit_bindings=False):
         self.set_timer(0.01, self._begin)
 
     def _begin(self) -> None:
-        self.runner.start(
-            "load",
-            self._load_all,
-            self._loaded,
-            failed=self._unreadable,
-            news=self._stage,
-            words="reading the edge table",
-        )
-
-    def _load_all(self, job: Job) -> tuple[Sitting, Settings | None, Marks, str]:
-        from importlib import import_module
-
-        sitting = self.make_sitting(self._load(job), self._measure)
-        graph = sitting.graph
-        settings = self._settings(graph) if callable(self._settings) else self._settings
-        import_module("kingpost.tui.desk")
-        for name in _VIEWS:
-            import_module(f"kingpost.tui.views.{name}")
-        return sitting, settings, *self.keeper.fetch(self._paths, graph)
+        self.opener.begin()
 
     def make_sitting(self, graph: Graph, measure: str) -> Sitting:
         """The sitting over a graph just loaded."""
@@ -136,29 +124,26 @@ class KingpostApp(App[int], inherit_bindings=False):
 
         return Sitting(graph, measure)
 
-    def _stage(self, job: Job) -> None:
-        if isinstance(self.screen, LoadingView):
-            self.screen.stage(job)
-
-    def _loaded(self, made: tuple[Sitting, Settings | None, Marks, str]) -> None:
+    def sit_down(self, made: Loaded, trouble: str) -> None:
+        """A graph is loaded: a desk for it, with nothing on it yet."""
         from kingpost.tui.desk import Desk
 
-        sitting, settings, marks, self._trouble = made
-        self.keeper.begin(self._paths, marks)
-        if settings is not None:
-            sitting.settings[self._measure] = settings
-        self._desk = Desk(self.runner, sitting, self)
-        self._desk.solve(self._measure, settings)
+        self._trouble = made.trouble or trouble or self._trouble
+        self._desk = Desk(self.runner, made.sitting, self)
+        self.keeper.begin(self.opener.paths, made.marks)
 
-    def _unreadable(self, sentence: str) -> None:
-        self.sentence = sentence
-        cancelled = any(job.watch.cancelled for job in self.runner.jobs("load"))
-        self.leave(130 if cancelled or "cancelled before" in sentence else 2)
+    def back_to_start(self, sentence: str) -> bool:
+        """Back to the view in which tables are chosen, if they were chosen there."""
+        return False
 
     def leave(self, status: int) -> None:
         """Leave with an exit status; the terminal is restored by the driver."""
-        self.sentence = self.keeper.close() or self.sentence
+        self._put_away()
         self.exit(status)
+
+    def _put_away(self) -> None:
+        """Keep marks and sitting: on leaving, whatever the reason."""
+        self.sentence = self.keeper.close() or self.resumer.close() or self.sentence
 
     def send(self, sequence: str) -> None:
         """Send an escape sequence to the terminal itself."""
@@ -178,6 +163,8 @@ class KingpostApp(App[int], inherit_bindings=False):
         if self.is_headless:
             super()._handle_exception(error)
             return
+        with contextlib.suppress(Exception):
+            self._put_away()
         place = terminal.keep_fault("".join(traceback.format_exception(error)))
         kept = f"; please report {place}" if place else ""
         self.sentence = f"a fault of the program ended the screen ({type(error).__name__}){kept}"
@@ -232,13 +219,13 @@ class KingpostApp(App[int], inherit_bindings=False):
     def keymap(self, view: str) -> dict[str, str]:
         """Key -> action id of a view."""
         if view not in self._keymaps:
-            self._keymaps[view] = actions.keymap(view, self._bound)
+            self._keymaps[view] = actions.keymap(view, self.bound)
         return self._keymaps[view]
 
     @property
     def bound(self) -> Mapping[str, tuple[str, ...]]:
         """Action id -> keys, of the actions that the user has bound otherwise."""
-        return self._bound
+        return self.config.keys
 
     @property
     def solving(self) -> Job | None:
@@ -285,10 +272,22 @@ class KingpostApp(App[int], inherit_bindings=False):
         table.marks = self.keeper.marks
         if first:
             self.latest_news = (self._trouble, "bad")
+            self._trouble = ""
             self.push_screen(StandingsView(table))
+            # Once its widgets exist: the rest of a sitting that is taken up needs them.
+            self.call_after_refresh(self._opened)
             return
         self.standings.show(table)
+        self.resumer.filtered()
         self.refreshed()
+
+    def _opened(self) -> None:
+        shown = self.standings_shown
+        if shown is None or not shown.composed:
+            self.call_after_refresh(self._opened)
+            return
+        self.opener.remember()
+        self.resumer.opened()
 
     def swept(self, job: Job) -> None:
         """A solve has news: shown where its sweeps are."""
@@ -313,24 +312,37 @@ class KingpostApp(App[int], inherit_bindings=False):
                 screen.marks_changed()
 
     def no_start(self, sentence: str) -> None:
-        """There is nothing to show: leave with the reason."""
-        self.sentence = sentence
-        self.leave(2)
+        """There is nothing to show: out with the reason."""
+        self._desk = None
+        self.opener.fail(sentence)
 
     @property
     def standings(self) -> StandingsView:
         """The view everything else is reached from."""
+        shown = self.standings_shown
+        assert shown is not None
+        return shown
+
+    @property
+    def standings_shown(self) -> StandingsView | None:
+        """The same, None while there are no standings yet."""
+        if self._desk is None or self._desk.table is None:
+            return None
         from kingpost.tui.views.standings import StandingsView
 
-        return next(screen for screen in self.screen_stack if isinstance(screen, StandingsView))
+        found = (screen for screen in self.screen_stack if isinstance(screen, StandingsView))
+        return next(found, None)
 
     # ---- going from view to view -------------------------------------------------------------
 
-    def open_node(self, node: int) -> None:
-        """Open the load path of a node."""
+    def open_node(self, node: int, trail: Sequence[int] = (), at: int = 0) -> None:
+        """Open the load path of a node, or take up the way walked before."""
         from kingpost.tui.views.node import NodeView
 
-        self.push_screen(NodeView(node))
+        view = NodeView(node)
+        if trail:
+            view.trail.nodes, view.trail.at = list(trail), min(max(at, 0), len(trail) - 1)
+        self.push_screen(view)
 
     def walk_to(self, node: int) -> None:
         """Walk on to a node: in the Node view beneath what is open, else in a new one."""
@@ -416,32 +428,43 @@ class KingpostApp(App[int], inherit_bindings=False):
 
 def run(
     paths: list[str],
-    load_options: LoadOptions | Callable[[], LoadOptions],
+    load_options: LoadOptions | Callable[[], LoadOptions] | None,
     measure: str,
     settings: Settings | Callable[[Graph], Settings] | None,
     *,
     threads: int | None = None,
     slow: bool = False,
     store: bool = True,
+    kept: str = ASK,
+    config: Config | None = None,
 ) -> int:
     """Open the screen on some edge tables; returns the exit status.
 
     Options and settings may be given as functions: they are then called in the loading job,
     settings with the graph, so that the first frame need not wait for the modules they need.
+    ``kept`` says what becomes of a sitting over these tables that was kept.
     """
-
-    def load(job: Job) -> Graph:
-        from kingpost.core.open import open_graph
-
-        options = load_options() if callable(load_options) else load_options
-        return open_graph(paths, options=options, watch=job.watch, store=store, tell=notes.append)
-
-    notes: list[str] = []
-
-    looks = terminal.decide(slow=slow)
+    config = config or Config()
+    looks = terminal.decide(
+        slow=slow,
+        ascii_only=config.ascii,
+        coloured=config.colour,
+        background=config.background,
+    )
     # The framework's own reading of NO_COLOR paints greys; our styles have no colour then.
     os.environ.pop("NO_COLOR", None)
-    app = KingpostApp(paths, load, measure, settings, threads=threads, looks=looks)
+    app = KingpostApp(
+        paths,
+        None,
+        measure,
+        settings,
+        options=load_options,
+        kept=kept,
+        store=store,
+        threads=threads,
+        looks=looks,
+        config=config,
+    )
     try:
         status: int | None = app.run(mouse=False)
     except KeyboardInterrupt:
@@ -449,10 +472,13 @@ def run(
     ended = app.runner.shutdown(_PATIENCE)
     if status is None:
         status = app.return_code or 1
-    for note in notes:  # the screen goes without; it is told where it stays to be read
-        print(f"kingpost: note: {visible(note)}", file=sys.stderr)
+    for note in app.opener.notes:  # the screen goes without; it is told where it stays to be read
+        with contextlib.suppress(OSError):
+            print(f"kingpost: note: {visible(note)}", file=sys.stderr)
     if app.sentence:
-        print(f"kingpost: {app.sentence}", file=sys.stderr)
+        # The terminal may have gone: then there is nobody to tell.
+        with contextlib.suppress(OSError):
+            print(f"kingpost: {app.sentence}", file=sys.stderr, flush=True)
     if not ended:
         # A thread deep in a library cannot be stopped; waiting for it would hang the shell.
         sys.stdout.flush()

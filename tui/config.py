@@ -194,28 +194,26 @@ def _key(given: Any, name: str) -> str:
 
 
 def _check_apart(bound: Mapping[str, tuple[str, ...]]) -> None:
-    """Refuse a key that would mean two things in one view."""
-    views = {view for action in actions.ACTIONS for view in action.views}
-    for view in sorted(views):
+    """Refuse a key that would mean two things in one view, and one that is needed to get out.
+
+    A letter that an action not named in the file has by default may be given away: the action is
+    then without it, and can still be done by name.
+    """
+    for view in actions.VIEW_WORDS:
         taken: dict[str, str] = {}
+        where = actions.VIEW_WORDS[view]
         for action in actions.ACTIONS:
-            if view not in action.views:
+            if view not in action.views or action.id not in (*bound, *_FIXED):
                 continue
-            for key in actions.keys_in(view, action, bound):
+            keys = bound.get(action.id, action.keys)
+            for key in keys:
                 other = taken.setdefault(key, action.id)
                 if other != action.id:
                     name = action.id if action.id in bound else other
-                    raise _Wrong(
-                        f"{actions.key_words(key)} would mean both {other} and {action.id} in "
-                        f"{actions.VIEW_WORDS.get(view, view)}",
-                        name,
-                    )
-    for view in sorted(views):
-        for action in actions.ACTIONS:
-            if action.id in bound and view in action.views:
-                if not actions.keys_in(view, action, bound):
-                    raise _Wrong(
-                        f"{action.id} needs a key that is no letter: in "
-                        f"{actions.VIEW_WORDS.get(view, view)} letters are typed",
-                        action.id,
-                    )
+                    word = actions.key_words(key)
+                    raise _Wrong(f"{word} would mean both {other} and {action.id} in {where}", name)
+            if not actions.keys_in(view, action, bound) and action.id in bound:
+                raise _Wrong(
+                    f"{action.id} needs a key that is no letter: in {where} letters are typed",
+                    action.id,
+                )

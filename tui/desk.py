@@ -4,7 +4,7 @@ of it.  Knows the runner and the sitting, no screen: views and application are i
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Mapping, Sequence
 from typing import Any, Protocol
 
 from kingpost.core.errors import SettingsError
@@ -52,6 +52,14 @@ class Desk:
         self.table: Standings | None = None
         self._wanted: dict[str, Any] = {"sort": "rank", "turned": False, "where": ""}
         self._prepared: tuple[int, ...] = ()
+        self._closed = False
+
+    def close(self) -> None:
+        """Stop all work; whatever still comes of it is told to nobody."""
+        self._closed = True
+        for lane in ("solve", "table"):
+            for job in self.runner.jobs(lane):
+                self.runner.cancel(job)
 
     # ---- solving -----------------------------------------------------------------------------
 
@@ -99,23 +107,32 @@ class Desk:
             self._front.news(solved_words(result))
             self._make()
 
+    @property
+    def company(self) -> Sequence[str]:
+        """The measures that are solved unasked."""
+        return COMPANY if self.sitting.names is NAMES else self.sitting.names
+
     def keep_company(self) -> None:
         """Queue the measures nobody asked for, where they cost little."""
         sitting = self.sitting
         if sitting.graph.stored > COMPANY_EDGES:
             return
-        for name in COMPANY if sitting.names is NAMES else sitting.names:
+        for name in self.company:
             result = sitting.results.get(name)
             # The flow is one for all: ranks under different flows do not compare.
             if result is None or getattr(result.settings, "flow", sitting.flow) != sitting.flow:
                 self.solve(name, None, company=True)
 
     def _swept(self, job: Job) -> None:
+        if self._closed:
+            return
         if self.table is not None and not job.facts.get("company"):
             self._front.news(sweep_words(job))
         self._front.swept(job)
 
     def _solved(self, result: Result, company: bool) -> None:
+        if self._closed:
+            return
         if company and result.stop is Stop.CANCELLED:
             return
         sitting, first = self.sitting, self.table is None
@@ -136,12 +153,27 @@ class Desk:
         self._make()
 
     def _unsolved(self, sentence: str, company: bool) -> None:
+        if self._closed:
+            return
         if self.table is None and not company:
             self._front.no_start(sentence)
         elif not company:
             self._front.news(sentence, "bad")
             self._front.notice("the solve failed", sentence)
         self._front.refreshed()
+
+    @property
+    def wanted(self) -> dict[str, Any]:
+        """How the rows are to be arranged, by names: kept from sitting to sitting."""
+        return dict(self._wanted)
+
+    def restore(
+        self, wanted: Mapping[str, Any], order: Sequence[str], hidden: Sequence[str]
+    ) -> None:
+        """Arrange rows and columns as in an earlier sitting, from the first table on."""
+        self._wanted.update(wanted)
+        if order:
+            self.sitting.columns = Choice(tuple(order), frozenset(hidden))
 
     # ---- the table ---------------------------------------------------------------------------
 
@@ -202,6 +234,8 @@ class Desk:
         )
 
     def _made(self, made: Any) -> None:
+        if self._closed:
+            return
         table, arrangement, self._prepared, lost = made
         old, self.table = self.table, table
         if old is not None and table is old:

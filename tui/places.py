@@ -6,9 +6,12 @@ Follows the conventions of the system (on Linux the XDG variables).  Imports not
 from __future__ import annotations
 
 import contextlib
+import datetime
+import hashlib
 import json
 import os
 import secrets
+from collections.abc import Sequence
 from pathlib import Path
 from typing import Any
 
@@ -93,6 +96,17 @@ def read_json(path: Path) -> Any:
         raise StateError(
             f"{path} is damaged and is left out of account; remove it to be rid of this line"
         ) from None
+
+
+def key_of(paths: Sequence[str]) -> str:
+    """A file name for what is kept about tables: the same wherever one stands."""
+    full = sorted(os.path.realpath(path) for path in paths)
+    return hashlib.sha256(json.dumps(full).encode()).hexdigest()[:24]
+
+
+def now() -> str:
+    """The time by this machine's clock, to the second, with its offset."""
+    return datetime.datetime.now().astimezone().isoformat(timespec="seconds")
 
 
 def home_short(path: str) -> str:

@@ -17,6 +17,7 @@ if TYPE_CHECKING:
 
     from kingpost.core.graph import Floats, Graph
     from kingpost.core.ingest.about import TableAbout
+    from kingpost.core.ingest.peek import Peek
     from kingpost.core.watch import Watch
 
 __all__ = [
@@ -27,6 +28,7 @@ __all__ = [
     "from_scipy",
     "from_table",
     "load",
+    "peek",
     "read_node_values",
 ]
 
@@ -103,3 +105,10 @@ def describe(paths: Paths) -> TableAbout:
     from kingpost.core.ingest import about
 
     return about.about(paths)
+
+
+def peek(paths: Paths, rows: int = 5) -> Peek:
+    """What :func:`describe` tells, and the first ``rows`` values of every column, safe to show."""
+    from kingpost.core.ingest.peek import peek as look
+
+    return look(paths, rows)

@@ -10,7 +10,7 @@ from dataclasses import dataclass
 import pyarrow as pa
 from pyarrow import types as pt
 
-from kingpost.core.errors import InputError
+from kingpost.core.errors import InputError, UnclearColumns
 from kingpost.core.ingest.files import Part, columns_listed
 from kingpost.core.ingest.idtypes import common, family, plain, require_id
 from kingpost.core.ingest.options import LoadOptions
@@ -74,8 +74,8 @@ def choose(parts: list[Part], options: LoadOptions) -> Roles:
     """Find the columns that ``options`` names, or guess them.
 
     Raises:
-        InputError: if a named column is missing or of a type that cannot serve, or if nothing
-            or more than one thing can be guessed.
+        InputError: if a named column is missing or of a type that cannot serve.
+        UnclearColumns: if nothing or more than one thing can be guessed.
     """
     first = parts[0]
     for name in (options.source, options.target, options.weight):
@@ -157,7 +157,7 @@ def _ends(part: Part, options: LoadOptions) -> tuple[str, str]:
             lacking = "--target"
         elif options.target is not None:
             lacking = "--source"
-        raise InputError(
+        raise UnclearColumns(
             f"it is not clear which columns of {part.name} are the two ends of an edge; name them "
             f"with {lacking}; its columns are {columns_listed(part.schema)}"
         )

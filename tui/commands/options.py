@@ -19,6 +19,7 @@ F = TypeVar("F", bound=Callable[..., Any])
 FORMATS = ("table", "json", "csv", "tsv", "markdown", "parquet")
 
 LOADING, MEASURE, OUTPUT, QUESTION = "Loading", "Measure", "Output", "Question"
+SCREEN = "Screen"
 
 # Names of the options whose values are fields of a measure's settings.
 SETTINGS = (
@@ -339,6 +340,18 @@ measure = _stack(
         help=f"{', '.join(NAMES)} [surfer]",
     ),
     settings,
+)
+
+
+showing = _stack(
+    _option(SCREEN, "--fresh", is_flag=True, help="begin a new sitting without being asked"),
+    _option(SCREEN, "--resume", is_flag=True, help="take up the sitting that was kept, unasked"),
+    _option(
+        SCREEN,
+        "--slow-link",
+        is_flag=True,
+        help="fewer frames and less traffic, for a slow connection",
+    ),
 )
 
 

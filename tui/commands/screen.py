@@ -25,6 +25,7 @@ if TYPE_CHECKING:
 @options.edges
 @options.loading
 @options.measure
+@options.showing
 def screen(edges: tuple[str, ...], **given: Any) -> int:
     """Open the screen on a table of edges."""
     for path in edges:
@@ -34,18 +35,37 @@ def screen(edges: tuple[str, ...], **given: Any) -> int:
         from kingpost.tui.commands.rank import answer
 
         return answer(edges, given)
+    from kingpost.tui import config, terminal
+
+    if given["fresh"] and given["resume"]:
+        raise click.UsageError("--fresh and --resume ask for opposite things; give one of them")
+    found = config.read()
+    slow = given["slow_link"] or found.slow_link
+    terminal.prepare_environment(slow=slow)  # the toolkit reads it when it is imported
     from kingpost.tui.app import run
 
+    measure = given["measure"]
+    if not named("measure") and found.measure:
+        measure = found.measure
     status: int = run(
         list(edges),
         # Made in the loading job: the first frame does not wait for Arrow.
         lambda: load_options(given),
-        given["measure"],
-        settings_asked_for(given),
+        measure,
+        settings_asked_for(given | {"measure": measure}),
         threads=given["threads"],
         store=options.store_wanted(),
+        slow=slow,
+        kept="fresh" if given["fresh"] else "take" if given["resume"] else "ask",
+        config=found,
     )
     return status
+
+
+def named(option: str) -> bool:
+    """Whether an option stands on the command line, rather than having its default."""
+    source = click.get_current_context().get_parameter_source(option)
+    return source is not click.core.ParameterSource.DEFAULT
 
 
 def settings_asked_for(given: dict[str, Any]) -> Callable[[Graph], Settings] | None:

@@ -6,9 +6,6 @@ that the present graph does not hold are kept for the day it does.
 
 from __future__ import annotations
 
-import datetime
-import hashlib
-import json
 import os
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
@@ -79,7 +76,7 @@ class Marks:
         if len(self._marks) >= MOST_MARKS:
             raise places.StateError(f"a shortlist holds at most {MOST_MARKS:,} marks; remove some")
         name = id_text(graph.label(node))
-        mark = self._taken_off.pop(name, None) or Mark(name, when=now(), node=node)
+        mark = self._taken_off.pop(name, None) or Mark(name, when=places.now(), node=node)
         self.put(mark)
         return mark
 
@@ -102,20 +99,9 @@ class Marks:
         return [{"node": mark.name, "note": mark.note, "when": mark.when} for mark in self]
 
 
-def now() -> str:
-    """The time by this machine's clock, to the second, with its offset."""
-    return datetime.datetime.now().astimezone().isoformat(timespec="seconds")
-
-
-def key_of(paths: Sequence[str]) -> str:
-    """A file name for what is kept about tables: the same wherever one stands."""
-    full = sorted(os.path.realpath(path) for path in paths)
-    return hashlib.sha256(json.dumps(full).encode()).hexdigest()[:24]
-
-
 def marks_file(paths: Sequence[str]) -> Path:
     """Where the marks of these tables are kept."""
-    return places.state_folder() / "marks" / f"{key_of(paths)}.json"
+    return places.state_folder() / "marks" / f"{places.key_of(paths)}.json"
 
 
 def save(

@@ -39,6 +39,9 @@ class LoadingView(View):
         yield Line(id="head")
         yield Rule(id="top")
         yield Line(id="stages")
+        yield Rule(id="kept", classes="offer")
+        yield Line(id="words", classes="offer")
+        yield Line(id="changed", classes="offer")
         yield Rule(id="news")
         yield KeyLine(id="keys")
 
@@ -48,7 +51,29 @@ class LoadingView(View):
             (f" {self.looks.glyphs.pointer} reading the edge table", "plain")
         )
         self.refresh_keys()
-        self._clock = self.set_interval(1.0, self._tick)
+        # On a slow link a clock is the first thing to go.
+        self._clock = self.set_interval(5.0 if self.looks.slow else 1.0, self._tick)
+
+    def again(self) -> None:
+        """Reading begins once more."""
+        self._stages.clear()
+        self._started = time.monotonic()
+
+    def offer(self, title: str, words: str, changed: str) -> None:
+        """Show what sitting was kept, or that nothing is offered if there is no title."""
+        self.set_class(bool(title), "-offer")
+        self.query_one("#kept", Rule).title(title)
+        self.query_one("#words", Line).show((f" {words}", "strong"))
+        self.query_one("#changed", Line).show((f" {changed}", "plain"))
+        self.refresh_keys()
+
+    def wait_for_answer(self) -> None:
+        """All is read; only the answer is missing."""
+        self._clock.stop()
+        self.query_one("#head", Line).show(
+            (f" {self._file_name}", "head"),
+            ("   read; take up the sitting that was kept?", "plain"),
+        )
 
     def _tick(self) -> None:
         if self.app.screen is not self:

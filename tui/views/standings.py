@@ -272,9 +272,10 @@ class StandingsView(View):
 
     def do_find_ask(self) -> None:
         found = self.model.found
-        self.app.push_screen(PromptSheet("find", found.text if found else ""), self._find)
+        self.app.push_screen(PromptSheet("find", found.text if found else ""), self.find)
 
-    def _find(self, text: str | None) -> None:
+    def find(self, text: str | None) -> None:
+        """Find the rows whose name contains a text."""
         if not text:
             return
         model, arranged = self.model, self.model.arrangement
