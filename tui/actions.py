@@ -24,9 +24,10 @@ STANDINGS, NODE, LOG, FORM, CHOICE, PROMPT, NOTICE, HELP, LOADING, SHORTLIST = (
 COLUMNS = "columns"  # sheet that chooses them
 SOLVES, APART = "solves", "apart"  # every solve; how two of them differ
 WAY, PLATE = "way", "plate"  # from one node to another; everything known of one
+ROLES = "roles"  # which column of a table is what
 DOING = "doing"  # sheet that lists every action
 _LISTS = (SHORTLIST, SOLVES, APART, WAY, PLATE)  # views that are one table
-_TABLES = (STANDINGS, NODE, LOG, CHOICE, HELP, COLUMNS, *_LISTS)
+_TABLES = (STANDINGS, NODE, LOG, CHOICE, HELP, COLUMNS, ROLES, *_LISTS)
 _ROOMS = (STANDINGS, NODE, LOG, HELP, *_LISTS)
 _NODES = (STANDINGS, NODE, SHORTLIST)  # views in which a node is at hand
 _TYPING = (FORM, PROMPT, DOING)
@@ -47,6 +48,9 @@ VIEW_WORDS = {
     COLUMNS: "Columns",
     SOLVES: "All solves",
     APART: "Two solves",
+    WAY: "Way",
+    PLATE: "Name plate",
+    ROLES: "Column roles",
     DOING: "Do anything",
 }
 
@@ -85,14 +89,14 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "columns.left",
         ("left",),
-        (STANDINGS, NODE, FORM, COLUMNS, *_LISTS),
+        (STANDINGS, NODE, FORM, COLUMNS, ROLES, *_LISTS),
         "columns further left, or the choice before; moves a column that is being arranged",
         group="Moving",
     ),
     Action(
         "columns.right",
         ("right",),
-        (STANDINGS, NODE, FORM, COLUMNS, *_LISTS),
+        (STANDINGS, NODE, FORM, COLUMNS, ROLES, *_LISTS),
         "columns further right, or the next choice; moves a column that is being arranged",
         group="Moving",
     ),
@@ -334,6 +338,24 @@ ACTIONS: tuple[Action, ...] = (
         "notice.close", ("enter",), (NOTICE,), "close the notice", "close", 1, "Asked something"
     ),
     Action(
+        "roles.take",
+        ("enter",),
+        (ROLES,),
+        "read the table with these columns",
+        "read it",
+        1,
+        "Asked something",
+    ),
+    Action(
+        "role.change",
+        ("tab",),
+        (ROLES,),
+        "make the column source, target, weight or none of them (so do left and right)",
+        "change role",
+        2,
+        "Asked something",
+    ),
+    Action(
         "sitting.resume",
         ("enter",),
         (LOADING,),
@@ -354,7 +376,7 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "step.back",
         ("escape",),
-        (*_ROOMS, *_TYPING, CHOICE, NOTICE, COLUMNS),
+        (*_ROOMS, *_TYPING, CHOICE, NOTICE, COLUMNS, ROLES),
         "one step back; nothing is lost",
         "back",
         4,
@@ -371,7 +393,7 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "do.anything",
         ("d",),
-        (*_ROOMS, LOADING),
+        (*_ROOMS, LOADING, ROLES),
         "do anything: every action by name, found by a few letters",
         "do anything",
         89,
@@ -379,16 +401,16 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "help.open",
         ("question_mark",),
-        (STANDINGS, NODE, LOG, *_LISTS),
+        (STANDINGS, NODE, LOG, ROLES, *_LISTS),
         "every key, in words",
         "all keys",
         90,
     ),
-    Action("quit", ("q",), (*_ROOMS, LOADING), "quit", "quit", 91),
+    Action("quit", ("q",), (*_ROOMS, LOADING, ROLES), "quit", "quit", 91),
     Action(
         "quit.now",
         ("ctrl+c",),
-        (*_ROOMS, *_TYPING, CHOICE, NOTICE, LOADING, COLUMNS),
+        (*_ROOMS, *_TYPING, CHOICE, NOTICE, LOADING, ROLES, COLUMNS),
         "quit at once, from anywhere",
     ),
 )

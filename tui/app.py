@@ -58,6 +58,7 @@ _VIEWS = (
     "way",
     "plate",
     "doing",
+    "roles",
 )
 
 

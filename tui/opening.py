@@ -50,6 +50,7 @@ class Unclear:
 
     peek: Peek
     options: LoadOptions
+    sentence: str
 
 
 class Opener:
@@ -74,7 +75,7 @@ class Opener:
         self.notes: list[str] = []  # told where they stay to be read: after leaving
         self._offer: Kept | None = None
         self._taken: Kept | None = None
-        self._loaded: Loaded | None = None
+        self._loaded: Loaded | Unclear | None = None
         self._trouble = ""
 
     @property
@@ -110,6 +111,8 @@ class Opener:
     def _read(self) -> None:
         self._loaded = None
         kept = self._taken
+        if isinstance(self._app.screen, LoadingView):
+            self._app.screen.again()
         self._app.runner.start(
             "load",
             lambda job: self._work(job, kept or self._offer),
@@ -152,9 +155,9 @@ class Opener:
                     tell=self.notes.append,
                 )
             )
-        except UnclearColumns:
+        except UnclearColumns as error:
             job.watch.report("looking at the columns")
-            return Unclear(peek(self.paths), options)
+            return Unclear(peek(self.paths), options, error.sentence)
         sitting = app.make_sitting(graph, self._measure)
         settings = self._settings(graph) if callable(self._settings) else self._settings
         import_module("kingpost.tui.desk")
@@ -175,20 +178,22 @@ class Opener:
             self._app.screen.stage(job)
 
     def _done(self, made: Loaded | Unclear) -> None:
-        if isinstance(made, Unclear):
-            self._ask_columns(made)
-            return
         self._loaded = made
         if self._offer is None:
-            self._sit_down()
+            self._go_on()
         elif isinstance(self._app.screen, LoadingView):
             self._app.screen.wait_for_answer()
 
-    def _sit_down(self) -> None:
-        made, kept = self._loaded, self._taken
-        if made is None:
-            return
-        self._loaded = None
+    def _go_on(self) -> None:
+        """Nothing is left to be asked about a sitting that was kept."""
+        made, self._loaded = self._loaded, None
+        if isinstance(made, Unclear):
+            self._ask_columns(made)
+        elif made is not None:
+            self._sit_down(made)
+
+    def _sit_down(self, made: Loaded) -> None:
+        kept = self._taken
         measure, settings = self._measure, made.settings
         self._app.sit_down(made, self._trouble)
         self._app.resumer.begin(self.paths, made.options, kept, made.nodes)
@@ -233,11 +238,11 @@ class Opener:
         self._show_offer()
         made = self._loaded
         before = None if self._taken is None else self._taken.options
-        if before and self._load_given is None and (made is None or made.options != before):
+        same = isinstance(made, Loaded) and made.options == before
+        if before and self._load_given is None and not same:
             self._read()  # as they were read then
-            return
-        if made is not None:
-            self._sit_down()
+        else:
+            self._go_on()
 
     can_sitting_fresh = can_sitting_resume
 
@@ -245,8 +250,7 @@ class Opener:
         """Begin a new sitting; the old one is kept until this one ends."""
         self._offer = None
         self._show_offer()
-        if self._loaded is not None:
-            self._sit_down()
+        self._go_on()
 
     # ---- columns that somebody has to choose ---------------------------------------------------
 
@@ -254,12 +258,13 @@ class Opener:
         from kingpost.tui.views.roles import RolesView
 
         self._app.push_screen(
-            RolesView(self.paths, unclear.peek, unclear.options), self._columns_chosen
+            RolesView(self.paths, unclear.peek, unclear.options),
+            lambda options: self._columns_chosen(options, unclear.sentence),
         )
 
-    def _columns_chosen(self, options: LoadOptions | None) -> None:
+    def _columns_chosen(self, options: LoadOptions | None, sentence: str) -> None:
         if options is None:
-            self.fail("cancelled before there was an answer to keep: no columns were chosen")
+            self.fail(sentence)
             return
         self._options, self._load_given = options, None
         self._read()

@@ -7,8 +7,11 @@ from contextlib import closing
 from dataclasses import dataclass
 from typing import Any, cast
 
+import pyarrow as pa
+
 from kingpost.core.ingest.about import TableAbout, about
 from kingpost.core.ingest.files import Part, Paths, open_parts
+from kingpost.core.ingest.idtypes import common
 from kingpost.core.text import id_text, visible
 
 _CELL = 60  # characters of a value that are worth a look
@@ -20,6 +23,17 @@ class Peek:
 
     about: TableAbout
     values: tuple[tuple[str, ...], ...]
+    schema: pa.Schema
+
+    def apart(self, source: str, target: str) -> str:
+        """Why two columns cannot be the two ends of an edge; empty if they can."""
+        kinds = [self.schema.field(name).type for name in (source, target)]
+        if common(*kinds) is not None:
+            return ""
+        return (
+            f"{visible(source, 40)} is of type {kinds[0]} and {visible(target, 40)} of type "
+            f"{kinds[1]}, which do not go together"
+        )
 
 
 def peek(paths: Paths, rows: int = 5) -> Peek:
@@ -31,7 +45,7 @@ def peek(paths: Paths, rows: int = 5) -> Peek:
     described = about(paths)
     first = open_parts(paths)[0]
     names = [column.name for column in described.columns]
-    return Peek(described, tuple(_values(first, name, names, rows) for name in names))
+    return Peek(described, tuple(_values(first, name, names, rows) for name in names), first.schema)
 
 
 def _values(part: Part, name: str, names: Sequence[str], rows: int) -> tuple[str, ...]:
@@ -40,5 +54,11 @@ def _values(part: Part, name: str, names: Sequence[str], rows: int) -> tuple[str
     with closing(cast(Any, part.read([name], False))) as batches:
         for batch in batches:
             some = batch.column(0).slice(0, rows).to_pylist()
-            return tuple("" if v is None else visible(id_text(v), _CELL) for v in some)
+            return tuple(map(_cell, some))
     return ()
+
+
+def _cell(value: Any) -> str:
+    if value is None:
+        return ""
+    return visible(f"{value:.6g}" if isinstance(value, float) else id_text(value), _CELL)

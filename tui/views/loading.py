@@ -51,6 +51,9 @@ class LoadingView(View):
             (f" {self.looks.glyphs.pointer} reading the edge table", "plain")
         )
         self.refresh_keys()
+        self._run_clock()
+
+    def _run_clock(self) -> None:
         # On a slow link a clock is the first thing to go.
         self._clock = self.set_interval(5.0 if self.looks.slow else 1.0, self._tick)
 
@@ -58,6 +61,9 @@ class LoadingView(View):
         """Reading begins once more."""
         self._stages.clear()
         self._started = time.monotonic()
+        if self.composed:
+            self._clock.stop()
+            self._run_clock()
 
     def offer(self, title: str, words: str, changed: str) -> None:
         """Show what sitting was kept, or that nothing is offered if there is no title."""
