@@ -51,7 +51,7 @@ VIEW_WORDS = {
     WAY: "Way",
     PLATE: "Name plate",
     ROLES: "Column roles",
-    DOING: "Do anything",
+    DOING: "Any action",
 }
 
 
@@ -366,10 +366,10 @@ ACTIONS: tuple[Action, ...] = (
     ),
     Action(
         "sitting.fresh",
-        ("g",),
+        ("F",),
         (LOADING,),
-        "go afresh: begin a new sitting (marks and notes stay)",
-        "go afresh",
+        "begin afresh: a new sitting (marks and notes stay)",
+        "begin afresh",
         2,
         "Asked something",
     ),
@@ -392,10 +392,10 @@ ACTIONS: tuple[Action, ...] = (
     ),
     Action(
         "do.anything",
-        ("d",),
+        ("g",),
         (*_ROOMS, LOADING, ROLES),
-        "do anything: every action by name, found by a few letters",
-        "do anything",
+        "go to any action: all of them by name, found by a few letters",
+        "go to any action",
         89,
     ),
     Action(

@@ -76,8 +76,8 @@ async def test_going_afresh_leaves_the_marks(graph, bench):
     await left(graph, bench, "x", "down", "s", "down", "enter")
     app = again(graph, bench)
     async with app.run_test(size=(80, 24)) as pilot:
-        await until(pilot, lambda: "go afresh" in app.shown())
-        await pilot.press("g")
+        await until(pilot, lambda: "begin afresh" in app.shown())
+        await pilot.press("F")
         await opened(pilot)
         assert app.screen.model.arrangement.sort == "rank"
         assert app.screen.model.cursor == 0

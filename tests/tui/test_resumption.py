@@ -78,7 +78,8 @@ def test_any_bytes_are_a_sitting_or_a_sentence(data):
 def test_the_offer_says_what_it_is_about_and_nothing_that_acts():
     words = resumption.words(KEPT)
     assert words == (
-        "katz and 1 other measure, rows where rank <= 50, sorted by rank surfer, at gate\\e, 2 marks"
+        "katz and 1 other measure, rows where rank <= 50, sorted by rank surfer, at gate\\e, "
+        "2 marks"
     )
 
 

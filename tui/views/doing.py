@@ -1,4 +1,4 @@
-"""Do anything: every action of the registry by name, with its keys; a few letters find it."""
+"""Any action: every action of the registry by name, with its keys; a few letters find it."""
 
 from __future__ import annotations
 
@@ -28,8 +28,8 @@ class DoingSheet(Sheet):
 
     def compose(self) -> ComposeResult:
         with Vertical(id="sheet"):
-            yield Rule(title="do anything", id="news")
-            yield Entry("do", id="entry")
+            yield Rule(title="any action", id="news")
+            yield Entry("go to", id="entry")
             yield RowTable(id="rows", headings=False, rail=False)
             yield KeyLine(id="keys")
 
