@@ -55,7 +55,9 @@ def load(
     """Load an edge table.
 
     Args:
-        paths: Parquet files, folders of them (hive partitions become columns) or globs.
+        paths: files, folders of them (hive partitions become columns) or globs: Parquet, CSV or
+            TSV (packed by gzip, bzip2 or zstd or not), Arrow IPC, Matrix Market, GraphML; ``-``
+            is standard input.
         options: how rows become edges; keyword ``overrides`` replace single fields.
         watch: progress and cancelling.
 
@@ -67,7 +69,7 @@ def load(
     from kingpost.core.ingest import files, pipeline
 
     chosen = dataclasses.replace(options or LoadOptions(), **overrides)
-    return pipeline.build_graph(files.open_parts(paths), chosen, watch)
+    return pipeline.build_graph(files.open_parts(paths, chosen, watch), chosen, watch)
 
 
 def from_table(
@@ -78,10 +80,10 @@ def from_table(
     **overrides: Any,
 ) -> Graph:
     """Like :func:`load`, from an Arrow table in memory; ``name`` stands for the file's name."""
-    from kingpost.core.ingest import files, pipeline
+    from kingpost.core.ingest import parts, pipeline
 
     chosen = dataclasses.replace(options or LoadOptions(), **overrides)
-    return pipeline.build_graph(files.parts_of_table(table, name), chosen, watch)
+    return pipeline.build_graph(parts.parts_of_table(table, name), chosen, watch)
 
 
 def read_node_values(
@@ -100,11 +102,16 @@ def read_node_values(
     return nodes.read_values(path, graph, column)
 
 
-def describe(paths: Paths) -> TableAbout:
-    """What the files hold and which columns would be taken, without reading rows."""
+def describe(
+    paths: Paths, options: LoadOptions | None = None, watch: Watch | None = None
+) -> TableAbout:
+    """What the files hold and which columns would be taken, without reading rows.
+
+    Only text formats are read through, once: they do not say what they hold.
+    """
     from kingpost.core.ingest import about
 
-    return about.about(paths)
+    return about.about(paths, options, watch)
 
 
 def peek(paths: Paths, rows: int = 5) -> Peek:

@@ -7,6 +7,8 @@ from dataclasses import dataclass
 from kingpost.core.ingest.columns import guess_ends, guess_weight, is_numeric
 from kingpost.core.ingest.files import Paths, open_parts
 from kingpost.core.ingest.idtypes import family
+from kingpost.core.ingest.options import LoadOptions
+from kingpost.core.watch import Watch
 
 
 @dataclass(frozen=True)
@@ -33,9 +35,11 @@ class TableAbout:
     why: str
 
 
-def about(paths: Paths) -> TableAbout:
+def about(
+    paths: Paths, options: LoadOptions | None = None, watch: Watch | None = None
+) -> TableAbout:
     """Describe the files; columns are those of the first."""
-    parts = open_parts(paths)
+    parts = open_parts(paths, options, watch)
     first = parts[0]
     columns = tuple(
         ColumnAbout(

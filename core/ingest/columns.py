@@ -10,10 +10,10 @@ from dataclasses import dataclass
 import pyarrow as pa
 from pyarrow import types as pt
 
-from kingpost.core.errors import InputError, UnclearColumns
-from kingpost.core.ingest.files import Part, columns_listed
+from kingpost.core.errors import InputError, RowsError, UnclearColumns
 from kingpost.core.ingest.idtypes import common, family, plain, require_id
 from kingpost.core.ingest.options import LoadOptions
+from kingpost.core.ingest.parts import Part, columns_listed
 from kingpost.core.text import listed
 
 # Pairs of words that name the two ends of an edge u -> v; the likeliest first.
@@ -93,12 +93,13 @@ def choose(parts: list[Part], options: LoadOptions) -> Roles:
     if not options.reads_weight:
         weight = None
     kind = _id_type(parts, source, target)
+    remarks: list[str] = []
     if weight is not None:
         _require_weight(parts, weight)
+        remarks = _spoiled(parts, weight, options)
     guessed = options.source is None or options.target is None
-    return Roles(
-        source, target, weight, kind, _notes(source, target, weight, guessed, guessed_weight)
-    )
+    notes = _notes(source, target, weight, guessed, guessed_weight)
+    return Roles(source, target, weight, kind, (*notes, *remarks))
 
 
 def _notes(
@@ -140,7 +141,7 @@ def _few(schema: pa.Schema) -> str:
     return f"one column only, {columns_listed(schema)}"
 
 
-def _word(name: str) -> str:
+def word_of(name: str) -> str:
     """``Caller_ID`` -> ``caller``: a column name without case, marks and the word id."""
     words = re.split(r"[^0-9a-z]+", re.sub(r"(?<=[a-z])(?=[A-Z])", "_", name).lower())
     kept = [word for word in words if word not in ("id", "ids", "name", "node", "key", "")]
@@ -183,20 +184,23 @@ def guess_ends(
 def _named_pairs(
     names: list[str], source: str | None, target: str | None
 ) -> Iterator[tuple[str, str]]:
-    words = {name: _word(name) for name in names}
+    words = {name: word_of(name) for name in names}
     for first, second in PAIRS:
         starts = [name for name in names if words[name] == first]
         ends = [name for name in names if words[name] == second]
         if source is not None:
-            starts = [source] if _word(source) == first else []
+            starts = [source] if word_of(source) == first else []
         if target is not None:
-            ends = [target] if _word(target) == second else []
+            ends = [target] if word_of(target) == second else []
         if len(starts) == len(ends) == 1:
             yield starts[0], ends[0]
 
 
 def _meet(part: Part, source: str, target: str) -> bool:
     kinds = [part.schema.field(name).type for name in (source, target)]
+    if {family(kind) for kind in kinds} == {"integer", "text"}:
+        whole = source if family(kinds[0]) == "integer" else target
+        return whole in part.textual
     return common(*kinds) is not None or family(kinds[0]) is None
 
 
@@ -207,7 +211,7 @@ def _only_pair(
         name
         for name in names
         if family(part.schema.field(name).type) in _GUESSABLE
-        and not _weight_word(name)
+        and not weight_word(name)
         and name not in part.partitions
     ]
     groups: dict[str, list[str]] = {}
@@ -226,7 +230,7 @@ def _only_pair(
     return pairs[0][0], pairs[0][1]
 
 
-def _weight_word(name: str) -> str | None:
+def weight_word(name: str) -> str | None:
     """The word of WEIGHTS that a column name is, or begins as a rate (``calls_per_min``)."""
     lower = name.lower()
     if lower in WEIGHTS:
@@ -239,7 +243,7 @@ def guess_weight(schema: pa.Schema, taken: set[str]) -> str | None:
     """The numeric column whose name says strength; the first in the order of WEIGHTS."""
     found: dict[str, list[str]] = {}
     for item in schema:
-        word = _weight_word(item.name)
+        word = weight_word(item.name)
         if word and item.name not in taken and is_numeric(item.type):
             found.setdefault(word, []).append(item.name)
     best = next((found[word] for word in WEIGHTS if word in found), [])
@@ -254,14 +258,27 @@ def is_numeric(kind: pa.DataType) -> bool:
 
 def _id_type(parts: list[Part], source: str, target: str) -> pa.DataType:
     kind: pa.DataType | None = None
-    seen = {source: parts[0], target: parts[0]}
     for part in parts:
         for name in (source, target):
             if part is not parts[0]:
                 _require_shared(parts[0], part, name)
-            here = part.schema.field(name).type
-            require_id(here, name, part.name)
-            there = seen[name].schema.field(name).type
+            require_id(part.schema.field(name).type, name, part.name)
+    # Whole numbers that were written as text are text again beside text that is no number.
+    texts = any(
+        family(part.schema.field(name).type) == "text"
+        for part in parts
+        for name in (source, target)
+    )
+
+    def type_of(part: Part, name: str) -> pa.DataType:
+        given = part.schema.field(name).type
+        return pa.string() if texts and name in part.textual else given
+
+    seen = {source: parts[0], target: parts[0]}
+    for part in parts:
+        for name in (source, target):
+            here = type_of(part, name)
+            there = type_of(seen[name], name)
             if common(there, here) is None:
                 raise InputError(
                     f"column {name!r} is of type {plain(there)} in {seen[name].name} and of type "
@@ -270,7 +287,7 @@ def _id_type(parts: list[Part], source: str, target: str) -> pa.DataType:
             kind = plain(here) if kind is None else common(kind, here)
             if kind is None:
                 raise InputError(
-                    f"columns {source!r} ({plain(parts[0].schema.field(source).type)}) and "
+                    f"columns {source!r} ({plain(type_of(parts[0], source))}) and "
                     f"{target!r} ({plain(here)}) of {part.name} hold ids of different sorts; "
                     "cast one of them"
                 )
@@ -289,6 +306,14 @@ def _require_weight(parts: list[Part], name: str) -> None:
                 f"numeric column with --weight, or ignore it with --weight-as none; its columns "
                 f"are {columns_listed(part.schema)}"
             )
+
+
+def _spoiled(parts: list[Part], weight: str, options: LoadOptions) -> list[str]:
+    """What is to be said of weights that are no numbers, if such rows are to be skipped."""
+    found = [part.spoiled[weight] for part in parts if weight in part.spoiled]
+    if found and options.bad_rows == "refuse":
+        raise RowsError(f"{found[0]}; mend it, or leave such rows out with --bad-rows skip")
+    return [f"{words}; such cells count as null" for words in found]
 
 
 def _require_shared(first: Part, part: Part, name: str) -> None:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import os
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -13,9 +14,10 @@ from numpy.typing import NDArray
 from kingpost.core.errors import InputError
 from kingpost.core.graph import Floats, Graph
 from kingpost.core.ingest.columns import is_numeric, require_column
-from kingpost.core.ingest.files import columns_listed, open_parts
+from kingpost.core.ingest.files import open_parts
 from kingpost.core.ingest.idtypes import common, convert, family, first_line, plain, require_id
 from kingpost.core.ingest.options import LoadOptions
+from kingpost.core.ingest.parts import Part, columns_listed
 from kingpost.core.ingest.rows import to_floats
 from kingpost.core.text import count, id_text, listed, visible
 from kingpost.core.watch import Watch
@@ -42,24 +44,34 @@ class Joined:
     notes: tuple[str, ...] = ()
 
 
-def join_nodes(options: LoadOptions, labels: pa.Array, watch: Watch) -> Joined:
+def join_nodes(
+    options: LoadOptions, labels: pa.Array, watch: Watch, parts: Sequence[Part] = ()
+) -> Joined:
     """Join the nodes table of ``options`` to the labels; the first row of an id counts.
+
+    Without one the nodes that a file of edges holds itself are joined.
 
     Raises:
         InputError: for an unusable file, or an id column that does not go with the labels.
     """
-    if options.nodes is None:
+    held = next((part for part in parts if part.attributes is not None), None)
+    if options.nodes is None and held is None:
         return Joined()
     watch.check()
     watch.report("joining node attributes", 0, len(labels), "nodes")
-    path = options.nodes
-    schema = _schema(path)
-    column, guessed = options.node_id, False
-    if column is not None:
-        require_column(schema, column, path)
+    guessed = False
+    if options.nodes is not None:
+        path = options.nodes
+        schema = _schema(path)
+        column = options.node_id or ""
+        if options.node_id is not None:
+            require_column(schema, column, path)
+        else:
+            column, guessed = guess_id(path, schema, labels), True
+        table = _read(path, schema, column, labels.type)
     else:
-        column, guessed = guess_id(path, schema, labels), True
-    table = _read(path, schema, column, labels.type)
+        assert held is not None
+        path, column, table = held.name, "id", held.attributes
     at = _positions(table.column(column), labels, column, path)
     known = np.flatnonzero(at >= 0)
     first = np.full(len(labels), -1, dtype=np.int64)

@@ -11,6 +11,9 @@ CHOICES: dict[str, tuple[str, ...]] = {
     "loops": ("keep", "drop"),
     "bad_rows": ("refuse", "skip"),
     "weight_as": ("asis", "log1p", "inverse", "none"),
+    "read_as": ("guess", "parquet", "csv", "tsv", "arrow", "matrix-market", "graphml"),
+    "header": ("guess", "yes", "no"),
+    "memory": ("check", "ignore"),
 }
 
 _NAMES = ("source", "target", "weight", "nodes", "node_id")
@@ -40,6 +43,12 @@ class LoadOptions:
             are read, the others are counted and otherwise not looked at.
         node_where: an SQL expression over the columns of the nodes table; nodes for which it is
             true stay, with the edges among them (the induced subgraph).
+        read_as: the format of the edge table; by its first bytes and its name where ``guess``.
+        delimiter: what separates the fields of a text table; guessed where None.
+        encoding: of a text table, as Python names it; UTF-8 where None and no mark says else.
+        header: whether the first line of a text table holds the names of its columns; where
+            ``guess``, it does unless it holds numbers only.
+        memory: whether a table that is not going to fit in memory is refused before it is read.
 
     Raises:
         SettingsError: for a value that is none of the choices.
@@ -57,6 +66,11 @@ class LoadOptions:
     weight_as: str = "asis"
     where: str | None = None
     node_where: str | None = None
+    read_as: str = "guess"
+    delimiter: str | None = None
+    encoding: str | None = None
+    header: str = "guess"
+    memory: str = "check"
 
     def __post_init__(self) -> None:
         for name, choices in CHOICES.items():
@@ -70,6 +84,20 @@ class LoadOptions:
                 flag = "--" + item.name.replace("_", "-")
                 if not isinstance(value, str) or not value:
                     raise SettingsError(f"{flag} is {value!r}; it takes a name")
+        if self.delimiter is not None and (
+            len(self.delimiter) != 1 or not self.delimiter.isascii() or self.delimiter in '"\r\n'
+        ):
+            raise SettingsError(
+                f"--delimiter is {self.delimiter!r}; it takes one character, such as , or ;"
+            )
+        if self.encoding is not None:
+            try:
+                "a".encode(self.encoding)
+            except (LookupError, UnicodeError):
+                raise SettingsError(
+                    f"--encoding is {self.encoding!r}; it takes a text encoding such as latin-1, "
+                    "cp1252 or utf-16"
+                ) from None
         if self.source is not None and self.source == self.target:
             raise SettingsError(
                 f"--source and --target both name {self.source!r}; an edge needs two columns"

@@ -8,12 +8,12 @@ import pyarrow as pa
 from kingpost.core.graph import Account, Graph, Origin
 from kingpost.core.ingest.assemble import Ends, assemble
 from kingpost.core.ingest.columns import choose
-from kingpost.core.ingest.files import Part
 from kingpost.core.ingest.induced import induce
 from kingpost.core.ingest.names import alike
 from kingpost.core.ingest.nodes import join_nodes
 from kingpost.core.ingest.numbering import number_ids
 from kingpost.core.ingest.options import LoadOptions
+from kingpost.core.ingest.parts import Part
 from kingpost.core.ingest.rows import read_rows
 from kingpost.core.ingest.where import Filter
 from kingpost.core.text import visible
@@ -38,11 +38,11 @@ def build_graph(parts: list[Part], options: LoadOptions, watch: Watch | None = N
     del source, target, weights
     joined, induced = None, None
     if options.node_where is not None:
-        joined = join_nodes(options, labels, watch)
+        joined = join_nodes(options, labels, watch, parts)
         induced = induce(options.node_where, labels, ends, joined, watch)
         labels, joined = induced.labels, induced.joined
     built = assemble(ends, labels, options, watch)
-    notes = list(roles.notes)
+    notes = [*roles.notes, *(note for part in parts for note in part.notes)]
     if len(built.outward.neighbours) == 0:
         notes.append(
             "no edge is left: every row was a dropped loop or weighs nothing"
@@ -51,7 +51,7 @@ def build_graph(parts: list[Part], options: LoadOptions, watch: Watch | None = N
     look_alike = alike(labels)
     if look_alike is not None:
         notes.append(look_alike)
-    joined = joined or join_nodes(options, labels, watch)
+    joined = joined or join_nodes(options, labels, watch, parts)
     watch.check()
     outside = induced.rows if induced is not None else 0
     account = Account(

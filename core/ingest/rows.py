@@ -12,8 +12,8 @@ from numpy.typing import NDArray
 from kingpost.core.errors import InputError, RowsError
 from kingpost.core.graph import Floats
 from kingpost.core.ingest.columns import Roles
-from kingpost.core.ingest.files import Part
 from kingpost.core.ingest.idtypes import convert_ids, unwrap
+from kingpost.core.ingest.parts import Part
 from kingpost.core.ingest.where import Filter, Kept
 from kingpost.core.text import count, id_text, visible
 from kingpost.core.watch import Watch
@@ -26,6 +26,7 @@ REASONS = (
     "NaN weight",
     "infinite weight",
     "negative weight",
+    "a wrong number of fields",
 )
 EXAMPLES = 3
 
@@ -54,7 +55,7 @@ def read_rows(
         RowsError: if rows are bad and the policy is to refuse, or if no good row is left.
         InputError: if there are no rows at all, or a file turns out to be damaged.
     """
-    total = sum(part.rows for part in parts)
+    total = sum(part.rows + part.unreadable for part in parts)
     if total == 0:
         names = parts[0].name if len(parts) == 1 else f"each of {len(parts):,} files"
         raise InputError(f"{names} holds no rows; an edge table needs at least one")
@@ -62,6 +63,7 @@ def read_rows(
     columns = [roles.source, roles.target, *([roles.weight] if roles.weight else [])]
     for part in parts:
         name = _row_names(part.name if len(parts) > 1 else None)
+        _count_unreadable(rows, part)
         pieces = _whole(part, columns) if chosen is None else chosen.read(part, columns, watch)
         for piece in pieces:
             watch.check()
@@ -75,6 +77,16 @@ def read_rows(
     if rows.kept == 0 and chosen is not None:
         raise RowsError(_nothing_kept(rows, chosen))
     return rows
+
+
+def _count_unreadable(rows: Rows, part: Part) -> None:
+    if not part.unreadable:
+        return
+    words = REASONS[-1]
+    rows.read += part.unreadable
+    rows.skipped[words] = rows.skipped.get(words, 0) + part.unreadable
+    examples = rows.examples.setdefault(words, [])
+    examples.extend(part.unreadable_examples[: EXAMPLES - len(examples)])
 
 
 def _whole(part: Part, columns: list[str]) -> Iterator[Kept]:

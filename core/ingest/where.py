@@ -20,7 +20,7 @@ from numpy.typing import NDArray
 from pyarrow import types as pt
 
 from kingpost.core.errors import InputError
-from kingpost.core.ingest.files import Part
+from kingpost.core.ingest.parts import Part
 from kingpost.core.ingest.sql import Expression
 from kingpost.core.text import listed
 from kingpost.core.watch import Watch

@@ -156,6 +156,23 @@ loading = _stack(
     ),
     _option(
         LOADING,
+        "--read-as",
+        type=click.Choice(["guess", "parquet", "csv", "tsv", "arrow", "matrix-market", "graphml"]),
+        default="guess",
+        metavar="FORMAT",
+        help="parquet, csv, tsv, arrow, matrix-market or graphml [by the file itself]",
+    ),
+    _option(LOADING, "--delimiter", metavar="C", help="what separates fields of text [guessed]"),
+    _option(LOADING, "--encoding", metavar="NAME", help="of text [utf-8]"),
+    _option(
+        LOADING,
+        "--header",
+        type=click.Choice(["guess", "yes", "no"]),
+        default="guess",
+        help="whether the first line of text names the columns [yes, unless it holds numbers]",
+    ),
+    _option(
+        LOADING,
         "--threads",
         type=Count(),
         metavar="N",

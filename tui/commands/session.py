@@ -27,7 +27,7 @@ if TYPE_CHECKING:
 # The names of loading options that go into LoadOptions as they are.
 _PLAIN = (
     "source", "target", "weight", "nodes", "node_id", "parallel", "loops", "bad_rows", "where",
-    "node_where",
+    "node_where", "read_as", "encoding", "header",
 )  # fmt: skip
 
 
@@ -38,6 +38,8 @@ def load_options(given: dict[str, Any]) -> LoadOptions:
     return LoadOptions(
         **{name: given[name] for name in _PLAIN},
         weight_as=given["weight_as"],
+        # A shell makes it hard to type the character itself.
+        delimiter={"\\t": "\t", "tab": "\t"}.get(given["delimiter"], given["delimiter"]),
         directed=not given["undirected"],
     )
 
