@@ -263,12 +263,7 @@ def _id_type(parts: list[Part], source: str, target: str) -> pa.DataType:
             if part is not parts[0]:
                 _require_shared(parts[0], part, name)
             require_id(part.schema.field(name).type, name, part.name)
-    # Whole numbers that were written as text are text again beside text that is no number.
-    texts = any(
-        family(part.schema.field(name).type) == "text"
-        for part in parts
-        for name in (source, target)
-    )
+    texts = _read_as_text([(part, name) for part in parts for name in (source, target)])
 
     def type_of(part: Part, name: str) -> pa.DataType:
         given = part.schema.field(name).type
@@ -293,6 +288,19 @@ def _id_type(parts: list[Part], source: str, target: str) -> pa.DataType:
                 )
     assert kind is not None
     return kind
+
+
+def _read_as_text(ends: list[tuple[Part, str]]) -> bool:
+    """Whether whole numbers that were written as text have to be read as text again.
+
+    They have beside text that is no number, and where no type holds them all.
+    """
+    kinds = [part.schema.field(name).type for part, name in ends]
+    if any(family(kind) == "text" for kind in kinds):
+        return True
+    vast = any(pt.is_uint64(kind) for kind in kinds)
+    below = any(name in part.negative for part, name in ends)
+    return vast and below and all(name in part.textual for part, name in ends)
 
 
 def _require_weight(parts: list[Part], name: str) -> None:

@@ -54,6 +54,7 @@ class Scan:
     ragged: int
     ragged_examples: tuple[str, ...]
     spoiled: dict[str, str]
+    negative: frozenset[str]
 
 
 def open_delimited(source: Source, options: LoadOptions, watch: Watch) -> Part:
@@ -102,6 +103,7 @@ def open_delimited(source: Source, options: LoadOptions, watch: Watch) -> Part:
         read,
         nulls=dict(zip(layout.names, found.nulls, strict=True)),
         textual=frozenset(whole),
+        negative=found.negative,
         spoiled=found.spoiled,
         unreadable=found.ragged,
         unreadable_examples=found.ragged_examples,
@@ -177,12 +179,20 @@ class _Column:
             self.first_other = row + int(odd[0]), cells[int(odd[0])].as_py()
 
     @property
+    def negative(self) -> bool:
+        """Whether there are negative numbers among whole ones."""
+        from kingpost.core.kernels import words
+
+        return self.kind == "whole" and bool(self.flags & words.NEGATIVE)
+
+    @property
     def type(self) -> pa.DataType:
         """The type to read it as."""
         from kingpost.core.kernels import words
 
         if self.strength:
-            return pa.float64() if self.numbers > self.others else pa.string()
+            fine = self.numbers > self.others or not self.others
+            return pa.float64() if fine else pa.string()
         if self.kind == "whole":
             return pa.uint64() if self.flags & words.BEYOND_SIGNED else pa.int64()
         return pa.float64() if self.kind == "real" else pa.string()
@@ -252,6 +262,7 @@ def _scan(source: Source, options: LoadOptions, roles: Any, watch: Watch) -> Sca
         ragged.count,
         tuple(examples),
         spoiled,
+        frozenset(column.name for column in columns if column.negative),
     )
 
 

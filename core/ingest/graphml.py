@@ -25,6 +25,7 @@ from kingpost.core.watch import Watch
 
 MOST_BYTES = 100_000_000
 _BLOCK = 1 << 20
+_NEEDED = {"edge": ("source", "target"), "node": ("id",)}
 
 
 def open_graphml(source: Source, options: LoadOptions, watch: Watch) -> Part:
@@ -100,9 +101,16 @@ def _check(source: Source, document: bytes, watch: Watch) -> None:
             "entity, which is not read; take the declaration out"
         )
 
-    def begin(name: str, _: Any) -> None:
+    def begin(name: str, given: dict[str, str]) -> None:
         if not roots:
             roots.append(name)
+        # networkx would make a node called None of what is missing.
+        lacking = [word for word in _NEEDED.get(name.rpartition(":")[2], ()) if word not in given]
+        if lacking:
+            raise InputError(
+                f"{source.name} line {parser.CurrentLineNumber:,} holds <{name}> without its "
+                f"{lacking[0]}; it cannot be read as GraphML"
+            )
 
     parser.StartDoctypeDeclHandler = refuse
     parser.EntityDeclHandler = refuse

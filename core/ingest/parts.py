@@ -23,7 +23,8 @@ class Part:
     value of a column without nulls, as far as the file says so.
 
     ``textual`` columns hold whole numbers that were written as text, each in its plainest
-    spelling, so that they can be read as text again.  ``spoiled`` tells of numeric columns that
+    spelling, so that they can be read as text again; ``negative`` are those of them with a
+    number below 0.  ``spoiled`` tells of numeric columns that
     hold cells which are no numbers (null here): a sentence for each.  ``unreadable`` counts rows
     that have no place in a table, with examples.  ``attributes`` are the nodes of a file that
     holds them beside its edges, with their ids in the column ``id``.
@@ -38,6 +39,7 @@ class Part:
     groups: tuple[int, ...] = ()
     limits: Callable[[int, str], tuple[Any, Any] | None] = lambda group, column: None
     textual: frozenset[str] = field(default_factory=frozenset)
+    negative: frozenset[str] = field(default_factory=frozenset)
     spoiled: dict[str, str] = field(default_factory=dict)
     unreadable: int = 0
     unreadable_examples: tuple[str, ...] = ()

@@ -5,6 +5,8 @@ from __future__ import annotations
 import math
 from dataclasses import dataclass, field
 
+import pytest
+
 
 class Refused(Exception):
     """The table must be refused."""
@@ -150,3 +152,16 @@ def assert_sound(graph):
     if graph.attributes is not None:
         assert graph.attributes.num_rows == graph.n
         assert graph.n == a.nodes_joined + a.nodes_missing - a.nodes_filtered
+
+
+def agree(graph, want):
+    assert_sound(graph)
+    assert graph.labels.to_pylist() == want.labels
+    found = edges_of(graph)
+    assert found.keys() == want.edges.keys()
+    for ends, weight in want.edges.items():
+        assert found[ends] == pytest.approx(weight, rel=1e-15, abs=0)
+    account = graph.account
+    for name in ("rows_read", "rows_kept", "skipped", "merged", "loops", "loops_dropped"):
+        assert getattr(account, name) == getattr(want, name), name
+    assert account.zero_weight == want.zero_weight

@@ -11,7 +11,7 @@ import pyarrow.parquet as pq
 import pytest
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
-from reference import Refused, assert_sound, edges_of, expected
+from reference import Refused, agree, expected
 
 from kingpost.core.errors import RowsError
 from kingpost.core.ingest import from_table, load, spread
@@ -83,19 +83,6 @@ POLICIES = st.fixed_dictionaries(
         "weight_as": st.sampled_from(["asis", "asis", "log1p", "inverse", "none"]),
     }
 )
-
-
-def agree(graph, want):
-    assert_sound(graph)
-    assert graph.labels.to_pylist() == want.labels
-    found = edges_of(graph)
-    assert found.keys() == want.edges.keys()
-    for ends, weight in want.edges.items():
-        assert found[ends] == pytest.approx(weight, rel=1e-15, abs=0)
-    account = graph.account
-    for name in ("rows_read", "rows_kept", "skipped", "merged", "loops", "loops_dropped"):
-        assert getattr(account, name) == getattr(want, name), name
-    assert account.zero_weight == want.zero_weight
 
 
 @settings(max_examples=300, deadline=None)
