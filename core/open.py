@@ -60,8 +60,14 @@ def open_graph(
     return _through(shelf, named, chosen, watch, tell)
 
 
-def describe(paths: str | os.PathLike[str] | Sequence[str | os.PathLike[str]]) -> TableAbout:
+def describe(
+    paths: str | os.PathLike[str] | Sequence[str | os.PathLike[str]],
+    options: LoadOptions | None = None,
+    watch: Watch | None = None,
+) -> TableAbout:
     """What the files of some edge tables, or of the table a pack was made from, hold.
+
+    Of ``options`` those count that say how a text is to be read.
 
     Raises:
         InputError: for files that cannot be used, or a damaged pack.
@@ -72,7 +78,9 @@ def describe(paths: str | os.PathLike[str] | Sequence[str | os.PathLike[str]]) -
     given = [paths] if isinstance(paths, str | os.PathLike) else list(paths)
     named = [os.fspath(path) for path in given]
     packed = pack.pack_among(named)
-    return ingest.describe(named) if packed is None else pack.describe(packed)
+    if packed is not None:
+        return pack.describe(packed)
+    return ingest.describe(named, options, watch)
 
 
 def _shelf(store: Store, tell: Callable[[str], None]) -> Shelf | None:

@@ -9,8 +9,9 @@ import numpy as np
 import pyarrow as pa
 
 from kingpost.core.graph import Graph
-from kingpost.core.ingest.files import Part, open_parts, parts_of_table
+from kingpost.core.ingest.files import open_parts
 from kingpost.core.ingest.options import LoadOptions
+from kingpost.core.ingest.parts import Part, parts_of_table
 from kingpost.core.ingest.pipeline import build_graph
 from kingpost.core.watch import Watch
 
@@ -27,17 +28,21 @@ def rereadings(
         return {}
     origin = graph.origin
     named = dataclasses.replace(
-        options, source=origin.source, target=origin.target, weight=origin.weight, nodes=None,
-        node_id=None,
-    )  # fmt: skip
+        options, source=origin.source, target=origin.target, weight=origin.weight
+    )
+    if options.node_where is None:
+        named = dataclasses.replace(named, nodes=None, node_id=None)
 
     def read(policy: str, backwards: bool = False) -> Callable[[], Graph]:
         def make() -> Graph:
             watch.report(f"reading parallel rows again, policy {policy}")
-            parts = open_parts(paths)
+            parts = open_parts(paths, named, watch)
             if backwards:
                 names = [origin.source, origin.target, origin.weight or origin.source]
-                parts = [_backwards(part, names) for part in reversed(parts)]
+                parts = [
+                    _backwards(part, names if options.where is None else part.schema.names)
+                    for part in reversed(parts)
+                ]
             return build_graph(parts, dataclasses.replace(named, parallel=policy), watch)
 
         return make
@@ -50,6 +55,10 @@ def rereadings(
 
 
 def _backwards(part: Part, names: list[str]) -> Part:
-    table = pa.Table.from_batches(list(part.read(names, False)))
+    table = pa.Table.from_batches(list(part.read(list(names), False)))
     order = pa.array(np.arange(table.num_rows - 1, -1, -1))
-    return parts_of_table(table.take(order), part.name)[0]
+    turned = parts_of_table(table.take(order), part.name)[0]
+    # What was said of the file holds for it backwards too.
+    return dataclasses.replace(
+        part, rows=turned.rows, read=turned.read, schema=turned.schema, groups=()
+    )

@@ -14,7 +14,7 @@ from kingpost.core.errors import InputError
 from kingpost.core.graph import Floats, Graph
 from kingpost.core.ingest import nodes
 from kingpost.core.ingest.columns import is_numeric, require_column
-from kingpost.core.ingest.files import columns_listed
+from kingpost.core.ingest.parts import columns_listed
 from kingpost.core.ingest.rows import to_floats
 from kingpost.core.text import count, id_text, visible
 

@@ -25,7 +25,7 @@ def audit(edges: tuple[str, ...], **given: Any) -> int:
     with Session(given["threads"]) as session:
         from kingpost.core.open import describe
 
-        described = describe(list(edges))
+        described = describe(list(edges), load_options(given), session.watch)
         graph, _ = session.load(edges, load_options(given))
         from kingpost.core.export.audit_report import audit_json, audit_text
         from kingpost.core.export.jsonable import dumps

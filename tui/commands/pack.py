@@ -35,7 +35,7 @@ def pack(edges: tuple[str, ...], **given: Any) -> int:
     out: str = given["out"]
     check_place(out)
     with Session(given["threads"]) as session:
-        described = describe(list(edges))
+        described = describe(list(edges), chosen, session.watch)
         chosen = load_options(given)
         graph, _ = session.load(edges, chosen)
         results = write_pack(graph, out, chosen, described, session.watch)
