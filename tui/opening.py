@@ -157,7 +157,7 @@ class Opener:
             )
         except UnclearColumns as error:
             job.watch.report("looking at the columns")
-            return Unclear(peek(self.paths), options, error.sentence)
+            return Unclear(peek(self.paths, options=options), options, error.sentence)
         sitting = app.make_sitting(graph, self._measure)
         settings = self._settings(graph) if callable(self._settings) else self._settings
         import_module("kingpost.tui.desk")

@@ -114,8 +114,8 @@ def describe(
     return about.about(paths, options, watch)
 
 
-def peek(paths: Paths, rows: int = 5) -> Peek:
+def peek(paths: Paths, rows: int = 5, options: LoadOptions | None = None) -> Peek:
     """What :func:`describe` tells, and the first ``rows`` values of every column, safe to show."""
     from kingpost.core.ingest.peek import peek as look
 
-    return look(paths, rows)
+    return look(paths, rows, options)

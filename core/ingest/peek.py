@@ -10,8 +10,10 @@ from typing import Any, cast
 import pyarrow as pa
 
 from kingpost.core.ingest.about import TableAbout, about
-from kingpost.core.ingest.files import Part, Paths, open_parts
-from kingpost.core.ingest.idtypes import common
+from kingpost.core.ingest.files import Paths, open_parts
+from kingpost.core.ingest.idtypes import common, family
+from kingpost.core.ingest.options import LoadOptions
+from kingpost.core.ingest.parts import Part
 from kingpost.core.text import id_text, visible
 
 _CELL = 60  # characters of a value that are worth a look
@@ -24,11 +26,19 @@ class Peek:
     about: TableAbout
     values: tuple[tuple[str, ...], ...]
     schema: pa.Schema
+    textual: frozenset[str] = frozenset()  # whole numbers that were written as text
 
     def apart(self, source: str, target: str) -> str:
         """Why two columns cannot be the two ends of an edge; empty if they can."""
         kinds = [self.schema.field(name).type for name in (source, target)]
         if common(*kinds) is not None:
+            return ""
+        whole = [
+            name
+            for name, kind in zip((source, target), kinds, strict=True)
+            if family(kind) == "integer"
+        ]
+        if "text" in map(family, kinds) and whole and whole[0] in self.textual:
             return ""
         return (
             f"{visible(source, 40)} is of type {kinds[0]} and {visible(target, 40)} of type "
@@ -36,16 +46,17 @@ class Peek:
         )
 
 
-def peek(paths: Paths, rows: int = 5) -> Peek:
+def peek(paths: Paths, rows: int = 5, options: LoadOptions | None = None) -> Peek:
     """Columns, number of rows, and the first ``rows`` values of every column.
 
     Raises:
         InputError: for files that cannot be used.
     """
-    described = about(paths)
-    first = open_parts(paths)[0]
+    described = about(paths, options)
+    first = open_parts(paths, options)[0]
     names = [column.name for column in described.columns]
-    return Peek(described, tuple(_values(first, name, names, rows) for name in names), first.schema)
+    values = tuple(_values(first, name, names, rows) for name in names)
+    return Peek(described, values, first.schema, first.textual)
 
 
 def _values(part: Part, name: str, names: Sequence[str], rows: int) -> tuple[str, ...]:

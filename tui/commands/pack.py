@@ -35,8 +35,8 @@ def pack(edges: tuple[str, ...], **given: Any) -> int:
     out: str = given["out"]
     check_place(out)
     with Session(given["threads"]) as session:
-        described = describe(list(edges), chosen, session.watch)
         chosen = load_options(given)
+        described = describe(list(edges), chosen, session.watch)
         graph, _ = session.load(edges, chosen)
         results = write_pack(graph, out, chosen, described, session.watch)
     held = f"{count(graph.n, 'node')}, {count(graph.m, 'edge')}, {count(results, 'result')}"
