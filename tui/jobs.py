@@ -16,6 +16,7 @@ from dataclasses import dataclass, field
 from itertools import count
 from typing import TYPE_CHECKING, Any
 
+from kingpost.core import warm
 from kingpost.core.errors import Interrupted, KingpostError
 from kingpost.core.text import visible
 from kingpost.core.watch import Progress, Watch
@@ -194,6 +195,7 @@ class Runner:
             job.failed(sentence or "")
 
     def _progressed(self, job: Job, progress: Progress) -> None:
+        warm.heed(progress)
         job.progress = progress
         self._post(lambda: self._report(job))
 

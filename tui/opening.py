@@ -138,10 +138,12 @@ class Opener:
     def _work(self, job: Job, kept: Kept | None) -> Loaded | Unclear:
         from importlib import import_module
 
+        from kingpost.core import warm
         from kingpost.core.errors import UnclearColumns
         from kingpost.core.ingest import LoadOptions, peek
         from kingpost.core.open import open_graph
 
+        warm.expect(self._measure)
         app, options = self._app, self._options_now()
         try:
             graph = (

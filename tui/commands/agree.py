@@ -6,6 +6,7 @@ from typing import Any
 
 import click
 
+from kingpost.core import warm
 from kingpost.tui.commands import answering, options
 from kingpost.tui.commands.front import Sectioned
 from kingpost.tui.commands.session import Session, load_options
@@ -59,6 +60,7 @@ def agree(edges: tuple[str, ...], **given: Any) -> int:
 
     p = insight.P if given["persistence"] is None else given["persistence"]
     check_p(p)
+    warm.expect(*names)
     with Session(given["threads"]) as session:
         graph, seconds = session.load(edges, load_options(given))
         age_column(graph, given["age"])

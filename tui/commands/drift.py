@@ -6,6 +6,7 @@ from typing import Any
 
 import click
 
+from kingpost.core import warm
 from kingpost.tui.commands import answering, options
 from kingpost.tui.commands.front import Sectioned
 from kingpost.tui.commands.session import Session, load_options
@@ -39,6 +40,7 @@ def drift(before: str, after: str, **given: Any) -> int:
     values = given_settings(given)
     check_takers(values, [chosen])
     build_early(chosen, values)
+    warm.expect(chosen.name)
     with Session(given["threads"]) as session:
         loaded = [session.load((path,), load_options(given)) for path in (before, after)]
         solved = {}

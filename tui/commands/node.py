@@ -6,6 +6,7 @@ from typing import Any
 
 import click
 
+from kingpost.core import warm
 from kingpost.tui.commands import options
 from kingpost.tui.commands.front import ANSWERED, Sectioned
 from kingpost.tui.commands.session import Session, load_options
@@ -41,6 +42,7 @@ def node(edges: tuple[str, ...], name: str | None, **given: Any) -> int:
     check_takers(values, measures)
 
     status = ANSWERED
+    warm.expect(*(one.name for one in measures))
     with Session(given["threads"]) as session:
         graph, load_seconds = session.load(edges, load_options(given))
         number = graph.find(name)

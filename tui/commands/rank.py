@@ -7,6 +7,7 @@ from typing import Any
 
 import click
 
+from kingpost.core import warm
 from kingpost.core.errors import OutputError
 from kingpost.tui.commands import options
 from kingpost.tui.commands.front import NO_SUCH_ANSWER, Sectioned, complain
@@ -54,6 +55,7 @@ def answer(edges: tuple[str, ...], given: dict[str, Any]) -> int:
     check_takers(values, [chosen])
     build_early(chosen, values)
 
+    warm.expect(chosen.name)
     with Session(given["threads"]) as session:
         graph, load_seconds = session.load(edges, load_options(given))
         writing.check_places(form, out, log, graph.origin.files)

@@ -12,6 +12,7 @@ from collections.abc import Callable
 from types import FrameType, TracebackType
 from typing import TYPE_CHECKING, Any, Self
 
+from kingpost.core import warm
 from kingpost.core.errors import Interrupted
 from kingpost.core.text import visible
 from kingpost.core.watch import Progress, Watch
@@ -101,7 +102,7 @@ class Session:
 
     def __init__(self, threads: int | None = None) -> None:
         self.line = StatusLine()
-        self.watch = Watch(self.line.progress, threads=threads)
+        self.watch = Watch(self._progress, threads=threads)
         self.interrupted = False
         self.store = store_wanted()
         self._before: Any = None
@@ -184,6 +185,10 @@ class Session:
                     complain(f"note: {note}")
         self.line.clear()
         return result
+
+    def _progress(self, report: Progress) -> None:
+        warm.heed(report)
+        self.line.progress(report)
 
     def check(self) -> None:
         """Raise Interrupted after a Ctrl-C: for where a solve that was stopped has no scores."""

@@ -6,6 +6,7 @@ from typing import Any
 
 import click
 
+from kingpost.core import warm
 from kingpost.tui.commands import answering, options
 from kingpost.tui.commands.front import Sectioned
 from kingpost.tui.commands.session import Session, load_options
@@ -49,6 +50,7 @@ def why(edges: tuple[str, ...], name: str | None, **given: Any) -> int:
     build_early(chosen, values)
     if given["than"] is not None and given["sheet"] == "paths":
         raise click.UsageError("--than compares terms; it has no paths")
+    warm.expect(chosen.name)
     with Session(given["threads"]) as session:
         graph, seconds = session.load(edges, load_options(given))
         node = graph.find(name)
