@@ -6,6 +6,7 @@ exactly, ``y`` is what was computed and ``r = b - M y``.
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
@@ -34,6 +35,10 @@ class Residual:
     value: Floats
     slack: Floats
     relative: float | None = None
+
+    def of(self, pick: Callable[[Floats], Floats]) -> Residual:
+        """The same residual with its rows put in another order by ``pick``."""
+        return Residual(pick(self.value), pick(self.slack), self.relative)
 
     @property
     def reach(self) -> Floats:

@@ -60,17 +60,11 @@ class Adjacency:
         """Sum of the weights in every row, shape (n,), each rounded once (compensated sums)."""
         if self.weights is None:
             return self.degrees.astype(np.float64)
-        from kingpost.core.kernels.strength import whole_sums
-        from kingpost.core.kernels.sweep import pull_exactly
+        from kingpost.core.kernels.rows import row_totals
 
         n = len(self.offsets) - 1
         total = np.zeros(n)
-        if whole_sums(self.offsets, self.weights, total):
-            return total
-        total, size = np.zeros(n), np.empty(n)
-        order = np.arange(n, dtype=np.uint32)
-        ones = np.ones(n)  # rows and columns are nodes alike
-        pull_exactly(self.offsets, self.neighbours, self.weights, order, 0, n, ones, total, size)
+        row_totals(self.offsets, self.weights, 0, n, total)
         return total
 
     def row(self, node: int) -> tuple[Neighbours, Floats]:

@@ -61,6 +61,15 @@ class Pull:
         other.__dict__["loops"] = self.loops * factor
         return other
 
+    def moved(self, rows: Adjacency, order: Order, diagonal: Floats) -> Pull:
+        """The same matrix with node ``order[k]`` called k.
+
+        ``rows`` and ``diagonal`` (empty where it is zero) are those of its adjacency, renumbered.
+        """
+        other = Pull(rows, self.scale[order])
+        other.__dict__["loops"] = diagonal * other.scale if len(diagonal) else diagonal
+        return other
+
     @cached_property
     def pieces(self) -> list[tuple[int, int]]:
         """Row ranges of about two million edges: the fixed blocks of every product."""
@@ -141,13 +150,13 @@ def told_apart(matrix: Pull, push: Adjacency) -> Pull:
     below 2^53 are added up exactly; other nodes are alike where they give the same weights.
     """
     from kingpost.core.kernels.colour import refine
-    from kingpost.core.kernels.strength import whole_sums
+    from kingpost.core.kernels.rows import row_totals
 
     weights, n = push.weights, matrix.n
     strength = np.empty(n)
     if weights is None:
         strength = push.strengths()
-    if weights is None or whole_sums(push.offsets, weights, strength):
+    if weights is None or row_totals(push.offsets, weights, 0, n, strength):
         return Pull(matrix.rows, np.where(matrix.scale != 0.0, strength, 0.0))
     kinds = np.empty(n, dtype=np.uint64)
     same = np.zeros(n, dtype=np.uint64)

@@ -19,6 +19,7 @@ from numpy.typing import NDArray
 from kingpost.core.graph import Adjacency, Graph
 from kingpost.core.watch import Watch
 
+_LEANING = 0.6  # share of the edges that must lead one way by number for numbers to be an order
 _PIECE = 4_000_000  # edges a kernel call may visit before it looks whether it was cancelled
 
 
@@ -30,7 +31,9 @@ class Structure:
         component: component number of each node, shape (n,), uint32.
         order: all nodes, component by component, shape (n,), uint32; inside a component by
             number, ascending or descending, whichever lets more edges lead onwards: ids often
-            grow with time, and sweeps settle sooner the fewer edges lead back.
+            grow with time, and sweeps settle sooner the fewer edges lead back.  Where neither
+            does clearly, those that meet most edges come first: what is asked for most often
+            then lies together.
         starts: where each component begins in ``order``, shape (components + 1,), int64.
         inner: number of stored edges inside each non-trivial component, in the order of
             ``cyclic``, shape (k,), int64.
@@ -45,7 +48,7 @@ class Structure:
     cyclic: NDArray[np.int64]
     inner: NDArray[np.int64]
     stored: int
-    _outward: Adjacency
+    _outward: Adjacency | None
     cache: dict[str, Any] = field(default_factory=dict)  # what measures found out and keep
 
     @property
@@ -80,6 +83,7 @@ class Structure:
         level = np.full(len(self.component), -1, dtype=np.int64)
         queue = np.empty(len(nodes), dtype=np.uint32)
         out = self._outward
+        assert out is not None, "not known of a renumbered structure"
         return int(
             cycle_gcd(out.offsets, out.neighbours, self.component, int(nodes[0]), level, queue)
         )
@@ -112,8 +116,20 @@ def analyse(graph: Graph, watch: Watch | None = None) -> Structure:
         starts = np.zeros(found + 1, dtype=np.int64)
         np.cumsum(counts, out=starts[1:])
         order = np.empty(n, dtype=np.uint32)
-        kernels.group_order(component, starts[:-1].copy(), order, down > up)
+        if max(down, up) >= _LEANING * (down + up):
+            along = np.arange(n, dtype=np.uint32)
+            visit = along[::-1] if down > up else along
+        else:
+            visit = _by_degree(graph)
+        kernels.group_order(component, starts[:-1].copy(), np.ascontiguousarray(visit), order)
     return _finish(component, order, starts, graph, watch)
+
+
+def _by_degree(graph: Graph) -> NDArray[np.uint32]:
+    """All nodes, those that meet most edges first, ties by number."""
+    met = np.minimum(graph.outward.degrees + graph.inward.degrees, 65_535)
+    # 16 bits: numpy sorts those by counting.
+    return np.argsort((65_535 - met).astype(np.uint16), kind="stable").astype(np.uint32)
 
 
 def _strong(out: Adjacency, n: int, watch: Watch) -> tuple[NDArray[np.uint32], int]:
@@ -183,6 +199,29 @@ def reachable(
         watch.check()
         head, tail = spread(push.offsets, push.neighbours, queue, head, tail, seen, _PIECE)
     return seen
+
+
+def downstream(
+    structure: Structure, pull: Adjacency, push: Adjacency, component: int, flow: str, watch: Watch
+) -> NDArray[np.bool_]:
+    """Members of ``component`` and everything that score flows to from them, shape (n,)."""
+    from kingpost.core.kernels.rows import reach_on
+
+    n = len(structure.order)
+    members = structure.members(component)
+    live = np.zeros(n, dtype=bool)
+    live[members] = True
+    # Only what comes later in the order of the flow can be downstream; it is often little.
+    if flow == "along":
+        order, after = structure.order, int(structure.starts[component + 1])
+    else:
+        order = np.ascontiguousarray(structure.order[::-1])
+        after = n - int(structure.starts[component])
+    for _ in range(4):
+        watch.check()
+        if not reach_on(pull.offsets, pull.neighbours, order, after, n, live):
+            return live
+    return reachable(push, members, watch)  # long ways against the order
 
 
 def row_pieces(offsets: NDArray[np.int64], edges: int) -> Iterator[tuple[int, int]]:

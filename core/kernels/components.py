@@ -107,14 +107,13 @@ def strong(offsets, neighbours, state, index, cursor, stack, path, budget):  # t
 
 
 @kernel()
-def group_order(group, starts, order, falling):  # type: ignore[no-untyped-def]
-    """Fill ``order`` with the nodes group by group, ascending inside, or descending if ``falling``.
+def group_order(group, starts, visit, order):  # type: ignore[no-untyped-def]
+    """Fill ``order`` with the nodes group by group, inside in the order of ``visit`` (all nodes).
 
     ``starts`` (int64, groups) must hold where each group begins; it moves to where it ends.
     """
-    n = len(group)
-    for k in range(n):
-        v = np.uint64(n - 1 - k) if falling else np.uint64(k)
+    for k in range(len(group)):
+        v = np.uint64(visit[k])
         g = np.uint64(group[v])
         order[starts[g]] = v
         starts[g] += 1

@@ -50,11 +50,127 @@ def spread(offsets, neighbours, queue, head, tail, seen, budget):  # type: ignor
 
 
 @kernel()
+def reach_on(offsets, neighbours, order, low, high, live):  # type: ignore[no-untyped-def]
+    """Mark the rows ``order[low:high]`` that something live gives to; returns how many were new."""
+    one = np.uint64(1)
+    new = 0
+    for k in range(np.uint64(low), np.uint64(high)):
+        i = np.uint64(order[k])
+        if live[i]:
+            continue
+        e = np.uint64(offsets[i])
+        end = np.uint64(offsets[i + one])
+        while e < end:
+            if live[neighbours[e]]:
+                live[i] = True
+                new += 1
+                break
+            e += one
+    return new
+
+
+@kernel()
 def copy_rows(order, low, high, origin, target):  # type: ignore[no-untyped-def]
     """``target[i] = origin[i]`` for the nodes ``order[low:high]``."""
     for k in range(np.uint64(low), np.uint64(high)):
         i = np.uint64(order[k])
         target[i] = origin[i]
+
+
+@kernel()
+def row_totals(offsets, weights, low, high, totals):  # type: ignore[no-untyped-def]
+    """Sum the weights of every row ``low..high``, rounded once; was all whole, nothing rounded?"""
+    one, two = np.uint64(1), np.uint64(2)
+    whole = True
+    for i in range(np.uint64(low), np.uint64(high)):
+        e = np.uint64(offsets[i])
+        end = np.uint64(offsets[i + one])
+        a = b = 0.0
+        exact = True
+        while e + one < end:
+            a += weights[e]
+            b += weights[e + one]
+            exact &= (weights[e] == np.floor(weights[e])) & (
+                weights[e + one] == np.floor(weights[e + one])
+            )
+            e += two
+        if e < end:
+            a += weights[e]
+            exact &= weights[e] == np.floor(weights[e])
+        exact &= a + b < 9007199254740992.0  # 2^53
+        whole &= exact
+        if exact:
+            totals[i] = a + b
+            continue
+        e = np.uint64(offsets[i])
+        total = spill = 0.0
+        while e < end:
+            w = weights[e]
+            after = total + w
+            back = after - total
+            spill += (total - (after - back)) + (w - back)
+            total = after
+            e += one
+        totals[i] = total + spill
+    return whole
+
+
+@kernel()
+def renumber(offsets, neighbours, order, place, moved, low, high, near, diagonal):  # type: ignore[no-untyped-def]
+    """Copy the rows ``order[low:high]`` to where ``moved`` (offsets) says, naming nodes by place.
+
+    ``diagonal[k]`` becomes the number of edges from row k to itself; returns how many rows have.
+    """
+    one = np.uint64(1)
+    found = 0
+    for k in range(np.uint64(low), np.uint64(high)):
+        i = np.uint64(order[k])
+        e = np.uint64(offsets[i])
+        end = np.uint64(offsets[i + one])
+        to = np.uint64(moved[k])
+        loops = 0.0
+        while e < end:
+            j = np.uint64(neighbours[e])
+            if j == i:
+                loops += 1.0
+            near[to] = place[j]
+            e += one
+            to += one
+        diagonal[k] = loops
+        found += loops > 0.0
+    return found
+
+
+@kernel()
+def renumber_weighted(
+    offsets, neighbours, weights, order, place, moved, low, high, near, heavy, diagonal
+):  # type: ignore[no-untyped-def]
+    """As :func:`renumber`, with weights; if ``heavy`` is empty a weight w is w entries instead."""
+    one = np.uint64(1)
+    repeat = len(heavy) == 0
+    found = 0
+    for k in range(np.uint64(low), np.uint64(high)):
+        i = np.uint64(order[k])
+        e = np.uint64(offsets[i])
+        end = np.uint64(offsets[i + one])
+        to = np.uint64(moved[k])
+        loops = 0.0
+        while e < end:
+            j = np.uint64(neighbours[e])
+            if j == i:
+                loops += weights[e]
+            if repeat:
+                for _ in range(np.uint64(weights[e])):
+                    near[to] = place[j]
+                    to += one
+            else:
+                near[to] = place[j]
+                heavy[to] = weights[e]
+                to += one
+            e += one
+        diagonal[k] = loops
+        found += loops > 0.0
+    return found
 
 
 @kernel()

@@ -29,13 +29,14 @@ from kingpost.core.measures.common import (
 )
 from kingpost.core.operators import Pull, adjacency
 from kingpost.core.result import Bound, BoundKind, Iteration, Result, Stop
+from kingpost.core.solvers.dominating import Block, sharpen
 from kingpost.core.solvers.ledger import Ledger
 from kingpost.core.solvers.linear import System
 from kingpost.core.solvers.linear import solve as solve_linear
 from kingpost.core.solvers.perron import Bracketed, bracket
-from kingpost.core.solvers.pinned import normalised_reach, perron_reach, pinned_guard, support
+from kingpost.core.solvers.pinned import normalised_reach, support
 from kingpost.core.solvers.tied import same_radius
-from kingpost.core.structure import reachable
+from kingpost.core.structure import downstream, reachable
 from kingpost.core.text import count
 from kingpost.core.watch import Watch
 
@@ -52,6 +53,9 @@ class EigenvectorSettings(Settings):
         "bound every score (componentwise), or only bracket the eigenvalue (bracket)",
         choices=("componentwise", "bracket"),
     )
+
+
+_MARGIN = 0.03  # a score is known some tens of times worse than rho, by experience
 
 
 def solve(
@@ -76,6 +80,11 @@ def solve(
     except Interrupted:
         stop = Stop.CANCELLED
     return work.result(stop)
+
+
+def _unit(y: Floats, errors: Floats) -> tuple[Floats, Floats]:
+    """Scores of Euclidean length 1, and the bounds of their errors."""
+    return y / np.linalg.norm(y), normalised_reach(y, errors, 2)
 
 
 class _Work:
@@ -122,7 +131,7 @@ class _Work:
         found: Bracketed = yield from self.ledger.relay(
             bracket(
                 self.matrix, structure,
-                width=settings.tol, max_steps=settings.max_sweeps, watch=self.watch,
+                width=self._width(), max_steps=settings.max_sweeps, watch=self.watch,
                 only=self.chosen if self.chosen >= 0 else None, start=self.start,
             ),
             "bracket",
@@ -138,7 +147,7 @@ class _Work:
             found = yield from self.ledger.relay(
                 bracket(
                     self.matrix, structure,
-                    width=settings.tol, max_steps=settings.max_sweeps, watch=self.watch,
+                    width=self._width(), max_steps=settings.max_sweeps, watch=self.watch,
                     only=winner, start=self.start,
                 ),
                 "bracket",
@@ -149,11 +158,18 @@ class _Work:
         inside = support(structure, self.chosen, self.graph.n)
         self.live = inside
         if settings.component is None:
-            start = structure.members(self.chosen)
-            self.live = reachable(self.graph.push(settings.flow), start, self.watch)
+            self.live = downstream(
+                structure, self.graph.pull(settings.flow), self.graph.push(settings.flow),
+                self.chosen, settings.flow, self.watch,
+            )  # fmt: skip
             if not np.array_equal(self.live, inside):
                 yield from self._downstream(inside, self.live & ~inside)
         return None
+
+    def _width(self) -> float:
+        """How well rho must be known for the scores to be known as asked."""
+        share = _MARGIN if self.settings.certificate == "componentwise" else 1.0
+        return max(share * self.settings.tol, 1e-14)
 
     def _keep(self, found: Bracketed) -> None:
         """Take over what a bracket found, as the best there is if it was cancelled."""
@@ -233,91 +249,25 @@ class _Work:
         self.bound = Bound(BoundKind.BRACKET, width)
         if settings.certificate == "bracket":
             return Stop.CONVERGED if width <= settings.tol else self._short()
-        pin = int(
-            np.argmax(np.where(support(self.structure, self.chosen, self.graph.n), self.x, 0))
-        )
-        scale = np.where(self.live, self.matrix.scale, 0.0)
-        matrix = Pull(self.matrix.rows, scale)
-        guard = yield from self.ledger.relay(
-            pinned_guard(
-                matrix, self.structure, settings.flow, np.maximum(self.x, 0), pin, low,
-                max_sweeps=settings.max_sweeps, watch=self.watch,
-            ),
-            "certificate",
+        block = Block(
+            self.matrix, self.structure, settings.flow, self.live, self.x, self.rho,
+            home=support(self.structure, self.chosen, self.graph.n),
         )  # fmt: skip
-        if guard is None:
-            return self._short()
-        best = float("inf")
-        for _ in range(200):
-            reach = perron_reach(matrix, self.x, self.rho, self.watch)
-            self.ledger.visits += matrix.stored
-            errors = np.where(guard.live, guard.factor(reach) * guard.w, 0.0)
-            errors = normalised_reach(self.x, errors, 2)
-            scores = self.x / np.linalg.norm(self.x)
-            value = float(errors.sum() / scores.sum())
-            self.bound = Bound(BoundKind.COMPONENTWISE, value, absolute=errors)
-            line = self._line(value)
-            yield line
-            if value <= settings.tol:
-                return Stop.CONVERGED
-            wanted = settings.stop_order
-            if wanted and proven_prefix(scores, self.bound, wanted) >= wanted:
-                return Stop.ORDER_PROVEN
-            if self.ledger.sweeps >= settings.max_sweeps:
-                return Stop.LIMIT
-            if not value < 0.7 * best:
-                return (yield from self._tighten(matrix, pin, reach, best))
-            best = min(best, value)
-            yield from self._polish(matrix, 12)
-        return Stop.STALLED
-
-    def _tighten(
-        self, matrix: Pull, pin: int, reach: Floats, best: float
-    ) -> Generator[Iteration, None, Stop]:
-        """Once only rounding is left: a guard in proportion to each row's own residual."""
-        settings = self.settings
-        guard = yield from self.ledger.relay(
-            pinned_guard(
-                matrix, self.structure, settings.flow, np.maximum(self.x, 0), pin, self.rho[0],
-                max_sweeps=settings.max_sweeps, watch=self.watch, g=reach,
-            ),
-            "certificate",
+        wanted = settings.stop_order
+        bound, stop = yield from sharpen(
+            block, _unit, tol=settings.tol, max_sweeps=settings.max_sweeps, watch=self.watch,
+            ledger=self.ledger,
+            enough=None
+            if wanted is None
+            else lambda scores, bound: proven_prefix(scores, bound, wanted) >= wanted,
         )  # fmt: skip
-        if guard is None:
-            return Stop.STALLED
-        errors = np.where(guard.live, guard.factor(reach) * guard.w, 0.0)
-        errors = normalised_reach(self.x, errors, 2)
-        value = float(errors.sum() / (self.x.sum() / np.linalg.norm(self.x)))
-        if value < best:
-            self.bound = Bound(BoundKind.COMPONENTWISE, value, absolute=errors)
-            yield self._line(value)
-        return Stop.CONVERGED if value <= settings.tol else Stop.STALLED
+        self.x, self.rho = block.y, block.rho
+        if np.isfinite(bound.value):
+            self.bound = bound
+        return stop
 
     def _short(self) -> Stop:
         return Stop.LIMIT if self.limit else Stop.STALLED
-
-    def _polish(self, matrix: Pull, steps: int) -> Generator[Iteration, None, None]:
-        """A few more power steps on the whole support, keeping the best bracket."""
-        low, high = self.rho
-        inside = support(self.structure, self.chosen, self.graph.n)
-        for _ in range(steps):
-            product = matrix.apply(self.x, self.watch)
-            self.ledger.visits += matrix.stored
-            self.ledger.sweeps += 1
-            middle = 0.5 * (low + high)
-            self.x = np.where(self.live, product + 0.35 * middle * self.x, 0.0)
-            self.x /= self.x.max()
-        product = matrix.apply(self.x, self.watch)
-        ratio = product[inside] / self.x[inside]
-        slack = 1e-16 * (matrix.rows.degrees[inside] / 4 + 8)
-        low = max(low, float((ratio * (1 - slack)).min()))
-        high = min(high, float((ratio * (1 + slack)).max()))
-        self.rho = (low, high)
-        yield self._line(float("nan"))
-
-    def _line(self, bound: float) -> Iteration:
-        low, high = self.rho
-        return self.ledger.line((high - low) / high, bound, "certified", self.rho)
 
     def result(self, stop: Stop) -> Result:
         """Everything found, as a Result."""

@@ -37,7 +37,8 @@ class Block:
     """An irreducible block of a nonnegative matrix, its vector and the bracket of its root.
 
     ``y`` is positive on ``inside`` and zero elsewhere, shape (n,); ``spread`` is the relative error
-    that the entries of ``matrix`` themselves may have (0 where they are exact).
+    that the entries of ``matrix`` themselves may have (0 where they are exact).  Where ``inside``
+    also holds what the block feeds, ``home`` marks the block alone.
     """
 
     matrix: Pull
@@ -47,6 +48,7 @@ class Block:
     y: Floats
     rho: tuple[float, float]
     spread: float = 0.0
+    home: NDArray[np.bool_] | None = None
 
 
 # From the vector and the bounds of its errors to the scores and the bounds of theirs.
@@ -84,7 +86,8 @@ class _Sharpening:
         self.block, self.shape, self.watch = block, shape, watch
         self.ledger, self.max_sweeps = ledger, max_sweeps
         self.bound = Bound(BoundKind.NONE, float("inf"))
-        self.pin = int(np.argmax(block.y))
+        home = block.inside if block.home is None else block.home
+        self.pin = int(np.argmax(np.where(home, block.y, 0.0)))
         self.fixed = block.rho[0] == block.rho[1]
         self._all = np.arange(block.matrix.n, dtype=np.uint32)
         self._tried: list[tuple[float, float]] = []  # rho, and what row p made of it
@@ -139,7 +142,7 @@ class _Sharpening:
 
     def _reach(self, y: Floats) -> Floats:
         block = self.block
-        reach = perron_reach(block.matrix, y, block.rho, self.watch)
+        reach = perron_reach(block.structure, block.matrix, y, block.rho, self.watch)
         self.ledger.visits += block.matrix.stored
         if block.spread:
             # The entries' own errors: as much of B y, which is y up to the reach.

@@ -14,13 +14,15 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from kingpost.core.certify import Residual
+from kingpost.core.certify import UNIT, Residual
 from kingpost.core.graph import Floats, Flow
 from kingpost.core.operators import Pull
-from kingpost.core.result import Iteration
+from kingpost.core.result import Iteration, Stop
 from kingpost.core.solvers.linear import Solution, System, solve
 from kingpost.core.structure import Structure
 from kingpost.core.watch import Watch
+
+_HELD = 64.0  # units of rounding; a row solved once is known to 18 and a little
 
 
 @dataclass(frozen=True)
@@ -52,8 +54,27 @@ def find_guard(
 ) -> Generator[Iteration, None, Guard | None]:
     """Solve ``M w = g`` only so far that ``M w >= g / 2`` where ``g > 0``; None if that fails.
 
-    ``ignore`` is a node whose row does not count (its column in ``matrix`` must be zero).
+    ``ignore`` is a node whose row does not count (its column in ``matrix`` must be zero).  Where
+    w spans so many decades that its own rounding drowns g, g is raised there to what can be
+    held: what a guard is in proportion to is a matter of taste, that it is one is not.
     """
+    guard, found = yield from _guard(matrix, structure, flow, g, max_sweeps, watch, ignore)
+    if guard is None and found.stop is Stop.STALLED and np.isfinite(found.x).all():
+        least = np.where(np.broadcast_to(g > 0, matrix.n), _HELD * UNIT * np.abs(found.x), 0.0)
+        raised = np.maximum(g, least)
+        guard, _ = yield from _guard(matrix, structure, flow, raised, max_sweeps, watch, ignore)
+    return guard
+
+
+def _guard(
+    matrix: Pull,
+    structure: Structure,
+    flow: Flow,
+    g: Floats,
+    max_sweeps: int,
+    watch: Watch,
+    ignore: int | None,
+) -> Generator[Iteration, None, tuple[Guard | None, Solution]]:
     live = np.broadcast_to(g > 0, matrix.n).copy()
     if ignore is not None:
         live[ignore] = False
@@ -72,9 +93,9 @@ def find_guard(
         tol=0.5,
         max_sweeps=max_sweeps,
         watch=watch,
-        gain=0.3,
+        gain=3.0,
     )
     if not found.bound <= 0.5:
-        return None
-    kept = g - found.residual.reach
-    return Guard(found.x, np.broadcast_to(kept, matrix.n), live, found.sweeps, found.edge_visits)
+        return None, found
+    kept = np.broadcast_to(g - found.residual.reach, matrix.n)
+    return Guard(found.x, kept, live, found.sweeps, found.edge_visits), found

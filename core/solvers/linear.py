@@ -31,7 +31,8 @@ import numpy as np
 from kingpost.core.certify import UNIT, Residual, residual
 from kingpost.core.errors import Interrupted
 from kingpost.core.graph import Floats, Flow
-from kingpost.core.operators import Pull
+from kingpost.core.layout import layout
+from kingpost.core.operators import Order, Pull
 from kingpost.core.result import Iteration, Stop
 from kingpost.core.solvers.mixing import Mixing
 from kingpost.core.solvers.stages import Stage, plan
@@ -101,8 +102,26 @@ def solve(
             ``judge`` may be content early.
         gain: a first guess of bound over last movement.
     """
-    work = _Sweeper(system, watch, max_sweeps, start)
+    laid = layout(system.structure, system.matrix.rows, watch)
+    there = System(
+        laid.matrix(system.matrix), laid.there(system.b), laid.structure, system.flow,
+        system.contraction,
+    )  # fmt: skip
+    if start is not None:
+        start = laid.there(start)
+
+    def by_node(x: Floats, r: Residual) -> tuple[float, bool]:
+        return judge(laid.back(x), r.of(laid.back))
+
+    work = _Sweeper(there, watch, max_sweeps, start)
     work.gain = gain
+    found = yield from _solve(work, by_node, tol, early)
+    return replace(found, x=laid.back(found.x), residual=found.residual.of(laid.back))
+
+
+def _solve(
+    work: _Sweeper, judge: Judge, tol: float, early: bool
+) -> Generator[Iteration, None, Solution]:
     goal = 1e-2 if early else tol
     best, bound = float("inf"), float("inf")
     stop: Stop | None = None
@@ -119,7 +138,7 @@ def solve(
             stop = Stop.CONVERGED
         elif enough:
             stop = Stop.ORDER_PROVEN
-        elif work.sweeps >= max_sweeps:
+        elif work.sweeps >= work.max_sweeps:
             stop = Stop.LIMIT
         elif work.diverged or (work.floor and not bound < 0.5 * best):
             stop = Stop.STALLED
@@ -130,8 +149,8 @@ def solve(
     if r is None or stop is Stop.CANCELLED:
         # Whatever the iterate is now, its bound is that of a full residual, uninterrupted; on a
         # large graph that would take longer than who cancels is willing to wait.
-        work.watch = Watch(threads=watch.threads)
-        if system.matrix.stored <= _PROMPT:
+        work.watch = Watch(threads=work.watch.threads)
+        if work.matrix.stored <= _PROMPT:
             r, bound, _ = work.certify(judge, everywhere=True)
         else:
             r = Residual(np.zeros(len(work.x)), np.full(len(work.x), np.inf))
@@ -140,6 +159,12 @@ def solve(
     return Solution(
         work.x, r, stop or Stop.STALLED, work.sweeps, work.visits, work.rate, bound, work.log
     )
+
+
+def _leading_zeros(b: Floats, order: Order) -> int:
+    """How many of the rows visited first have zeros in ``b``."""
+    ordered = b[order] != 0.0
+    return int(np.argmax(ordered)) if ordered.any() else len(b)
 
 
 class _Sweeper:
@@ -152,6 +177,13 @@ class _Sweeper:
         n = system.matrix.n
         self.x: Floats = np.empty(n)
         self.x[:] = self.b if start is None else start
+        # Nothing is given to the rows before the first that has something of its own.
+        first = 0 if len(self.b) == 1 else _leading_zeros(self.b, self.plan.order)
+        self.stages = [stage for stage in self.plan.stages if stage.high > first]
+        self.swept = [(stage.low, stage.high) for stage in self.stages if stage.swept]
+        if first:
+            done = self.stages[0].low if self.stages else n
+            self.x[self.plan.order[:done]] = 0.0
         # One copy of the scaled iterate for every block that is swept at the same time: each
         # sees its own new values and the others' old ones, however the threads run.
         self.z = np.tile(self.x * self.matrix.scale, (self.plan.lanes, 1))
@@ -164,7 +196,7 @@ class _Sweeper:
         self._mixing: dict[int, Mixing] = {}
         self.floor = False  # whether the last pass went on until nothing moved any more
         self.diverged = False
-        tracked = not self.plan.swept and not len(self.matrix.loops)
+        tracked = not self.swept and not len(self.matrix.loops)
         tracked = tracked and bool((self.b >= 0).all() and (self.matrix.scale >= 0).all())
         self.depth: int | None = 0 if tracked else None
         self._depths = np.zeros(n if tracked else 0, dtype=np.uint32)
@@ -183,12 +215,12 @@ class _Sweeper:
     def through(self, goal: float) -> Generator[Iteration, None, None]:
         """Pass all stages, upstream first, sweeping each cyclic one to ``goal``."""
         self.floor = True
-        for stage in self.plan.stages:
+        for stage in self.stages:
             if stage.swept:
                 yield from self._settle(stage, goal)
             else:
                 self._substitute(stage)
-        if not self.plan.swept:
+        if not self.swept:
             self.sweeps = max(self.sweeps, 1)
             yield self.line(float("nan"), "single pass", 0.0)
 
@@ -246,11 +278,11 @@ class _Sweeper:
 
     def certify(self, judge: Judge, everywhere: bool = False) -> tuple[Residual, float, bool]:
         """The residual where rows were swept (or everywhere), and what the judge makes of it."""
-        ranges = [(0, self.matrix.n)] if everywhere else self.plan.swept
+        ranges = [(0, self.matrix.n)] if everywhere else self.swept
         r = residual(self.matrix, self.b, self.x, self.plan.order, ranges, self.watch)
         if self.depth is not None and not everywhere:
             r = replace(r, relative=16 * UNIT * (self.depth + 1))
-        self.visits += sum(s.edges for s in self.plan.stages if s.swept or everywhere)
+        self.visits += sum(s.edges for s in self.stages if s.swept or everywhere)
         bound, enough = judge(self.x, r)
         if self._shares and np.isfinite(bound):
             # Four times what was seen: a certificate costs more than a sweep or two too many.

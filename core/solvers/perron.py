@@ -21,10 +21,11 @@ from numpy.typing import NDArray
 from kingpost.core.certify import UNIT
 from kingpost.core.errors import Interrupted
 from kingpost.core.graph import Floats
+from kingpost.core.layout import layout
 from kingpost.core.operators import Order, Pull, cut
 from kingpost.core.parallel import each
 from kingpost.core.result import Iteration
-from kingpost.core.solvers.pinned_sweeps import PinnedSweeps
+from kingpost.core.solvers.pinned_sweeps import STILL, PinnedSweeps
 from kingpost.core.structure import Structure
 from kingpost.core.watch import Watch
 
@@ -80,26 +81,31 @@ def bracket(
 
     If ``watch`` is cancelled the state so far is returned, marked ``cancelled``.
     """
-    work = _Brackets(matrix, structure, watch, only, start)
+    laid = layout(structure, matrix.rows, watch)
+    if start is not None:
+        start = laid.there(start)
+    work = _Brackets(laid.matrix(matrix), laid.structure, watch, only, start)
+    work.enough = 1e-2 * width
     try:
-        return (yield from _narrow(work, width, max_steps, separate))
+        yield from _narrow(work, width, max_steps, separate)
     except Interrupted:
         work.state.cancelled = True
-        return work.state
+    work.state.y = laid.back(work.state.y)
+    return work.state
 
 
 def _narrow(
     work: _Brackets, width: float, max_steps: int, separate: bool
-) -> Generator[Iteration, None, Bracketed]:
+) -> Generator[Iteration, None, None]:
     while True:
         yield work.step()
         state = work.state
         rho_low, rho_high = state.rho
         narrow = rho_high - rho_low <= width * rho_high
         if narrow and (state.decided or not separate):
-            return state
+            return
         if state.steps >= max_steps or work.stuck:
-            return state
+            return
         if work.settling:
             yield from work.settle()
         elif work.slow:
@@ -128,6 +134,7 @@ class _Brackets:
             top = float(near.max(initial=0.0)) or 1.0
             y[self.nodes] = np.where(near > 0, np.maximum(near / top, 1e-200), 1.0)
         self.stuck = False
+        self.enough = STILL
         self._since = 0
         self._widths: list[float] = []
         self._shift = 0.0  # of the middle of the bracket, once iterates are seen to swing
@@ -256,7 +263,9 @@ class _Brackets:
     def settle(self) -> Generator[Iteration, None, None]:
         """Pinned Gauss-Seidel sweeps; kept only if the vector they lead to is positive."""
         self._unsettled -= 1
-        work = PinnedSweeps(self.matrix, self.nodes, self.state.y, self.watch)
+        # As far as the bracket asked for needs, by experience; all the way if that was too short.
+        enough = self.enough if self._unsettled == 2 else STILL
+        work = PinnedSweeps(self.matrix, self.nodes, self.state.y, self.watch, enough)
         lines = work.run()
         for moved in lines:
             self.state.steps += 1

@@ -19,6 +19,7 @@ from numpy.typing import NDArray
 
 from kingpost.core.certify import UNIT
 from kingpost.core.graph import Floats, Flow
+from kingpost.core.layout import layout
 from kingpost.core.operators import Pull
 from kingpost.core.result import Iteration
 from kingpost.core.solvers.guard import Guard, find_guard
@@ -58,11 +59,12 @@ def pinned_guard(
     return None
 
 
-def perron_reach(matrix: Pull, y: Floats, rho: tuple[float, float], watch: Watch) -> Floats:
+def perron_reach(
+    structure: Structure, matrix: Pull, y: Floats, rho: tuple[float, float], watch: Watch
+) -> Floats:
     """The most ``|(B y)_i / rho - y_i|`` can be for any rho of the bracket; shape (n,)."""
     low, high = rho
-    order = np.arange(matrix.n, dtype=np.uint32)
-    product, size = matrix.apply_exactly(y, order, 0, matrix.n, watch)
+    product, size = layout(structure, matrix.rows, watch).apply_exactly(matrix, y, watch)
     middle = 0.5 * (low + high)
     gap = np.abs(product - middle * y) + 0.5 * (high - low) * np.abs(y)
     reach: Floats = (gap + UNIT * (12 * size + 6 * middle * np.abs(y))) / low

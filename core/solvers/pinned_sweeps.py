@@ -22,19 +22,22 @@ from kingpost.core.solvers.sweeping import sweep
 from kingpost.core.watch import Watch
 
 _SWEEPS = 40
-_ENOUGH = 1e-15  # a sweep that moves less than this share of the mass moves nothing
+STILL = 1e-15  # a sweep that moves less than this share of the mass moves nothing
 _TAIL = 2  # sweeps after that, for entries too small to show in the sum
 
 
 class PinnedSweeps:
     """Sweeps over ``nodes`` from the positive vector ``y`` (shape (n,), zero elsewhere).
 
+    They end once a sweep moves less than ``enough`` of the mass.
     ``x`` is the iterate; ``sound`` says whether it is still positive and finite.
     """
 
-    def __init__(self, matrix: Pull, nodes: Order, y: Floats, watch: Watch) -> None:
+    def __init__(
+        self, matrix: Pull, nodes: Order, y: Floats, watch: Watch, enough: float = STILL
+    ) -> None:
         self.watch = watch
-        self.matrix = matrix
+        self.matrix, self.enough = matrix, max(enough, STILL)
         self.pin = int(nodes[int(np.argmax(y[nodes]))])
         self.x: Floats = y / y[self.pin]
         self.nodes: Order = nodes[nodes != self.pin]
@@ -44,7 +47,7 @@ class PinnedSweeps:
         self.sound = True
 
     def run(self) -> Iterator[float]:
-        """Sweep until nothing moves any more; yields the share of the mass each sweep moved.
+        """Sweep until hardly anything moves; yields the share of the mass that each sweep moved.
 
         Raises:
             Interrupted: if the watch was cancelled; ``x`` is then between two sweeps.
@@ -64,8 +67,8 @@ class PinnedSweeps:
             yield share
             worse = worse + 1 if not share < least else 0
             least = min(least, share)
-            still = still + 1 if share < _ENOUGH else 0
-            if still > _TAIL or (worse > 6 and least < 1e-13):
+            still = still + 1 if share < self.enough else 0
+            if still > (_TAIL if self.enough == STILL else 0) or (worse > 6 and least < 1e-13):
                 break
             if not np.isfinite(share) or worse > 6:
                 self.sound = False
