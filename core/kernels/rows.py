@@ -142,9 +142,9 @@ def renumber(offsets, neighbours, order, place, moved, low, high, near, diagonal
 
 
 @kernel()
-def renumber_weighted(
+def renumber_weighted(  # type: ignore[no-untyped-def]
     offsets, neighbours, weights, order, place, moved, low, high, near, heavy, diagonal
-):  # type: ignore[no-untyped-def]
+):
     """As :func:`renumber`, with weights; if ``heavy`` is empty a weight w is w entries instead."""
     one = np.uint64(1)
     repeat = len(heavy) == 0
