@@ -17,6 +17,7 @@ from kingpost.tui.commands import (
     synth,
     trial,
     verify,
+    walk,
     why,
 )
 from kingpost.tui.commands.front import BARE, Front
@@ -58,6 +59,7 @@ cli.add_command(spectrum.spectrum)
 cli.add_command(drift.drift)
 cli.add_command(verify.verify)
 cli.add_command(trial.trial)
+cli.add_command(walk.walk)
 cli.add_command(synth.synth)
 cli.add_command(pack.pack)
 cli.add_command(shelf.shelf)

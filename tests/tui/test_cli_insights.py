@@ -278,3 +278,48 @@ def test_trial_that_leaves_no_answer(tmp_path: Path) -> None:
     assert "no cycle" in done.stderr
     rows = answered("trial", path, "--measure", "eigenvector", "--each", "1")["losses"]
     assert "no cycle" in rows[0]["refused"]
+
+
+def test_walk(tmp_path: Path) -> None:
+    words = ("walk", HARBOUR, *CALLS, "--from", "bell-relay", "--damping", "0.9")
+    found = answered(*words)
+    assert [row["step"] for row in found["steps"]] == list(range(11))
+    assert found["steps"][0]["most_at"] == "bell-relay"
+    assert len(found["places"]) == 1 + 10 * 5
+    distances = [row["distance"] for row in found["steps"]]
+    assert distances == sorted(distances, reverse=True)
+    assert found["mixed"] <= found["searched"] < 45  # 0.9 ** 44 < 0.01
+    every_format(tmp_path, "steps", *words)
+    every_format(tmp_path, "places", *words)
+    assert "mixed after" in " ".join(run(*words).stdout.split())
+
+
+def test_walk_of_a_small_graph_shows_its_modes(nasty: Path, tmp_path: Path) -> None:
+    path = tmp_path / "ring.parquet"
+    pq.write_table(pa.table({"source": [1, 2, 3, 4], "target": [2, 3, 4, 1]}), path)
+    words = ("walk", path, "--from", "1", "--from", "3", "--steps", "3")
+    found = answered(*words)
+    assert found["period"] == 4
+    assert [row["modulus"] for row in found["modes"]] == pytest.approx([1, 1, 1, 1])
+    every_format(tmp_path, "modes", *words)
+    text = " ".join(run(*words).stdout.split())
+    assert "never mixes" in text
+    assert "-1.000000" in text
+    harmless(run("walk", nasty, "--from", "a\u202eb", "--dangling", "leak"))
+
+
+@pytest.mark.parametrize(
+    ("words", "told"),
+    [
+        ([], "'--from'"),
+        (["--from", "bell-rely"], "bell-relay"),
+        (["--from", "identity", "--eps", "2"], "between 0 and 1"),
+        (["--from", "identity", "--steps", "0"], "a number from 1"),
+        (["--from", "identity", "--damping", "1.5"], "at most 1"),
+        (["--from", "identity", "--sheet", "modes"], "no sheet 'modes'"),
+    ],
+)
+def test_walk_refuses_in_a_sentence(words: list[str], told: str) -> None:
+    done = run("walk", HARBOUR, *words)
+    assert done.exit_code == 2
+    assert told in done.stderr or told in str(done.exception)
