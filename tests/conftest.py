@@ -24,7 +24,7 @@ def pytest_runtest_setup(item: pytest.Item) -> None:
 
 def pytest_runtest_teardown(item: pytest.Item) -> None:
     """Nothing that was kept outlives the test."""
-    shutil.rmtree(os.environ["KINGPOST_CACHE_DIR"], ignore_errors=True)
+    shutil.rmtree(os.environ.get("KINGPOST_CACHE_DIR", _SHELVES), ignore_errors=True)
 
 
 def pytest_unconfigure() -> None:

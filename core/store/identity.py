@@ -11,6 +11,7 @@ from __future__ import annotations
 import dataclasses
 import hashlib
 import os
+import re
 import struct
 import time
 from collections.abc import Sequence
@@ -23,6 +24,14 @@ _HEAD, _TAIL = 4_096, 65_536
 _FOOTER_LIMIT = 1 << 28
 _TICK = 20_000_000  # ns; coarser than the clock by which the usual file systems stamp files
 
+# Conditions that may be true for other rows tomorrow, or by chance; a column of such a name only
+# costs the store.
+_PASSING = re.compile(
+    r"\b(random|setseed|\w*uuid\w*|now|today|age|\w*current\w*|localtime\w*|"
+    r"transaction_timestamp|nextval|sleep_ms)\b",
+    re.IGNORECASE,
+)
+
 
 @dataclasses.dataclass(frozen=True)
 class Identity:
@@ -33,7 +42,10 @@ class Identity:
 
 
 def identify(paths: Sequence[str], options: Any) -> Identity | None:
-    """The identity of a load; None where there is none (a pipe, options without plain values).
+    """The identity of a load, or None.
+
+    There is none for a pipe, for options that are no plain values, and for conditions that ask
+    for the time or for chance.
 
     Raises:
         InputError: for paths that name nothing.
@@ -50,7 +62,8 @@ def identify(paths: Sequence[str], options: Any) -> Identity | None:
     # Any other option that happens to name a file may read it.
     named = {value for value in chosen.values() if isinstance(value, str) and os.path.isfile(value)}
     found = [_of_file(file) for file in [*files, *more, *sorted(named - {nodes})]]
-    if any(about is None for about in found):
+    conditions = [str(value) for name, value in chosen.items() if "where" in name and value]
+    if None in found or any(_PASSING.search(text) for text in conditions):
         return None
     about = {
         "format": FORMAT,
@@ -59,6 +72,8 @@ def identify(paths: Sequence[str], options: Any) -> Identity | None:
         "files": files,
         "facts": found,
         "options": {"kind": type(options).__name__, **chosen},
+        # What hour it is at an instant is a question of where one is.
+        "zone": [os.environ.get("TZ"), *time.tzname] if conditions else None,
     }
     try:
         key = hash_text(about)
@@ -102,8 +117,9 @@ def _of_file(path: str) -> dict[str, Any] | None:
     }
 
 
-def _program() -> str:
+def _program() -> list[str]:
     """The code that turns tables into graphs: another version may read a table otherwise."""
-    from kingpost.core.store.code import code_of
+    from kingpost.core.store.code import code_of, version_of
 
-    return code_of("ingest", "kernels", "graph.py")
+    packages = ("pyarrow", "duckdb", "numpy", "scipy", "networkx")
+    return [code_of("ingest", "kernels", "graph.py"), *map(version_of, packages)]
