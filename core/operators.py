@@ -137,10 +137,19 @@ def walk(graph: Graph, flow: Flow, damping: float = 1.0) -> tuple[Pull, Floats]:
     ``P[i, j]`` is the share of i's out-strength on its edge to j.  Rows of nodes without
     out-strength (dangling) are zero.
     """
-    strength = graph.push(flow).strengths()
+    strength = strengths(graph, flow)
     scale = np.zeros(graph.n)
     np.divide(damping, strength, out=scale, where=strength > 0)
     return Pull(graph.pull(flow), scale), strength
+
+
+def strengths(graph: Graph, flow: Flow) -> Floats:
+    """What every node gives away along ``flow``, shape (n,); added up once and kept."""
+    cache, key = graph.structure.cache, f"strengths {flow}"
+    if key not in cache:
+        cache[key] = graph.push(flow).strengths()
+    kept: Floats = cache[key]
+    return kept
 
 
 def told_apart(matrix: Pull, push: Adjacency) -> Pull:

@@ -25,17 +25,18 @@ from __future__ import annotations
 import time
 from collections.abc import Callable, Generator
 from dataclasses import dataclass, field, replace
+from typing import cast
 
 import numpy as np
 
 from kingpost.core.certify import UNIT, Residual, residual
 from kingpost.core.errors import Interrupted
-from kingpost.core.graph import Floats, Flow
+from kingpost.core.graph import Adjacency, Floats, Flow
 from kingpost.core.layout import layout
 from kingpost.core.operators import Order, Pull
 from kingpost.core.result import Iteration, Stop
 from kingpost.core.solvers.mixing import Mixing
-from kingpost.core.solvers.stages import Stage, plan
+from kingpost.core.solvers.stages import Plan, Stage, plan
 from kingpost.core.solvers.sweeping import sweep
 from kingpost.core.structure import Structure
 from kingpost.core.watch import Watch
@@ -110,13 +111,18 @@ def solve(
     if start is not None:
         start = laid.there(start)
 
+    seen: list[tuple[Residual, Floats, Residual]] = []  # what was judged last, by place and node
+
     def by_node(x: Floats, r: Residual) -> tuple[float, bool]:
-        return judge(laid.back(x), r.of(laid.back))
+        seen[:] = [(r, laid.back(x), r.of(laid.back))]
+        return judge(*seen[0][1:])
 
     work = _Sweeper(there, watch, max_sweeps, start)
     work.gain = gain
     found = yield from _solve(work, by_node, tol, early)
-    return replace(found, x=laid.back(found.x), residual=found.residual.of(laid.back))
+    assert seen, "no solve ends unjudged"
+    assert seen[0][0] is found.residual
+    return replace(found, x=seen[0][1], residual=seen[0][2])
 
 
 def _solve(
@@ -161,6 +167,16 @@ def _solve(
     )
 
 
+def _planned(system: System) -> Plan:
+    """The plan of a system's rows, which does not change with what is solved."""
+    cache, key = system.structure.cache, f"plan {system.flow}"
+    kept = cast("tuple[Adjacency, Plan] | None", cache.get(key))
+    if kept is None or kept[0] is not system.matrix.rows:
+        kept = system.matrix.rows, plan(system.structure, system.matrix.rows, system.flow)
+        cache[key] = kept
+    return kept[1]
+
+
 def _leading_zeros(b: Floats, order: Order) -> int:
     """How many of the rows visited first have zeros in ``b``."""
     ordered = b[order] != 0.0
@@ -173,7 +189,7 @@ class _Sweeper:
     def __init__(self, system: System, watch: Watch, max_sweeps: int, start: Floats | None) -> None:
         self.watch, self.max_sweeps = watch, max_sweeps
         self.matrix, self.b = system.matrix, system.b
-        self.plan = plan(system.structure, system.matrix.rows, system.flow)
+        self.plan = _planned(system)
         n = system.matrix.n
         self.x: Floats = np.empty(n)
         self.x[:] = self.b if start is None else start
