@@ -39,6 +39,7 @@ _HOMES = {
     "than": "insight.why",
     "verify": "insight.verify",
     "why": "insight.why",
+    "within": "insight.cohorts",
 }
 
 __all__ = sorted(_HOMES)

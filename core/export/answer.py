@@ -18,6 +18,7 @@ from kingpost.core.errors import OutputError
 from kingpost.core.export.cells import plain_ascii, wrap
 from kingpost.core.export.data import ForwardOnly, csv_bytes, each_column
 from kingpost.core.export.digits import number
+from kingpost.core.export.formulas import Plain
 from kingpost.core.export.json_rows import row_texts
 from kingpost.core.export.jsonable import dumps, jsonable
 from kingpost.core.export.layout import Column, escaped, markdown_table, terminal_table
@@ -204,11 +205,13 @@ def write_answer(
     width: int = 80,
     ascii_only: bool = False,
     safe: bool = False,
+    formulas: Plain | None = None,
 ) -> None:
     """Write an answer in one of :data:`FORMATS`.
 
     ``sheet`` names the sheet that csv, tsv and parquet hold; ``safe`` writes control characters
-    out in csv and tsv, for a terminal.
+    out in csv and tsv, for a terminal; ``formulas`` makes text plain there that a spreadsheet
+    would run.
 
     Raises:
         OutputError: for a sheet that the answer does not have.
@@ -223,6 +226,8 @@ def write_answer(
         batch = each_column(answer.sheet(sheet).batch(), as_plain)
         if safe:
             batch = each_column(batch, shown)
+        if formulas is not None:
+            batch = each_column(batch, formulas)
         options = csv.WriteOptions(delimiter="," if form == "csv" else "\t")
         sink.write(csv_bytes(pa.Table.from_batches([batch]), options))
     elif form == "markdown":

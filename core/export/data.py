@@ -8,6 +8,7 @@ from typing import Any, BinaryIO
 
 import pyarrow as pa
 
+from kingpost.core.export.formulas import Plain
 from kingpost.core.export.json_rows import row_texts
 from kingpost.core.export.jsonable import dumps, jsonable
 from kingpost.core.export.rows import Ranking, as_plain, batches, schema, shown
@@ -41,7 +42,7 @@ def facts(ranking: Ranking) -> dict[str, Any]:
             "edge_visits": result.edge_visits,
             "error_bound": jsonable(float(result.bound.value)),
             "bound_kind": result.bound.kind.value,
-            "proven_order": result.proven_order,
+            "proven_order": ranking.standing.proven,
             "seconds": jsonable(dataclasses.asdict(result.seconds)),
             "from_store_solved_on": result.solved_on,
         },
@@ -73,16 +74,25 @@ def write_delimited(
     *,
     delimiter: str = ",",
     safe: bool = False,
+    formulas: Plain | None = None,
 ) -> None:
     """RFC 4180 text in UTF-8: a line of names, then the rows; lines end in a line feed.
 
     Text is always quoted, numbers and nulls never, so that an empty text and a null differ.
-    ``safe`` writes control characters out, for a terminal; without it text is exact.
+    ``safe`` writes control characters out, for a terminal; ``formulas`` makes text plain that a
+    spreadsheet would run; without them text is exact.
     """
     from pyarrow import csv
 
+    fields = list(schema(ranking.graph, ranking.within is not None))
+    names = [field.name for field in fields]
     plain = pa.schema(
-        [(f.name, as_plain(pa.array([], f.type)).type) for f in schema(ranking.graph)]
+        [
+            (name, as_plain(pa.array([], field.type)).type)
+            for name, field in zip(
+                names if formulas is None else formulas.names(names), fields, strict=True
+            )
+        ]
     )
     sink.write(csv_bytes(plain.empty_table(), csv.WriteOptions(delimiter=delimiter)))
     body = csv.WriteOptions(delimiter=delimiter, include_header=False)
@@ -90,6 +100,8 @@ def write_delimited(
         batch = _plain(batch)
         if safe:
             batch = each_column(batch, shown)
+        if formulas is not None:
+            batch = each_column(batch, formulas)
         sink.write(csv_bytes(pa.Table.from_batches([batch]), body))
 
 
@@ -107,7 +119,8 @@ def write_parquet(ranking: Ranking, sink: BinaryIO, watch: Watch | None = None) 
     """The rows as Parquet; the file's metadata holds :func:`facts` as JSON under ``kingpost``."""
     import pyarrow.parquet as pq
 
-    columns = schema(ranking.graph).with_metadata({"kingpost": dumps(facts(ranking))})
+    columns = schema(ranking.graph, ranking.within is not None)
+    columns = columns.with_metadata({"kingpost": dumps(facts(ranking))})
     with pq.ParquetWriter(ForwardOnly(sink), columns, compression="zstd") as writer:
         for batch in _watched(ranking, watch):
             writer.write_batch(batch.replace_schema_metadata(columns.metadata))

@@ -81,7 +81,7 @@ def header(ranking: Ranking) -> list[str]:
         f"error at most {small(bound.value)} of the sum of the scores ({kind})"
         if bound.kind is not BoundKind.NONE
         else "error: no bound is known",
-        f"order proven to {result.proven_order:,} of {graph.n:,}",
+        f"order proven to {ranking.standing.proven:,} of {graph.n:,}",
     ]
     if words := _conventions(ranking):
         lines.append(f"conventions  {words}")

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from dataclasses import dataclass, field
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 import pyarrow as pa
@@ -13,9 +13,22 @@ import pyarrow.compute as pc
 from kingpost.core.export.jsonable import dumps
 from kingpost.core.graph import Graph
 from kingpost.core.result import Result
+from kingpost.core.standing import Standing
 from kingpost.core.text import id_text, visible
 
+if TYPE_CHECKING:
+    from kingpost.core.insight.cohorts import Cohorts
+
 FIXED = ("rank", "rank_low", "rank_high", "node", "score", "in_degree", "out_degree")
+# Further columns where scores are rescaled among peers.
+WITHIN = (
+    "peers",
+    "rank_within_low",
+    "rank_within_high",
+    "rescaled",
+    "rescaled_low",
+    "rescaled_high",
+)
 BATCH = 65_536
 
 
@@ -24,13 +37,20 @@ class Ranking:
     """What an export is made from: a graph, a result, how many rows, remarks for the header.
 
     ``top`` is a number of rows or None for all; ``remarks`` adds to the result's conventions
-    what only the caller knows, such as which file a vector came from.
+    what only the caller knows, such as which file a vector came from.  With ``within`` the rows
+    stand in the order of the scores rescaled among peers, and the ranks are those.
     """
 
     graph: Graph
     result: Result
     top: int | None = None
     remarks: dict[str, str] = field(default_factory=dict)
+    within: Cohorts | None = None
+
+    @property
+    def standing(self) -> Standing:
+        """The order of the rows."""
+        return self.result.standing if self.within is None else self.within.standing
 
     @property
     def count(self) -> int:
@@ -40,12 +60,13 @@ class Ranking:
     @property
     def conventions(self) -> dict[str, str]:
         """The result's conventions and the caller's remarks."""
-        return {**self.result.conventions, **self.remarks}
+        within = {} if self.within is None else {"cohorts": self.within.words}
+        return {**self.result.conventions, **within, **self.remarks}
 
 
 def attribute_names(graph: Graph) -> list[str]:
     """Output names of the node attributes; one that meets a fixed column gets ``_attribute``."""
-    taken = set(FIXED)
+    taken = {*FIXED, *WITHIN}
     names = []
     for name in [] if graph.attributes is None else graph.attributes.column_names:
         while name in taken:
@@ -75,10 +96,13 @@ def _common(column: pa.ChunkedArray) -> pa.ChunkedArray:
     return column
 
 
-def schema(graph: Graph) -> pa.Schema:
+def schema(graph: Graph, within: bool = False) -> pa.Schema:
     """Columns of an export; the node keeps the type its ids had in the edge table."""
     types = [pa.int64(), pa.int64(), pa.int64(), graph.labels.type, pa.float64()]
     fields = list(zip(FIXED, [*types, pa.int64(), pa.int64()], strict=True))
+    if within:
+        whole, real = pa.int64(), pa.float64()
+        fields += list(zip(WITHIN, [whole, whole, whole, real, real, real], strict=True))
     extra = attributes(graph)
     return pa.schema(fields + ([] if extra is None else list(extra.schema)))
 
@@ -90,7 +114,8 @@ def batches(ranking: Ranking, size: int = BATCH) -> Iterator[pa.RecordBatch]:
     ``rank_high`` are the ranks the node may truly have.
     """
     graph, result = ranking.graph, ranking.result
-    standing, columns, extra = result.standing, schema(graph), attributes(graph)
+    standing, within = ranking.standing, ranking.within
+    columns, extra = schema(graph, within is not None), attributes(graph)
     for start in range(0, ranking.count, size):
         part = slice(start, min(start + size, ranking.count))
         nodes = standing.order[part]
@@ -103,10 +128,22 @@ def batches(ranking: Ranking, size: int = BATCH) -> Iterator[pa.RecordBatch]:
             pa.array(degrees(graph.inward.offsets, nodes)),
             pa.array(degrees(graph.outward.offsets, nodes)),
         ]
+        if within is not None:
+            arrays += _among_peers(within, nodes)
         if extra is not None:
             picked = extra.take(pa.array(nodes)).combine_chunks()
             arrays += [single(column) for column in picked.columns]
         yield pa.RecordBatch.from_arrays(arrays, schema=columns)
+
+
+def _among_peers(within: Cohorts, nodes: Any) -> list[pa.Array]:
+    lost = np.isnan(within.scores[nodes])
+    found = [pa.array(within.peers[nodes])]
+    for ranks in (within.first, within.last):
+        found.append(pa.array(ranks[nodes], mask=ranks[nodes] < 0))
+    for values in (within.scores, within.low, within.high):
+        found.append(pa.array(values[nodes], mask=lost | ~np.isfinite(values[nodes])))
+    return found
 
 
 def degrees(offsets: Any, nodes: Any) -> Any:

@@ -19,7 +19,7 @@ NAME_LIMIT = 200  # characters of a name worth laying out; the column cuts it fu
 
 def columns(ranking: Ranking, *, ascii_only: bool = False) -> list[Column]:
     """The columns of a ranking's table, texts safe to show; attributes are optional ones."""
-    graph, result, standing = ranking.graph, ranking.result, ranking.result.standing
+    graph, result, standing = ranking.graph, ranking.result, ranking.standing
     nodes = standing.order[: ranking.count]
     low, high = result.bound.interval(result.scores)
     if result.exact_zero is not None:
@@ -32,6 +32,7 @@ def columns(ranking: Ranking, *, ascii_only: bool = False) -> list[Column]:
         Column("rank", [rank_text(int(a), int(b)) for a, b in spans], ">"),
         Column("node", [name_text(graph.label(int(node))) for node in nodes], least=8),
         Column(result.measure, on_the_point(scores), ">"),
+        *_among_peers(ranking, nodes),
         Column("in", _counts(graph.inward.offsets, nodes), ">"),
         Column("out", _counts(graph.outward.offsets, nodes), ">"),
     ]
@@ -43,6 +44,19 @@ def columns(ranking: Ranking, *, ascii_only: bool = False) -> list[Column]:
             texts = [value_text(value) for value in as_plain(single(values)).to_pylist()]
             found.append(Column(visible(title, 40), texts, ">" if number else "<", optional=True))
     return found
+
+
+def _among_peers(ranking: Ranking, nodes: Any) -> list[Column]:
+    within = ranking.within
+    if within is None:
+        return []
+    z, low, high = (values[nodes] for values in (within.scores, within.low, within.high))
+    spans = zip(within.first[nodes], within.last[nodes], within.peers[nodes], strict=True)
+    among = [f"{rank_text(int(a), int(b))} of {size:,}" if size else "-" for a, b, size in spans]
+    return [
+        Column("z", on_the_point(score_texts(z, low, high)), ">"),
+        Column("among peers", among, ">"),
+    ]
 
 
 def rank_text(first: int, last: int) -> str:
@@ -102,8 +116,11 @@ def _tail(ranking: Ranking, left_out: int) -> str:
     rest = ranking.graph.n - ranking.count
     if rest:
         parts.append(f"{rest:,} more below (--top N, --top all)")
-    marks = ranking.result.standing.rail
-    if len(marks) and (unsure := int(np.count_nonzero(marks == UNRANKED))):
+    marks = ranking.standing.rail
+    if ranking.within is not None:
+        if ranking.within.left_out:
+            parts.append(ranking.within.left_out)
+    elif len(marks) and (unsure := int(np.count_nonzero(marks == UNRANKED))):
         parts.append(f"{unsure:,} cannot be told from zero")
     if left_out:
         parts.append(f"{count(left_out, 'attribute column')} did not fit")

@@ -55,6 +55,7 @@ def prepared(edges: tuple[str, ...], given: dict[str, Any], *more: str | None) -
     form = format_of(given.get("form"), given.get("out"))
     read = [*edges, *writing.named_files(given), *(name for name in more if name)]
     writing.check_places(form, given.get("out"), inputs=read)
+    writing.plain_text(given, form)
     return form
 
 
@@ -124,6 +125,7 @@ def deliver(answer: Answer, form: str, given: Mapping[str, Any]) -> None:
     from kingpost.tui.commands import writing
 
     out = given.get("out")
+    formulas = writing.plain_text(given, form)
     answer.sheet(given.get("sheet"))
 
     def write(sink: BinaryIO) -> None:
@@ -135,6 +137,8 @@ def deliver(answer: Answer, form: str, given: Mapping[str, Any]) -> None:
             width=writing.WIDE if out is not None else writing.table_width(),
             ascii_only=out is None and writing.ascii_terminal(),
             safe=out is None and sys.stdout.isatty(),
+            formulas=formulas,
         )
 
     writing.deliver(write, out)
+    writing.tell_changed(formulas)

@@ -384,8 +384,33 @@ def limit_of(top: int | str | None, default: int | None) -> int | None:
     return top if isinstance(top, int) else None
 
 
+_spreadsheet = _option(
+    OUTPUT,
+    "--spreadsheet-safe",
+    is_flag=True,
+    help="csv, tsv: an apostrophe before text that a spreadsheet would run as a formula",
+)
+
+within = _stack(
+    _option(
+        QUESTION,
+        "--within",
+        metavar="COLUMN",
+        help="rank by scores rescaled among peers: nodes of like value in this node attribute",
+    ),
+    _option(
+        QUESTION,
+        "--window",
+        type=Count(),
+        metavar="N",
+        help="--within a number or date: compare with the N nodes nearest by it [1000]",
+    ),
+)
+
+
 def output(*formats: str) -> Callable[[F], F]:
-    """``--format`` with these choices, and ``--out``."""
+    """``--format`` with these choices, ``--out``, and what only delimited text needs."""
+    more = [_spreadsheet] if "csv" in formats else []
     return _stack(
         _option(
             OUTPUT,
@@ -396,6 +421,7 @@ def output(*formats: str) -> Callable[[F], F]:
             metavar="FORMAT",
         ),
         _option(OUTPUT, "--out", metavar="FILE", help="write here, whole or not at all"),
+        *more,
     )
 
 

@@ -28,6 +28,7 @@ _ENDINGS = {
 @options.edges
 @options.loading
 @options.measure
+@options.within
 @options.top(f"rows to give, or all [{TABLE_ROWS} in table and markdown, all in the others]")
 @options.output(*options.FORMATS)
 @options.log
@@ -36,7 +37,8 @@ def rank(edges: tuple[str, ...], **given: Any) -> int:
 
     Data formats (json, csv, tsv, parquet) are exact; what is meant to be read (table, markdown)
     writes control characters out.  rank is the place in the list, rank_low to rank_high the
-    places that are possible within the error bound and ties.
+    places that are possible within the error bound and ties.  With --within both are ranks by
+    z, the score rescaled among peers, so that age or tier alone does not win.
     """
     return answer(edges, given)
 
@@ -54,6 +56,10 @@ def answer(edges: tuple[str, ...], given: dict[str, Any]) -> int:
     values = given_settings(given)
     check_takers(values, [chosen])
     build_early(chosen, values)
+    formulas = writing.plain_text(given, form)
+    within = given.get("within")
+    if given.get("window") is not None and within is None:
+        raise click.UsageError("--window goes with --within COLUMN")
 
     warm.expect(chosen.name)
     with Session(given["threads"]) as session:
@@ -65,15 +71,21 @@ def answer(edges: tuple[str, ...], given: dict[str, Any]) -> int:
             session.check()
             complain(result.refusal.sentence)
             return NO_SUCH_ANSWER
+        peers = None
+        if within is not None:
+            from kingpost.core.insight.cohorts import within as rescaled
+
+            peers = rescaled(graph, result, within, given.get("window"), session.watch)
+            session.line.clear()
         session.release()
         from kingpost.core.export.rows import Ranking
 
         usual = TABLE_ROWS if form in ("table", "markdown") else None
         limit = options.limit_of(given.get("top"), usual)
-        ranking = Ranking(graph, result, limit, choice.remarks)
+        ranking = Ranking(graph, result, limit, choice.remarks, peers)
         if log is not None:
             writing.write_log(result, log)
-        writing.write_ranking(ranking, form, out, session.watch)
+        writing.write_ranking(ranking, form, out, session.watch, formulas)
         status = session.status(result)
     session.tell_shortfall(result)
     return status

@@ -8,10 +8,13 @@ import sys
 from collections.abc import Callable, Iterable, Mapping
 from typing import TYPE_CHECKING, Any, BinaryIO
 
+import click
+
 from kingpost.core.errors import OutputError
-from kingpost.tui.commands.front import silence_output
+from kingpost.tui.commands.front import complain, silence_output
 
 if TYPE_CHECKING:
+    from kingpost.core.export.formulas import Plain
     from kingpost.core.export.rows import Ranking
     from kingpost.core.result import Result
     from kingpost.core.watch import Watch
@@ -66,7 +69,30 @@ def table_width() -> int:
     return max(40, shutil.get_terminal_size((WIDE, 24)).columns)
 
 
-def write_ranking(ranking: Ranking, form: str, out: str | None, watch: Watch) -> None:
+def plain_text(given: Mapping[str, Any], form: str) -> Plain | None:
+    """What ``--spreadsheet-safe`` asks for.
+
+    Raises:
+        click.UsageError: for a format that no spreadsheet takes formulas from.
+    """
+    if not given.get("spreadsheet_safe"):
+        return None
+    if form not in ("csv", "tsv"):
+        raise click.UsageError(f"--spreadsheet-safe is for csv and tsv, not for {form}")
+    from kingpost.core.export.formulas import Plain
+
+    return Plain()
+
+
+def tell_changed(formulas: Plain | None) -> None:
+    """Say that exported text is not exact."""
+    if formulas is not None and formulas.changed:
+        complain(f"note: {formulas.sentence}")
+
+
+def write_ranking(
+    ranking: Ranking, form: str, out: str | None, watch: Watch, formulas: Plain | None = None
+) -> None:
     """Write a ranking in a format, to a file or to standard output."""
     from kingpost.core.export import data, table
 
@@ -82,7 +108,9 @@ def write_ranking(ranking: Ranking, form: str, out: str | None, watch: Watch) ->
             data.write_parquet(ranking, sink, progress)
         elif form in ("csv", "tsv"):
             mark = "," if form == "csv" else "\t"
-            data.write_delimited(ranking, sink, progress, delimiter=mark, safe=on_terminal)
+            data.write_delimited(
+                ranking, sink, progress, delimiter=mark, safe=on_terminal, formulas=formulas
+            )
         elif form == "markdown":
             sink.write(table.markdown(ranking, ascii_only=ascii_only).encode())
         else:
@@ -90,6 +118,7 @@ def write_ranking(ranking: Ranking, form: str, out: str | None, watch: Watch) ->
             sink.write(table.table(ranking, width, ascii_only=ascii_only).encode())
 
     deliver(write, out)
+    tell_changed(formulas)
 
 
 def write_log(result: Result, path: str) -> None:
