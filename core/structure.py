@@ -49,7 +49,7 @@ class Structure:
     inner: NDArray[np.int64]
     stored: int
     _outward: Adjacency | None
-    cache: dict[str, Any] = field(default_factory=dict)  # what measures found out and keep
+    cache: dict[Any, Any] = field(default_factory=dict)  # what measures found out and keep
 
     @property
     def count(self) -> int:

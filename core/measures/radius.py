@@ -31,9 +31,12 @@ def spectral_radius(
     structure = graph.structure
     if structure.acyclic:
         return Radius(0.0, 0.0)
-    known: tuple[float, Radius] | None = structure.cache.get("radius")
-    if known is not None and known[0] <= width:
-        return known[1]
+    # Only the answer to the very same question: a narrower bracket that happens to be known would
+    # make alpha, and with it the scores, depend on what was asked before.
+    question = "radius", width, max_steps
+    known: Radius | None = structure.cache.get(question)
+    if known is not None:
+        return known
     work = bracket(
         adjacency(graph, "along"), structure,
         width=width, max_steps=max_steps, watch=watch, separate=False,
@@ -42,5 +45,5 @@ def spectral_radius(
     if found.cancelled:
         return None
     radius = Radius(*found.rho)
-    structure.cache["radius"] = width, radius
+    structure.cache[question] = radius
     return radius

@@ -15,8 +15,8 @@ from kingpost.core.ingest import load
 from kingpost.core.open import open_graph
 from kingpost.core.store import sealed
 from kingpost.core.store import shelf as shelves
-from kingpost.core.store.shelf import Shelf, default_folder, in_bytes
 from kingpost.core.store.sealed import StoreTrouble
+from kingpost.core.store.shelf import Shelf, default_folder, in_bytes
 from kingpost.core.watch import Watch
 
 
