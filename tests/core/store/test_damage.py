@@ -278,9 +278,14 @@ def test_a_draft_that_fails_leaves_what_was_there(tmp_path):
     place = tmp_path / "kept"
     with sealed.making(place, Watch()) as draft:
         draft.seal("graph", {"which": 1})
-    with pytest.raises(RuntimeError), sealed.making(place, Watch()) as draft:
-        draft.seal("graph", {"which": 2})
-        raise RuntimeError
+
+    def fails():
+        with sealed.making(place, Watch()) as draft:
+            draft.seal("graph", {"which": 2})
+            raise RuntimeError
+
+    with pytest.raises(RuntimeError):
+        fails()
     assert sealed.read_manifest(place, "graph")["about"] == {"which": 1}
     with sealed.making(place, Watch()) as draft:
         draft.seal("graph", {"which": 3})

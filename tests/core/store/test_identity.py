@@ -1,5 +1,6 @@
 """The same key only for the same inputs, read the same way."""
 
+import contextlib
 import dataclasses
 import os
 
@@ -8,8 +9,9 @@ import pyarrow.parquet as pq
 import pytest
 from keeping import graph_facts, result_facts
 
-from kingpost.core.errors import InputError
+from kingpost.core.errors import InputError, SettingsError
 from kingpost.core.ingest import LoadOptions, load
+from kingpost.core.ingest.options import CHOICES
 from kingpost.core.store.identity import identify
 
 OTHER = {
@@ -28,6 +30,16 @@ OTHER = {
 }
 
 
+def acceptable(item):
+    """Another value for an option that came later than these tests."""
+    for value in (*CHOICES.get(item.name, ()), "another value", ";", "latin-1", 7, True, False):
+        with contextlib.suppress(SettingsError):
+            LoadOptions(**{item.name: value})
+            if value != item.default:
+                return value
+    raise AssertionError(f"say in OTHER what {item.name} takes")
+
+
 def key(*paths, **options):
     found = identify([str(path) for path in paths], LoadOptions(**options))
     return found and found.key
@@ -41,10 +53,12 @@ def written(path, **columns):
 def test_every_option_enters_the_key(edges, nodes):
     keys = {key(edges)}
     for item in dataclasses.fields(LoadOptions):
-        value = OTHER.get(item.name, "another value")
+        value = OTHER.get(item.name)
         given = {item.name: str(nodes) if value == "NODES" else value}
         if item.name in ("node_id", "node_where"):
             given["nodes"] = str(nodes)
+        if value is None:
+            given = {item.name: acceptable(item)}
         keys.add(key(edges, **given))
     assert len(keys) == 1 + len(dataclasses.fields(LoadOptions))
 
