@@ -18,6 +18,7 @@ _MODULES = {
     "katz": "kingpost.core.measures.katz",
     "hits": "kingpost.core.measures.hits",
     "communicability": "kingpost.core.measures.communicability",
+    "subgraph": "kingpost.core.measures.subgraph",
     "votes": "kingpost.core.measures.votes",
     "degree": "kingpost.core.measures.degree",
     "reach": "kingpost.core.measures.reach",

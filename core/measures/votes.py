@@ -116,10 +116,9 @@ def ballot(graph: Graph, settings: VotesSettings, watch: Watch) -> Ballot:
     starts, neighbours, won, lost = _meetings(graph, settings.flow, settings.diagonal > 0, watch)
     unit, steep = 1.0, 0.0
     if settings.link == "logistic" and len(won):
-        margins = np.abs(won - lost)
-        unit = settings.unit or float(margins.sum()) / max(1, int((won + lost > 0).sum())) or 1.0
-        steep = min(float(margins.max()) / unit, kernels.FAR)
-        del margins
+        unit, greatest = _margins(won, lost, watch)
+        unit = settings.unit or unit or 1.0
+        steep = min(greatest / unit, kernels.FAR)
     n, games = graph.n, settings.division == "games"
     given, opponents = np.zeros(n), np.zeros(n, dtype=np.int64)
 
@@ -140,6 +139,19 @@ def ballot(graph: Graph, settings: VotesSettings, watch: Watch) -> Ballot:
     # sum as many more; doubled.
     spread = 2 * UNIT * (2 * (11 + 4 * steep) + 6)
     return Ballot(Pull(rows, scale), structure, opponents, unit, spread)
+
+
+def _margins(won: Floats, lost: Floats, watch: Watch) -> tuple[float, float]:
+    """Mean and greatest margin of those who met; entries of the diagonal hold no points."""
+    total, pairs, greatest = 0.0, 0, 0.0
+    for low in range(0, len(won), _PIECE):
+        watch.check()
+        mine, theirs = won[low : low + _PIECE], lost[low : low + _PIECE]
+        margins = np.abs(mine - theirs)
+        total += float(margins.sum())
+        greatest = max(greatest, float(margins.max()))
+        pairs += int(np.count_nonzero(mine + theirs))
+    return total / max(1, pairs), greatest
 
 
 def _meetings(
@@ -242,7 +254,8 @@ class _Work:
                 )
         elif len(large) > 1:
             sizes = structure.sizes[large]
-            names = sorted(int(structure.members(int(number)).min()) for number in large[:2])
+            largest = large[np.argsort(-sizes, kind="stable")[:2]]
+            names = [int(structure.members(int(number)).min()) for number in largest]
             one, two = (graph.name(number, 40) for number in names)
             return (
                 f"{len(large):,} groups of nodes (of {int(sizes.min()):,} to "
@@ -313,6 +326,8 @@ class _Work:
                 else f"{settings.diagonal:g} with itself, before dividing",
                 **more,
                 scores="ratings, sum 1",
+                reading="what these outcomes say, nothing else; before people are judged by it, "
+                "follow the local review",
             ),
             seconds=self.clock.seconds(),
             facts=facts,

@@ -18,10 +18,23 @@ import pyarrow as pa
 from kingpost.core.graph import Graph
 from kingpost.core.ingest import from_table
 from kingpost.core.insight.audit import examine
+from kingpost.core.insight.ranks import (
+    Ranks,
+    agreement,
+    ranks_from_scores,
+    rbo_weight,
+    spearman,
+    tau_b,
+)
+from kingpost.core.insight.spectrum import spectrum
 from kingpost.core.measures import measure
+from kingpost.core.measures.communicability import CommunicabilitySettings
 from kingpost.core.measures.eigenvector import EigenvectorSettings
+from kingpost.core.measures.hits import HitsSettings
 from kingpost.core.measures.katz import KatzSettings
+from kingpost.core.measures.subgraph import SubgraphSettings
 from kingpost.core.measures.surfer import SurferSettings
+from kingpost.core.measures.votes import VotesSettings
 from kingpost.core.operators import walk
 from kingpost.core.result import Result
 from kingpost.core.watch import Watch
@@ -186,6 +199,37 @@ def score_vectors(item: Entry) -> Sequence[float]:
     return found
 
 
+def hits(item: Entry) -> Sequence[float]:
+    role = item["measure"].removeprefix("hits_")
+    return in_order(item, rank(item, "hits", HitsSettings(role=role, tol=1e-12)))
+
+
+def keener(item: Entry) -> Sequence[float]:
+    """Edges there lead from who scored, here score flows against them."""
+    settings = VotesSettings(link="skew", division="games", diagonal=0.5, flow="against", tol=1e-12)
+    return in_order(item, rank(item, "votes", settings))
+
+
+def subgraph(item: Entry) -> Sequence[float]:
+    return in_order(item, rank(item, "subgraph", SubgraphSettings(scale="none", tol=1e-12)))
+
+
+def subgraph_normalised(item: Entry) -> Sequence[float]:
+    """Divided by e^lambda_1, lambda_1 as the spectrum has it."""
+    top = spectrum(graph_of(item), "eigenvector").values[0].real
+    return np.asarray(subgraph(item)) / np.exp(top)
+
+
+def communicability(item: Entry) -> Sequence[float]:
+    settings = CommunicabilitySettings(scale="none", tol=1e-12)
+    return in_order(item, rank(item, "communicability", settings))
+
+
+def communicability_out(item: Entry) -> Sequence[float]:
+    settings = CommunicabilitySettings(scale="none", tol=1e-12, flow="against")
+    return in_order(item, rank(item, "communicability", settings))
+
+
 def spectral_radius(item: Entry) -> Sequence[float]:
     low, high = examine(graph_of(item)).radius
     assert high - low <= 1e-9 * high
@@ -235,7 +279,48 @@ def katz_near_zero(item: Entry) -> Sequence[float]:
     return (in_order(item, result) - 1) / alpha
 
 
+def second_eigenvalue(item: Entry) -> Sequence[float]:
+    """What is certain of it, and what was found, agree."""
+    settings = SurferSettings(damping=item["parameters"]["alpha"])
+    found = spectrum(graph_of(item), "surfer", settings)
+    assert found.second == (settings.damping, settings.damping)
+    return [found.values[1].modulus]
+
+
+def two_by_two(item: Entry) -> Sequence[float]:
+    """The matrices of the statement as undirected graphs of two nodes with self-loops."""
+    seconds = []
+    for same, other in ((0.65, 0.35), (0.85, 0.15)):
+        edges = {
+            "source": ["a", "a", "b"], "target": ["a", "b", "b"], "weight": [same, other, same]
+        }  # fmt: skip
+        found = spectrum(from_table(pa.table(edges), directed=False), "eigenvector")
+        assert found.values[0].low <= 1.0 <= found.values[0].high
+        seconds.append(found.values[1].real)
+    return seconds
+
+
+def pair_of_ranks(item: Entry) -> tuple[Ranks, Ranks]:
+    """The entry's two lists of values as rankings."""
+    x, y = (np.asarray(item["parameters"][name], dtype=float) for name in ("x", "y"))
+    return ranks_from_scores(x), ranks_from_scores(y)
+
+
+def average_overlap(item: Entry) -> Sequence[float]:
+    """Mean of the shares at depths 1..d; an item a list does not hold is beyond every depth."""
+    said = item["parameters"]
+    names, depth = sorted({*said["a"], *said["b"]}), max(said["depths"])
+    places = [
+        np.array([said[one].index(n) + 1 if n in said[one] else depth + 1 for n in names])
+        for one in ("a", "b")
+    ]
+    shares = agreement(*places, depth)
+    return [float(shares[:d].mean()) for d in said["depths"]]
+
+
 FACTS: dict[str, Callable[[Entry], Sequence[float]]] = {
+    "fact-second-eigenvalue-two-closed-sets": second_eigenvalue,
+    "fact-ams-2x2-eigenvalues": two_by_two,
     "fact-collatz-wielandt-karate": collatz_wielandt,
     "fact-ipsen-selee-lumping": pagerank,
     "fact-pagerank-error-bounds": error_bounds,
@@ -256,28 +341,25 @@ RUNNERS: dict[str, Callable[[Entry], Sequence[float]]] = {
     "tournament_score_vectors": score_vectors,
     "spectral_radius": spectral_radius,
     "spectral_fact": second_thoughts,
+    "hits_authority": hits,
+    "hits_hub": hits,
+    "keener": keener,
+    "subgraph_centrality": subgraph,
+    "subgraph_centrality_normalised": subgraph_normalised,
+    "total_communicability": communicability,
+    "total_communicability_out": communicability_out,
+    "kendall_tau_b": lambda item: [tau_b(*pair_of_ranks(item))],
+    "spearman": lambda item: [spearman(*pair_of_ranks(item))],
+    "average_overlap": average_overlap,
+    "rbo_weight_mass": lambda item: [rbo_weight(item["parameters"]["p"], item["parameters"]["d"])],
 }
 
-# Kinds the package has no measure for yet, with the reason.
+# Kinds of comparison the package does not offer, with what it has in their place.
 WITHOUT: dict[str, str] = {
-    "hits_authority": "no measure of hubs and authorities yet",
-    "hits_hub": "no measure of hubs and authorities yet",
-    "keener": "no rating from pairwise outcomes yet",
-    "subgraph_centrality": "no communicability yet",
-    "subgraph_centrality_normalised": "no communicability yet",
-    "total_communicability": "no communicability yet",
-    "total_communicability_out": "no communicability yet",
-    "kendall_tau_b": "no agreement of rankings yet",
-    "kendall_tau_c": "no agreement of rankings yet",
-    "spearman": "no agreement of rankings yet",
-    "weighted_tau": "no agreement of rankings yet",
-    "friedman_chi2_tie_corrected": "no agreement of rankings yet",
-    "friedman_chi2_uncorrected": "no agreement of rankings yet",
-    "average_overlap": "no agreement of rankings yet",
-    "rbo_weight_mass": "no agreement of rankings yet",
+    "kendall_tau_c": "rankings are compared by tau-b; tau-c is for tables of unequal sides",
+    "weighted_tau": "the head of a ranking is weighed by rank-biased overlap",
+    "friedman_chi2_tie_corrected": "no test of many judges",
+    "friedman_chi2_uncorrected": "no test of many judges",
 }
 
-WITHOUT_ENTRY: dict[str, str] = {
-    "fact-second-eigenvalue-two-closed-sets": "no spectrum beyond the leading eigenvalue yet",
-    "fact-ams-2x2-eigenvalues": "no spectrum beyond the leading eigenvalue yet",
-}
+WITHOUT_ENTRY: dict[str, str] = {}

@@ -239,13 +239,13 @@ settings = _stack(
         "--inverse-temperature",
         type=float,
         metavar="T",
-        help="communicability: T in e^(T A/rho), how much long walks count [1]",
+        help="communicability, subgraph: T in e^(T A/rho), how much long walks count [1]",
     ),
     _option(
         MEASURE,
         "--scale",
         metavar="WHAT",
-        help="communicability: divide A by its spectral radius (rho) or not (none) [rho]",
+        help="communicability, subgraph: divide A by rho (rho) or not (none) [rho]",
     ),
     _option(
         MEASURE,
@@ -296,7 +296,7 @@ settings = _stack(
         "--budget",
         type=float,
         metavar="VISITS",
-        help="reach, harmonic: edge visits up to which the answer is exact [2e9]",
+        help="reach, harmonic, subgraph: edge visits up to which the answer is exact",
     ),
     _option(
         MEASURE,
