@@ -48,7 +48,7 @@ class SubgraphSettings(CommunicabilitySettings):
     """Settings of subgraph centrality; ``flow`` and ``stop`` have no bearing on it."""
 
     budget: float = option(
-        5e10, "edge visits up to which walks are counted, 16 nodes at a time each", low=0.0
+        2e10, "edge visits up to which walks are counted, 16 nodes at a time each", low=0.0
     )
 
 
