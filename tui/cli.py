@@ -14,6 +14,7 @@ from kingpost.tui.commands import (
     screen,
     shelf,
     spectrum,
+    sweep,
     synth,
     trial,
     verify,
@@ -58,6 +59,7 @@ cli.add_command(agree.agree)
 cli.add_command(spectrum.spectrum)
 cli.add_command(drift.drift)
 cli.add_command(verify.verify)
+cli.add_command(sweep.sweep)
 cli.add_command(trial.trial)
 cli.add_command(walk.walk)
 cli.add_command(synth.synth)

@@ -323,3 +323,58 @@ def test_walk_refuses_in_a_sentence(words: list[str], told: str) -> None:
     done = run("walk", HARBOUR, *words)
     assert done.exit_code == 2
     assert told in done.stderr or told in str(done.exception)
+
+
+def test_sweep(tmp_path: Path) -> None:
+    words = ("sweep", HARBOUR, *CALLS, "--over", "damping=0.5:0.99:5", "--first", "4")
+    found = answered(*words)
+    assert [row["leader"] for row in found["values"]] == ["identity", *["audit-trail"] * 4]
+    (change,) = found["changes"]
+    assert (change["before"], change["after"]) == ("identity", "audit-trail")
+    assert 0.5 < change["low"] < change["high"] < 0.99
+    assert change["high"] - change["low"] <= found["interval"] == pytest.approx(0.00049)
+    nodes = {row["node"] for row in found["ranks"]}
+    assert len(found["ranks"]) == 5 * len(nodes)
+    assert set(found["always_first"]) < nodes
+    for sheet in ("ranks", "values", "changes"):
+        every_format(tmp_path, sheet, *words)
+    text = " ".join(run(*words).stdout.split())
+    assert "from identity to audit-trail" in text
+    # Held against the standings of a solve of its own.
+    alone = json.loads(run("rank", HARBOUR, *CALLS, "--damping", "0.99", "--format", "json").stdout)
+    low = {row["node"]: row["rank_low"] for row in alone["rows"]}
+    for row in found["ranks"]:
+        if row["value"] == 0.99:
+            assert row["rank_low"] <= low[row["node"]] <= row["rank_high"]
+
+
+def test_sweep_of_choices_and_readings(nasty: Path) -> None:
+    words = ("sweep", HARBOUR, *CALLS, "--measure", "degree")
+    found = answered(*words, "--over", "weight-as=asis,none")
+    assert [row["value"] for row in found["values"]] == ["asis", "none"]
+    assert "changes" not in found
+    # Read without weights every row counts, so that a pair in two rows counts twice.
+    scores = {(row["value"], row["node"]): row["score"] for row in found["ranks"]}
+    assert scores["none", "identity"] == 364
+    counting = answered(*words, "--over", "counting=strength,edges")
+    assert [row["leader"] for row in counting["values"]] == ["identity", "audit-trail"]
+    harmless(run("sweep", nasty, "--over", "dangling=teleport,leak"))
+    harmless(run("sweep", nasty, "--over", "teleport=a\u202eb,[bold]x[/bold]"))
+
+
+@pytest.mark.parametrize(
+    ("words", "told"),
+    [
+        ([], "'--over'"),
+        (["--over", "damping"], "it takes NAME="),
+        (["--over", "damping=0.5:1.5:3"], "--damping is 1.5"),
+        (["--over", "alpha=0.1:0.2:3"], "no setting alpha to sweep"),
+        (["--over", "damping=0.5:0.9:3", "--damping", "0.7"], "give it only there"),
+        (["--over", "weight-as=asis,cube"], "not cube"),
+        (["--over", "damping=0.5:0.9:3", "--interval", "-1"], "a number above 0"),
+    ],
+)
+def test_sweep_refuses_in_a_sentence(words: list[str], told: str) -> None:
+    done = run("sweep", HARBOUR, *words)
+    assert done.exit_code == 2
+    assert told in done.stderr or told in str(done.exception)
