@@ -41,6 +41,16 @@ def test_the_proof_is_kept_where_space_is_short(graph, sitting):
     assert "weight calls" in line
 
 
+def test_what_was_not_solved_just_now_says_so(graph, sitting):
+    kept = dataclasses.replace(sitting.result, solved_on="2031-04-05T06:07:08Z")
+    for width, said in ((80, "from the store; order"), (120, "solved on 2031-04-05; order")):
+        line = words(detail.terms_line(graph, kept, width))
+        assert cell_len(line) == width
+        assert said in line
+        assert line.endswith("order proven to 6 of 6")
+    assert cell_len(words(detail.terms_line(graph, kept, 40))) == 40
+
+
 def test_a_graph_without_weights_says_so(graph, sitting):
     bare = dataclasses.replace(graph, origin=dataclasses.replace(graph.origin, weight=None))
     assert "no weights" in words(detail.terms_line(bare, sitting.result, 120))

@@ -48,6 +48,9 @@ def terms_line(graph: Graph, result: Result, width: int) -> list[Piece]:
     proof = f"order proven to {result.proven_order:,} of {graph.n:,}"
     if not result.stop.accurate:
         proof = f"{result.stop}, bound {small(result.bound.value)}, {proof}"
+    if result.solved_on is not None and width >= 60:
+        since = f", solved on {result.solved_on[:10]}" if width >= 100 else ""
+        proof = f"from the store{since}; {proof}"
     room = max(width - len(result.measure) - cell_len(proof) - 3, 0)
     origin = graph.origin
     weighted = origin.weight is not None and origin.weight_as != "none"
