@@ -1,27 +1,31 @@
 """Numbered rows -> compressed adjacency: merge parallel edges by policy, then both directions.
 
 Rows are sorted by target and then by source, both times by a stable counting sort, so parallel
-edges meet in the order of their rows and sums depend on nothing else.  Every sort first deals
-the rows out to buckets of neighbouring keys and then settles each bucket within the cache; spans
-and buckets are independent of each other, so that threads change the speed and never a bit.
-Arrays are let go of as soon as the next one is filled.
+edges meet in the order of their rows and sums depend on nothing else.
 """
 
 from __future__ import annotations
 
 from dataclasses import dataclass
-from itertools import pairwise
-from typing import Any
 
 import numpy as np
 import pyarrow as pa
 from numpy.typing import NDArray
 
 from kingpost.core.errors import RowsError
-from kingpost.core.graph import Adjacency, Floats, Offsets
+from kingpost.core.graph import Adjacency, Floats
 from kingpost.core.ingest.dictionaries import Codes
 from kingpost.core.ingest.options import LoadOptions
-from kingpost.core.ingest.spread import Span, each, spans
+from kingpost.core.ingest.sorting import (
+    Rows,
+    Spare,
+    dealt,
+    dealt_rows,
+    node_spans,
+    settled,
+    trimmed,
+)
+from kingpost.core.ingest.spread import each, spans
 from kingpost.core.text import id_text, visible
 from kingpost.core.watch import Watch
 
@@ -44,7 +48,7 @@ class Assembled:
 
 @dataclass
 class Ends:
-    """The numbered rows; handed over whole, so that whoever takes them can let them go."""
+    """The numbered rows; handed over whole: whoever takes them writes over their memory."""
 
     source: Codes
     target: Codes
@@ -58,30 +62,6 @@ class Ends:
         """Let go of the arrays."""
         self.source = self.target = np.empty(0, dtype=np.uint32)
         self.weights = _NONE
-
-
-@dataclass
-class Rows:
-    """An adjacency under way; ``weights`` is empty where every entry counts 1."""
-
-    offsets: Offsets
-    near: Codes
-    weights: Floats
-
-    def frozen(self) -> Adjacency:
-        """The finished adjacency."""
-        return Adjacency(self.offsets, self.near, self.weights if len(self.weights) else None)
-
-
-@dataclass
-class Buckets:
-    """Rows dealt out by key: bucket b is ``starts[b]`` to ``starts[b + 1]``."""
-
-    starts: Offsets
-    shift: int
-    keys: Codes
-    others: Codes
-    weights: Floats
 
 
 def assemble(ends: Ends, labels: pa.Array, options: LoadOptions, watch: Watch) -> Assembled:
@@ -115,125 +95,84 @@ def assemble(ends: Ends, labels: pa.Array, options: LoadOptions, watch: Watch) -
             "ordering ends",
         )
     rows = len(ends.source)
-    rough = _by_source(ends, n, watch)
+    spare = Spare(rows)
+    rough = _by_source(ends, n, spare, watch)
+    if options.directed and not len(rough.weights) and options.weight_as in ("asis", "none"):
+        # Every row counts 1: folding both directions is less work than turning the counts round.
+        turned = _turned(rough, spare, watch)
+        whole = spare.whole
+        del spare
+        rough = _folded(rough, options, whole, watch)
+        turned = _folded(turned, options, _NONE, watch)
+        merged = rows - len(rough.near)
+        return Assembled(rough.frozen(), turned.frozen(), loops, dropped, merged, 0)
     folded, zero = _merged(rough, labels, options, watch)
     merged = rows - len(folded.near) - zero
     if options.directed:
-        inward = _turned(folded, watch).frozen()
+        inward = _turned(folded, spare, watch).frozen()
         outward = folded.frozen()
     else:
         outward = inward = _mirrored(folded, watch).frozen()
     return Assembled(outward, inward, loops, dropped, merged, zero)
 
 
-def _by_source(ends: Ends, n: int, watch: Watch) -> Rows:
+def _by_source(ends: Ends, n: int, spare: Spare, watch: Watch) -> Rows:
     """Rows by source, then target, then as they came; parallel edges side by side."""
     from kingpost.core.kernels import build
 
-    buckets = _dealt(
+    buckets = dealt(
         n,
         spans(len(ends.source)),
         ends.target,
         ends.weights,
         lambda a, b, *into: build.to_buckets(ends.target, ends.source, ends.weights, a, b, *into),
+        spare,
         watch,
         "sorting edges by target",
     )
+    spare.give(ends.source, ends.target, ends.weights)
     ends.clear()
-    by_target = _settled(buckets, n, watch, "sorting edges by target")
-    del buckets
-    again = _dealt_rows(by_target, watch, "sorting edges by source")
+    by_target = settled(buckets, n, spare, watch, "sorting edges by target")
+    again = dealt_rows(by_target, spare, watch, "sorting edges by source")
+    spare.give(by_target.near, by_target.weights)
     del by_target
-    return _settled(again, n, watch, "sorting edges by source")
+    return settled(again, n, spare, watch, "sorting edges by source")
 
 
-def _dealt_rows(rows: Rows, watch: Watch, stage: str) -> Buckets:
-    """Deal an adjacency out by neighbour, in order of the nodes."""
+def _folded(rows: Rows, options: LoadOptions, room: Floats, watch: Watch) -> Rows:
+    """Each neighbour once, weighing as many as there were where the policy says so.
+
+    In place; the weights go to ``room`` if it is long enough.
+    """
     from kingpost.core.kernels import build
 
-    return _dealt(
-        len(rows.offsets) - 1,
-        node_spans(rows.offsets),
-        rows.near,
-        rows.weights,
-        lambda a, b, *into: build.rows_to_buckets(
-            rows.offsets, rows.near, rows.weights, a, b, *into
-        ),
-        watch,
-        stage,
-        rows.offsets,
-    )
-
-
-def _dealt(
-    n: int,
-    pieces: list[Span],
-    keys: Codes,
-    weights: Floats,
-    deal: Any,
-    watch: Watch,
-    stage: str,
-    offsets: Offsets | None = None,
-) -> Buckets:
-    """Stable: within a bucket come the pieces in order, and within a piece its rows."""
-    from kingpost.core.kernels import build
-
-    bits = max(n - 1, 0).bit_length()
-    # Few enough buckets to write to side by side, few enough keys in each to sort in cache.
-    shift = max(bits - 10, min(12, max(0, bits - 6)))
-    counts = np.zeros((len(pieces), (max(n - 1, 0) >> shift) + 1), dtype=np.int64)
-    number = {piece: at for at, piece in enumerate(pieces)}
-
-    def count(a: int, b: int) -> None:
-        first, last = (a, b) if offsets is None else (int(offsets[a]), int(offsets[b]))
-        build.count_buckets(keys, first, last, shift, counts[number[a, b]])
-
-    each(pieces, count, watch, stage)
-    starts = np.zeros(counts.shape[1] + 1, dtype=np.int64)
-    np.cumsum(counts.sum(axis=0), out=starts[1:])
-    place = starts[:-1] + np.cumsum(counts, axis=0) - counts
-    out = Buckets(
-        starts,
-        shift,
-        np.empty(len(keys), dtype=np.uint32),
-        np.empty(len(keys), dtype=np.uint32),
-        np.empty(len(weights)),
-    )
+    stage, pieces = "merging parallel edges", node_spans(rows.offsets)
+    offsets = np.zeros_like(rows.offsets)
     each(
         pieces,
-        lambda a, b: deal(a, b, shift, place[number[a, b]], out.keys, out.others, out.weights),
+        lambda a, b: build.count_distinct(rows.offsets, rows.near, a, b, offsets[1:]),
         watch,
         stage,
     )
-    return out
-
-
-def _settled(buckets: Buckets, n: int, watch: Watch, stage: str) -> Rows:
-    from kingpost.core.kernels import build
-
-    m = len(buckets.keys)
-    rows = Rows(
-        np.zeros(n + 1, dtype=np.int64),
-        np.empty(m, dtype=np.uint32),
-        np.empty(len(buckets.weights)),
+    np.cumsum(offsets, out=offsets)
+    size = int(offsets[-1])
+    if size == len(rows.near):
+        return rows
+    counts = _NONE
+    if options.parallel in ("sum", "count"):
+        counts = room[:size] if len(room) >= size else np.empty(size)
+    each(
+        pieces,
+        lambda a, b: build.fold(rows.offsets, rows.near, a, b, offsets, counts),
+        watch,
+        stage,
     )
-
-    def settle(bucket: int, _: int) -> None:
-        build.settle(
-            buckets.keys,
-            buckets.others,
-            buckets.weights,
-            buckets.starts,
-            bucket,
-            buckets.shift,
-            rows.offsets,
-            rows.near,
-            rows.weights,
-        )
-
-    each([(b, b + 1) for b in range(len(buckets.starts) - 1)], settle, watch, stage)
-    rows.offsets[-1] = m
-    return rows
+    for a, b in pieces:
+        watch.check()
+        start, to = int(rows.offsets[a]), int(offsets[a])
+        if to < start:
+            build.move_left(rows.near, start, int(offsets[b]) - to, to)
+    return Rows(offsets, trimmed(rows.near, size), trimmed(counts, size))
 
 
 def _merged(rows: Rows, labels: pa.Array, options: LoadOptions, watch: Watch) -> tuple[Rows, int]:
@@ -292,9 +231,9 @@ def _merged(rows: Rows, labels: pa.Array, options: LoadOptions, watch: Watch) ->
     weights = _NONE
     if states[:, 5].any() and len(heavy):
         rows.weights = _NONE
-        weights = _trimmed(heavy, to)
+        weights = trimmed(heavy, to)
     np.cumsum(lengths, out=lengths)
-    return Rows(lengths, _trimmed(rows.near, to), weights), int(states[:, 1].sum())
+    return Rows(lengths, trimmed(rows.near, to), weights), int(states[:, 1].sum())
 
 
 def _overflow(states: NDArray[np.int64], labels: pa.Array, options: LoadOptions) -> str:
@@ -311,16 +250,13 @@ def _overflow(states: NDArray[np.int64], labels: pa.Array, options: LoadOptions)
     )
 
 
-def _trimmed(array: Any, size: int) -> Any:
-    """Shorten an array whose memory nobody else looks at, in place where the allocator can."""
-    if len(array) > size:
-        array.resize(size, refcheck=False)
-    return array
-
-
-def _turned(rows: Rows, watch: Watch) -> Rows:
-    buckets = _dealt_rows(rows, watch, "turning edges round")
-    return _settled(buckets, len(rows.offsets) - 1, watch, "turning edges round")
+def _turned(rows: Rows, spare: Spare, watch: Watch) -> Rows:
+    buckets = dealt_rows(rows, spare, watch, "turning edges round")
+    turned = settled(buckets, len(rows.offsets) - 1, spare, watch, "turning edges round")
+    m = len(rows.near)
+    if m < spare.size:
+        turned = Rows(turned.offsets, trimmed(turned.near, m), trimmed(turned.weights, m))
+    return turned
 
 
 def _mirrored(upper: Rows, watch: Watch) -> Rows:
@@ -343,10 +279,3 @@ def _mirrored(upper: Rows, watch: Watch) -> Rows:
         watch.report("mirroring edges", int(upper.offsets[a]), len(upper.near), "edges")
         build.mirror(upper.offsets, upper.near, weights, a, b, place, near, heavy)
     return Rows(offsets, near, heavy)
-
-
-def node_spans(offsets: Offsets) -> list[Span]:
-    """Ranges of nodes that hold some two million entries each; at least one."""
-    cuts = [int(np.searchsorted(offsets[1:], b)) for _, b in spans(int(offsets[-1]))[:-1]]
-    edges = sorted({0, *cuts, len(offsets) - 1})
-    return list(pairwise(edges)) or [(0, 0)]

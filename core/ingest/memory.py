@@ -208,7 +208,8 @@ def _graph(
             )
     rows = len(source)
     labels = ids.take(pa.array(order))
-    numbered = Ends(place[source], place[target], weights)
+    own = None if weights is None else weights.copy()  # its memory is written over
+    numbered = Ends(place[source], place[target], own)
     built = assemble(numbered, labels, LoadOptions(directed=directed), watch or Watch())
     account = Account(
         rows_read=rows,

@@ -8,6 +8,7 @@ through Arrow's dictionary encoding.  In the end only the distinct ids are sorte
 
 from __future__ import annotations
 
+from itertools import pairwise
 from typing import Any
 
 import numpy as np
@@ -24,7 +25,7 @@ from kingpost.core.ingest.dictionaries import (
     WholeDictionary,
 )
 from kingpost.core.ingest.idtypes import from_integers, integer_type, to_integers
-from kingpost.core.ingest.spread import each, spans
+from kingpost.core.ingest.spread import PIECE, Span, each, spans
 from kingpost.core.watch import Watch
 
 _SMALL_RANGE = 1 << 16
@@ -45,7 +46,7 @@ def number_ids(sides: Sides, kind: pa.DataType, watch: Watch) -> tuple[pa.Array,
     if whole is not None:
         for side in sides:
             side[:] = [to_integers(chunk, whole) for chunk in side]
-        low, high = _range(sides)
+        low, high = _range(sides, watch)
         if high - low < max(_SMALL_RANGE, 2 * sum(map(len, sides[0]))):
             labels, source, target = _direct(sides, low, high, whole, watch)
         else:
@@ -59,9 +60,26 @@ def number_ids(sides: Sides, kind: pa.DataType, watch: Watch) -> tuple[pa.Array,
     return labels, source, target
 
 
-def _range(sides: Sides) -> tuple[int, int]:
-    ends = [pc.min_max(chunk) for side in sides for chunk in side]
-    return min(end["min"].as_py() for end in ends), max(end["max"].as_py() for end in ends)
+def _range(sides: Sides, watch: Watch) -> tuple[int, int]:
+    chunks = [*sides[0], *sides[1]]
+
+    def ends(a: int, b: int) -> tuple[int, int]:
+        found = [pc.min_max(chunk) for chunk in chunks[a:b]]
+        return min(end["min"].as_py() for end in found), max(end["max"].as_py() for end in found)
+
+    found = each(_gathered(chunks), ends, watch, _STAGE)
+    return min(low for low, _ in found), max(high for _, high in found)
+
+
+def _gathered(chunks: list[Any]) -> list[Span]:
+    """Ranges of chunks that hold about a piece of work each."""
+    cuts, rows = [0], 0
+    for at, chunk in enumerate(chunks, 1):
+        rows += len(chunk)
+        if rows >= PIECE // 2 or at == len(chunks):
+            cuts.append(at)
+            rows = 0
+    return list(pairwise(cuts))
 
 
 def _direct(
@@ -75,10 +93,11 @@ def _direct(
     half = len(sides[0])
     for side in sides:
         side.clear()
-    pieces = [(at, at + 1) for at in range(len(chunks))]
+    pieces = _gathered([values for values, _ in chunks])
 
-    def mark(at: int, _: int) -> None:
-        ids.mark(chunks[at][0], base, 0, len(chunks[at][0]), present)
+    def mark(a: int, b: int) -> None:
+        for values, _ in chunks[a:b]:
+            ids.mark(values, base, 0, len(values), present)
 
     each(pieces, mark, watch, _STAGE)
     check_size(int(np.count_nonzero(present)))
@@ -89,9 +108,10 @@ def _direct(
     rows = sum(len(values) for values, _ in chunks[:half])
     codes = [np.empty(rows, dtype=np.uint32) for _ in range(2)]
 
-    def look_up(at: int, _: int) -> None:
-        values, start = chunks[at]
-        ids.look_up(values, base, 0, len(values), ranks, codes[at >= half], start)
+    def look_up(a: int, b: int) -> None:
+        for at in range(a, b):
+            values, start = chunks[at]
+            ids.look_up(values, base, 0, len(values), ranks, codes[at >= half], start)
 
     each(pieces, look_up, watch, _STAGE)
     return labels, codes[0], codes[1]

@@ -1,7 +1,8 @@
 """Loops that turn numbered edge rows into compressed adjacency: counting sorts, stable throughout.
 
 Every loop works on a range of rows or nodes, so that the caller can look up between calls
-whether it should go on.  Codes are uint32, positions int64.
+whether it should go on.  Codes are uint32, positions int64.  Indices are unsigned inside the
+loops: a signed one costs a test for a wrap-around every time.
 """
 
 from __future__ import annotations
@@ -15,12 +16,13 @@ from kingpost.core.kernels._compile import kernel
 
 SUM, MEAN, MIN, MAX, FIRST, COUNT = range(6)
 ASIS, LOG1P, INVERSE = range(3)
+_ONE = np.uint64(1)
 
 
 @kernel()
 def order_ends(source: Any, target: Any, first: int, last: int) -> None:
     """Let the smaller end come first: an undirected edge has one form."""
-    for i in range(first, last):
+    for i in range(np.uint64(first), np.uint64(last)):
         if source[i] > target[i]:
             source[i], target[i] = target[i], source[i]
 
@@ -28,23 +30,23 @@ def order_ends(source: Any, target: Any, first: int, last: int) -> None:
 @kernel()
 def drop_loops(source: Any, target: Any, weights: Any) -> int:
     """Close the gaps that self-loops leave; returns the number of rows that stay."""
-    kept = 0
+    kept = np.uint64(0)
     weighted = len(weights) > 0
-    for i in range(len(source)):
+    for i in range(np.uint64(len(source))):
         if source[i] != target[i]:
             source[kept] = source[i]
             target[kept] = target[i]
             if weighted:
                 weights[kept] = weights[i]
-            kept += 1
-    return kept
+            kept += _ONE
+    return np.int64(kept)
 
 
 @kernel()
 def count_loops(source: Any, target: Any, first: int, last: int) -> int:
     """Rows that lead from a node to itself."""
     found = 0
-    for i in range(first, last):
+    for i in range(np.uint64(first), np.uint64(last)):
         found += source[i] == target[i]
     return found
 
@@ -52,8 +54,9 @@ def count_loops(source: Any, target: Any, first: int, last: int) -> int:
 @kernel()
 def count_buckets(keys: Any, first: int, last: int, shift: int, counts: Any) -> None:
     """``counts[b] += 1`` for every key of bucket b, which holds the keys k with k >> shift = b."""
-    for i in range(first, last):
-        counts[keys[i] >> shift] += 1
+    down = np.uint64(shift)
+    for i in range(np.uint64(first), np.uint64(last)):
+        counts[np.uint64(keys[i]) >> down] += 1
 
 
 @kernel()
@@ -71,11 +74,12 @@ def to_buckets(
 ) -> None:
     """Move rows to the next free place of their bucket; ``place`` holds the next places."""
     weighted = len(weights) > 0
-    for i in range(first, last):
-        key = keys[i]
-        bucket = key >> shift
+    down = np.uint64(shift)
+    for i in range(np.uint64(first), np.uint64(last)):
+        key = np.uint64(keys[i])
+        bucket = key >> down
         at = np.uint64(place[bucket])
-        place[bucket] += 1
+        place[bucket] = at + _ONE
         out_keys[at] = key
         out_others[at] = others[i]
         if weighted:
@@ -97,16 +101,17 @@ def rows_to_buckets(
 ) -> None:
     """Like :func:`to_buckets` for an adjacency: the key is the neighbour, the other the node."""
     weighted = len(weights) > 0
-    for node in range(first, last):
-        for k in range(offsets[node], offsets[node + 1]):
-            key = near[np.uint64(k)]
-            bucket = key >> shift
+    down = np.uint64(shift)
+    for node in range(np.uint64(first), np.uint64(last)):
+        for k in range(np.uint64(offsets[node]), np.uint64(offsets[node + _ONE])):
+            key = np.uint64(near[k])
+            bucket = key >> down
             at = np.uint64(place[bucket])
-            place[bucket] += 1
+            place[bucket] = at + _ONE
             out_keys[at] = key
             out_others[at] = node
             if weighted:
-                out_weights[at] = weights[np.uint64(k)]
+                out_weights[at] = weights[k]
 
 
 @kernel()
@@ -129,19 +134,20 @@ def settle(
     n = len(offsets) - 1
     low = bucket << shift
     high = min(low + (1 << shift), n)
-    begin, end = starts[bucket], starts[bucket + 1]
-    place = np.zeros(high - low + 1, dtype=np.int64)
+    begin, end = np.uint64(starts[bucket]), np.uint64(starts[bucket + 1])
+    base = np.uint64(low)
+    place = np.zeros(high - low + 1, dtype=np.uint64)
     for i in range(begin, end):
-        place[keys[i] - low + 1] += 1
+        place[np.uint64(keys[i]) - base + _ONE] += _ONE
     place[0] = begin
     for key in range(high - low):
         place[key + 1] += place[key]
         offsets[low + key] = place[key]
     weighted = len(weights) > 0
     for i in range(begin, end):
-        key = keys[i] - low
-        at = np.uint64(place[key])
-        place[key] += 1
+        key = np.uint64(keys[i]) - base
+        at = place[key]
+        place[key] = at + _ONE
         near[at] = others[i]
         if weighted:
             heavy[at] = weights[i]
@@ -157,17 +163,17 @@ def mirror(
     row ends up ascending.
     """
     weighted = len(weights) > 0
-    for node in range(first, last):
-        for k in range(offsets[node], offsets[node + 1]):
-            to = near[k]
-            at = place[node]
-            place[node] = at + 1
+    for node in range(np.uint64(first), np.uint64(last)):
+        for k in range(np.uint64(offsets[node]), np.uint64(offsets[node + _ONE])):
+            to = np.uint64(near[k])
+            at = np.uint64(place[node])
+            place[node] = at + _ONE
             out[at] = to
             if weighted:
                 heavy[at] = weights[k]
             if to != node:
-                at = place[to]
-                place[to] = at + 1
+                at = np.uint64(place[to])
+                place[to] = at + _ONE
                 out[at] = node
                 if weighted:
                     heavy[at] = weights[k]
@@ -176,21 +182,59 @@ def mirror(
 @kernel()
 def mirror_counts(offsets: Any, near: Any, first: int, last: int, counts: Any) -> None:
     """Row lengths of the symmetric adjacency that :func:`mirror` fills."""
-    for node in range(first, last):
-        for k in range(offsets[node], offsets[node + 1]):
+    for node in range(np.uint64(first), np.uint64(last)):
+        for k in range(np.uint64(offsets[node]), np.uint64(offsets[node + _ONE])):
+            to = np.uint64(near[k])
             counts[node] += 1
-            if near[k] != node:
-                counts[near[k]] += 1
+            if to != node:
+                counts[to] += 1
 
 
 @kernel()
 def count_repeats(offsets: Any, near: Any, first: int, last: int) -> int:
     """Entries that repeat their left neighbour in an ascending row."""
     found = 0
-    for node in range(first, last):
-        for k in range(offsets[node] + 1, offsets[node + 1]):
-            found += near[k] == near[k - 1]
+    for node in range(np.uint64(first), np.uint64(last)):
+        for k in range(np.uint64(offsets[node]) + _ONE, np.uint64(offsets[node + _ONE])):
+            found += near[k] == near[k - _ONE]
     return found
+
+
+@kernel()
+def count_distinct(offsets: Any, near: Any, first: int, last: int, lengths: Any) -> None:
+    """``lengths[node]`` = different neighbours of each of the ascending rows."""
+    for node in range(np.uint64(first), np.uint64(last)):
+        start, end = np.uint64(offsets[node]), np.uint64(offsets[node + _ONE])
+        found = np.int64(end > start)
+        for k in range(start + _ONE, end):
+            found += near[k] != near[k - _ONE]
+        lengths[node] = found
+
+
+@kernel()
+def fold(offsets: Any, near: Any, first: int, last: int, into_offsets: Any, rows: Any) -> None:
+    """Leave every neighbour of rows ``first`` to ``last`` once, at the beginning of the range.
+
+    ``rows``, if not empty, gets how many there were of each, at the places of ``into_offsets``,
+    which have been counted.
+    """
+    write = np.uint64(offsets[first])
+    place = np.uint64(into_offsets[first])
+    counted = len(rows) > 0
+    k = write
+    for node in range(np.uint64(first), np.uint64(last)):
+        end = np.uint64(offsets[node + _ONE])
+        while k < end:
+            to = near[k]
+            begin = k
+            k += _ONE
+            while k < end and near[k] == to:
+                k += _ONE
+            near[write] = to
+            write += _ONE
+            if counted:
+                rows[place] = k - begin
+                place += _ONE
 
 
 @kernel()
@@ -214,17 +258,17 @@ def merge(
     edges of weight zero, entries whose weight is no finite number, row and neighbour of the
     first such entry, entries that weigh other than 1].
     """
-    write = offsets[first]
+    write = begin = np.uint64(offsets[first])
     weighted = len(weights) > 0
     kept = len(heavy) > 0
-    for node in range(first, last):
+    for node in range(np.uint64(first), np.uint64(last)):
         row = write
-        k, end = offsets[node], offsets[node + 1]
+        k, end = np.uint64(offsets[node]), np.uint64(offsets[node + _ONE])
         while k < end:
             to = near[k]
             value = weights[k] if weighted else 1.0
             rows = 1
-            k += 1
+            k += _ONE
             while k < end and near[k] == to:
                 more = weights[k] if weighted else 1.0
                 if policy <= MEAN:  # or SUM
@@ -234,7 +278,7 @@ def merge(
                 elif policy == MAX:
                     value = max(value, more)
                 rows += 1
-                k += 1
+                k += _ONE
             if policy == MEAN:
                 value /= rows
             elif policy == COUNT:
@@ -257,13 +301,14 @@ def merge(
             near[write] = to
             if kept:
                 heavy[write] = value
-            write += 1
+            write += _ONE
         lengths[node] = write - row
-    state[0] = write - offsets[first]
+    state[0] = write - begin
 
 
 @kernel()
 def move_left(values: Any, start: int, size: int, to: int) -> None:
     """``values[to : to + size] = values[start : start + size]`` where ``to <= start``."""
-    for i in range(size):
-        values[to + i] = values[start + i]
+    come, go = np.uint64(start), np.uint64(to)
+    for i in range(np.uint64(size)):
+        values[go + i] = values[come + i]

@@ -25,7 +25,7 @@ _EIGHT = np.uint64(8)
 @kernel()
 def mark(values: Any, low: Any, first: int, last: int, present: Any) -> None:
     """Set ``present[v - low]`` to 1 for every value; wraps correctly for any integer width."""
-    for i in range(first, last):
+    for i in range(np.uint64(first), np.uint64(last)):
         present[np.uint64(values[i]) - low] = 1
 
 
@@ -33,7 +33,7 @@ def mark(values: Any, low: Any, first: int, last: int, present: Any) -> None:
 def number(present: Any, ranks: Any) -> int:
     """Ranks of the marked slots in ascending order; returns how many there are."""
     found = 0
-    for i in range(len(present)):
+    for i in range(np.uint64(len(present))):
         ranks[i] = found
         found += present[i]
     return found
@@ -42,15 +42,17 @@ def number(present: Any, ranks: Any) -> int:
 @kernel()
 def look_up(values: Any, low: Any, first: int, last: int, ranks: Any, codes: Any, at: int) -> None:
     """``codes[at + i] = ranks[values[i] - low]``."""
-    for i in range(first, last):
-        codes[at + i] = ranks[np.uint64(values[i]) - low]
+    start = np.uint64(at)
+    for i in range(np.uint64(first), np.uint64(last)):
+        codes[start + i] = ranks[np.uint64(values[i]) - low]
 
 
 @kernel()
 def renumber(indices: Any, ranks: Any, first: int, last: int, codes: Any, at: int) -> None:
     """``codes[at + i] = ranks[indices[i]]``; codes may be the indices."""
-    for i in range(first, last):
-        codes[at + i] = ranks[np.uint64(indices[i])]
+    start = np.uint64(at)
+    for i in range(np.uint64(first), np.uint64(last)):
+        codes[start + i] = ranks[np.uint64(indices[i])]
 
 
 @kernel()
