@@ -39,7 +39,7 @@ def drop_loops(source: Any, target: Any, weights: Any) -> int:
             if weighted:
                 weights[kept] = weights[i]
             kept += _ONE
-    return np.int64(kept)
+    return np.int64(kept)  # type: ignore[return-value]
 
 
 @kernel()
@@ -140,9 +140,9 @@ def settle(
     for i in range(begin, end):
         place[np.uint64(keys[i]) - base + _ONE] += _ONE
     place[0] = begin
-    for key in range(high - low):
-        place[key + 1] += place[key]
-        offsets[low + key] = place[key]
+    for slot in range(high - low):
+        place[slot + 1] += place[slot]
+        offsets[low + slot] = place[slot]
     weighted = len(weights) > 0
     for i in range(begin, end):
         key = np.uint64(keys[i]) - base
@@ -205,7 +205,7 @@ def count_distinct(offsets: Any, near: Any, first: int, last: int, lengths: Any)
     """``lengths[node]`` = different neighbours of each of the ascending rows."""
     for node in range(np.uint64(first), np.uint64(last)):
         start, end = np.uint64(offsets[node]), np.uint64(offsets[node + _ONE])
-        found = np.int64(end > start)
+        found = 1 if end > start else 0
         for k in range(start + _ONE, end):
             found += near[k] != near[k - _ONE]
         lengths[node] = found
@@ -221,7 +221,7 @@ def fold(offsets: Any, near: Any, first: int, last: int, into_offsets: Any, rows
     write = np.uint64(offsets[first])
     place = np.uint64(into_offsets[first])
     counted = len(rows) > 0
-    k = write
+    k: Any = write
     for node in range(np.uint64(first), np.uint64(last)):
         end = np.uint64(offsets[node + _ONE])
         while k < end:
