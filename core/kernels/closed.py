@@ -82,3 +82,15 @@ def inner(one_block, live_one, other, live_other, low, high, sums):  # type: ign
                     sums[1, k] += (part[k] - grown) + total
                 sums[0, k] = grown
                 part[k] = 0.0
+
+
+@kernel()
+def weigh(left, live_left, right, live_right, w, low, high, tops, sums):  # type: ignore[no-untyped-def]
+    """Raise ``tops`` to the columns' ``max right / w``; add their ``left . w`` to ``sums``."""
+    for i in range(np.uint64(low), np.uint64(high)):
+        if live_right[i]:
+            for k in range(WIDE):
+                tops[k] = max(tops[k], right[i, k] / w[i])
+        if live_left[i]:
+            for k in range(WIDE):
+                sums[k] += left[i, k] * w[i]

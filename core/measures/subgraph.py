@@ -7,8 +7,9 @@ direction of edges matters, the flow of score does not: a closed walk backwards 
 
 Closed walks stay inside a strong component, so a node on no cycle has exactly 1, and components
 are worked on apart.  For each node the walks are counted with a proven remainder
-(:mod:`kingpost.core.solvers.closed`).  Nodes with the same neighbours (twins) have the same score
-and are worked on once.
+(:mod:`kingpost.core.solvers.closed`); on undirected graphs quadrature rules do the same by another
+way (:mod:`kingpost.core.solvers.quadrature`).  Nodes with the same neighbours (twins) have the
+same score and are worked on once.
 
 Reference: Estrada and Rodriguez-Velazquez, "Subgraph centrality in complex networks", Phys. Rev. E
 71, 056103, 2005.
@@ -16,7 +17,7 @@ Reference: Estrada and Rodriguez-Velazquez, "Subgraph centrality in complex netw
 
 from __future__ import annotations
 
-from collections.abc import Generator, Iterator
+from collections.abc import Generator
 from dataclasses import dataclass
 from typing import Any
 
@@ -37,8 +38,11 @@ from kingpost.core.measures.communicability import (
 from kingpost.core.result import Bound, BoundKind, Iteration, Result, Stop
 from kingpost.core.solvers.closed import Sides, closed_walks, norm_bound, products_needed
 from kingpost.core.solvers.ledger import Ledger
+from kingpost.core.solvers.quadrature import between
+from kingpost.core.structure import row_pieces
 from kingpost.core.watch import Watch
 
+_PIECE = 1_000_000  # edges between two looks whether the work was cancelled
 _TOGETHER = 4_096  # nodes of small components that are worked on as one graph
 _MOST_EXPONENT = 709.0  # e to this is the last number double precision holds
 
@@ -47,6 +51,12 @@ _MOST_EXPONENT = 709.0  # e to this is the last number double precision holds
 class SubgraphSettings(CommunicabilitySettings):
     """Settings of subgraph centrality; ``flow`` and ``stop`` have no bearing on it."""
 
+    method: str = option(
+        "walks",
+        "walks (closed walks counted to a proven remainder) or quadrature (Gauss and Gauss-Radau "
+        "rules by Lanczos, undirected graphs only: slower, and independent of the other)",
+        choices=("walks", "quadrature"),
+    )
     budget: float = option(
         2e10, "edge visits up to which walks are counted, 16 nodes at a time each", low=0.0
     )
@@ -54,17 +64,24 @@ class SubgraphSettings(CommunicabilitySettings):
 
 @dataclass
 class _Group:
-    """Components worked on together: their nodes, the matrix inside them, one of each twins."""
+    """Components worked on together: their numbers, and how many nodes have to be counted."""
 
-    nodes: NDArray[np.int64]
-    sides: Sides
-    asked: NDArray[np.int64]  # positions in nodes
+    components: NDArray[np.int64]
+    asked: int
+    edges: int
 
 
 def solve(graph: Graph, settings: SubgraphSettings, watch: Watch) -> Solve:
     """Subgraph centrality, shape (n,), each score at least 1."""
     if graph.n == 0:
         return empty("subgraph", graph, settings)
+    if settings.method == "quadrature" and graph.directed:
+        return refused(
+            "subgraph", graph, settings,
+            "quadrature rules enclose (e^A)_ii for symmetric A only, and this graph is directed",
+            "use --set method=walks, which bounds directed graphs too, or read every edge both "
+            "ways by --undirected", [],
+        )  # fmt: skip
     work = _Work(graph, settings, watch)
     factor = yield from find_factor(graph, settings, watch, work.ledger)
     if factor is None:
@@ -73,7 +90,7 @@ def solve(graph: Graph, settings: SubgraphSettings, watch: Watch) -> Solve:
         why = work.prepare(factor)
         if why is not None:
             return refused("subgraph", graph, settings, *why, work.ledger.log)
-        stop = yield from work.run()
+        stop = yield from work.run(factor)
     except Interrupted:
         stop = Stop.CANCELLED
     if work.overflow:
@@ -108,23 +125,25 @@ class _Work:
             self.clock.ready()
             return None
         whole = Sides(graph.inward, graph.outward, factor.value)
-        if factor.radius is not None and not graph.directed:
+        if factor.radius is not None:
             self.norm = factor.value * factor.radius.high * (1 + 4 * UNIT)
         else:
-            self.norm = norm_bound(whole, watch)
-        # Before anything is counted: no score is beyond e to the norm.
+            # Quadrature multiplies rounding by e to the norm: it needs a tight one.
+            self.norm = norm_bound(whole, watch, 400 if settings.method == "quadrature" else 40)
+        # Before anything is counted: no score is beyond e to the spectral radius, for a diagonal
+        # similarity by the Perron vector leaves the diagonal of the exponential as it is.
         if self.norm < _MOST_EXPONENT:
             self.error[on_cycle] = np.expm1(self.norm) * (1 + 1e-12)
         self.twin = _twins(graph, watch)
-        self.groups = list(self._gather(factor, on_cycle))
+        ones = self.twin == np.arange(graph.n)
+        self.groups = self._grouped(ones)
         self.clock.ready()
-        self.asked = sum(len(group.asked) for group in self.groups)
+        self.asked = sum(group.asked for group in self.groups)
         k = products_needed(self.norm, settings.tol)
-        sides = 1 if not graph.directed else 2
-        cost = sum(
-            k * sides * -(-len(group.asked) // 16) * len(group.sides.pull.neighbours)
-            for group in self.groups
-        )
+        sides = 2 if graph.directed else 1
+        if settings.method == "quadrature":
+            sides = 16  # a node at a time
+        cost = sum(k * sides * -(-group.asked // 16) * group.edges for group in self.groups)
         if cost > settings.budget:
             return (
                 f"closed walks through {self.asked:,} nodes on cycles take about {cost:.2g} edge "
@@ -134,55 +153,85 @@ class _Work:
             )
         return None
 
-    def _gather(self, factor: Factor, on_cycle: NDArray[np.bool_]) -> Iterator[_Group]:
+    def _grouped(self, ones: NDArray[np.bool_]) -> list[_Group]:
         """Components in condensation order, small ones together."""
-        assert self.twin is not None
         structure = self.graph.structure
         sizes = structure.sizes[structure.cyclic]
-        number = 0
+        asked = np.bincount(structure.component[ones], minlength=structure.count)[structure.cyclic]
+        groups, number = [], 0
         while number < len(sizes):
-            self.watch.check()
             # At least one, and as many as stay together below the mark.
             reach = np.cumsum(sizes[number : number + _TOGETHER])
-            taken = max(1, int(np.searchsorted(reach, _TOGETHER, side="right")))
-            parts = structure.cyclic[number : number + taken]
-            nodes = np.sort(np.concatenate([structure.members(int(p)) for p in parts]))
-            nodes = nodes.astype(np.int64)
-            number += taken
-            pull = self._inside(self.graph.inward, nodes)
-            push = pull if not self.graph.directed else self._inside(self.graph.outward, nodes)
-            asked = np.flatnonzero(self.twin[nodes] == nodes)
-            yield _Group(nodes, Sides(pull, push, factor.value), asked)
+            end = number + max(1, int(np.searchsorted(reach, _TOGETHER, side="right")))
+            part = slice(number, end)
+            edges = int(structure.inner[part].sum())
+            groups.append(_Group(structure.cyclic[part], int(asked[part].sum()), edges))
+            number = end
+        return groups
 
-    def _inside(self, rows: Adjacency, nodes: NDArray[np.int64]) -> Adjacency:
+    def _built(
+        self, group: _Group, factor: float
+    ) -> tuple[NDArray[np.int64], Sides, NDArray[np.int64]]:
+        """Nodes of a group, the matrix inside its components, and who has to be counted."""
+        assert self.twin is not None
+        graph, structure = self.graph, self.graph.structure
+        nodes = np.concatenate([structure.members(int(number)) for number in group.components])
+        nodes = np.sort(nodes).astype(np.int64)
+        if group.edges == graph.stored and len(nodes) == graph.n:
+            pull, push = graph.inward, graph.outward
+        else:
+            pull = self._inside(graph.inward, nodes, group.edges)
+            push = self._inside(graph.outward, nodes, group.edges) if graph.directed else pull
+        return nodes, Sides(pull, push, factor), np.flatnonzero(self.twin[nodes] == nodes)
+
+    def _inside(self, rows: Adjacency, nodes: NDArray[np.int64], edges: int) -> Adjacency:
         """The rows of ``nodes``, cut down to edges inside their components, numbered anew."""
         component = self.graph.structure.component
+        place = self.place
+        place[nodes] = np.arange(len(nodes), dtype=np.uint32)
         lengths = rows.offsets[nodes + 1] - rows.offsets[nodes]
-        ends = np.cumsum(lengths)
-        at = np.arange(int(ends[-1])) + np.repeat(rows.offsets[nodes] - ends + lengths, lengths)
-        self.watch.check()
-        taker = np.repeat(np.arange(len(nodes)), lengths)
-        giver = rows.neighbours[at]
-        kept = component[giver] == component[nodes[taker]]
-        self.watch.check()
-        place = np.searchsorted(nodes, giver[kept]).astype(np.uint32)
-        offsets = np.zeros(len(nodes) + 1, dtype=np.int64)
-        np.cumsum(np.bincount(taker[kept], minlength=len(nodes)), out=offsets[1:])
-        return Adjacency(offsets, place, None if rows.weights is None else rows.weights[at[kept]])
+        kept = np.zeros(len(nodes) + 1, dtype=np.int64)
+        near = np.empty(edges, dtype=np.uint32)
+        weights = None if rows.weights is None else np.empty(edges)
+        at = 0
+        reach = np.concatenate(([0], np.cumsum(lengths)))
+        for low, high in row_pieces(reach, _PIECE):
+            self.watch.check()
+            count = lengths[low:high]
+            edge = np.arange(int(count.sum())) + np.repeat(
+                rows.offsets[nodes[low:high]] - (reach[low:high] - reach[low]), count
+            )
+            taker = np.repeat(np.arange(low, high), count)
+            giver = rows.neighbours[edge]
+            inside = component[giver] == component[nodes[taker]]
+            end = at + int(np.count_nonzero(inside))
+            near[at:end] = place[giver[inside]]
+            if weights is not None and rows.weights is not None:
+                weights[at:end] = rows.weights[edge[inside]]
+            kept[low + 1 : high + 1] = np.bincount(taker[inside] - low, minlength=high - low)
+            at = end
+        return Adjacency(np.cumsum(kept), near, weights)
 
-    def run(self) -> Generator[Iteration, None, Stop]:
+    def run(self, factor: Factor) -> Generator[Iteration, None, Stop]:
         """Count, group after group."""
         settings = self.settings
+        self.place = np.zeros(self.graph.n, dtype=np.uint32)
         for group in self.groups:
-            found = yield from self.ledger.relay(
-                closed_walks(group.sides, group.asked, self.norm, settings.tol, self.watch)
-            )
+            nodes, sides, asked = self._built(group, factor.value)
+            if settings.method == "walks":
+                work = closed_walks(
+                    sides, asked, settings.tol, self.watch,
+                    None if self.graph.directed else self.norm,
+                )  # fmt: skip
+            else:
+                work = between(sides.pull, sides.factor, asked, self.norm, settings.tol, self.watch)
+            found = yield from self.ledger.relay(work)
             if found.overflow:
                 self.overflow = True
                 return Stop.STALLED
-            done = group.nodes[group.asked[: found.done]]
+            done = nodes[asked[: found.done]]
             self.x[done], self.error[done] = found.value[: found.done], found.error[: found.done]
-            if found.done < len(group.asked):
+            if found.done < len(asked):
                 return Stop.CANCELLED
         return Stop.CONVERGED if self._bound().value <= settings.tol else Stop.STALLED
 
@@ -226,6 +275,9 @@ class _Work:
                 if graph.directed
                 else "both ways: the graph is undirected",
                 exponential="diagonal of e^{c A}, the walk of no steps included",
+                method="closed walks with a proven remainder"
+                if settings.method == "walks"
+                else "Gauss and Gauss-Radau quadrature by Lanczos",
                 c=factor.words,
                 scores="not normalised; a node on no cycle has exactly 1",
             ),

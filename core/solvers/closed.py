@@ -8,6 +8,10 @@ with s no less than the 2-norm of B, hence with ``N = |l_K| |r_K| / (2K)!``
 
     sum over k > 2K + 1 of (B^k)_ii / k!  <=  N q p / (1 - p),  q = s/(2K+1), p = s/(2K+2) < 1.
 
+Where directions make the 2-norm far greater than the spectral radius, another end is nearer: for
+any w > 0 with ``B w <= t w``, ``l_K . B^m r_K <= max (r_K / w) (l_K . w) t^m``, and t can be had
+near the spectral radius.  The smaller of both is taken.
+
 Rounding: r_k is off by at most ``k (units + 4) u`` of itself in every component, an inner product
 by twice that and its own sum's, and all terms are added up; see :func:`closed_walks`.
 
@@ -77,6 +81,36 @@ def norm_bound(sides: Sides, watch: Watch, steps: int = 40) -> float:
     return math.sqrt(best) * (1 + 8 * UNIT)
 
 
+def weights_bound(sides: Sides, watch: Watch, steps: int = 60) -> tuple[Floats, float]:
+    """w > 0 and t with ``factor A w <= t w``, t near the spectral radius; w has shape (n,).
+
+    Raises:
+        Interrupted: if ``watch`` was cancelled.
+    """
+    n = len(sides.pull.offsets) - 1
+    pull = Pull(sides.pull, np.full(n, sides.factor))
+    slack = 1 + UNIT * (float(sides.pull.degrees.max(initial=0)) / 2 + 20)
+    w = kept = np.ones(n)
+    best = math.inf
+    for _ in range(steps):
+        with np.errstate(over="ignore", divide="ignore", invalid="ignore"):
+            z = pull.apply(w, watch)
+            high = float((z / w).max(initial=0.0)) * slack
+        if not math.isfinite(high):
+            break
+        if high < best:
+            settled = high > best * (1 - 1e-4)
+            best, kept = high, w
+            if settled:
+                break
+        # The shift keeps parts with smaller radii, and periodic ones, from dying out.
+        w = z + 0.3 * best * w
+        w = w / w.max()
+        if not (w > 1e-250).all():
+            break
+    return kept, best
+
+
 def products_needed(norm: float, tol: float) -> int:
     """Products on each side after which what is left out is surely below ``tol``.
 
@@ -110,10 +144,15 @@ class Closed:
 
 
 def closed_walks(
-    sides: Sides, nodes: NDArray[np.int64], norm: float, tol: float, watch: Watch
+    sides: Sides,
+    nodes: NDArray[np.int64],
+    tol: float,
+    watch: Watch,
+    norm: float | None = None,
 ) -> Generator[Iteration, None, Closed]:
     """The diagonal of ``e^(factor A)`` at ``nodes``, each to ``tol`` of itself if rounding allows.
 
+    ``norm`` is a bound of the 2-norm of ``factor A``, worked out where it is not known.
     Sums take the same order for any number of threads.  Cancelled, it returns what it has.
     """
     from kingpost.core.kernels.closed import WIDE
@@ -121,7 +160,15 @@ def closed_walks(
     began = time.perf_counter()
     found = Closed(np.ones(len(nodes)), np.full(len(nodes), np.inf))
     blocks = -(-len(nodes) // WIDE)
-    lanes = [_Lane(sides, norm, watch) for _ in range(max(1, min(LANES, blocks)))]
+    weights = None
+    try:
+        if norm is None:
+            norm = norm_bound(sides, watch)
+        if not sides.symmetric:
+            weights = weights_bound(sides, watch)
+    except Interrupted:
+        return found
+    lanes = [_Lane(sides, norm, weights, watch) for _ in range(max(1, min(LANES, blocks)))]
 
     def block(number: int) -> None:
         part = slice(number * WIDE, min((number + 1) * WIDE, len(nodes)))
@@ -149,14 +196,22 @@ def closed_walks(
     return found
 
 
+def _rest(top: float, k: int) -> float:
+    """``q p / (1 - p)``: what is left out after 2k + 1, relative to N; infinite if p >= 1."""
+    q, p = top / (2 * k + 1), top / (2 * k + 2)
+    return q * p / (1 - p) * (1 + 1e-9) if p < 1 else math.inf
+
+
 class _Lane:
     """Blocks of vectors, reused for one lot of nodes after the other."""
 
-    def __init__(self, sides: Sides, norm: float, watch: Watch) -> None:
+    def __init__(
+        self, sides: Sides, norm: float, weights: tuple[Floats, float] | None, watch: Watch
+    ) -> None:
         from kingpost.core.kernels.closed import WIDE
         from kingpost.core.kernels.series import ROW_UNITS
 
-        self.sides, self.norm, self.watch = sides, norm, watch
+        self.sides, self.norm, self.weights, self.watch = sides, norm, weights, watch
         n = len(sides.pull.offsets) - 1
         self.n, self.visits, self.most = n, 0, 0
         longest = max(sides.pull.degrees.max(initial=0), sides.push.degrees.max(initial=0))
@@ -193,9 +248,9 @@ class _Lane:
             # l_k . r_(k+1) is the term 2k + 1.
             odd = ratio * (k + 1) / (2 * k + 1)
             value += odd * self._dot(self.left, old, self.right, new)
-            q = self.norm / (2 * k + 1)
-            p = self.norm / (2 * k + 2)
-            tail = size * (q * p / (1 - p) * (1 + 1e-9)) if p < 1 else np.full(len(size), np.inf)
+            tail = size * _rest(self.norm, k)
+            if self.weights is not None:
+                tail = np.fmin(tail, ratio * self._weighed(old, k))
             rounding = UNIT * (2 * (k + 1) * (self.units + 6) + self.dots + 6 * k + 40)
             share = tail / value
             settled = bool((share[: len(nodes)] <= max(0.5 * tol, 0.25 * rounding)).all())
@@ -216,6 +271,24 @@ class _Lane:
         value, tail = value[: len(nodes)], tail[: len(nodes)]
         rounding /= 1 - rounding
         return value + 0.5 * tail, (0.5 * tail + rounding * value) * (1 + 1e-9) + rounding * tail
+
+    def _weighed(self, at: int, k: int) -> Floats:
+        """The remainder by the weights w, times (2k)! / (k! k!)."""
+        from kingpost.core.kernels.closed import WIDE, weigh
+
+        assert self.weights is not None
+        w, top = self.weights
+        rest = _rest(top, k)
+        tops, sums = np.zeros(WIDE), np.zeros(WIDE)
+        if not math.isfinite(rest):
+            return np.full(WIDE, np.inf)
+        for low in range(0, self.n, _PIECE):
+            self.watch.check()
+            weigh(
+                self.left[at], self.lives[at], self.right[at], self.live[at], w, low,
+                min(low + _PIECE, self.n), tops, sums,
+            )  # fmt: skip
+        return tops * sums * (rest * (1 + 1e-9))
 
     def _advance(
         self,
