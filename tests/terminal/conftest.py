@@ -189,7 +189,12 @@ def terminal(tmp_path: Path) -> Iterator[Callable[..., Terminal]]:
     """``terminal(*arguments, size=(80, 24), **environment)`` runs kingpost; ended afterwards."""
     opened: list[Terminal] = []
 
-    def start(*arguments: Any, size: tuple[int, int] = (80, 24), **environment: str) -> Terminal:
+    def start(
+        *arguments: Any,
+        size: tuple[int, int] = (80, 24),
+        piped: Path | None = None,
+        **environment: str,
+    ) -> Terminal:
         env = {
             key: value
             for key, value in os.environ.items()
@@ -206,6 +211,8 @@ def terminal(tmp_path: Path) -> Iterator[Callable[..., Terminal]]:
         }
         env |= environment
         argv = [sys.executable, "-m", "kingpost.tui", *map(str, arguments)]
+        if piped is not None:  # a shell's pipe: standard input is no terminal then
+            argv = ["sh", "-c", 'cat "$0" | exec "$@"', str(piped), *argv]
         opened.append(Terminal(argv, size, env))
         return opened[-1]
 

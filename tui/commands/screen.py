@@ -31,7 +31,12 @@ def screen(edges: tuple[str, ...], **given: Any) -> int:
     for path in edges:
         if path in ("rank", "audit", "node") and not os.path.exists(path):
             raise click.UsageError(f"{path} is a command and comes first: kingpost {path} EDGES...")
-    if not sys.stdout.isatty() or not sys.stdin.isatty():
+    piped = "-" in edges and sys.stdout.isatty() and not sys.stdin.isatty()
+    if piped:
+        from kingpost.tui.commands.piped import take_keyboard
+
+        piped = take_keyboard(given["threads"])
+    if not sys.stdout.isatty() or not (piped or sys.stdin.isatty()):
         from kingpost.tui.commands.rank import answer
 
         return answer(edges, given)
@@ -56,7 +61,8 @@ def screen(edges: tuple[str, ...], **given: Any) -> int:
         threads=given["threads"],
         store=options.store_wanted(),
         slow=slow,
-        kept="fresh" if given["fresh"] else "take" if given["resume"] else "ask",
+        # What comes through a pipe is never the table of last time.
+        kept="fresh" if given["fresh"] or piped else "take" if given["resume"] else "ask",
         config=found,
     )
     return status
