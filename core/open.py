@@ -12,6 +12,7 @@ if TYPE_CHECKING:
     from kingpost.core.graph import Graph
     from kingpost.core.ingest import LoadOptions
     from kingpost.core.ingest.about import TableAbout
+    from kingpost.core.ingest.room import Prediction
     from kingpost.core.store.shelf import Shelf
 
 Store = bool | str | os.PathLike[str]
@@ -81,6 +82,24 @@ def describe(
     if packed is not None:
         return pack.describe(packed)
     return ingest.describe(named, options, watch)
+
+
+def predict(
+    paths: str | os.PathLike[str] | Sequence[str | os.PathLike[str]],
+    options: LoadOptions | None = None,
+    watch: Watch | None = None,
+) -> Prediction | None:
+    """How much memory loading some edge tables takes; None for a pack, which is not loaded.
+
+    Raises:
+        InputError, SettingsError, Interrupted: as loading does.
+    """
+    from kingpost.core import ingest
+    from kingpost.core.store import pack
+
+    given = [paths] if isinstance(paths, str | os.PathLike) else list(paths)
+    named = [os.fspath(path) for path in given]
+    return ingest.predict(named, options, watch) if pack.pack_among(named) is None else None
 
 
 def _shelf(store: Store, tell: Callable[[str], None]) -> Shelf | None:

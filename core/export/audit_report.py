@@ -13,12 +13,17 @@ from kingpost.core.export.jsonable import jsonable
 from kingpost.core.export.layout import Column, terminal_table
 from kingpost.core.graph import Graph
 from kingpost.core.ingest.about import TableAbout
+from kingpost.core.ingest.room import Prediction
 from kingpost.core.insight.audit import QUANTILES, Audit
 from kingpost.core.text import count, listed, visible
 
 
-def audit_json(graph: Graph, audit: Audit, table: TableAbout) -> dict[str, Any]:
-    """Keys: ``table`` (files, rows, columns), ``input``, ``account``, ``structure``.
+def audit_json(
+    graph: Graph, audit: Audit, table: TableAbout, memory: Prediction | None = None
+) -> dict[str, Any]:
+    """Keys: ``table`` (files, rows, columns), ``input``, ``account``, ``memory``, ``structure``.
+
+    ``memory`` holds bytes: ``peak`` of loading as predicted, and ``available``; null for a pack.
 
     ``structure`` holds the fields of :class:`Audit`, degree quantiles keyed by the quantile,
     and the graph's fingerprint.
@@ -33,6 +38,7 @@ def audit_json(graph: Graph, audit: Audit, table: TableAbout) -> dict[str, Any]:
             "table": dataclasses.asdict(table),
             "input": dataclasses.asdict(graph.origin),
             "account": dataclasses.asdict(graph.account),
+            "memory": None if memory is None else dataclasses.asdict(memory),
             "structure": structure,
         }
     )
@@ -40,12 +46,20 @@ def audit_json(graph: Graph, audit: Audit, table: TableAbout) -> dict[str, Any]:
 
 
 def audit_text(
-    graph: Graph, audit: Audit, table: TableAbout, width: int = 80, *, ascii_only: bool = False
+    graph: Graph,
+    audit: Audit,
+    table: TableAbout,
+    width: int = 80,
+    *,
+    memory: Prediction | None = None,
+    ascii_only: bool = False,
 ) -> str:
     """An audit as lines of at most ``width`` columns."""
     lines = wrap(graph_line(graph), width, "  ")
     lines += ["", "Table", *_table(table, width)]
     lines += ["", "Rows", *_pairs(account_pairs(graph.account), width)]
+    if memory is not None:
+        lines += ["", "Memory", *_pairs([("needed", memory.words)], width)]
     lines += ["", "Structure", *_pairs(_structure(audit), width)]
     lines += ["", *_degrees(audit, width)]
     text = "\n".join(line.rstrip() for line in lines) + "\n"

@@ -18,6 +18,7 @@ if TYPE_CHECKING:
     from kingpost.core.graph import Floats, Graph
     from kingpost.core.ingest.about import TableAbout
     from kingpost.core.ingest.peek import Peek
+    from kingpost.core.ingest.room import Prediction
     from kingpost.core.watch import Watch
 
 __all__ = [
@@ -29,6 +30,7 @@ __all__ = [
     "from_table",
     "load",
     "peek",
+    "predict",
     "read_node_values",
 ]
 
@@ -112,6 +114,24 @@ def describe(
     from kingpost.core.ingest import about
 
     return about.about(paths, options, watch)
+
+
+def predict(
+    paths: Paths, options: LoadOptions | None = None, watch: Watch | None = None
+) -> Prediction:
+    """How much memory loading would take at its peak, and how much there is.
+
+    Raises:
+        InputError, SettingsError, Interrupted: as :func:`load` does, before it reads rows.
+    """
+    from kingpost.core.ingest import columns, files, room, where
+    from kingpost.core.watch import Watch
+
+    chosen, watch = options or LoadOptions(), watch or Watch()
+    parts = files.open_parts(paths, chosen, watch)
+    roles = columns.choose(parts, chosen)
+    rows = None if chosen.where is None else where.Filter(chosen.where, parts)
+    return room.predict(parts, roles, watch, rows)
 
 
 def peek(paths: Paths, rows: int = 5, options: LoadOptions | None = None) -> Peek:

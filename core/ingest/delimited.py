@@ -55,6 +55,7 @@ class Scan:
     ragged_examples: tuple[str, ...]
     spoiled: dict[str, str]
     negative: frozenset[str]
+    widths: dict[str, float]
 
 
 def open_delimited(source: Source, options: LoadOptions, watch: Watch) -> Part:
@@ -104,6 +105,7 @@ def open_delimited(source: Source, options: LoadOptions, watch: Watch) -> Part:
         nulls=dict(zip(layout.names, found.nulls, strict=True)),
         textual=frozenset(whole),
         negative=found.negative,
+        width=found.widths.get,
         spoiled=found.spoiled,
         unreadable=found.ragged,
         unreadable_examples=found.ragged_examples,
@@ -142,6 +144,7 @@ class _Column:
     kind: str = "whole"
     flags: int = 0
     nulls: int = 0
+    letters: int = 0
     numbers: int = 0
     others: int = 0
     first_other: tuple[int, str] | None = None
@@ -149,6 +152,7 @@ class _Column:
     def take(self, cells: pa.Array, row: int) -> None:
         """Look at the cells of a batch that begins at ``row``."""
         self.nulls += cells.null_count
+        self.letters += cells.nbytes - 4 * len(cells)
         if self.strength:
             self._count(cells, row)
         elif self.kind == "whole":
@@ -263,6 +267,11 @@ def _scan(source: Source, options: LoadOptions, roles: Any, watch: Watch) -> Sca
         tuple(examples),
         spoiled,
         frozenset(column.name for column in columns if column.negative),
+        {
+            column.name: 4 + column.letters / max(rows, 1)
+            for column in columns
+            if pa.types.is_string(column.type)
+        },
     )
 
 

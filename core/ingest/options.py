@@ -13,6 +13,7 @@ CHOICES: dict[str, tuple[str, ...]] = {
     "weight_as": ("asis", "log1p", "inverse", "none"),
     "read_as": ("guess", "parquet", "csv", "tsv", "arrow", "matrix-market", "graphml"),
     "header": ("guess", "yes", "no"),
+    "memory": ("check", "ignore"),
 }
 
 _NAMES = ("source", "target", "weight", "nodes", "node_id")
@@ -47,6 +48,7 @@ class LoadOptions:
         encoding: of a text table, as Python names it; UTF-8 where None and no mark says else.
         header: whether the first line of a text table holds the names of its columns; where
             ``guess``, it does unless it holds numbers only.
+        memory: whether a table that is not going to fit in memory is refused before it is read.
 
     Raises:
         SettingsError: for a value that is none of the choices.
@@ -68,6 +70,7 @@ class LoadOptions:
     delimiter: str | None = None
     encoding: str | None = None
     header: str = "guess"
+    memory: str = "check"
 
     def __post_init__(self) -> None:
         for name, choices in CHOICES.items():

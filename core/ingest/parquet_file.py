@@ -56,7 +56,31 @@ def open_parquet(file: str, name: str) -> Part:
     def limits(group: int, column: str) -> tuple[Any, Any] | None:
         return _limits(fragment.metadata, group, column)
 
-    return Part(name, schema, rows, read, nulls=_null_counts(fragment), groups=sizes, limits=limits)
+    return Part(
+        name,
+        schema,
+        rows,
+        read,
+        nulls=_null_counts(fragment),
+        groups=sizes,
+        limits=limits,
+        width=lambda column: _width(fragment, schema, column, column in repetitive),
+    )
+
+
+def _width(fragment: Any, schema: pa.Schema, column: str, repetitive: bool) -> float | None:
+    """Bytes a row that a column of text takes in memory, going by its size in the file."""
+    footer = fragment.metadata
+    if schema.field(column).type not in (pa.string(), pa.binary()) or not footer.num_rows:
+        return None
+    if repetitive:
+        return 4.0
+    for at in range(footer.num_columns):
+        if footer.schema.column(at).path == column:
+            groups = range(footer.num_row_groups)
+            sizes = [footer.row_group(g).column(at).total_uncompressed_size for g in groups]
+            return float(sum(sizes)) / footer.num_rows
+    return None
 
 
 def _limits(footer: Any, group: int, column: str) -> tuple[Any, Any] | None:

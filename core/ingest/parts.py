@@ -22,9 +22,10 @@ class Part:
     ``groups`` holds where the file has any.  ``limits(group, column)`` are the least and greatest
     value of a column without nulls, as far as the file says so.
 
-    ``textual`` columns hold whole numbers that were written as text, each in its plainest
-    spelling, so that they can be read as text again; ``negative`` are those of them with a
-    number below 0.  ``spoiled`` tells of numeric columns that
+    ``width(column)`` is the bytes a row that a column takes in memory, None where it is that of
+    the type or unknown.  ``textual`` columns hold whole numbers that were written as text, each
+    in its plainest spelling, so that they can be read as text again; ``negative`` are those of
+    them with a number below 0.  ``spoiled`` tells of numeric columns that
     hold cells which are no numbers (null here): a sentence for each.  ``unreadable`` counts rows
     that have no place in a table, with examples.  ``attributes`` are the nodes of a file that
     holds them beside its edges, with their ids in the column ``id``.
@@ -38,6 +39,7 @@ class Part:
     nulls: dict[str, int] = field(default_factory=dict)  # where known without reading
     groups: tuple[int, ...] = ()
     limits: Callable[[int, str], tuple[Any, Any] | None] = lambda group, column: None
+    width: Callable[[str], float | None] = lambda column: None
     textual: frozenset[str] = field(default_factory=frozenset)
     negative: frozenset[str] = field(default_factory=frozenset)
     spoiled: dict[str, str] = field(default_factory=dict)
@@ -56,7 +58,9 @@ def parts_of_table(table: pa.Table, name: str) -> list[Part]:
         yield from table.select(columns).to_batches(max_chunksize=BATCH_ROWS)
 
     nulls = {item: table.column(at).null_count for at, item in enumerate(table.schema.names)}
-    return [Part(name, table.schema, table.num_rows, read, nulls=nulls)]
+    # What is in memory already takes no more.
+    width = dict.fromkeys(table.schema.names, 0.0).get
+    return [Part(name, table.schema, table.num_rows, read, nulls=nulls, width=width)]
 
 
 def partitioned(part: Part, values: dict[str, pa.Array]) -> Part:

@@ -14,6 +14,7 @@ from kingpost.core.ingest.nodes import join_nodes
 from kingpost.core.ingest.numbering import number_ids
 from kingpost.core.ingest.options import LoadOptions
 from kingpost.core.ingest.parts import Part
+from kingpost.core.ingest.room import require_room
 from kingpost.core.ingest.rows import read_rows
 from kingpost.core.ingest.where import Filter
 from kingpost.core.text import visible
@@ -25,6 +26,8 @@ def build_graph(parts: list[Part], options: LoadOptions, watch: Watch | None = N
     watch = watch or Watch()
     roles = choose(parts, options)
     chosen = None if options.where is None else Filter(options.where, parts)
+    if options.memory == "check":
+        require_room(parts, roles, watch, chosen)
     rows = read_rows(parts, roles, options.bad_rows, watch, chosen)
     # Arrow keeps what it has freed; what follows is to be built in that memory's stead.
     pa.default_memory_pool().release_unused()

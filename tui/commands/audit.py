@@ -23,9 +23,10 @@ def audit(edges: tuple[str, ...], **given: Any) -> int:
     form = given["form"] or ("json" if out and out.lower().endswith(".json") else "table")
     writing.check_places(form, out, inputs=[*edges, *writing.named_files(given)])
     with Session(given["threads"]) as session:
-        from kingpost.core.open import describe
+        from kingpost.core.open import describe, predict
 
         described = describe(list(edges), load_options(given), session.watch)
+        memory = predict(list(edges), load_options(given), session.watch)
         graph, _ = session.load(edges, load_options(given))
         from kingpost.core.export.audit_report import audit_json, audit_text
         from kingpost.core.export.jsonable import dumps
@@ -35,10 +36,10 @@ def audit(edges: tuple[str, ...], **given: Any) -> int:
         session.release()
         ascii_only = out is None and writing.ascii_terminal()
         if form == "json":
-            found = audit_json(graph, answer, described)
+            found = audit_json(graph, answer, described, memory)
             text = dumps(found, indent=2, ascii_only=ascii_only) + "\n"
         else:
             width = writing.WIDE if out else writing.table_width()
-            text = audit_text(graph, answer, described, width, ascii_only=ascii_only)
+            text = audit_text(graph, answer, described, width, memory=memory, ascii_only=ascii_only)
         writing.write_text(text, out)
     return ANSWERED

@@ -173,6 +173,13 @@ loading = _stack(
     ),
     _option(
         LOADING,
+        "--memory",
+        type=click.Choice(["check", "ignore"]),
+        default="check",
+        help="refuse a table that is predicted not to fit in memory [check]",
+    ),
+    _option(
+        LOADING,
         "--threads",
         type=Count(),
         metavar="N",

@@ -28,7 +28,7 @@ if TYPE_CHECKING:
 # The names of loading options that go into LoadOptions as they are.
 _PLAIN = (
     "source", "target", "weight", "nodes", "node_id", "parallel", "loops", "bad_rows", "where",
-    "node_where", "read_as", "encoding", "header",
+    "node_where", "read_as", "encoding", "header", "memory",
 )  # fmt: skip
 
 
