@@ -79,7 +79,7 @@ def _width(fragment: Any, schema: pa.Schema, column: str, repetitive: bool) -> f
         if footer.schema.column(at).path == column:
             groups = range(footer.num_row_groups)
             sizes = [footer.row_group(g).column(at).total_uncompressed_size for g in groups]
-            return float(sum(sizes)) / footer.num_rows
+            return sum(map(float, sizes)) / int(footer.num_rows)
     return None
 
 
