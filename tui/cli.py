@@ -11,6 +11,7 @@ from kingpost.tui.commands import (
     node,
     pack,
     rank,
+    report,
     screen,
     shelf,
     spectrum,
@@ -60,6 +61,7 @@ cli.add_command(spectrum.spectrum)
 cli.add_command(drift.drift)
 cli.add_command(verify.verify)
 cli.add_command(sweep.sweep)
+cli.add_command(report.report)
 cli.add_command(trial.trial)
 cli.add_command(walk.walk)
 cli.add_command(synth.synth)

@@ -24,7 +24,7 @@ from kingpost.core.insight.why import Difference, Term, Why
 from kingpost.core.result import Result
 from kingpost.core.text import count, visible
 
-_PARTS = {
+PARTS = {
     "teleport": "jumps that land here",
     "dangling": "walkers from nodes without out-edges",
     "beta": "what the node has of itself",
@@ -91,7 +91,7 @@ def _terms(graph: Graph, result: Result, found: Why, shown: int) -> Sheet:
     share = [value / found.score if found.score > 0 else 0.0 for value in amount]
     rows = [*near, *([-1] * len(own))]
     names = [graph.name(node, 200) or '""' for node in near]
-    names += [f"({_PARTS[name]})" for name, _ in own]
+    names += [f"({PARTS[name]})" for name, _ in own]
     node = nodes_field(graph.labels, rows)
     ranks = [result.standing.range_of(node) for node in near] + [(-1, -1)] * len(own)
     weights = [*found.weights[:shown].tolist(), *([None] * len(own))]
@@ -165,7 +165,7 @@ def _amount(name: str, title: str, values: list[float]) -> Field:
 
 
 def _term_name(graph: Graph, term: Term) -> str:
-    return graph.name(term.node, 200) or '""' if term.node >= 0 else f"({_PARTS[term.name]})"
+    return graph.name(term.node, 200) or '""' if term.node >= 0 else f"({PARTS[term.name]})"
 
 
 def than_sentence(graph: Graph, result: Result, found: Difference) -> str:
