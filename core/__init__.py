@@ -36,8 +36,12 @@ _HOMES = {
     "drift": "insight.drift",
     "look": "insight.node",
     "read_scores": "ingest.scores",
+    "spectrum": "insight.spectrum",
+    "sweep": "insight.sweep",
     "than": "insight.why",
+    "trial": "insight.trial",
     "verify": "insight.verify",
+    "walk": "insight.walk",
     "why": "insight.why",
     "within": "insight.cohorts",
 }

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from pathlib import PurePath
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import click
 
@@ -11,6 +11,10 @@ from kingpost.core.errors import OutputError
 from kingpost.tui.commands import answering, options
 from kingpost.tui.commands.front import Sectioned
 from kingpost.tui.commands.session import Session, load_options
+
+if TYPE_CHECKING:
+    from kingpost.core.insight.over import Over
+    from kingpost.core.measures.base import Measure
 
 USUAL = "surfer,eigenvector,katz,degree"
 ROWS = 20
@@ -34,6 +38,12 @@ _ENDINGS = {".html": "html", ".htm": "html", ".md": "markdown", ".markdown": "ma
 )
 @options.insight(
     "--marked", is_flag=True, help="the shortlist is what was marked on the screen for EDGES"
+)
+@options.insight(
+    "--along",
+    metavar="NAME=FROM:TO:COUNT",
+    help="follow the first nodes along a parameter, or none "
+    "[damping=0.5:0.95:10 for surfer, alpha-fraction=0.1:0.95:10 for katz]",
 )
 @options.within
 @options.loading
@@ -68,6 +78,7 @@ def report(context: click.Context, /, edges: tuple[str, ...], **given: Any) -> i
     check_takers(values, measures)
     for one in measures:
         build_early(one, values)
+    over = _over(given["along"], measures[0], values)
     from kingpost.core.export.report.shortlist import read_shortlist
 
     listed = [entry for path in lists[0] for entry in read_shortlist(path)]
@@ -100,6 +111,12 @@ def report(context: click.Context, /, edges: tuple[str, ...], **given: Any) -> i
 
             leading = results[names[0]]
             within = rescaled(graph, leading, given["within"], given["window"], session.watch)
+        sweep = None
+        if over is not None and not (over.name == "alpha_fraction" and graph.structure.acyclic):
+            from kingpost.core.insight.sweep import sweep as follow
+
+            settings = build(measures[0], values, graph).settings
+            sweep = follow(graph, names[0], settings, over, watch=session.watch)
         files = [*graph.origin.files, *writing.named_files(given), *lists[0]]
         material = stuff.Material(
             graph,
@@ -108,6 +125,7 @@ def report(context: click.Context, /, edges: tuple[str, ...], **given: Any) -> i
             agreement=agreement,
             shortlist=shortlist,
             within=within,
+            sweep=sweep,
             top=options.limit_of(given["top"], ROWS) or ROWS,
             command=again.command_line(context),
             made=stuff.now(),
@@ -121,6 +139,33 @@ def report(context: click.Context, /, edges: tuple[str, ...], **given: Any) -> i
         session.line.clear()
         writing.write_text(text, out)
         return answering.status_of(session, results)
+
+
+_USUAL = {"surfer": "damping=0.5:0.95:10", "katz": "alpha_fraction=0.1:0.95:10"}
+
+
+def _over(words: str | None, leading: Measure, values: dict[str, Any]) -> Over | None:
+    """The parameter to follow: as asked, else a usual one, else none.
+
+    Raises:
+        click.UsageError: for one that is no number, or given already.
+        SettingsError: for one that the measure does not have, or values out of range.
+    """
+    from kingpost.core.insight.over import at, parse_over
+    from kingpost.tui.commands.choices import build
+
+    if words is None and leading.name == "katz" and "alpha" in values:
+        return None
+    words = _USUAL.get(leading.name, "none") if words is None else words
+    if words == "none":
+        return None
+    over = parse_over(words)
+    if not over.numeric:
+        raise click.UsageError("--along of a report takes numbers; kingpost sweep takes words too")
+    rest = {name: value for name, value in values.items() if name != over.name}
+    for value in over.values:
+        at(build(leading, rest, None).settings, over, value)
+    return over
 
 
 def _form(given: dict[str, Any]) -> str:

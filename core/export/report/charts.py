@@ -6,19 +6,24 @@ import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 from html import escape
+from itertools import pairwise
 
 WIDTH, HEIGHT = 760, 300
-_LEFT, _RIGHT, _TOP, _BOTTOM = 62, 150, 16, 44
+_LEFT, _RIGHT, _TOP, _BOTTOM = 62, 150, 28, 44
 
 
 @dataclass(frozen=True)
 class Curve:
-    """Points of one line; ``kind`` is its class in the style sheet, ``mark`` dot or ring."""
+    """Points of one line; ``kind`` is its class in the style sheet, ``mark`` dot or ring.
+
+    ``pieces`` are ranges of points that are drawn through; all of them where empty.
+    """
 
     name: str
     points: Sequence[tuple[float, float]]
     kind: str = "main"
     mark: str = "dot"
+    pieces: Sequence[tuple[int, int]] = ()
 
 
 class Frame:
@@ -68,21 +73,23 @@ class Frame:
             self.words(at, bottom + 18, words, "middle", "soft")
         self._line((_LEFT, bottom), (right, bottom), "grid")
         self.words((_LEFT + right) / 2, self._height - 8, x_title, "middle", "soft")
-        self.words(_LEFT, _TOP - 4, y_title, "start", "soft")
+        self.words(_LEFT, _TOP - 14, y_title, "start", "soft")
 
-    def level(self, value: float, words: str) -> None:
-        """A horizontal line with words at its right end."""
+    def level(self, value: float, words: str, words_at: float | None = None) -> None:
+        """A horizontal line with words at its right end (at a height of their own if given)."""
         at = self.along(value)
         self._line((_LEFT, at), (WIDTH - _RIGHT, at), "limit")
-        self.words(WIDTH - _RIGHT + 6, at + 4, words, "start", "soft")
+        height = at if words_at is None else words_at
+        self.words(WIDTH - _RIGHT + 6, height + 4, words, "start", "soft")
 
     def curve(self, curve: Curve, name_at: float | None = None) -> None:
         """One line, its marks, and its name at the right (at a height of its own if given)."""
         places = [(self.across(x), self.along(y)) for x, y in curve.points]
         if not places:
             return
-        path = " ".join(f"{x:.1f},{y:.1f}" for x, y in places)
-        self._parts.append(f'<polyline class="{curve.kind}" points="{path}"/>')
+        for first, last in curve.pieces or [(0, len(places))]:
+            path = " ".join(f"{x:.1f},{y:.1f}" for x, y in places[first:last])
+            self._parts.append(f'<polyline class="{curve.kind}" points="{path}"/>')
         step = max(1, len(places) // 40)
         for x, y in places[::step]:
             self.spot(x, y, curve.mark)
@@ -124,7 +131,7 @@ def powers(low: float, high: float, most: int = 7) -> list[tuple[float, str]]:
     """Ticks at powers of ten that enclose a range."""
     first, last = math.floor(math.log10(low)), math.ceil(math.log10(high))
     step = max(1, math.ceil((last - first) / most))
-    return [(10.0**k, f"1e{k}") for k in range(first, last + 1, step)]
+    return [(10.0**k, f"1e{k}") for k in range(last, first - 1, -step)][::-1]
 
 
 def whole_ticks(low: int, high: int, most: int = 8) -> list[tuple[float, str]]:
@@ -141,6 +148,6 @@ def apart(places: Sequence[float], least: float = 14.0) -> list[float]:
     """Heights for texts beside ``places`` that do not overlap, in the order given."""
     order = sorted(range(len(places)), key=lambda i: places[i])
     found = list(places)
-    for before, here in zip(order, order[1:], strict=False):
+    for before, here in pairwise(order):
         found[here] = max(found[here], found[before] + least)
     return found

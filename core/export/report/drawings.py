@@ -3,63 +3,100 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Callable, Sequence
+from itertools import pairwise
 
 from kingpost.core.export.digits import small
 from kingpost.core.export.report.blocks import RIGHT, Cells, Chart, Table
 from kingpost.core.export.report.charts import Curve, Frame, apart, powers, whole_ticks
-from kingpost.core.result import Result
+from kingpost.core.result import Iteration, Result
+from kingpost.core.text import count
 
 _ROWS = 12  # sweeps told in a table that stands for the drawing
 
 
 def convergence(result: Result) -> Chart | None:
-    """Residual and proven error by sweep, on a logarithmic axis; None for a log of one line."""
+    """Residual and proven error by sweep, on a logarithmic axis; None for a log of one line.
+
+    A method that solves one part of the graph after another begins a new line with each.
+    """
     lines = [line for line in result.log if math.isfinite(line.residual)]
-    if len({line.index for line in lines}) < 2:
+    if len(lines) < 2:
         return None
     tol = float(getattr(result.settings, "tol", 0.0) or 0.0)
-    pairs = {
-        "residual": [(line.index, line.residual) for line in lines],
-        "proven error": [(line.index, line.bound) for line in lines if math.isfinite(line.bound)],
-    }
-    seen = [y for points in pairs.values() for _, y in points if y > 0] + ([tol] if tol > 0 else [])
+    bounded = [line for line in lines if math.isfinite(line.bound)]
+    seen = [value for line in lines for value in (line.residual, line.bound)]
+    seen = [value for value in [*seen, tol] if math.isfinite(value) and value > 0]
     if not seen:
         return None
-    low, high = max(min(seen), 1e-300), max(seen)
-    ticks = powers(low, high * 1.0001)
-    frame = Frame(
-        (lines[0].index, lines[-1].index),
-        (min(low, ticks[0][0]), max(high, ticks[-1][0])),
-        log_y=True,
-    )
+    low = min(seen)
+    ticks = powers(low, max(seen))
+    indices = _counted(lines)
+    last = int(max(indices.values()))
+    frame = Frame((1.0, float(max(last, 2))), (min(low, ticks[0][0]), ticks[-1][0]), log_y=True)
     frame.axes(
-        whole_ticks(lines[0].index, lines[-1].index), ticks, "sweep over the edges",
-        "share of the sum of the scores",
-    )  # fmt: skip
-    curves = [
-        Curve(name, [(x, max(y, low)) for x, y in points], *style)
-        for (name, points), style in zip(
-            pairs.items(), [("other", "ring"), ("main", "dot")], strict=True
-        )
-        if points
-    ]
-    ends = [frame.along(curve.points[-1][1]) for curve in curves]
-    heights = apart([*ends, *([frame.along(tol)] if tol > 0 else [])])
+        whole_ticks(1, last), ticks, "sweep over the edges", "share of the sum of the scores"
+    )
+    curves = []
+    for name, some, value, style in (
+        ("residual", lines, _residual, ("other", "ring")),
+        ("proven error", bounded, _bound, ("main", "dot")),
+    ):
+        if some:
+            points = [(indices[id(line)], max(value(line), low)) for line in some]
+            curves.append(Curve(name, points, *style, _pieces(some, value)))
+    heights = apart(
+        [frame.along(curve.points[-1][1]) for curve in curves]
+        + ([frame.along(tol)] if tol > 0 else [])
+    )
     for curve, height in zip(curves, heights, strict=False):
         frame.curve(curve, height)
     if tol > 0:
-        frame.level(tol, "asked for")
-    last = lines[-1]
+        frame.level(tol, "asked for", heights[-1])
     title = (
-        f"{result.measure}: after {last.index:,} sweeps the residual is {small(last.residual)}"
-        + (f" and the proven error {small(result.bound.value)}" if result.bound.value >= 0 else "")
+        f"{result.measure}: after {count(last, 'sweep')} the residual is "
+        f"{small(lines[-1].residual)} and the proven error {small(float(result.bound.value))}"
         + (f"; {small(tol)} was asked for" if tol > 0 else "")
     )
     caption = (
         f"Convergence of {title}. Solid with dots: what is proven; dashed with rings: the "
         "residual, which proves nothing by itself; dotted: what was asked for."
     )
+    if any(len(curve.pieces) > 1 for curve in curves):
+        caption += " A line that ends belongs to a part of the graph that was solved by itself."
     return Chart(frame.svg(f"Convergence of {title}"), caption, _log_table(result))
+
+
+def _residual(line: Iteration) -> float:
+    return line.residual
+
+
+def _bound(line: Iteration) -> float:
+    return line.bound
+
+
+def _counted(lines: Sequence[Iteration]) -> dict[int, float]:
+    """The sweep of every line, counted on where a part counts anew."""
+    found: dict[int, float] = {}
+    base = before = 0
+    for line in lines:
+        if line.index < before:
+            base += before
+        before = line.index
+        found[id(line)] = float(base + line.index)
+    return found
+
+
+def _pieces(
+    lines: Sequence[Iteration], value: Callable[[Iteration], float]
+) -> list[tuple[int, int]]:
+    """Ranges of lines of one part of the work: within one nothing jumps up a thousandfold."""
+    cuts = [
+        i
+        for i in range(1, len(lines))
+        if lines[i].part != lines[i - 1].part or value(lines[i]) > 1e3 * value(lines[i - 1])
+    ]
+    return list(pairwise([0, *cuts, len(lines)]))
 
 
 def _log_table(result: Result) -> Table:

@@ -14,6 +14,7 @@ from kingpost.core.export.report.shortlist import Entry
 from kingpost.core.graph import Graph
 from kingpost.core.insight.agree import Agreement
 from kingpost.core.insight.cohorts import Cohorts
+from kingpost.core.insight.sweep import Sweep
 from kingpost.core.result import Result
 from kingpost.core.watch import Watch
 
@@ -44,6 +45,7 @@ class Material:
     agreement: Agreement | None = None
     shortlist: tuple[Entry, ...] = ()
     within: Cohorts | None = None
+    sweep: Sweep | None = None
     top: int = 20
     command: str = ""
     made: str = ""

@@ -7,6 +7,7 @@ from kingpost.core.export.agree_answer import agree_answer
 from kingpost.core.export.answer import CAUTION, Sheet
 from kingpost.core.export.digits import small
 from kingpost.core.export.heading import settings_words
+from kingpost.core.export.report.along import along
 from kingpost.core.export.report.blocks import (
     LEFT,
     RIGHT,
@@ -57,6 +58,7 @@ def document(material: Material) -> Document:
         *_agreement(material),
         *shortlisted(material),
         *_solved(material),
+        *along(material),
         *_graph(material),
         *_conventions(material),
         *_cautions(material),
