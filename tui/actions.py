@@ -26,7 +26,8 @@ SOLVES, APART = "solves", "apart"  # every solve; how two of them differ
 WAY, PLATE = "way", "plate"  # from one node to another; everything known of one
 ROLES = "roles"  # which column of a table is what
 DOING = "doing"  # sheet that lists every action
-_LISTS = (SHORTLIST, SOLVES, APART, WAY, PLATE)  # views that are one table
+MAKEUP = "makeup"
+_LISTS = (SHORTLIST, SOLVES, APART, WAY, PLATE, MAKEUP)  # views that are one table
 _TABLES = (STANDINGS, NODE, LOG, CHOICE, HELP, COLUMNS, ROLES, *_LISTS)
 _ROOMS = (STANDINGS, NODE, LOG, HELP, *_LISTS)
 _NODES = (STANDINGS, NODE, SHORTLIST)  # views in which a node is at hand
@@ -50,6 +51,7 @@ VIEW_WORDS = {
     APART: "Two solves",
     WAY: "Way",
     PLATE: "Name plate",
+    MAKEUP: "Makeup",
     ROLES: "Column roles",
     DOING: "Any action",
 }
@@ -103,8 +105,8 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "other.table",
         ("tab",),
-        (NODE, WAY),
-        "to the other table, or way",
+        (NODE, WAY, MAKEUP),
+        "to the other table, way or page",
         "other one",
         30,
         "Moving",
@@ -168,6 +170,24 @@ ACTIONS: tuple[Action, ...] = (
         "the solve log: residual, bound and proven order, sweep by sweep",
         "log",
         15,
+        "Investigating",
+    ),
+    Action(
+        "makeup.open",
+        ("M",),
+        (STANDINGS, NODE, LOG),
+        "Makeup of the graph: shape, degrees, components, rows read, spectrum",
+        "makeup",
+        20,
+        "Investigating",
+    ),
+    Action(
+        "part.open",
+        ("enter",),
+        (MAKEUP,),
+        "go into the component: rank inside it; Esc in its standings comes back",
+        "go into it",
+        1,
         "Investigating",
     ),
     Action(

@@ -31,12 +31,14 @@ from kingpost.tui.resuming import Resumer  # noqa: E402
 from kingpost.tui.routes import Routes  # noqa: E402
 from kingpost.tui.views.base import View  # noqa: E402
 from kingpost.tui.views.loading import LoadingView  # noqa: E402
+from kingpost.tui.within import Within  # noqa: E402
 
 if TYPE_CHECKING:
     from kingpost.core.graph import Graph
     from kingpost.core.ingest import LoadOptions
     from kingpost.core.measures.base import Settings
     from kingpost.tui.desk import Desk
+    from kingpost.tui.models.marks import Marks
     from kingpost.tui.models.sitting import Sitting
     from kingpost.tui.models.standings import Standings
     from kingpost.tui.views.standings import StandingsView
@@ -59,6 +61,7 @@ _VIEWS = (
     "plate",
     "doing",
     "roles",
+    "makeup",
 )
 
 
@@ -70,7 +73,7 @@ class KingpostApp(App[int], inherit_bindings=False):
         os.path.join(os.path.dirname(__file__), name) for name in ("app.tcss", "views/loading.tcss")
     ]
     ENABLE_COMMAND_PALETTE = False
-    HELPERS = (Keeper, Opener, Resumer, Routes)
+    HELPERS = (Keeper, Opener, Resumer, Routes, Within)
     VIEWS = _VIEWS
     TITLE = "kingpost"
 
@@ -100,8 +103,9 @@ class KingpostApp(App[int], inherit_bindings=False):
         self._keymaps: dict[str, dict[str, str]] = {}
         self.keeper = Keeper(self)
         self.resumer = Resumer(self)
+        self.within = Within(self)
         self.opener = Opener(self, paths, load, options, measure, settings, kept, store)
-        self.helpers = (self.keeper, self.opener, self.resumer, Routes(self))
+        self.helpers = (self.keeper, self.opener, self.resumer, Routes(self), self.within)
 
     # ---- start and end -------------------------------------------------------------------------
 
@@ -271,7 +275,11 @@ class KingpostApp(App[int], inherit_bindings=False):
         from kingpost.tui.views.standings import StandingsView
 
         table.marks = self.keeper.marks
+        if table.graph is not self.sitting.graph:
+            return
         if first:
+            if self.within.depth:
+                self.pop_screen()  # what showed how the part was solved
             self.latest_news = (self._trouble, "bad")
             self._trouble = ""
             self.push_screen(StandingsView(table))
@@ -283,6 +291,8 @@ class KingpostApp(App[int], inherit_bindings=False):
         self.refreshed()
 
     def _opened(self) -> None:
+        if self.within.depth:
+            return  # what is kept and taken up again is the sitting over the whole
         shown = self.standings_shown
         if shown is None or not shown.composed:
             self.call_after_refresh(self._opened)
@@ -296,24 +306,26 @@ class KingpostApp(App[int], inherit_bindings=False):
         from kingpost.tui.views.solves import SolvesView
 
         if isinstance(self.screen, LoadingView):
-            self.screen.stage(job)
+            if self.screen.composed:
+                self.screen.stage(job)
         elif isinstance(self.screen, (SolveLogView, SolvesView)):
             self.screen.refreshed()
 
     def refreshed(self) -> None:
         """Tell every open view that results or jobs have changed."""
-        for screen in self.screen_stack:
-            if isinstance(screen, View):
-                screen.refreshed()
+        for view in self.open_views:
+            view.refreshed()
 
     def marks_changed(self) -> None:
         """Tell every open view that a mark was made or taken off."""
-        for screen in self.screen_stack:
-            if isinstance(screen, View):
-                screen.marks_changed()
+        for view in self.open_views:
+            view.marks_changed()
 
     def no_start(self, sentence: str) -> None:
-        """There is nothing to show: out with the reason."""
+        """There is nothing to show: out with the reason, of a part to the whole."""
+        if self.within.depth:
+            self.within.no_start(sentence)
+            return
         self._desk = None
         self.opener.fail(sentence)
 
@@ -331,8 +343,26 @@ class KingpostApp(App[int], inherit_bindings=False):
             return None
         from kingpost.tui.views.standings import StandingsView
 
-        found = (screen for screen in self.screen_stack if isinstance(screen, StandingsView))
-        return next(found, None)
+        views = reversed(self.screen_stack)
+        return next((screen for screen in views if isinstance(screen, StandingsView)), None)
+
+    @property
+    def open_views(self) -> list[View]:
+        """The views over the graph at hand: from its standings up.  Those beneath show another."""
+        from kingpost.tui.views.standings import StandingsView
+
+        views: list[View] = []
+        for screen in reversed(self.screen_stack):
+            if isinstance(screen, View):
+                views.insert(0, screen)
+            if isinstance(screen, (StandingsView, LoadingView)):
+                break
+        return views
+
+    def seat(self, desk: Desk, marks: Marks) -> None:
+        """Let another desk have the screen, with the marks of its graph."""
+        self._desk = desk
+        self.keeper.reseat(marks)
 
     # ---- going from view to view -------------------------------------------------------------
 
@@ -349,15 +379,13 @@ class KingpostApp(App[int], inherit_bindings=False):
         """Walk on to a node: in the Node view beneath what is open, else in a new one."""
         from kingpost.tui.views.node import NodeView
 
-        below = [at for at, view in enumerate(self.screen_stack) if isinstance(view, NodeView)]
-        if not below:
+        walking = [view for view in self.open_views if isinstance(view, NodeView)]
+        if not walking:
             self.open_node(node)
             return
-        for _ in self.screen_stack[below[-1] + 1 :]:
+        while self.screen is not walking[-1]:
             self.pop_screen()
-        view = self.screen_stack[below[-1]]
-        assert isinstance(view, NodeView)
-        view.walk(node)
+        walking[-1].walk(node)
 
     def close_node(self, node: int) -> None:
         """Back, with the cursor of the standings on the node one ended at."""
@@ -405,6 +433,12 @@ class KingpostApp(App[int], inherit_bindings=False):
         from kingpost.tui.views.solvelog import SolveLogView
 
         self.push_screen(SolveLogView())
+
+    def do_makeup_open(self) -> None:
+        """Open what the graph is made of."""
+        from kingpost.tui.views.makeup import MakeupView
+
+        self.push_screen(MakeupView())
 
     def do_solves_open(self) -> None:
         """Open the list of all solves."""

@@ -53,6 +53,7 @@ class Desk:
         self._wanted: dict[str, Any] = {"sort": "rank", "turned": False, "where": ""}
         self._prepared: tuple[int, ...] = ()
         self._closed = False
+        self.away = False  # another desk has the screen: results are kept, nothing is shown
 
     def close(self) -> None:
         """Stop all work; whatever still comes of it is told to nobody."""
@@ -89,7 +90,7 @@ class Desk:
             news=self._swept,
         )
         used = settings or self.sitting.settings_of(measure)
-        job.facts.update(measure=measure, company=company, settings=used)
+        job.facts.update(measure=measure, company=company, settings=used, desk=self)
         if not company:
             self._swept(job)
         self._front.refreshed()
@@ -123,8 +124,15 @@ class Desk:
             if result is None or getattr(result.settings, "flow", sitting.flow) != sitting.flow:
                 self.solve(name, None, company=True)
 
+    def resume(self) -> None:
+        """Have the screen again."""
+        self.away = False
+        self._make()
+        self._front.refreshed()
+        self.keep_company()
+
     def _swept(self, job: Job) -> None:
-        if self._closed:
+        if self._closed or self.away:
             return
         if self.table is not None and not job.facts.get("company"):
             self._front.news(sweep_words(job))
@@ -134,6 +142,10 @@ class Desk:
         if self._closed:
             return
         if company and result.stop is Stop.CANCELLED:
+            return
+        if self.away:
+            if result.refusal is None:
+                self.sitting.record(result)
             return
         sitting, first = self.sitting, self.table is None
         if result.refusal is not None and not first and not company:
@@ -153,7 +165,7 @@ class Desk:
         self._make()
 
     def _unsolved(self, sentence: str, company: bool) -> None:
-        if self._closed:
+        if self._closed or self.away:
             return
         if self.table is None and not company:
             self._front.no_start(sentence)
@@ -198,7 +210,7 @@ class Desk:
         """Make the table that is wanted now; a newer wish replaces an older one at work."""
         sitting, wanted, old = self.sitting, dict(self._wanted), self.table
         result, others = sitting.result, sitting.others()
-        if result is None:
+        if result is None or self.away:
             return
         version = (id(result), *(id(other) for other in others))
         fresh = version != self._prepared
@@ -234,7 +246,7 @@ class Desk:
         )
 
     def _made(self, made: Any) -> None:
-        if self._closed:
+        if self._closed or self.away:
             return
         table, arrangement, self._prepared, lost = made
         old, self.table = self.table, table

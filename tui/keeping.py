@@ -54,6 +54,10 @@ class Keeper:
         self._version = self._written = 0
         self._copied = None
 
+    def reseat(self, marks: Marks) -> None:
+        """Another graph has the screen, a part or the whole: the same marks by its numbers."""
+        self._marks, self._copied = marks, None
+
     @property
     def marks(self) -> Marks:
         """The shortlist."""
@@ -76,7 +80,7 @@ class Keeper:
         """What writes the marks as they are now, unless newer ones have been written by then."""
         from kingpost.tui.models import marks as model
 
-        graph, paths = self.graph, self._paths
+        graph, paths = self._app.within.home.sitting.graph, self._paths
         rows, version = self.marks.as_json(), self._version
 
         def work(job: Job | None) -> None:

@@ -156,8 +156,12 @@ class Resumer:
 
     def kept(self) -> Kept | None:
         """What is worth keeping of the sitting, None if it is as at the beginning."""
-        app, sitting = self._app, self._app.sitting
-        view, trail, at = self._place()
+        app = self._app
+        # Of one who left inside a part the sitting over the whole is kept.
+        desk = app.within.home
+        sitting, table = desk.sitting, desk.table
+        assert table is not None
+        view, trail, at = (actions.STANDINGS, [], 0) if app.within.depth else self._place()
         settings: dict[str, dict[str, Any]] = {}
         left_out: dict[str, list[str]] = {}
         for name, result in sitting.results.items():
@@ -165,8 +169,7 @@ class Resumer:
                 settings[name], lost = resumption.plain_settings(result.settings)
                 if lost:
                     left_out[name] = lost
-        table = app.standings.model
-        wanted = app.desk.wanted
+        wanted = desk.wanted
         if self._filter:  # taken up from the sitting before, but not applied yet
             wanted["where"] = self._filter
         node = table.node
@@ -180,7 +183,7 @@ class Resumer:
             and len(app.keeper.marks) == 0
             and not any(settings.values())
             and not sitting.columns.order
-            and set(settings) <= {begun, *app.desk.company}
+            and set(settings) <= {begun, *desk.company}
         )
         if unchanged:
             return None
@@ -203,7 +206,7 @@ class Resumer:
         )
 
     def _name(self, node: int) -> str:
-        return id_text(self._app.sitting.graph.label(node))
+        return id_text(self._app.within.home.sitting.graph.label(node))
 
     def _place(self) -> tuple[str, list[int], int]:
         """The highest view that is opened again, with the way walked if it is Node."""

@@ -60,7 +60,7 @@ def audit_text(
     lines += ["", "Rows", *_pairs(account_pairs(graph.account), width)]
     if memory is not None:
         lines += ["", "Memory", *_pairs([("needed", memory.words)], width)]
-    lines += ["", "Structure", *_pairs(_structure(audit), width)]
+    lines += ["", "Structure", *_pairs(structure_pairs(audit), width)]
     lines += ["", *_degrees(audit, width)]
     text = "\n".join(line.rstrip() for line in lines) + "\n"
     return plain_ascii(text) if ascii_only else text
@@ -95,7 +95,8 @@ def _could_be(column: Any) -> str:
     return " or ".join(name for name, possible in uses if possible) or "-"
 
 
-def _structure(audit: Audit) -> list[tuple[str, str]]:
+def structure_pairs(audit: Audit) -> list[tuple[str, str]]:
+    """What an audit found, as short names and phrases; degrees apart."""
     low, high = audit.radius
     pairs = [
         ("nodes", f"{audit.nodes:,}"),

@@ -487,3 +487,82 @@ async def test_a_plate_leads_on_to_a_neighbour(app):
         assert app.screen.node_at_hand() == node
         await pilot.press("escape", "escape")
         await until(pilot, lambda: app.screen.view == "standings")
+
+
+# ---- the makeup, and going into a part -----------------------------------------------------------
+
+
+async def turn_to(pilot, page):
+    await until(pilot, lambda: pilot.app.screen.view == "makeup")
+    for _ in range(6):
+        if pilot.app.screen.page != page:
+            await pilot.press("tab")
+
+
+async def test_the_pages_of_the_makeup(app):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await pilot.press("M")
+        await until(pilot, lambda: "weak components    1, 6 nodes in the largest" in app.shown())
+        assert "makeup of hand_made.parquet   6 nodes  8 edges" in app.shown()
+        assert "[shape]" in app.shown()
+        await turn_to(pilot, "degrees")
+        await until(pilot, lambda: "nodes by neighbours, so many or more" in app.shown())
+        assert "the highest 4" in app.shown()
+        await turn_to(pilot, "rows read")
+        await until(pilot, lambda: "how they were read" in app.shown())
+        await turn_to(pilot, "spectrum")
+        await until(pilot, lambda: "eigenvalue 1" in app.shown())
+        await pilot.press("escape")
+        await until(pilot, lambda: app.screen.view == "standings")
+
+
+async def test_going_into_a_component_and_back(app):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        whole = app.sitting
+        await pilot.press("down", "x", "t", "x")  # fare, outside, and gate, inside
+        await pilot.press("M")
+        await turn_to(pilot, "strong components")
+        await until(pilot, lambda: "5 strong components, 4 of one node" in app.shown())
+        assert "gate" in app.shown()
+        await pilot.press("enter")
+        await until(pilot, lambda: app.screen.view == "standings" and app.within.depth == 1)
+        await until(pilot, lambda: not app.runner.jobs("solve") and not app.runner.jobs("table"))
+        lines = app.shown().splitlines()
+        assert lines[0].startswith(" strong component 1 of hand_made")
+        assert "2 nodes" in lines[0]
+        assert {app.sitting.graph.label(i) for i in range(2)} == {"gate", "kiosk"}
+        assert [mark.node for mark in app.keeper.marks] == [None, 0]
+        await pilot.press("down", "x", "enter")
+        await until(pilot, lambda: app.screen.view == "node")
+        await pilot.press("escape", "escape", "escape")
+        await until(pilot, lambda: app.within.depth == 0)
+        assert app.sitting is whole
+        assert app.screen.view == "makeup"
+        await pilot.press("escape")
+        await until(pilot, lambda: app.screen.view == "standings")
+        await until(pilot, lambda: "   6 nodes  8 edges" in app.shown())
+        marked = {mark.name: mark.node for mark in app.keeper.marks}
+        inside = app.sitting.graph.find("kiosk")
+        assert marked == {"fare": 1, "gate": 2, "kiosk": inside}
+
+
+async def test_what_the_whole_solves_meanwhile_is_kept_for_the_return(app, bench):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await pilot.press("M")
+        await turn_to(pilot, "strong components")
+        await until(pilot, lambda: "5 strong components" in app.shown())
+        app.desk.solve("held", None)
+        await until(pilot, bench.sweeping.is_set)
+        await pilot.press("enter")
+        await until(pilot, lambda: app.within.depth == 1)
+        bench.release.set()
+        await until(pilot, lambda: app.screen.view == "standings")
+        assert app.screen.model.graph.n == 2
+        await until(pilot, lambda: not app.runner.jobs("solve") and not app.runner.jobs("table"))
+        assert app.screen.model.graph.n == 2
+        await pilot.press("escape", "escape")
+        await until(pilot, lambda: app.within.depth == 0)
+        assert "held" in app.sitting.results

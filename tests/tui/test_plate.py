@@ -110,8 +110,8 @@ def test_a_plate_says_everything(graph, make_result):
     other = make_result(graph, SCORES[::-1], measure="mirror")
     rows = plate(graph, result, [("P", result), ("M", other)], 1, 80).rows
     told = {row.name: row.text for row in rows}
-    assert told["P plain"] == "rank 2 of 6   score 0.40 ~   within 0.39 .. 0.41"
-    assert told["M mirror"].startswith("rank 4 of 6   score 0.200   within 0.2")
+    assert told["P plain"] == "rank 2 of 6   score 0.40 ~   at most 1.0e-02 off"
+    assert told["M mirror"].startswith("rank 4 of 6   score 0.200   at most 0.0e+00 off")
     assert (told["team"], told["tier"]) == ("(none)", "1")
     assert {row.node for row in rows} == {None, 0, 1, 2, 4}
 

@@ -26,10 +26,12 @@ _SUPPORTS = 4
 _SEPARATOR = "   "
 
 
-def graph_line(graph: Graph, flow: str, shown: int, width: int) -> list[Piece]:
-    """Graph, nodes, edges, flow; with how many rows a filter leaves."""
+def graph_line(graph: Graph, flow: str, shown: int, width: int, within: str = "") -> list[Piece]:
+    """Graph, nodes, edges, flow; with how many rows a filter leaves, and which part it is."""
     rows = f"{graph.n:,} nodes" if shown == graph.n else f"{shown:,} of {graph.n:,} nodes"
     name = tame(graph.origin.name)
+    if within:
+        name = f"{within} of {name.removesuffix('.parquet')}"
     counts = f"   {rows}  {graph.m:,} edges   "
     words = flow_words(graph, flow)
     if 1 + cell_len(name) + len(counts) + cell_len(words) > width:

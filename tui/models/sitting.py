@@ -31,6 +31,8 @@ class Sitting:
     find: Callable[[str], Measure] = measure
     formats: dict[int, tuple[Result, ScoreFormat]] = field(default_factory=dict)
     columns: Choice = field(default_factory=Choice)  # of the standings: what is shown, in order
+    within: str = ""  # which part of a larger graph this is, if it is one
+    makeup: dict[Any, Any] = field(default_factory=dict)  # pages of the makeup worked out so far
 
     def measure(self, name: str) -> Measure:
         """The measure of that name, by default from the registry."""

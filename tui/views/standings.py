@@ -84,9 +84,9 @@ class StandingsView(View):
 
     def _show_lines(self) -> None:
         model = self.model
-        flow = self.kingpost.sitting.flow
+        flow, within = self.kingpost.sitting.flow, self.kingpost.sitting.within
         self.query_one("#graph", Line).show_by(
-            lambda width: detail.graph_line(model.graph, flow, model.count, width)
+            lambda width: detail.graph_line(model.graph, flow, model.count, width, within)
         )
         self.query_one("#terms", Line).show_by(
             lambda width: detail.terms_line(model.graph, model.result, width)
@@ -323,9 +323,8 @@ class StandingsView(View):
         self.kingpost.news(words)
 
     def can_step_back(self) -> bool:
-        return bool(
-            self.kingpost.latest_news[0] or self.model.arrangement.where or self.model.found
-        )
+        where, found = self.model.arrangement.where, self.model.found
+        return bool(self.kingpost.latest_news[0] or where or found or self.kingpost.within.depth)
 
     def do_step_back(self) -> None:
         if self.kingpost.latest_news[0] and not self.kingpost.solving:
@@ -335,3 +334,5 @@ class StandingsView(View):
             self.table.refresh()
         elif self.model.arrangement.where:
             self.kingpost.desk.arrange(where="")
+        elif self.kingpost.within.depth:
+            self.kingpost.within.leave()

@@ -39,12 +39,12 @@ class ResidualChart(Widget):
         if y >= len(self._grid):
             return Strip.blank(width)
         segments: list[Segment] = []
-        for text, role in _runs(self._grid[y]):
+        for text, role in runs(self._grid[y]):
             segments.append(Segment(text, Style.parse(looks.styles[role])))
         return Strip(segments).adjust_cell_length(width)
 
 
-def _runs(cells: list[Cell]) -> list[Cell]:
+def runs(cells: list[Cell]) -> list[Cell]:
     """Neighbouring cells of one style joined: fewer escape sequences on the wire."""
     runs: list[Cell] = []
     for char, role in cells:

@@ -117,6 +117,13 @@ class RowTable(Widget):
         """Whether its cursor is shown."""
         return self._active
 
+    def headings(self, shown: bool) -> None:
+        """Show a line of headings over the rows, or not."""
+        if shown != self._headings:
+            self._headings = shown
+            self._measured = (-1, -1)
+            self.refresh()
+
     def activate(self, active: bool) -> None:
         """Show or hide the cursor."""
         if active != self._active:
