@@ -63,11 +63,19 @@ def _bound(rows: Adjacency, scores: Floats, counts: bool) -> Bound:
     """Exact where no sum was rounded: counts, multiples of 1/1024, rows of a single edge."""
     if counts or rows.weights is None:
         return Bound(BoundKind.EXACT, 0.0, absolute=0.0)
-    fine = rows.weights * 1024.0
-    if (fine == np.floor(fine)).all() and float(scores.max(initial=0.0)) < 2.0**42:
+    if _coarse(rows.weights) and float(scores.max(initial=0.0)) < 2.0**42:
         return Bound(BoundKind.EXACT, 0.0, absolute=0.0)
     errors = np.where(rows.degrees > 1, 2 * UNIT * scores, 0.0)
     return Bound(BoundKind.EXACT, 2 * UNIT, absolute=errors)
+
+
+def _coarse(weights: Floats) -> bool:
+    """Whether every weight is a multiple of 1/1024; in pieces, for they may outgrow memory."""
+    for start in range(0, len(weights), 1 << 16):
+        fine = weights[start : start + (1 << 16)] * 1024.0
+        if not (fine == np.floor(fine)).all():
+            return False
+    return True
 
 
 MEASURE = Measure("degree", "D", "degree", DegreeSettings, solve)

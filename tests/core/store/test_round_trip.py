@@ -1,8 +1,10 @@
 """A graph or result from the store is, bit for bit, the one that was read or solved."""
 
 import datetime as dt
+import gc
 import os
 import tempfile
+import tracemalloc
 from decimal import Decimal
 from pathlib import Path
 
@@ -130,6 +132,33 @@ def test_what_is_kept_is_mapped_and_cannot_be_written_to(desk, knot):
         for array in (graph.outward.offsets, graph.outward.neighbours, graph.structure.order):
             assert not array.flags.writeable
             assert not array.flags.owndata
+
+
+def test_a_solve_over_the_files_makes_no_copy_of_the_edges(desk, tmp_path, monkeypatch):
+    """So that a graph larger than memory can be ranked with only vectors over its nodes in it.
+
+    Smaller graphs are laid out anew in memory to be swept faster; every graph is a large one here.
+    """
+    monkeypatch.setattr("kingpost.core.layout._MOST", 0)
+    rng = np.random.default_rng(1)
+    columns = dict(zip(("source", "target"), rng.integers(0, 1_000, (2, 800_000)), strict=True))
+    path = tmp_path / "dense.parquet"
+    pq.write_table(pa.table(columns | {"weight": rng.random(800_000)}), path)
+    for options in ({}, {"parallel": "first", "weight_as": "none"}):
+        graph = desk.open(path, **options)
+        assert graph.weighted != bool(options)
+        edges = graph.outward.neighbours.nbytes
+        assert edges > 200 * 8 * graph.n
+        for name in ("surfer", "eigenvector", "katz", "degree"):
+            chosen = measure(name)
+            _ = finish(chosen.solve(graph)).standing  # loads code, which takes memory too
+            graph = desk.open(path, **options)
+            gc.collect()
+            tracemalloc.start()
+            assert finish(chosen.solve(graph)).standing.proven >= 0
+            peak = tracemalloc.get_traced_memory()[1]
+            tracemalloc.stop()
+            assert peak < edges, (name, peak, edges)
 
 
 SETTINGS = [
