@@ -51,7 +51,7 @@ def test_killed_at_twenty_moments(many, tmp_path):
 
 
 def test_several_processes_at_once(many, tmp_path):
-    first, *rounds = run("race", many, tmp_path / "shelf", 8)
+    first, *rounds = run("race", many, tmp_path / "shelf", 5)
     for one in rounds:
         assert set(one["statuses"]) == {0}, one
         for said in [*one["runs"], one["after"]]:

@@ -77,7 +77,7 @@ def node_table(draw, labels):
 
 
 @given(st.data())
-@settings(max_examples=40, deadline=None, suppress_health_check=[HealthCheck.too_slow])
+@settings(max_examples=25, deadline=None, suppress_health_check=[HealthCheck.too_slow])
 def test_any_graph_and_its_results_come_back_as_they_were(data):
     table = data.draw(tables())
     directed = data.draw(st.booleans())
