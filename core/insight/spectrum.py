@@ -27,7 +27,7 @@ from kingpost.core.watch import Watch
 
 COUNT = 6
 _WIDTH = 1e-9  # relative, of the bracket of rho
-MEASURES = ("surfer", "eigenvector", "katz", "hits", "communicability", "subgraph", "votes")
+MEASURES = ("surfer", "eigenvector", "katz", "hits", "communicability", "votes")
 
 
 @dataclass(frozen=True, slots=True)
@@ -346,7 +346,7 @@ def _told(measure: str, asked: _Asked, found: Pairs, count: int, result: Result 
     if measure == "katz":
         if result is not None and result.refusal is None:
             predicted = predicted_rate(radius[1], "of the plain sum over walks: alpha rho")
-    elif measure in ("communicability", "subgraph"):
+    elif measure == "communicability":
         notes.append(
             "the exponential series converges faster than any fixed rate, whatever the spectrum"
         )

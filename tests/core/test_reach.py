@@ -67,7 +67,7 @@ FLOWS = st.sampled_from(["along", "against"])
 ITSELF = st.sampled_from(["apart", "counted"])
 
 
-@settings(max_examples=150, deadline=None)
+@settings(max_examples=80, deadline=None)
 @given(graphs(most=12), FLOWS, ITSELF)
 def test_numbers_of_nodes_are_exact(graph, flow, itself):
     result = rank(graph, flow=flow, itself=itself)
@@ -89,7 +89,7 @@ AMOUNTS = st.one_of(
 )
 
 
-@settings(max_examples=150, deadline=None)
+@settings(max_examples=80, deadline=None)
 @given(graphs(most=10), st.data(), FLOWS, ITSELF)
 def test_sums_of_an_attribute_are_within_their_bounds(graph, data, flow, itself):
     amounts = data.draw(st.lists(AMOUNTS, min_size=graph.n, max_size=graph.n))
@@ -107,11 +107,11 @@ def test_sums_of_an_attribute_are_within_their_bounds(graph, data, flow, itself)
 
 
 def test_more_members_than_one_row_of_bits_holds():
-    # 1,700 chains of two feeding a random acyclic middle: four blocks of 512 members.
+    # A random acyclic graph: three blocks of 512 members.
     rng = np.random.default_rng(8)
-    n = 2_600
-    source = rng.integers(0, n, 9_000)
-    target = rng.integers(0, n, 9_000)
+    n = 1_700
+    source = rng.integers(0, n, 5_000)
+    target = rng.integers(0, n, 5_000)
     ends = np.unique(np.sort(np.column_stack((source, target))[source != target], axis=1), axis=0)
     graph = from_arrays(n, ends[:, 0], ends[:, 1])
     amounts = rng.uniform(0, 1, n)

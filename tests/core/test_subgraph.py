@@ -44,7 +44,7 @@ def truth(graph, factor):
         return [total[k, k] for k in range(graph.n)]
 
 
-@settings(max_examples=100, deadline=None)
+@settings(max_examples=60, deadline=None)
 @given(
     graphs(most=8),
     st.sampled_from(["rho", "none"]),
@@ -229,7 +229,7 @@ def test_a_long_row_is_added_up_within_its_bound():
             assert error < 1e-12 * value
 
 
-@settings(max_examples=80, deadline=None)
+@settings(max_examples=40, deadline=None)
 @given(graphs(most=9, directed=False), st.sampled_from([0.3, 1.0, 5.0]))
 def test_quadrature_encloses_it_too(graph, t):
     result = rank(graph, method="quadrature", inverse_temperature=t)

@@ -102,7 +102,7 @@ def truth(graph, unit, *, flow="along", link="laplace", division="vote", diagona
     return x, rho
 
 
-@settings(max_examples=120, deadline=None)
+@settings(max_examples=60, deadline=None)
 @given(
     graphs(most=7),
     st.sampled_from(["along", "against"]),
