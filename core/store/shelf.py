@@ -119,8 +119,24 @@ class Shelf:
         place = self.graphs / identity.key
         with making(place, watch) as draft:
             write_graph(graph, draft, watch, more)
+        self._drop_older(graph.origin.files, more)
         kept, about = read_graph(place, watch, identity.key)
         return kept, str(about["content"])
+
+    def _drop_older(self, files: Sequence[str], made: dict[str, Any]) -> None:
+        """Take away copies of the same tables as they were before, which nobody will ask for."""
+        paths = [path for path, _ in made["inputs"]]
+        for entry in self.entries():
+            about = entry.about
+            if (
+                entry.kind == "graph"
+                and about
+                and about["key"] != made["key"]
+                and about["options"] == made["options"]
+                and [path for path, _ in about["inputs"]] == paths
+                and tuple(about["origin"]["files"]) == tuple(files)
+            ):
+                self.take_away(entry)
 
     def make_room(self, size: int) -> None:
         """Let go of what was used longest ago until ``size`` more bytes fit.

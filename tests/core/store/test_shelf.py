@@ -256,6 +256,20 @@ def test_clearing_by_name_takes_the_results_along(desk, tmp_path):
     assert [path for path in desk.folder.rglob("*") if path.is_file()] == []
 
 
+def test_a_copy_of_a_table_as_it_was_goes_when_the_new_one_is_kept(desk, edges, tmp_path):
+    (other,) = tables(tmp_path, 1)
+    for path, options in ((other, {}), (edges, {}), (edges, {"directed": False})):
+        desk.open(path, **options)
+    kept = set(desk.graphs)
+    pq.write_table(pa.table({"source": ["p"], "target": ["q"]}), edges)
+    assert desk.open(edges).n == 2
+    assert len(desk.graphs) == 3  # in place of the one of the same options
+    assert len(kept & set(desk.graphs)) == 2
+    assert desk.open(edges, directed=False).n == 2
+    assert len(desk.graphs) == 3
+    assert len(kept & set(desk.graphs)) == 1
+
+
 def test_sizes_in_words():
     sizes = [0, 999, 1_000, 12_345_678, 2 * 10**9, 10**15]
     words = ["0 bytes", "999 bytes", "1.0 kB", "12.3 MB", "2.0 GB", "1,000.0 TB"]
