@@ -16,13 +16,15 @@ def command_line(context: click.Context) -> str:
         name = parameter.name or ""
         if context.get_parameter_source(name) is not ParameterSource.COMMANDLINE:
             continue
-        value = context.params[name]
+        value = context.params.get(name)  # what a callback takes care of has none
         if isinstance(parameter, click.Argument):
             words += map(str, value if isinstance(value, tuple) else [value])
             continue
         flag = max(parameter.opts, key=len)
         if getattr(parameter, "is_flag", False):
             options.append(flag)
+            continue
+        if value is None:
             continue
         for one in value if isinstance(value, tuple) else [value]:
             options += [flag, str(one)]
