@@ -24,7 +24,6 @@ if TYPE_CHECKING:
     import pyarrow as pa
 
     from kingpost.core.result import Result
-    from kingpost.core.store.results import Drawer
     from kingpost.core.structure import Structure
     from kingpost.core.watch import Watch
 
@@ -174,7 +173,8 @@ class Graph:
     account: Account = field(default_factory=Account)
     origin: Origin = field(default_factory=Origin)
     # Where results of this very graph are kept, if anywhere; a changed copy has none.
-    drawer: Drawer | None = field(default=None, init=False, compare=False, repr=False)
+    # A store.results.Drawer, of which a graph need not know more.
+    drawer: Any = field(default=None, init=False, compare=False, repr=False)
 
     @property
     def n(self) -> int:

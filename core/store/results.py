@@ -112,7 +112,7 @@ def find_result(measure: Measure, graph: Graph, settings: Any, watch: Watch) -> 
     Raises:
         Interrupted: if the watch was cancelled.
     """
-    drawer = graph.drawer
+    drawer: Drawer | None = graph.drawer
     if drawer is None or (key := result_key(measure, settings)) is None:
         return None
     for place in drawer.places(key):
@@ -140,7 +140,7 @@ def keep_result(measure: Measure, graph: Graph, result: Result, watch: Watch) ->
     Raises:
         Interrupted: if the watch is cancelled; nothing is left behind then.
     """
-    drawer = graph.drawer
+    drawer: Drawer | None = graph.drawer
     if (
         drawer is None
         or drawer.shelf is None
