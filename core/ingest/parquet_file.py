@@ -73,13 +73,12 @@ def _width(fragment: Any, schema: pa.Schema, column: str, repetitive: bool) -> f
     footer = fragment.metadata
     if schema.field(column).type not in (pa.string(), pa.binary()) or not footer.num_rows:
         return None
-    if repetitive:
-        return 4.0
     for at in range(footer.num_columns):
         if footer.schema.column(at).path == column:
             groups = range(footer.num_row_groups)
             sizes = [footer.row_group(g).column(at).total_uncompressed_size for g in groups]
-            return sum(map(float, sizes)) / int(footer.num_rows)
+            stored = sum(map(float, sizes)) / int(footer.num_rows)
+            return max(stored, 4.0) if repetitive else stored
     return None
 
 
