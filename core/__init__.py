@@ -24,6 +24,7 @@ _HOMES = {
     "Watch": "watch",
     "KingpostError": "errors",
     "load": "ingest",
+    "load_together": "ingest",
     "LoadOptions": "ingest",
     "from_arrow": "ingest:from_table",
     "from_edges": "ingest.memory",

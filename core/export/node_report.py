@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import dataclasses
 import math
 from typing import Any
 
@@ -19,9 +20,15 @@ from kingpost.core.result import Result
 from kingpost.core.text import count, visible
 
 
-def node_json(view: NodeView, results: dict[str, Result]) -> dict[str, Any]:
+def node_json(
+    view: NodeView, results: dict[str, Result], graph: Graph | None = None
+) -> dict[str, Any]:
     """Keys: ``node, attributes, in_degree, out_degree, in_strength, out_strength, leading,
-    measures, in_neighbours, out_neighbours``; a measure that has no answer holds ``refused``."""
+    measures, in_neighbours, out_neighbours``; a measure that has no answer holds ``refused``.
+
+    With the graph also ``input`` and ``account``: how its table was read, and what became of
+    every row.
+    """
     from kingpost.core.export.data import settings
 
     measures = {}
@@ -51,6 +58,9 @@ def node_json(view: NodeView, results: dict[str, Result]) -> dict[str, Any]:
         "in_neighbours": [_neighbour(item) for item in view.inward],
         "out_neighbours": [_neighbour(item) for item in view.outward],
     }
+    if graph is not None:
+        answer["input"] = dataclasses.asdict(graph.origin)
+        answer["account"] = dataclasses.asdict(graph.account)
     found: dict[str, Any] = jsonable(answer)
     return found
 

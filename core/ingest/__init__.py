@@ -19,6 +19,7 @@ if TYPE_CHECKING:
     from kingpost.core.ingest.about import TableAbout
     from kingpost.core.ingest.peek import Peek
     from kingpost.core.ingest.room import Prediction
+    from kingpost.core.ingest.together import Together
     from kingpost.core.watch import Watch
 
 __all__ = [
@@ -29,6 +30,7 @@ __all__ = [
     "from_scipy",
     "from_table",
     "load",
+    "load_together",
     "peek",
     "predict",
     "read_node_values",
@@ -72,6 +74,28 @@ def load(
 
     chosen = dataclasses.replace(options or LoadOptions(), **overrides)
     return pipeline.build_graph(files.open_parts(paths, chosen, watch), chosen, watch)
+
+
+def load_together(
+    *tables: Paths,
+    options: LoadOptions | None = None,
+    watch: Watch | None = None,
+    **overrides: Any,
+) -> Together:
+    """Load two or more tables of the same system on one numbering of ids.
+
+    Columns are chosen once for all of them, and ids of several types (32 and 64 bits, whole
+    numbers and text of text files) are brought to one.
+
+    Raises:
+        InputError, RowsError, SettingsError, Interrupted: as :func:`load` does, before any row
+            is read if the tables do not go together.
+    """
+    from kingpost.core.ingest import together
+    from kingpost.core.watch import Watch
+
+    chosen = dataclasses.replace(options or LoadOptions(), **overrides)
+    return together.load_together(list(tables), chosen, watch or Watch())
 
 
 def from_table(

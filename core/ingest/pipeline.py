@@ -7,7 +7,7 @@ import pyarrow as pa
 
 from kingpost.core.graph import Account, Graph, Origin
 from kingpost.core.ingest.assemble import Ends, assemble
-from kingpost.core.ingest.columns import choose
+from kingpost.core.ingest.columns import Roles, choose
 from kingpost.core.ingest.induced import induce
 from kingpost.core.ingest.names import alike
 from kingpost.core.ingest.nodes import join_nodes
@@ -21,10 +21,18 @@ from kingpost.core.text import visible
 from kingpost.core.watch import Watch
 
 
-def build_graph(parts: list[Part], options: LoadOptions, watch: Watch | None = None) -> Graph:
-    """Read, number and assemble; join node attributes last, when the ids are known."""
+def build_graph(
+    parts: list[Part],
+    options: LoadOptions,
+    watch: Watch | None = None,
+    roles: Roles | None = None,
+) -> Graph:
+    """Read, number and assemble; join node attributes last, when the ids are known.
+
+    ``roles`` are the columns, where they were chosen over more parts than these.
+    """
     watch = watch or Watch()
-    roles = choose(parts, options)
+    roles = roles or choose(parts, options)
     chosen = None if options.where is None else Filter(options.where, parts)
     if options.memory == "check":
         require_room(parts, roles, watch, chosen)

@@ -33,6 +33,15 @@ def test_where_space_is_short_the_flow_is_kept_longest(graph):
     assert "4 of 6 nodes" in short
 
 
+def test_a_filter_stands_before_the_flow(graph):
+    origin = dataclasses.replace(graph.origin, where="calls > 5 AND region = 'far\x1b[2J north'")
+    filtered = dataclasses.replace(graph, origin=origin)
+    wide = words(detail.graph_line(filtered, "along", 6, 200))
+    assert "where: calls > 5 AND region = 'far\\e[2J north'  score flows along" in wide
+    short = words(detail.graph_line(filtered, "along", 6, 80))
+    assert "where: calls > 5 AND re" in short[:80]
+
+
 def test_the_proof_is_kept_where_space_is_short(graph, sitting):
     for width in (40, 80, 120):
         line = words(detail.terms_line(graph, sitting.result, width))

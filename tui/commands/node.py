@@ -64,7 +64,7 @@ def node(edges: tuple[str, ...], name: str | None, **given: Any) -> int:
         view = look(graph, number, results, leading, limit)
         ascii_only = out is None and writing.ascii_terminal()
         if form == "json":
-            text = dumps(node_json(view, results), indent=2, ascii_only=ascii_only) + "\n"
+            text = dumps(node_json(view, results, graph), indent=2, ascii_only=ascii_only) + "\n"
         else:
             width = writing.WIDE if out else writing.table_width()
             flow = given["flow"] or "along"

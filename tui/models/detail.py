@@ -22,6 +22,7 @@ Piece = tuple[str, str]
 _BAR = 8
 # These lines are written anew at every key: their length is what a key costs on a slow link.
 _TRACK = 44
+_FILTER = 24
 _SUPPORTS = 4
 _SEPARATOR = "   "
 
@@ -38,7 +39,14 @@ def graph_line(graph: Graph, flow: str, shown: int, width: int, within: str = ""
         counts, words = f"  {rows}  {graph.m:,} edges  ", words.removeprefix("score ")
     if 1 + cell_len(name) + len(counts) + cell_len(words) > width:
         name = name.removesuffix(".parquet")
-    return [(f" {name}", "head"), (f"{counts}{words}", "plain")]
+    pieces: list[Piece] = [(f" {name}", "head"), (counts, "plain")]
+    if (filters := graph.origin.where_words) is not None:
+        # What was left out matters more than the way of the flow: that is cut off at the edge.
+        room = width - 1 - cell_len(name) - len(counts) - cell_len(words) - 2
+        shown = tame(visible(filters))
+        room = min(max(room, _FILTER), cell_len(shown))
+        pieces.append((fit(shown, room) + "  ", "news"))
+    return [*pieces, (words, "plain")]
 
 
 def terms_line(graph: Graph, result: Result, width: int) -> list[Piece]:
