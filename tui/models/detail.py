@@ -43,9 +43,9 @@ def graph_line(graph: Graph, flow: str, shown: int, width: int, within: str = ""
     if (filters := graph.origin.where_words) is not None:
         # What was left out matters more than the way of the flow: that is cut off at the edge.
         room = width - 1 - cell_len(name) - len(counts) - cell_len(words) - 2
-        shown = tame(visible(filters))
-        room = min(max(room, _FILTER), cell_len(shown))
-        pieces.append((fit(shown, room) + "  ", "news"))
+        told = tame(visible(filters))
+        room = min(max(room, _FILTER), cell_len(told))
+        pieces.append((fit(told, room) + "  ", "news"))
     return [*pieces, (words, "plain")]
 
 
