@@ -24,11 +24,12 @@ STANDINGS, NODE, LOG, FORM, CHOICE, PROMPT, NOTICE, HELP, LOADING, SHORTLIST = (
 COLUMNS = "columns"  # sheet that chooses them
 SOLVES, APART = "solves", "apart"  # every solve; how two of them differ
 WAY, PLATE = "way", "plate"  # from one node to another; everything known of one
+START = "start"  # tables to choose from
 ROLES = "roles"  # which column of a table is what
 DOING = "doing"  # sheet that lists every action
 MAKEUP = "makeup"
 _LISTS = (SHORTLIST, SOLVES, APART, WAY, PLATE, MAKEUP)  # views that are one table
-_TABLES = (STANDINGS, NODE, LOG, CHOICE, HELP, COLUMNS, ROLES, *_LISTS)
+_TABLES = (STANDINGS, NODE, LOG, CHOICE, HELP, COLUMNS, START, ROLES, *_LISTS)
 _ROOMS = (STANDINGS, NODE, LOG, HELP, *_LISTS)
 _NODES = (STANDINGS, NODE, SHORTLIST)  # views in which a node is at hand
 _TYPING = (FORM, PROMPT, DOING)
@@ -52,6 +53,7 @@ VIEW_WORDS = {
     WAY: "Way",
     PLATE: "Name plate",
     MAKEUP: "Makeup",
+    START: "Start",
     ROLES: "Column roles",
     DOING: "Any action",
 }
@@ -247,8 +249,8 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "find.ask",
         ("slash",),
-        (STANDINGS,),
-        "find a name that contains a text",
+        (STANDINGS, START),
+        "find a name that contains a text; in Start, or write a path",
         "find",
         13,
         "Looking",
@@ -376,6 +378,34 @@ ACTIONS: tuple[Action, ...] = (
         "Asked something",
     ),
     Action(
+        "table.open",
+        ("enter",),
+        (START,),
+        "open the table, or go into the folder",
+        "open",
+        1,
+        "Opening",
+    ),
+    Action(
+        "table.columns",
+        ("c",),
+        (START,),
+        "choose which column is what before the table is read",
+        "choose columns",
+        14,
+        "Opening",
+    ),
+    Action("folder.up", ("left",), (START,), "to the folder above", "folder above", 15, "Opening"),
+    Action(
+        "start.open",
+        ("S",),
+        _ROOMS,
+        "to Start, to open another table; this sitting is kept",
+        "another table",
+        60,
+        "Opening",
+    ),
+    Action(
         "sitting.resume",
         ("enter",),
         (LOADING,),
@@ -396,7 +426,7 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "step.back",
         ("escape",),
-        (*_ROOMS, *_TYPING, CHOICE, NOTICE, COLUMNS, ROLES),
+        (*_ROOMS, *_TYPING, CHOICE, NOTICE, COLUMNS, START, ROLES, LOADING),
         "one step back; nothing is lost",
         "back",
         4,
@@ -413,7 +443,7 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "do.anything",
         ("g",),
-        (*_ROOMS, LOADING, ROLES),
+        (*_ROOMS, LOADING, START, ROLES),
         "go to any action: all of them by name, found by a few letters",
         "go to any action",
         89,
@@ -421,16 +451,16 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "help.open",
         ("question_mark",),
-        (STANDINGS, NODE, LOG, ROLES, *_LISTS),
+        (STANDINGS, NODE, LOG, START, ROLES, *_LISTS),
         "every key, in words",
         "all keys",
         90,
     ),
-    Action("quit", ("q",), (*_ROOMS, LOADING, ROLES), "quit", "quit", 91),
+    Action("quit", ("q",), (*_ROOMS, LOADING, START, ROLES), "quit", "quit", 91),
     Action(
         "quit.now",
         ("ctrl+c",),
-        (*_ROOMS, *_TYPING, CHOICE, NOTICE, LOADING, ROLES, COLUMNS),
+        (*_ROOMS, *_TYPING, CHOICE, NOTICE, LOADING, START, ROLES, COLUMNS),
         "quit at once, from anywhere",
     ),
 )

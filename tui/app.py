@@ -60,6 +60,7 @@ _VIEWS = (
     "way",
     "plate",
     "doing",
+    "start",
     "roles",
     "makeup",
 )
@@ -70,7 +71,8 @@ class KingpostApp(App[int], inherit_bindings=False):
 
     # The first screen is the app's own, whose style sheet textual does not look up by itself.
     CSS_PATH = [  # noqa: RUF012
-        os.path.join(os.path.dirname(__file__), name) for name in ("app.tcss", "views/loading.tcss")
+        os.path.join(os.path.dirname(__file__), name)
+        for name in ("app.tcss", "views/loading.tcss", "views/start.tcss")
     ]
     ENABLE_COMMAND_PALETTE = False
     HELPERS = (Keeper, Opener, Resumer, Routes, Within)
@@ -110,7 +112,14 @@ class KingpostApp(App[int], inherit_bindings=False):
     # ---- start and end -------------------------------------------------------------------------
 
     def get_default_screen(self) -> Screen[Any]:
-        return LoadingView(self.opener.paths)
+        return LoadingView(self.opener.paths) if self.opener.paths else self._start()
+
+    def _start(self) -> Screen[Any]:
+        from kingpost.tui.views.start import StartView
+
+        if self._trouble:
+            self.latest_news, self._trouble = (self._trouble, "bad"), ""
+        return StartView(self.config.folder)
 
     def on_mount(self) -> None:
         loop = self._loop
@@ -118,7 +127,8 @@ class KingpostApp(App[int], inherit_bindings=False):
             for number in (signal.SIGINT, signal.SIGTERM, signal.SIGHUP):
                 loop.add_signal_handler(number, self.leave, 128 + number)
         # The first frame is on its way before the heavy imports compete for the processor.
-        self.set_timer(0.01, self._begin)
+        if self.opener.paths:
+            self.set_timer(0.01, self._begin)
 
     def _begin(self) -> None:
         self.opener.begin()
@@ -137,9 +147,41 @@ class KingpostApp(App[int], inherit_bindings=False):
         self._desk = Desk(self.runner, made.sitting, self)
         self.keeper.begin(self.opener.paths, made.marks)
 
-    def back_to_start(self, sentence: str) -> bool:
+    def back_to_start(self, sentence: str, asked_for: bool) -> bool:
         """Back to the view in which tables are chosen, if they were chosen there."""
-        return False
+        first = self.screen_stack[0]
+        if isinstance(first, LoadingView):
+            return False
+        self._desk = None
+        while len(self.screen_stack) > 1:
+            self.pop_screen()
+        if asked_for:
+            self.news(sentence)
+        else:
+            self.notice("nothing was opened", sentence)
+        return True
+
+    def can_start_open(self) -> bool:
+        """Whether a graph is open."""
+        return self._desk is not None and self._desk.table is not None
+
+    def do_start_open(self) -> None:
+        """Keep this sitting and choose another table."""
+        from kingpost.tui.views.start import StartView
+
+        self._put_away()
+        told = (self.sentence, "bad") if self.sentence else ("this sitting is kept", "news")
+        self.sentence = ""
+        self.desk.close()
+        self._desk = None
+        self.keeper.end()
+        while len(self.screen_stack) > 1:
+            self.pop_screen()
+        self.latest_news = told
+        if isinstance(self.screen, StartView):
+            self.screen.look_again()
+        else:
+            self.switch_screen(self._start())
 
     def leave(self, status: int) -> None:
         """Leave with an exit status; the terminal is restored by the driver."""
@@ -176,8 +218,9 @@ class KingpostApp(App[int], inherit_bindings=False):
         self.leave(FAULT)
 
     def do_quit(self) -> None:
-        """Quit: answered."""
-        self.leave(0 if self._desk is not None else 130)
+        """Quit: answered, unless tables named on the command line were still being read."""
+        started = self._desk is not None or not isinstance(self.screen_stack[0], LoadingView)
+        self.leave(0 if started else 130)
 
     def do_quit_now(self) -> None:
         """Quit from anywhere."""

@@ -58,6 +58,10 @@ class Keeper:
         """Another graph has the screen, a part or the whole: the same marks by its numbers."""
         self._marks, self._copied = marks, None
 
+    def end(self) -> None:
+        """The sitting has ended: there are no marks to make."""
+        self._marks = None
+
     @property
     def marks(self) -> Marks:
         """The shortlist."""

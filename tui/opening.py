@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import dataclasses
 import os
-from collections.abc import Callable
+from collections.abc import Callable, Mapping
 from typing import TYPE_CHECKING, Any
 
 from kingpost.core.errors import KingpostError
@@ -19,7 +19,7 @@ from kingpost.tui.views.loading import LoadingView
 if TYPE_CHECKING:
     from kingpost.core.graph import Graph
     from kingpost.core.ingest import LoadOptions
-    from kingpost.core.ingest.peek import Peek
+    from kingpost.core.ingest.glance import Peek
     from kingpost.core.measures.base import Settings
     from kingpost.tui.app import KingpostApp
     from kingpost.tui.jobs import Job
@@ -77,6 +77,7 @@ class Opener:
         self._taken: Kept | None = None
         self._loaded: Loaded | Unclear | None = None
         self._trouble = ""
+        self._ask = False
 
     @property
     def first_measure(self) -> str:
@@ -85,9 +86,14 @@ class Opener:
 
     # ---- reading -------------------------------------------------------------------------------
 
-    def open(self, paths: list[str], options: LoadOptions | None = None) -> None:
-        """Open other tables than those the application was started with."""
-        self.paths, self._options, self._load_given = list(paths), options, None
+    def open(
+        self, paths: list[str], options: Mapping[str, Any] | None = None, *, ask: bool = False
+    ) -> None:
+        """Open other tables than those the application was started with, reading them by
+        ``options`` or, with ``ask``, once somebody has chosen which column is what.
+        """
+        self.paths, self._load_given, self._ask = list(paths), None, ask
+        self._options = lambda: _known_options(options or {})
         self._settings, self._how = None, ASK
         self._offer = self._taken = self._loaded = None
         self._app.push_screen(LoadingView(self.paths))
@@ -130,9 +136,7 @@ class Opener:
         options = options or LoadOptions()
         if self._taken is not None and options == LoadOptions():
             # Read as they were read then; what the command line says goes first.
-            known = {item.name for item in dataclasses.fields(LoadOptions)}
-            given = {k: v for k, v in self._taken.options.items() if k in known}
-            return LoadOptions(**given)
+            return _known_options(self._taken.options)
         return options
 
     def _work(self, job: Job, kept: Kept | None) -> Loaded | Unclear:
@@ -145,6 +149,9 @@ class Opener:
 
         warm.expect(self._measure)
         app, options = self._app, self._options_now()
+        if self._ask:
+            job.watch.report("looking at the columns")
+            return Unclear(peek(self.paths), options, "no columns were chosen")
         try:
             graph = (
                 self._load_given(job)
@@ -206,10 +213,24 @@ class Opener:
             made.sitting.current = measure
         self._app.desk.solve(measure, settings)
 
-    def fail(self, sentence: str) -> None:
-        """Nothing can be opened: back to where the tables were chosen, or out."""
+    def give_up(self) -> None:
+        """Stop reading and go back to where the tables were chosen."""
+        runner = self._app.runner
+        reading = runner.jobs("load")
+        for job in reading:
+            runner.cancel(job)  # and fails
+        if not reading:
+            if self._app.solving is not None:
+                self._app.desk.close()
+            self.fail("nothing was opened", asked_for=True)
+
+    def fail(self, sentence: str, asked_for: bool = False) -> None:
+        """Nothing is opened: back to where the tables were chosen, or out.
+
+        What was ``asked_for`` needs no notice that has to be closed.
+        """
         self._offer = self._taken = self._loaded = None
-        if self._app.back_to_start(sentence):
+        if self._app.back_to_start(sentence, asked_for or "cancelled before" in sentence):
             return
         self._app.sentence = sentence
         cancelled = any(job.watch.cancelled for job in self._app.runner.jobs("load"))
@@ -266,9 +287,9 @@ class Opener:
 
     def _columns_chosen(self, options: LoadOptions | None, sentence: str) -> None:
         if options is None:
-            self.fail(sentence)
+            self.fail(sentence, asked_for=True)
             return
-        self._options, self._load_given = options, None
+        self._options, self._load_given, self._ask = options, None, False
         self._read()
 
     # ---- tables opened before --------------------------------------------------------------------
@@ -285,3 +306,11 @@ class Opener:
 
         if self._load_given is None:
             self._app.background("recent", work, lambda _: None, words="noting the table")
+
+
+def _known_options(given: Mapping[str, Any]) -> LoadOptions:
+    """Options as they were noted down, without those that this version does not know."""
+    from kingpost.core.ingest import LoadOptions
+
+    known = {item.name for item in dataclasses.fields(LoadOptions)}
+    return LoadOptions(**{name: value for name, value in given.items() if name in known})

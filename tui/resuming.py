@@ -141,6 +141,7 @@ class Resumer:
         """Keep the sitting; the sentence if that fails."""
         if not self._began or self._app.standings_shown is None:
             return ""
+        self._began = False
         try:
             kept = self.kept()
             if kept is None:

@@ -17,7 +17,7 @@ if TYPE_CHECKING:
 
     from kingpost.core.graph import Floats, Graph
     from kingpost.core.ingest.about import TableAbout
-    from kingpost.core.ingest.peek import Peek
+    from kingpost.core.ingest.glance import Peek
     from kingpost.core.ingest.room import Prediction
     from kingpost.core.ingest.together import Together
     from kingpost.core.watch import Watch
@@ -160,6 +160,6 @@ def predict(
 
 def peek(paths: Paths, rows: int = 5, options: LoadOptions | None = None) -> Peek:
     """What :func:`describe` tells, and the first ``rows`` values of every column, safe to show."""
-    from kingpost.core.ingest.peek import peek as look
+    from kingpost.core.ingest.glance import peek as look
 
     return look(paths, rows, options)

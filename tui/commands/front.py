@@ -53,10 +53,10 @@ class Front(click.Group):
     """A group of named commands that takes anything else for the tables of the bare command."""
 
     def parse_args(self, ctx: click.Context, args: list[str]) -> list[str]:
-        if not args:
+        if not args and not (sys.stdin.isatty() and sys.stdout.isatty()):
             raise click.UsageError("no edge table was named; kingpost --help shows how")
         own = {name for option in self.get_params(ctx) for name in option.opts}
-        if args[0] not in self.commands and args[0] not in own:
+        if not args or (args[0] not in self.commands and args[0] not in own):
             args = [BARE, *args]
         return super().parse_args(ctx, args)
 

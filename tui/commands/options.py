@@ -106,6 +106,7 @@ no_store = _option(
 )
 
 edges = click.argument("edges", nargs=-1, required=True, metavar="EDGES...")
+edges_if_any = click.argument("edges", nargs=-1, metavar="[EDGES...]")
 
 loading = _stack(
     _option(LOADING, "--source", metavar="COLUMN", help="column an edge starts at [guessed]"),

@@ -22,7 +22,7 @@ if TYPE_CHECKING:
 
 
 @click.command(cls=Sectioned, hidden=True, add_help_option=False)
-@options.edges
+@options.edges_if_any
 @options.loading
 @options.measure
 @options.showing
@@ -37,6 +37,8 @@ def screen(edges: tuple[str, ...], **given: Any) -> int:
 
         piped = take_keyboard(given["threads"])
     if not sys.stdout.isatty() or not (piped or sys.stdin.isatty()):
+        if not edges:
+            raise click.UsageError("no edge table was named; kingpost --help shows how")
         from kingpost.tui.commands.rank import answer
 
         return answer(edges, given)

@@ -69,7 +69,8 @@ def narrowed(listed: list[Deed], text: str) -> list[Deed]:
         return all(word in about for word in words)
 
     def begins(deed: Deed) -> bool:
-        return bool(words) and deed.action.words.casefold().startswith(words[0])
+        about = (deed.action.words.casefold(), deed.action.id)
+        return bool(words) and any(text.startswith(words[0]) for text in about)
 
     kept = [deed for deed in listed if holds(deed)]
     return sorted(kept, key=lambda deed: (not deed.possible, not begins(deed)))

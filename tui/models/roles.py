@@ -11,7 +11,7 @@ from kingpost.tui.models.columns import Column
 
 if TYPE_CHECKING:
     from kingpost.core.ingest import LoadOptions
-    from kingpost.core.ingest.peek import Peek
+    from kingpost.core.ingest.glance import Peek
 
 SOURCE, TARGET, WEIGHT = "source", "target", "weight"
 _SHOWN_ROWS = 3

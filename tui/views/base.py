@@ -55,15 +55,15 @@ class View(Screen[Any], inherit_bindings=False):
     def possible(self, action_id: str) -> bool:
         """Whether an action of this view can be done now."""
         name = action_id.replace(".", "_")
-        can = self._found(f"can_{name}")
+        can = self._method(f"can_{name}")
         if can is not None and not can():
             return False
         return self._doer(name) is not None
 
     def _doer(self, name: str) -> Any:
-        return self._found(f"do_{name}")
+        return self._method(f"do_{name}")
 
-    def _found(self, name: str) -> Any:
+    def _method(self, name: str) -> Any:
         """A method of the view, else of the application, else of one of its helpers."""
         for one in (self, self.app, *self.kingpost.helpers):
             found = getattr(one, name, None)

@@ -34,6 +34,7 @@ class LoadingView(View):
         self._file_name = names[0] if len(names) == 1 else f"{names[0]} +{len(names) - 1}"
         self._stages: dict[str, Progress] = {}
         self._started = time.monotonic()
+        self._offered = ("", "", "")
 
     def compose(self) -> ComposeResult:
         yield Line(id="head")
@@ -52,10 +53,18 @@ class LoadingView(View):
         )
         self.refresh_keys()
         self._run_clock()
+        self.offer(*self._offered)
 
     def _run_clock(self) -> None:
         # On a slow link a clock is the first thing to go.
         self._clock = self.set_interval(5.0 if self.looks.slow else 1.0, self._tick)
+
+    def can_step_back(self) -> bool:
+        # Back is where the tables were chosen; from the command line there is only out.
+        return self.app.screen_stack[0] is not self
+
+    def do_step_back(self) -> None:
+        self.kingpost.opener.give_up()
 
     def again(self) -> None:
         """Reading begins once more."""
@@ -67,6 +76,9 @@ class LoadingView(View):
 
     def offer(self, title: str, words: str, changed: str) -> None:
         """Show what sitting was kept, or that nothing is offered if there is no title."""
+        self._offered = (title, words, changed)
+        if not self.composed:
+            return
         self.set_class(bool(title), "-offer")
         self.query_one("#kept", Rule).title(title)
         self.query_one("#words", Line).show((f" {words}", "strong"))

@@ -6,7 +6,7 @@ from textual import events
 from textual.app import ComposeResult
 
 from kingpost.core.ingest import LoadOptions
-from kingpost.core.ingest.peek import Peek
+from kingpost.core.ingest.glance import Peek
 from kingpost.core.text import visible
 from kingpost.tui.actions import ROLES
 from kingpost.tui.models.roles import Roles
@@ -43,6 +43,7 @@ class RolesView(RowsView):
 
     def on_resize(self, event: events.Resize) -> None:
         self.set_class(event.size.height < 12, "-low")
+        self.set_class(event.size.height < 8, "-lowest")
 
     def _describe(self) -> None:
         self.query_one("#words", Line).show((f" {self.model.words}", "strong"))
