@@ -7,7 +7,6 @@ disks that are slow to answer.
 from __future__ import annotations
 
 import os
-from collections.abc import Callable
 from dataclasses import dataclass
 
 from kingpost.core.errors import InputError
@@ -54,17 +53,11 @@ class Listing:
         return f"{count(tables, 'table')}, {count(folders, 'folder')}"
 
 
-def is_table() -> Callable[[str], bool]:
-    """What tells by a file's name whether it is a table that can be read."""
-    from importlib import import_module
+def is_table(name: str) -> bool:
+    """Whether a file is a table that can be read, going by its name."""
+    from kingpost.core.ingest.formats import ENDINGS, ending_format
 
-    try:
-        formats = import_module("kingpost.core.ingest.formats")
-    except ImportError:
-        from kingpost.core.ingest.files import ENDINGS
-
-        return lambda name: name.lower().endswith(ENDINGS)
-    return lambda name: formats.ending_format(name) in formats.ENDINGS
+    return ending_format(name) in ENDINGS
 
 
 def listed(folder: str, watch: Watch | None = None) -> Listing:
@@ -74,7 +67,7 @@ def listed(folder: str, watch: Watch | None = None) -> Listing:
         InputError: if it cannot be read.
         Interrupted: if ``watch`` was cancelled.
     """
-    watch, table = watch or Watch(), is_table()
+    watch = watch or Watch()
     folder = os.path.abspath(os.path.expanduser(folder))
     folders: list[Entry] = []
     tables: list[Entry] = []
@@ -87,7 +80,7 @@ def listed(folder: str, watch: Watch | None = None) -> Listing:
                 try:
                     if item.is_dir():
                         folders.append(Entry(FOLDER, item.name))
-                    elif table(item.name):
+                    elif is_table(item.name):
                         about = item.stat()
                         tables.append(Entry(TABLE, item.name, about.st_size, about.st_mtime))
                 except OSError:
