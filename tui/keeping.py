@@ -43,7 +43,9 @@ class Keeper:
 
         trouble, kept = "", []
         try:
-            kept = model.read(paths) or model.read_moved(graph)
+            # What comes through a pipe has no place of its own: it is known by what it is.
+            kept = [] if "-" in paths else model.read(paths)
+            kept = kept or model.read_moved(graph)
         except KingpostError as error:
             trouble = error.sentence
         return model.locate(graph, kept), trouble
@@ -92,7 +94,8 @@ class Keeper:
             fingerprint = graph.fingerprint if job is not None else vars(graph).get("fingerprint")
             with self._lock:
                 if version > self._written:
-                    model.save(rows, paths, graph, fingerprint)
+                    piped = [f"-/{graph.fingerprint}"] if "-" in paths else paths
+                    model.save(rows, piped, graph, fingerprint)
                     self._written = version
 
         return work

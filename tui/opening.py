@@ -304,7 +304,7 @@ class Opener:
 
             recent.note(paths, graph.n, graph.m, options)
 
-        if self._load_given is None:
+        if self._load_given is None and "-" not in self.paths:
             self._app.background("recent", work, lambda _: None, words="noting the table")
 
 

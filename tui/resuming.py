@@ -139,7 +139,7 @@ class Resumer:
 
     def close(self) -> str:
         """Keep the sitting; the sentence if that fails."""
-        if not self._began or self._app.standings_shown is None:
+        if not self._began or self._app.standings_shown is None or "-" in self._paths:
             return ""
         self._began = False
         try:
