@@ -18,7 +18,7 @@ from kingpost.core.text import count, visible
 from kingpost.core.watch import Watch
 from kingpost.tui.models.chart import Cell
 from kingpost.tui.models.columns import Column
-from kingpost.tui.models.numbers import percent
+from kingpost.tui.models.numbers import compact, percent
 from kingpost.tui.models.pairs import Row
 from kingpost.tui.terminal import UNICODE, Glyphs
 
@@ -160,7 +160,7 @@ def degree_chart(
     rows: list[list[Cell]] = []
     ticks = _ticks(n, plot_h, lambda nodes: round((1.0 - math.log(nodes) / rise) * (plot_h - 1)))
     for y, line in enumerate(grid):
-        label = f"{ticks[y]:,}" if y in ticks else ""
+        label = _short(ticks[y]) if y in ticks else ""
         left = [(c, "quiet") for c in label.rjust(_LEFT - 1)[-(_LEFT - 1) :] + " "]
         rows.append([*left, (glyphs.axis, "rule"), *line, (" ", "plain")])
     foot = " " * _LEFT + glyphs.corner + glyphs.rule * plot_w
@@ -177,6 +177,10 @@ def degree_chart(
             end = start + len(text) + 1
     rows.append([(c, "quiet") for c in words])
     return rows
+
+
+def _short(count: int) -> str:
+    return f"{count:,}" if count < 1_000_000 else compact(count)
 
 
 def _ticks(top: int, room: int, place: Any, flip: bool = True) -> dict[int, int]:

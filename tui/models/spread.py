@@ -15,7 +15,7 @@ if TYPE_CHECKING:
     from kingpost.core.result import Result
 
 FINE = 240  # cells counted once; a line of any width merges them
-WIDTH = 30
+WIDTH = 24
 _PIECE = 1_000_000
 
 

@@ -16,9 +16,10 @@ _LEAST = 12  # cells of the histogram below which it is left out
 
 
 class SpreadRule(Line):
-    """A rule with a title on the left and a histogram on the right; a cell of it is marked.
+    """A rule with a histogram on the left, a cell of it marked, and a title behind it.
 
-    Moving the mark repaints two cells.
+    A terminal is sent a line from its beginning to what changed: the histogram stands first, so
+    that moving the mark costs little.
     """
 
     def __init__(self, id: str | None = None) -> None:
@@ -38,26 +39,23 @@ class SpreadRule(Line):
         before, self._score = self._place(), math.nan if score is None else float(score)
         here = self._place()
         if before != here:
-            for x in (before, here):
-                if x is not None:
-                    self.refresh(Region(x, 0, 1, 1))
+            both = [x for x in (before, here) if x is not None]
+            self.refresh(Region(min(both), 0, max(both) - min(both) + 1, 1))
 
     def _bars(self) -> tuple[int, int]:
         """Where the histogram begins, and how many cells it has; none where there is no room."""
         spread, width = self._spread, self.size.width
         if spread is None or not math.isfinite(spread.low):
             return 0, 0
-        title = cell_len(self._title) + 4 if self._title else 2
-        ends = cell_len(self._before()) + cell_len(self._after()) + 2
-        room = min(width - min(title, width // 2) - ends, WIDTH)
-        if room < _LEAST:
-            return 0, 0
-        return width - room - cell_len(self._after()) - 1, room
+        start = 1 + cell_len(self._before())
+        title = min(cell_len(self._title) + 4, width // 2) if self._title else 2
+        room = min(width - start - cell_len(self._after()) - title, WIDTH)
+        return (start, room) if room >= _LEAST else (0, 0)
 
     def _before(self) -> str:
         assert self._spread is not None
         zeros = f"{self._spread.zeros:,} at 0, " if self._spread.zeros else ""
-        return f" scores: {zeros}{self._spread.low:.2g} "
+        return f" scores {zeros}{self._spread.low:.2g} "
 
     def _after(self) -> str:
         assert self._spread is not None
@@ -84,21 +82,20 @@ class SpreadRule(Line):
             title = f" {shown} " if shown else ""
             rest = max(width - 1 - cell_len(title), 0)
             return [(rule, "rule"), (title, "strong"), (rule * rest, "rule")]
-        before = self._before()
-        room = start - cell_len(before) - 1
-        pieces: list[Piece] = [(rule, "rule")]
-        if self._title:
-            shown = fit(self._title, min(cell_len(self._title), room - 3), glyphs=looks.glyphs)
-            pieces.append((f" {shown} ", "strong"))
-            room -= cell_len(shown) + 2
-        pieces += [(rule * max(room, 0), "rule"), (before, "plain")]
+        pieces: list[Piece] = [(rule, "rule"), (self._before(), "plain")]
         bars = spread.bars(cells, looks.glyphs)
         at = spread.cell(self._score, cells)
         if at is None:
             pieces.append((bars, "bar"))
         else:
             pieces += [(bars[:at], "bar"), (looks.glyphs.here, "cursor"), (bars[at + 1 :], "bar")]
-        return [*pieces, (self._after(), "plain"), (rule, "rule")]
+        pieces.append((self._after(), "plain"))
+        room = width - start - cells - cell_len(self._after())
+        if self._title:
+            shown = fit(self._title, min(cell_len(self._title), room - 4), glyphs=looks.glyphs)
+            pieces += [(rule, "rule"), (f" {shown} ", "strong")]
+            room -= cell_len(shown) + 3
+        return [*pieces, (rule * max(room, 0), "rule")]
 
     def render_line(self, y: int) -> Strip:
         return strip_of(self._pieces(), self.size.width, looks_of(self))
