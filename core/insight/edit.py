@@ -11,8 +11,13 @@ from numpy.typing import NDArray
 
 from kingpost.core.errors import SettingsError
 from kingpost.core.graph import Adjacency, Floats, Graph
+from kingpost.core.parallel import each
+from kingpost.core.structure import row_pieces
+from kingpost.core.watch import Watch
 
 Ints = NDArray[np.int64]
+_LOW = 0xFFFFFFFF
+_PIECE = 2_000_000  # edges copied between two looks at the watch
 
 
 @dataclass(frozen=True)
@@ -101,22 +106,27 @@ def edit_named(
     return edit_of(graph, [graph.find(name) for name in without], edges)
 
 
-def edited(graph: Graph, edit: Edit) -> tuple[Graph, Ints]:
+def edited(graph: Graph, edit: Edit, watch: Watch | None = None) -> tuple[Graph, Ints]:
     """The graph after an edit, and the old number of each of its nodes, shape (n - gone,).
 
     A node that loses its last edge stays, as an isolated one.  The account stays that of the
     table read.  O(n + m), without reading any table again.
+
+    Raises:
+        Interrupted: if ``watch`` was cancelled.
     """
+    watch = watch or Watch()
     old = edit.stay(graph.n)
     kept = np.zeros(graph.n, dtype=bool)
     kept[old] = True
     number = (np.cumsum(kept) - 1).astype(np.uint32)
     keys, factors = edit.keys(), np.array(edit.factors, dtype=np.float64)
-    outward = _masked(graph.outward, kept, number, keys, factors)
+    outward = _masked(graph.outward, kept, number, keys, factors, watch)
     inward = outward
     if graph.directed:
-        turned = ((keys & 0xFFFFFFFF) << 32) | (keys >> 32)
-        inward = _masked(graph.inward, kept, number, turned, factors)
+        turned = ((keys & _LOW) << 32) | (keys >> 32)
+        inward = _masked(graph.inward, kept, number, turned, factors, watch)
+    watch.check()
     taken = pa.array(old)
     attributes = None if graph.attributes is None else graph.attributes.take(taken)
     labels = graph.labels.take(taken)
@@ -130,28 +140,52 @@ def _masked(
     number: NDArray[np.uint32],
     keys: Ints,
     factors: Floats,
+    watch: Watch,
 ) -> Adjacency:
     """One direction without what is gone; ``keys`` are ``row << 32 | neighbour``."""
-    stay = kept[side.neighbours]
-    for node in np.flatnonzero(~kept):
-        stay[side.offsets[node] : side.offsets[node + 1]] = False
-    weights = side.weights
-    if len(keys):
-        at = np.array([_place(side, int(key >> 32), int(key & 0xFFFFFFFF)) for key in keys])
-        stay[at[factors == 0]] = False
-        if ((factors > 0) & (factors != 1)).any():
-            weights = np.ones(len(stay)) if weights is None else weights.copy()
-            weights[at] *= factors
-    # Entries left before each offset; a row's length is the difference of two.
-    before = np.zeros(len(stay) + 1, np.int64)
-    np.cumsum(stay, out=before[1:])
-    lengths = np.diff(before[side.offsets])[kept]
-    offsets = np.zeros(len(lengths) + 1, np.int64)
-    np.cumsum(lengths, out=offsets[1:])
-    neighbours = number[side.neighbours[stay]]
-    return Adjacency(offsets, neighbours, None if weights is None else weights[stay])
+    from kingpost.core.kernels.mask import copy_kept, count_kept
+
+    n = len(kept)
+    gone = np.sort(np.array([_place(side, key) for key in keys[factors == 0]], dtype=np.int64))
+    pieces = list(row_pieces(side.offsets, _PIECE))
+    lengths = np.zeros(n, dtype=np.int64)
+
+    def counted(piece: tuple[int, int]) -> None:
+        watch.check()
+        at = int(np.searchsorted(gone, side.offsets[piece[0]]))
+        count_kept(side.offsets, side.neighbours, *piece, kept, gone, at, lengths)
+
+    each(counted, pieces, watch.threads)
+    starts = np.zeros(n + 1, dtype=np.int64)
+    np.cumsum(lengths, out=starts[1:])
+    near = np.empty(int(starts[-1]), dtype=np.uint32)
+    heavy = np.empty(0 if side.weights is None else len(near))
+
+    def copied(piece: tuple[int, int]) -> None:
+        watch.check()
+        at = int(np.searchsorted(gone, side.offsets[piece[0]]))
+        copy_kept(
+            side.offsets, side.neighbours, side.weights, *piece, kept, number, gone, at, starts,
+            near, heavy,
+        )  # fmt: skip
+
+    each(copied, pieces, watch.threads)
+    offsets = np.append(starts[:-1][kept], starts[-1])
+    weights = None if side.weights is None else heavy
+    scaled = np.flatnonzero((factors != 0) & (factors != 1))
+    if len(scaled) and weights is None:
+        weights = np.ones(len(near))
+    made = Adjacency(offsets, near, None)
+    for which in scaled.tolist():
+        source, target = int(keys[which] >> 32), int(keys[which] & _LOW)
+        if weights is not None and kept[source] and kept[target]:
+            key = (int(number[source]) << 32) | int(number[target])
+            weights[_place(made, key)] *= factors[which]
+    return Adjacency(offsets, near, weights)
 
 
-def _place(side: Adjacency, row: int, neighbour: int) -> int:
+def _place(side: Adjacency, key: int) -> int:
+    """Where the entry of ``row << 32 | neighbour`` stands."""
+    row, neighbour = int(key) >> 32, int(key) & _LOW
     start, end = int(side.offsets[row]), int(side.offsets[row + 1])
     return start + int(np.searchsorted(side.neighbours[start:end], neighbour))

@@ -32,6 +32,7 @@ from kingpost.core.measures.base import Settings
 from kingpost.core.measures.common import reason
 from kingpost.core.measures.vectors import distribution, node_vector
 from kingpost.core.result import Result, Seconds, Stop
+from kingpost.core.structure import analyse
 from kingpost.core.watch import Watch
 
 LOOSER = 16  # how much more error is allowed after a change than before
@@ -159,8 +160,9 @@ def resolve(
     if found is None or found.bound.value > tol:
         visits = 0 if found is None else found.edge_visits
         start = (result.scores if found is None else found.scores)[nodes]
-        changed, _ = edited(graph, edit)
-        watch.check()
+        watch.report("changing the graph")
+        changed, _ = edited(graph, edit, watch)
+        changed.__dict__["structure"] = analyse(changed, watch)  # where it can be cancelled
         after, method = solve_near(result.measure, changed, settings, start, watch)
         watch.check()
         return after, method, visits + after.edge_visits

@@ -50,7 +50,7 @@ from kingpost.tui.commands.session import Session, load_options
     help="where jumps land [any node alike]",
 )
 @options.insight(
-    "--tol", type=float, metavar="E", help="error allowed in the stationary distribution [1e-10]"
+    "--tol", type=float, metavar="E", help="error allowed in the stationary distribution [1e-8]"
 )
 @options.loading
 @answering.output("steps, places, modes")
@@ -67,7 +67,7 @@ def walk(edges: tuple[str, ...], **given: Any) -> int:
 
     form = answering.prepared(edges, given)
     surfer = measure("surfer")
-    values = {"damping": 1.0, **given_settings(given)}
+    values = {"damping": 1.0, "tol": 1e-8, **given_settings(given)}
     build_early(surfer, values)
     with Session(given["threads"]) as session:
         graph, _ = session.load(edges, load_options(given))
