@@ -17,7 +17,7 @@ from kingpost.core.watch import Watch
 
 Ints = NDArray[np.int64]
 _LOW = 0xFFFFFFFF
-_PIECE = 2_000_000  # edges copied between two looks at the watch
+_PIECE = 1_000_000  # edges copied between two looks at the watch
 
 
 @dataclass(frozen=True)

@@ -26,7 +26,7 @@ from kingpost.core.result import Result
 from kingpost.core.watch import Watch
 
 RISERS = 3
-_PIECE = 4_000_000  # edges searched between two looks at the watch
+_PIECE = 1_000_000  # edges searched between two looks at the watch
 
 
 @dataclass(frozen=True, slots=True)

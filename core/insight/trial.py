@@ -158,7 +158,7 @@ def resolve(
     updates = updates or Updates(graph, result)
     found = updates.after(edit, watch, tol=tol / 2)
     if found is None or found.bound.value > tol:
-        visits = 0 if found is None else found.edge_visits
+        visits = updates.spent
         start = (result.scores if found is None else found.scores)[nodes]
         watch.report("changing the graph")
         changed, _ = edited(graph, edit, watch)

@@ -34,8 +34,8 @@ from kingpost.core.result import Bound, BoundKind, Result
 from kingpost.core.watch import Watch
 
 PUSHED = "residual updates"
-_SLICE = 2_000_000  # edges pushed between two looks at the watch
-_PASSES = 12  # edge visits, in passes over all edges, after which updates do not pay
+_SLICE = 500_000  # edges pushed between two looks at the watch
+_PASSES = 3  # edge visits, in passes over all edges, after which updates do not pay
 _LEAST = 3_000_000  # edges a push may always read, however small the graph
 _ROWS = 500_000
 _RATE = 6  # passes over which the rate of residuals is looked at
@@ -70,6 +70,7 @@ class Updates:
 
     def __init__(self, graph: Graph, result: Result) -> None:
         self.graph, self.result = graph, result
+        self.spent = 0  # edges read by the latest update, given up or not
         self._system = _system(graph, result)
         if self._system is None:
             return
@@ -103,6 +104,7 @@ class Updates:
         Raises:
             Interrupted: if ``watch`` was cancelled.
         """
+        self.spent = 0
         if self._system is None:
             return None
         tol = self.result.settings.tol if tol is None else tol
@@ -204,8 +206,11 @@ class Updates:
                     floor, r, change, self._loops, _SLICE,
                 )  # fmt: skip
                 visits += read
+                self.spent = visits
             if visits == before or self.graph.structure.acyclic:
                 return visits
+            if visits > limit:
+                return None
             r[self._blocked] = 0.0
             size = np.abs(r[:, 0])
             sums.append(float(size.sum()))
