@@ -1,12 +1,15 @@
 """How long loading takes against reading the two columns alone, and how much memory it needs.
 
+    python tests/bench/graphs.py FOLDER                     (the bench graphs)
     python tests/bench/ingest.py make FOLDER [--rows 16000000] [--nodes 1000000]
-    python tests/bench/ingest.py run FOLDER
+    python tests/bench/ingest.py run FOLDER [--kinds NAME ...]
 
+Without ``--kinds`` it measures what FOLDER holds of the bench graphs and of what ``make`` makes.
 Every measurement is a process of its own, reading and loading by turns, ``--rounds`` times.
 Seconds, of the clock and of the processor over all threads, are the best of all runs (``--times``
-in each process) after one small load has compiled the loops.  Memory is the greatest resident
-size less what the process held before; like that of the columns it is told in bytes a row.
+in each process) after small loads have compiled the loops.  Memory is the greatest resident
+size less what the process held before; like that of the columns it is told in bytes a row, and
+``over`` is what it exceeds the columns by.
 """
 
 from __future__ import annotations
@@ -24,6 +27,7 @@ import pyarrow as pa
 import pyarrow.parquet as pq
 
 KINDS = ("dense", "weighted", "sparse", "text", "few")
+BENCH = ("rmat20", "rmat20_text", "citation", "citation_errors", "layered", "powerlaw")
 GROUP = 1 << 20
 
 
@@ -94,14 +98,14 @@ class Peak:
 
 def measure(path: Path, what: str, times: int) -> dict[str, float]:
     """Seconds and peak memory of one way of reading, in this process."""
-    columns = ["source", "target"] + (["weight"] if path.stem == "weighted" else [])
+    held = pq.read_schema(path).names
+    columns = [name for name in ("source", "target", "weight") if name in held]
     if what == "load":
-        from kingpost.core.ingest import from_table, load
+        from kingpost.core import warm
+        from kingpost.core.ingest import load
+        from kingpost.core.watch import Watch
 
-        small = pq.ParquetFile(path)
-        from_table(pa.Table.from_batches([next(small.iter_batches(1_000))]))
-        for kernels_of in (1, 10**12):
-            from_table(pa.table({"source": [1, 2 * kernels_of], "target": [2, 3]}))
+        warm.run([""], Watch())
     work = (
         (lambda: load(path)) if what == "load" else (lambda: pq.read_table(path, columns=columns))
     )
@@ -123,8 +127,8 @@ def measure(path: Path, what: str, times: int) -> dict[str, float]:
 
 def run(folder: Path, kinds: list[str], times: int, rounds: int) -> None:
     """Print one line a file; sizes in bytes a row."""
-    heads = ("read s", "load s", "read cpu", "load cpu", "ratio", "columns", "peak")
-    print(f"{'file':10}{'rows':>12}" + "".join(f"{head:>10}" for head in heads))
+    heads = ("read s", "load s", "read cpu", "load cpu", "ratio", "columns", "peak", "over")
+    print(f"{'file':16}{'rows':>12}" + "".join(f"{head:>10}" for head in heads))
     for kind in kinds:
         path = folder / f"{kind}.parquet"
         rows = pq.ParquetFile(path).metadata.num_rows
@@ -138,8 +142,9 @@ def run(folder: Path, kinds: list[str], times: int, rounds: int) -> None:
                     best[key] = min(value, best.get(key, value))
         read, loaded = found["read"], found["load"]
         figures = [each[key] for key in ("seconds", "cpu") for each in (read, loaded)]
-        figures += [loaded["seconds"] / read["seconds"], read["size"] / rows, loaded["used"] / rows]
-        print(f"{kind:10}{rows:12,}" + "".join(f"{figure:10.2f}" for figure in figures), flush=True)
+        columns, peak = read["size"] / rows, loaded["used"] / rows
+        figures += [loaded["seconds"] / read["seconds"], columns, peak, peak - columns]
+        print(f"{kind:16}{rows:12,}" + "".join(f"{figure:10.2f}" for figure in figures), flush=True)
 
 
 def main() -> None:
@@ -151,14 +156,15 @@ def main() -> None:
     parser.add_argument("--nodes", type=int, default=1_000_000)
     parser.add_argument("--times", type=int, default=3)
     parser.add_argument("--rounds", type=int, default=3)
-    parser.add_argument("--kinds", nargs="*", default=list(KINDS))
+    parser.add_argument("--kinds", nargs="*", metavar="NAME")
     given = parser.parse_args()
     if given.task == "make":
         make(given.place, given.rows, given.nodes)
     elif given.task == "one":
         print(json.dumps(measure(given.place, given.what, given.times)))
     else:
-        run(given.place, given.kinds, given.times, given.rounds)
+        there = [kind for kind in (*BENCH, *KINDS) if (given.place / f"{kind}.parquet").exists()]
+        run(given.place, given.kinds or there, given.times, given.rounds)
 
 
 if __name__ == "__main__":
