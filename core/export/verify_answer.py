@@ -149,6 +149,8 @@ def _graph_words(graph: Graph, match: Match) -> str:
         words = [f"score flowing {match.flow} the edges"]
     if choice.weights != "asis":
         words.append(f"weights {WEIGHT_WORDS[choice.weights]}")
+    elif graph.weighted and graph.origin.weight is None:
+        words.append("every row counting 1")
     elif graph.weighted:
         words.append(f"weighted by {visible(graph.origin.weight_words, 40)}")
     if choice.loops != "keep":

@@ -47,7 +47,9 @@ def rereadings(
 
         return make
 
-    found = {"count": read("count")} if options.parallel != "count" else {}
+    # Without weights the sum of parallel rows is their number.
+    counted = options.parallel == "count" or (options.parallel == "sum" and origin.weight is None)
+    found = {} if counted else {"count": read("count")}
     if graph.weighted and origin.weight is not None:
         found["last"] = read("first", backwards=True)
         found["first"] = read("first")

@@ -250,6 +250,8 @@ def test_parallel_rows_are_read_again_as_other_software_reads_them(tmp_path: Pat
         assert verify(graph, values).verdict == NONE
     assert rereadings([str(path)], kp.LoadOptions(), kp.load(path, parallel="first"), kp.Watch())
     assert rereadings([], kp.LoadOptions(), kp.from_edges([(1, 2)]), kp.Watch()) == {}
+    plain = kp.from_edges([(1, 2), (1, 2)])  # the sum of rows without weights is their number
+    assert rereadings([], kp.LoadOptions(), plain, kp.Watch()) == {}
 
 
 def test_a_file_of_scores_is_matched_by_id(tmp_path: Path, graph: Graph) -> None:
