@@ -173,6 +173,7 @@ class KingpostApp(App[int], inherit_bindings=False):
         told = (self.sentence, "bad") if self.sentence else ("this sitting is kept", "news")
         self.sentence = ""
         self.desk.close()
+        self.within.forget()
         self._desk = None
         self.keeper.end()
         while len(self.screen_stack) > 1:

@@ -36,6 +36,9 @@ class EnteringView(LoadingView):
         super().opened()
         self.query_one("#stages", Line).show((f" {self._words}", "plain"))
 
+    def do_step_back(self) -> None:
+        self.kingpost.within.leave()
+
 
 @dataclass
 class _Outer:
@@ -125,6 +128,12 @@ class Within:
         self._app.seat(outer.desk, Marks(marks))
         self._app.pop_screen()
         outer.desk.resume()
+
+    def forget(self) -> None:
+        """Another table is opened: nothing is left to come back to."""
+        for outer in self._outer:
+            outer.desk.close()
+        self._outer = []
 
     def no_start(self, sentence: str) -> None:
         """The first solve inside failed: back, with the reason."""

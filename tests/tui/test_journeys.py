@@ -566,3 +566,23 @@ async def test_what_the_whole_solves_meanwhile_is_kept_for_the_return(app, bench
         await pilot.press("escape", "escape")
         await until(pilot, lambda: app.within.depth == 0)
         assert "held" in app.sitting.results
+
+
+async def test_going_into_a_component_is_given_up_by_escape(app, bench):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        bench.release.set()
+        app.desk.solve("held", None)
+        await until(pilot, lambda: app.sitting.current == "held" and not app.runner.jobs("table"))
+        bench.release.clear()
+        await pilot.press("M")
+        await turn_to(pilot, "strong components")
+        await until(pilot, lambda: "5 strong components" in app.shown())
+        await pilot.press("enter")
+        await until(pilot, lambda: app.within.depth == 1 and app.screen.view == "loading")
+        assert "strong component 1 of hand_made.parquet" in app.shown()
+        await pilot.press("escape")
+        await until(pilot, lambda: app.within.depth == 0 and app.screen.view == "makeup")
+        await until(pilot, lambda: not app.runner.jobs("solve"))
+        assert app.sitting.graph.n == 6
+        assert "5 strong components" in app.shown()
