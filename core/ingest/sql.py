@@ -119,7 +119,8 @@ class Expression:
         near = difflib.get_close_matches(name.lower(), list(lower), 3, 0.6)
         advice = f"; did you mean {', '.join(lower[item] for item in near)}?" if near else ";"
         quotes = "" if near else " (text stands in single quotes)"
-        have = listed([f"{item.name} ({item.type})" for item in schema], 12)
+        told = ["" if pa.types.is_null(item.type) else f" ({item.type})" for item in schema]
+        have = listed([f"{item.name}{kind}" for item, kind in zip(schema, told, strict=True)], 12)
         raise InputError(
             f"{self.option} names column {name!r}, which {where} lacks{quotes}{advice} its "
             f"columns are {have}"

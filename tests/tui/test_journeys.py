@@ -77,7 +77,7 @@ async def test_sort_find_and_filter(app):
         await until(pilot, lambda: "1 of 1 names with 'QU'" in app.shown())
         assert app.screen.model.graph.label(app.screen.model.node) == "quay"
         await pilot.press("f", *"tiers > 1", "enter")
-        await until(pilot, lambda: "no column is called 'tiers' at character 1" in app.shown())
+        await until(pilot, lambda: "names column 'tiers', which this table lacks" in app.shown())
         assert "   6 nodes" in app.shown()  # the rows stay as they were
         await pilot.press(*["backspace"] * 5, *" > 1", "enter")
         await until(pilot, lambda: "3 of 6 nodes" in app.shown())
@@ -114,7 +114,7 @@ async def test_a_filter_that_new_results_cannot_answer_is_taken_off(app):
         await until(pilot, lambda: "2 of 6 nodes" in app.shown())
         app.desk.sitting.results.pop("plain")
         app.desk.choose("mirror")
-        await until(pilot, lambda: "the filter is taken off: no column" in app.shown())
+        await until(pilot, lambda: "the filter is taken off: the condition" in app.shown())
         assert "   6 nodes" in app.shown()
 
 

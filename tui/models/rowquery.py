@@ -84,13 +84,13 @@ def kept(
 
 def _advice(sentence: str, where: str) -> str:
     """A name typed where a condition is wanted; a measure that is not solved."""
-    unsolved = re.search(r"no column is called '(\w+)_(?:rank|score)'", sentence)
+    unsolved = re.search(r"names column '(\w+)_(?:rank|score)'", sentence)
     if unsolved:
         from kingpost.core.measures import NAMES
 
         if unsolved[1] in NAMES:
             return f" ({unsolved[1]} is not solved yet: m solves it)"
     word = where.strip()
-    if re.fullmatch(r"[\w-]+", word) and sentence.startswith("no column"):
+    if re.fullmatch(r"[\w-]+", word) and "names column" in sentence:
         return f" (for names: node like '%{word}%')"
     return ""

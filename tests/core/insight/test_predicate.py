@@ -42,7 +42,6 @@ def kept(text):
         ("null", []),
         ("true", [0, 1, 2, 3, 4, 5]),
         ("rank < 4 -- and more", [0, 1, 2]),
-        ("rank > (select avg(rank) from nodes)", [3, 4, 5]),
         ("team like '%e%'", [0, 2, 3, 5]),
     ],
 )
@@ -53,22 +52,22 @@ def test_keeps_what_the_condition_says(text, expected):
 @pytest.mark.parametrize(
     ("text", "said"),
     [
-        ("rnk < 3", "no column is called 'rnk' at character 1, near 'rnk'; did you mean rank?"),
-        ("rank < 3 and xyzzy = 2", "no column is called 'xyzzy' at character 14"),
-        ("rank <", "does not read as SQL"),
-        ("rank < 3 4", "does not read as SQL at character 10, near '4'"),
-        ("rank", "gives a number for each row, not true or false"),
-        ("team", "gives a text for each row"),
-        ("rank < 3; drop table nodes", "one condition is taken"),
-        ("rank < 3, true", "one condition is taken"),
-        ("rank < 3 order by rank", "one condition is taken"),
-        ("true) union select (1", "does not read as SQL"),
-        ("count(*) > 1", "one row at a time"),
-        ("row_number() over () < 2", "one row at a time"),
-        ("zap(rank) = 1", "there is no function 'zap' at character 1"),
-        ("", "no condition is written"),
-        ("team like '%a", "not finished"),
-        ("score < 'x'", "cannot be worked out"),
+        ("rnk < 3", "names column 'rnk', which this table lacks; did you mean rank?"),
+        ("rank < 3 and xyzzy = 2", "names column 'xyzzy', which this table lacks"),
+        ("rank <", "does not read as one SQL expression"),
+        ("rank < 3 4", "does not read as one SQL expression at position 10"),
+        ("rank", "a value of type BIGINT for each row"),
+        ("team", "a value of type VARCHAR for each row"),
+        ("rank < 3; drop table nodes", "one SQL expression"),
+        ("rank < 3, true", "one SQL expression"),
+        ("rank < 3 order by rank", "one SQL expression"),
+        ("true) union select (1", "does not read as one SQL expression"),
+        ("count(*) > 1", "a value of many rows"),
+        ("row_number() over () < 2", "a window function"),
+        ("zap(rank) = 1", "uses zap, which is no function"),
+        ("", "is empty"),
+        ("team like '%a", "does not read as one SQL expression"),
+        ("score < 'x'", "cannot be evaluated on this table"),
     ],
 )
 def test_says_in_one_sentence_what_is_wrong(text, said):
@@ -88,7 +87,7 @@ def test_says_in_one_sentence_what_is_wrong(text, said):
     ],
 )
 def test_reads_no_file(text):
-    with pytest.raises(SettingsError, match="nothing but the columns"):
+    with pytest.raises(SettingsError, match="a query within the expression"):
         kept(text)
 
 
@@ -111,15 +110,9 @@ def test_only_the_columns_named_are_made():
 
 def test_a_long_question_ends_when_asked():
     watch = Watch(threads=1)
-    n = 200_000
+    n = 2_000_000
     columns = {"rank": lambda: pa.array(np.arange(n))}
-    threading.Timer(0.1, watch.cancel).start()
+    threading.Timer(0.05, watch.cancel).start()
+    long = " + ".join(f"sin(rank + {k})" for k in range(60))
     with pytest.raises(Interrupted):
-        # Every row against every other by a comparison that no hash can help.
-        matching(
-            columns,
-            n,
-            "(select count(*) from nodes a, nodes b where sin(a.rank) < cos(b.rank) * sqrt(b.rank))"
-            " > rank",
-            watch,
-        )
+        matching(columns, n, f"{long} > 0", watch)
