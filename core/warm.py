@@ -10,7 +10,6 @@ are ready.  For programs that are about to load something large; a library has n
 from __future__ import annotations
 
 import contextlib
-import sys
 import threading
 from collections.abc import Sequence
 from typing import Any
@@ -68,7 +67,6 @@ def heed(report: Progress) -> threading.Thread | None:
 def _run(names: Sequence[str]) -> None:
     # Whatever goes wrong here will go wrong again, and be told, where it matters.
     with contextlib.suppress(Exception):
-        leave_out_blas()
         run(names, _Quiet())
 
 
@@ -111,28 +109,3 @@ def _of_large_graphs() -> None:
     move_left(near, 0, 1, 0)
     move_left(scores, 0, 1, 0)
     copy_rows(near, 0, 1, scores, scores)
-
-
-def leave_out_blas() -> None:
-    """Spare the import of ``scipy.linalg``, with which numba looks for BLAS at the first kernel.
-
-    No kernel multiplies matrices.  Code compiled by others in this process could not, either:
-    hence in programs only.
-    """
-    if "scipy.linalg" in sys.modules or "numba.np.arraymath" in sys.modules:
-        return
-    try:
-        import numba.np.linalg as linalg
-
-        found = linalg.ensure_blas
-    except (ImportError, AttributeError):  # another version of numba: nothing to spare
-        return
-
-    def missing() -> None:
-        raise ImportError("BLAS is not looked for")
-
-    linalg.ensure_blas = missing
-    try:
-        import numba.np.arraymath  # noqa: F401
-    finally:
-        linalg.ensure_blas = found

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import click
 
+from kingpost.core.kernels import settings
 from kingpost.tui.commands import (
     agree,
     audit,
@@ -71,4 +72,5 @@ cli.add_command(shelf.shelf)
 
 def main() -> None:
     """Entry point of the installed program."""
+    settings.look_for_blas = False
     cli.main()

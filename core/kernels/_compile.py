@@ -11,11 +11,14 @@ none, or the disk is full, kernels still work and are compiled afresh in every p
 
 from __future__ import annotations
 
+import sys
 from collections.abc import Callable
 from pickle import UnpicklingError
 from typing import Any
 
 from numba import njit
+
+from kingpost.core.kernels import settings as chosen
 
 _message: str | None = None
 
@@ -36,6 +39,28 @@ def kernel(**options: Any) -> Callable[[Callable[..., Any]], Any]:
         return compiled
 
     return decorate
+
+
+def _leave_out_blas() -> None:
+    try:
+        import numba.np.linalg as linalg
+
+        found = linalg.ensure_blas
+    except (ImportError, AttributeError):  # another version of numba: nothing to spare
+        return
+
+    def missing() -> None:
+        raise ImportError("BLAS is not looked for")
+
+    linalg.ensure_blas = missing
+    try:
+        import numba.np.arraymath  # noqa: F401
+    finally:
+        linalg.ensure_blas = found
+
+
+if not chosen.look_for_blas and "scipy.linalg" not in sys.modules:
+    _leave_out_blas()
 
 
 def cache_message() -> str | None:
