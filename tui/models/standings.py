@@ -228,7 +228,7 @@ def arrange(
     if column is not None and column.keys is not None and (sort != "rank" or turned):
         keys = np.take(column.keys(), order)
         falling = column.high_first != turned
-        order = order[_stable(keys, falling)]
+        order = np.take(order, _stable(keys, falling))  # taking lets other threads go on
     if mask is not None:
         order = np.take(order, np.flatnonzero(np.take(mask, order)))
     return _arranged(order, table.graph.n, sort, turned, where)
