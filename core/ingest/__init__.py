@@ -155,7 +155,7 @@ def predict(
     parts = files.open_parts(paths, chosen, watch)
     roles = columns.choose(parts, chosen)
     rows = None if chosen.where is None else where.Filter(chosen.where, parts)
-    return room.predict(parts, roles, watch, rows)
+    return room.predict(parts, roles, watch, rows, directed=chosen.directed)
 
 
 def peek(paths: Paths, rows: int = 5, options: LoadOptions | None = None) -> Peek:

@@ -35,7 +35,7 @@ def build_graph(
     roles = roles or choose(parts, options)
     chosen = None if options.where is None else Filter(options.where, parts)
     if options.memory == "check":
-        require_room(parts, roles, watch, chosen)
+        require_room(parts, roles, watch, chosen, directed=options.directed)
     rows = read_rows(parts, roles, options.bad_rows, watch, chosen)
     # Arrow keeps what it has freed; what follows is to be built in that memory's stead.
     pa.default_memory_pool().release_unused()

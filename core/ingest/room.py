@@ -28,9 +28,11 @@ from kingpost.core.text import count, visible
 from kingpost.core.watch import Watch
 
 # Measured, in bytes: see tests/bench/room.py.
-_ROW_BUILDING, _ROW_WEIGHT = 40, 9.5
-_NODE_BUILDING = 50
+_ROW_DIRECT, _ROW_HASHED, _ROW_WEIGHTED = 27, 40, 52  # numbered by their own range, or not
+_NODE_BUILDING = 45
+_MIRRORED = 20  # more for a row that is read both ways
 _NODE_NUMBERING = 100  # and four copies of a text
+_NODE_DIRECT = 20
 _CODES = 8
 _READING = 40e6
 _ENGINE = 100e6  # of SQL, where rows are filtered
@@ -92,6 +94,7 @@ def predict(
     watch: Watch,
     chosen: Filter | None = None,
     *,
+    directed: bool = True,
     sample: bool = True,
 ) -> Prediction:
     """Predict the peak of loading ``parts``.
@@ -108,16 +111,19 @@ def predict(
     if sample and rows > _SMALL:
         watch.report("sampling rows", 0)
         nodes, share = _sampled(parts, roles, watch, chosen)
-    nodes = int(min(nodes, _range(parts, roles)))
+    between = _range(parts, roles)
+    nodes = int(min(nodes, between))
     kept = round(rows * share)
     weighted = roles.weight is not None
     width = sum(_width(part, roles) for part in parts) * share  # bytes of all ids kept
     text = family(roles.id_type) in ("text", "binary")
     letters = width / max(2 * kept, 1) if text else 8.0
-    numbering = width + kept * (_CODES + 8 * weighted) + nodes * (_NODE_NUMBERING + 4 * letters)
-    building = kept * (_ROW_BUILDING + _ROW_WEIGHT * weighted) + nodes * (
-        _NODE_BUILDING + 2 * letters * text
-    )
+    direct = between <= 2 * kept
+    node = _NODE_DIRECT if direct else _NODE_NUMBERING + 4 * letters
+    numbering = width + kept * (_CODES + 8 * weighted) + nodes * node
+    row = _ROW_DIRECT if direct else _ROW_HASHED
+    building = kept * ((_ROW_WEIGHTED if weighted else row) + _MIRRORED * (not directed))
+    building += nodes * (_NODE_BUILDING + 2 * letters * text)
     peak = max(numbering + _READING if rows > _SMALL else numbering, building)
     if chosen is not None:
         peak += _ENGINE
@@ -125,16 +131,21 @@ def predict(
 
 
 def require_room(
-    parts: list[Part], roles: Roles, watch: Watch, chosen: Filter | None = None
+    parts: list[Part],
+    roles: Roles,
+    watch: Watch,
+    chosen: Filter | None = None,
+    *,
+    directed: bool = True,
 ) -> None:
     """Refuse a table that is not going to fit, before anything is read of it.
 
     Raises:
         InputError: with the figures and what to do.
     """
-    if predict(parts, roles, watch, chosen, sample=False).fits:
+    if predict(parts, roles, watch, chosen, directed=directed, sample=False).fits:
         return
-    found = predict(parts, roles, watch, chosen)
+    found = predict(parts, roles, watch, chosen, directed=directed)
     if found.fits or found.available is None:
         return
     name = parts[0].name if len(parts) == 1 else f"{parts[0].name} and {len(parts) - 1:,} more"

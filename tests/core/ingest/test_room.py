@@ -122,12 +122,15 @@ def test_a_table_that_does_not_fit_is_refused_unread(table, monkeypatch):
 
 def test_what_is_left_out_is_not_counted(table, monkeypatch):
     monkeypatch.setattr(room, "_SMALL", 100)
+    monkeypatch.setattr(room, "_READING", 0)
+    monkeypatch.setattr(room, "_ENGINE", 0)
     whole = predict(table)
     assert (whole.rows, whole.nodes, whole.weighted) == (4000, 4000, True)
     assert predict(table, LoadOptions(weight_as="none")).peak < whole.peak
-    some = predict(table, LoadOptions(where="source % 4 = 0"))
-    assert some.rows == 1000
-    assert some.peak - room._ENGINE * room._SPARE < whole.peak
+    some = predict(table, LoadOptions(where="source % 2 = 0"))
+    assert some.rows == 2000
+    assert some.peak < whole.peak
+    assert predict(table, LoadOptions(directed=False)).peak > whole.peak
 
 
 def test_a_prediction_that_fits_samples_nothing(table, monkeypatch):
