@@ -122,7 +122,7 @@ def predict(
     node = _NODE_DIRECT if direct else _NODE_NUMBERING + 4 * letters
     numbering = width + kept * (_CODES + 8 * weighted) + nodes * node
     row = _ROW_DIRECT if direct else _ROW_HASHED
-    building = kept * ((_ROW_WEIGHTED if weighted else row) + _MIRRORED * (not directed))
+    building = 1.0 * kept * ((_ROW_WEIGHTED if weighted else row) + _MIRRORED * (not directed))
     building += nodes * (_NODE_BUILDING + 2 * letters * text)
     peak = max(numbering + _READING if rows > _SMALL else numbering, building)
     if chosen is not None:
