@@ -133,3 +133,17 @@ async def test_no_rows_say_so():
         assert "nothing here" in table.rows_shown[1]
         assert not table.move(1)
         assert table.item() is None
+
+
+async def test_a_line_is_drawn_under_the_last_settled_row():
+    source = Millions(30)
+    source.settled = 3
+    async with Bench(source).run_test(size=(60, 12)) as pilot:
+        await pilot.pause()
+        table = pilot.app.query_one(RowTable)
+        underlined = [
+            y
+            for y in range(table.size.height)
+            if all(s.style is not None and s.style.underline for s in table.render_line(y))
+        ]
+        assert underlined == [4]  # below the headings

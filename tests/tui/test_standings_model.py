@@ -53,6 +53,19 @@ def test_sorting(table, key, turned, expected):
     assert names(table, arrange(table, key, turned)) == expected
 
 
+def test_the_line_stands_under_what_is_proven(graph, make_result):
+    every = prepare(graph, make_result(graph, [6, 5, 4, 3, 2, 1]))
+    assert every.result.standing.proven == 6
+    assert every.settled == -1
+    some = prepare(graph, make_result(graph, [6, 5, 4.001, 4, 2, 1], error=0.01))
+    assert some.result.standing.proven == 2
+    assert some.settled == 1
+    some.adopt(arrange(some, "rank", True))
+    assert some.settled == -1
+    some.adopt(arrange(some, "rank", where="node ilike '%E%'"))
+    assert some.settled == -1
+
+
 def test_filter_keeps_the_order(table):
     arranged = arrange(table, "rank", where="node ilike '%E%'")
     assert names(table, arranged) == ["gate", "fare", "berth", "ticket"]

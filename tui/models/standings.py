@@ -148,6 +148,16 @@ class Standings:
             return PROVEN
         return TIED if self._ties[high] - self._ties[low] == high - low else OPEN
 
+    @property
+    def settled(self) -> int:
+        """The row under which the line is drawn: above it the order is proven, below it not.
+
+        -1 where there is none: everything is proven or nothing, or rows stand otherwise.
+        """
+        arrangement, proven = self.arrangement, int(self.result.standing.proven)
+        by_rank = arrangement.sort == "rank" and not arrangement.turned and not arrangement.where
+        return proven - 1 if by_rank and proven < self.count else -1
+
     def marked(self, row: int) -> bool:
         """Whether the row was found by the last search."""
         return self.found is not None and self.found.holds(row)

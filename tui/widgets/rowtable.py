@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from typing import Protocol
 
+from rich.style import Style
 from textual.geometry import Region
 from textual.message import Message
 from textual.strip import Strip
@@ -21,13 +22,15 @@ from kingpost.tui.widgets.lines import Piece, looks_of, strip_of
 _GAP = "  "
 _LEAST_NAME = 8
 _SLIVER = 8  # a column of which fewer cells than this are in sight is not shown
+_UNDERLINED = Style(underline=True)
 _RAIL_ROLES = ("proven", "open", "tied", "quiet")
 
 
 class Source(Protocol):
     """What a table shows: ``count`` rows, each an item that the columns turn into text.
 
-    A source may also have ``kept(item)``: whether the item is on the shortlist.
+    A source may also have ``kept(item)``: whether the item is on the shortlist, and ``settled``:
+    the row under which a line is drawn.
     """
 
     head: list[Column]
@@ -271,7 +274,10 @@ class RowTable(Widget):
             return strip_of(self._heading_pieces(), width, looks)
         row = self._top + y - (1 if self._headings else 0)
         if row < self.count:
-            return strip_of(self._row_pieces(row), width, looks)
+            strip = strip_of(self._row_pieces(row), width, looks)
+            # The one line in the table: it costs no row and shows without a colour.
+            settled = row == getattr(self._source, "settled", -1)
+            return strip.apply_style(_UNDERLINED) if settled else strip
         if self.count == 0 and y == (1 if self._headings else 0):
             return strip_of([("  " + self._empty, "plain")], width, looks)
         return Strip.blank(width)
