@@ -149,17 +149,29 @@ class KingpostApp(App[int], inherit_bindings=False):
 
     def back_to_start(self, sentence: str, asked_for: bool) -> bool:
         """Back to the view in which tables are chosen, if they were chosen there."""
-        first = self.screen_stack[0]
-        if isinstance(first, LoadingView):
+        if not self._chosen_in_start:
             return False
         self._desk = None
-        while len(self.screen_stack) > 1:
-            self.pop_screen()
+        self._pop_to_start()
         if asked_for:
             self.news(sentence)
         else:
             self.notice("nothing was opened", sentence)
         return True
+
+    @property
+    def _chosen_in_start(self) -> bool:
+        """Whether Start is beneath the views that are open."""
+        return any(screen.view == actions.START for screen in self._views)
+
+    @property
+    def _views(self) -> list[View]:
+        return [screen for screen in self.screen_stack if isinstance(screen, View)]
+
+    def _pop_to_start(self) -> None:
+        """Close the views down to Start, or down to the one the application began with."""
+        while len(self.screen_stack) > 1 and self._views[-1].view != actions.START:
+            self.pop_screen()
 
     def can_start_open(self) -> bool:
         """Whether a graph is open."""
@@ -176,13 +188,14 @@ class KingpostApp(App[int], inherit_bindings=False):
         self.within.forget()
         self._desk = None
         self.keeper.end()
-        while len(self.screen_stack) > 1:
-            self.pop_screen()
+        self._pop_to_start()
         self.latest_news = told
         if isinstance(self.screen, StartView):
             self.screen.look_again()
         else:
-            self.switch_screen(self._start())
+            # Above the view that read what the command line named: the toolkit cannot replace
+            # the screen it began with.
+            self.push_screen(self._start())
 
     def leave(self, status: int) -> None:
         """Leave with an exit status; the terminal is restored by the driver."""
@@ -220,7 +233,7 @@ class KingpostApp(App[int], inherit_bindings=False):
 
     def do_quit(self) -> None:
         """Quit: answered, unless tables named on the command line were still being read."""
-        started = self._desk is not None or not isinstance(self.screen_stack[0], LoadingView)
+        started = self._desk is not None or self._chosen_in_start
         self.leave(0 if started else 130)
 
     def do_quit_now(self) -> None:
