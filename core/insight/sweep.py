@@ -77,7 +77,8 @@ class Sweep:
         always: which of them are proven among the first K at every value answered, shape (f,).
         same_order: how many first ranks are held by the same nodes, proven, at every value.
         changes: where the leader changes, ascending; numbers only.
-        interval: how narrow these were asked to be (a difference, or the logarithm of a ratio).
+        interval: how narrow these were asked to be (a difference, or the logarithm of a ratio);
+            one over a short stretch without a proven leader may be up to three times as wide.
         halvings: solves it took to find them; ``cut`` whether the search ended before its end.
     """
 

@@ -186,7 +186,7 @@ def test_report_as_text_and_json(file: str) -> None:
     for words in ("4 rows in", "source", "note \\e[0m", "skipped", "merged", "strong components"):
         assert words in text, words
     answer = json.loads(dumps(audit_json(graph, found, table)))
-    assert list(answer) == ["table", "input", "account", "structure"]
+    assert list(answer) == ["table", "input", "account", "memory", "structure"]
     assert answer["table"]["rows"] == 4
     assert answer["account"]["rows_read"] == 4
     assert sum(answer["account"]["skipped"].values()) == 1
