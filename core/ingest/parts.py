@@ -97,6 +97,7 @@ def partitioned(part: Part, values: dict[str, pa.Array]) -> Part:
         schema=schema,
         read=read,
         limits=limits,
+        width=lambda column: None if column in extra else part.width(column),
         nulls=nulls,
         partitions=part.partitions | frozenset(extra),
     )
