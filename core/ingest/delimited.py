@@ -244,8 +244,9 @@ def _scan(source: Source, options: LoadOptions, roles: Any, watch: Watch) -> Sca
                 last = str(batch.column(batch.num_columns - 1)[batch.num_rows - 1])
     if "\n" in last and not _ends_in_quote(source, options.encoding):
         at = line_of_row(source, options.encoding, layout, rows - 1)
+        where = f"line {at:,}" if at else f"row {rows:,}"
         raise InputError(
-            f"{source.name} line {at:,}: a quoted value is not closed before the end of the file; "
+            f"{source.name} {where}: a quoted value is not closed before the end of the file; "
             "close it, or write the quote twice"
         )
     examples = [

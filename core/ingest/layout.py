@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import contextlib
 import csv
 import io
 from dataclasses import dataclass
@@ -183,7 +184,10 @@ def line_of_text(source: Source, encoding: str | None, text: str) -> int:
 
 
 def line_of_row(source: Source, encoding: str | None, layout: Layout, row: int) -> int:
-    """The line that a row (from 0) begins on, from 1; rows of a wrong length are none."""
+    """The line that a row (from 0) begins on, from 1; rows of a wrong length are none.
+
+    0 where it cannot be told.
+    """
     with source.text(encoding) as stream:
         raw: Any = io.BufferedReader(_Raw(stream))
         lines = io.TextIOWrapper(raw, "utf-8", "replace", newline="")
@@ -191,12 +195,14 @@ def line_of_row(source: Source, encoding: str | None, layout: Layout, row: int) 
             lines.readline()
         reader = csv.reader(lines, delimiter=layout.delimiter)
         before = 0
-        for fields in reader:
-            if len(fields) == len(layout.names):
-                if row == 0:
-                    return layout.lines_before + before + 1
-                row -= 1
-            before = reader.line_num
+        # What this reader does not take (a field of 128 kB, say) leaves the row without a line.
+        with contextlib.suppress(csv.Error):
+            for fields in reader:
+                if len(fields) == len(layout.names):
+                    if row == 0:
+                        return layout.lines_before + before + 1
+                    row -= 1
+                before = reader.line_num
     return 0
 
 

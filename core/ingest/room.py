@@ -151,7 +151,7 @@ def require_room(
     name = parts[0].name if len(parts) == 1 else f"{parts[0].name} and {len(parts) - 1:,} more"
     less = "leave the weights out with --weight-as none, " if found.weighted else ""
     raise InputError(
-        f"{visible(name, 80)} is predicted to need {size(found.peak)} of memory "
+        f"{visible(name)} is predicted to need {size(found.peak)} of memory "
         f"({count(found.rows, 'row')}, some {found.nodes:,} nodes), and "
         f"{size(found.available.bytes)} is available ({found.available.limit}); {less}keep fewer "
         "rows with --where, free memory, or go on all the same with --memory ignore"

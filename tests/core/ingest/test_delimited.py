@@ -16,7 +16,8 @@ from hypothesis import strategies as st
 from reference import Refused, agree, assert_sound, expected
 
 from kingpost.core.errors import InputError, Interrupted, KingpostError, RowsError, SettingsError
-from kingpost.core.ingest import LoadOptions, describe, load
+from kingpost.core.ingest import LoadOptions, delimited, describe, load
+from kingpost.core.kernels import words
 from kingpost.core.watch import Watch
 
 
@@ -77,7 +78,7 @@ def test_cells_come_back_as_they_were_written(rows, mark, encoding, packer, line
 
 def _plain(cell):
     try:
-        return str(int(cell)) == cell
+        return str(int(cell)) == cell  # not so for digits of other scripts
     except ValueError:
         return False
 
@@ -110,6 +111,39 @@ def test_ids_are_whole_numbers_only_in_their_plainest_spelling(tmp_path, cells, 
     graph = load(write(tmp_path, "source,target\n" + ",".join(cells) + "\n"))
     assert graph.labels.type == kind
     assert sorted(map(str, graph.labels.to_pylist())) == sorted(cells)
+
+
+def naive(cells):
+    """The flags of kernels.words.whole, by Python's own whole numbers."""
+    flags = 0
+    for cell in cells:
+        if cell is None:
+            continue
+        if not _plain(cell) or not cell.isascii():
+            return None
+        number = int(cell)
+        flags |= words.NEGATIVE * (number < 0) | words.BEYOND_SIGNED * (number >= 2**63)
+        flags |= words.BEYOND_UNSIGNED * (number >= 2**64 or number < -(2**63))
+    return flags
+
+
+EDGES = [0, 1, 9, 10, 2**63 - 1, 2**63, 2**63 + 1, 2**64 - 1, 2**64, 10**19, 10**20, 10**25]
+SPELLINGS = (
+    st.sampled_from([str(sign * edge) for edge in EDGES for sign in (1, -1)])
+    | st.sampled_from(["", "-", "-0", "00", "+1", "1 ", "1.0", "٣", "0x1", "1_0"])
+    | st.integers(-(2**65), 2**65).map(str)
+)
+
+
+@settings(max_examples=200, deadline=None)
+@given(st.lists(st.none() | SPELLINGS, max_size=4), st.integers(0, 2))
+def test_whole_numbers_are_told_as_python_tells_them(cells, skipped):
+    array = pa.array(["?"] * skipped + cells, pa.string()).slice(skipped)
+    found, want = words.whole(*delimited._flat(array)), naive(cells)
+    if want is None:
+        assert found & words.OTHER
+    else:
+        assert found == want
 
 
 def test_a_late_text_turns_a_column_of_numbers_back(tmp_path):
