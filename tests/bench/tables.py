@@ -243,9 +243,9 @@ def write_readme(report: dict[str, Any], command: str) -> None:
         f"{told['load']:.1f}. Command: `{command.strip()}`.\n\n"
         "Every contestant runs at the loosest setting that gives a true L1 error of at most 1e-9; "
         "seconds are of the solve alone; *build* leads from a Parquet file with ids 0..n-1 to the "
-        "contestant's own graph (Kingpost's includes its strong components); *of best peer* is "
-        "the time as a share of the fastest peer's. Seconds in brackets belong to runs that did "
-        "not reach the accuracy."
+        "contestant's own graph (Kingpost's includes its strong components and the order of its "
+        "rows); *of best peer* is the time as a share of the fastest peer's. Seconds in brackets "
+        "belong to runs that did not reach the accuracy."
     )
     head, rest = text.split(START)
     tail = rest.split(END)[1]
