@@ -49,6 +49,8 @@ def _batches(source: Source, columns: list[str]) -> Iterator[pa.RecordBatch]:
             # Offsets that point elsewhere would be followed by everything that comes after.
             batch.validate(full=True)
             yield batch
+    except pa.ArrowMemoryError:
+        raise  # no fault of the file's
     except (pa.ArrowException, OSError) as error:
         raise InputError(
             f"{source.name} is damaged: its rows cannot be read ({first_line(error)})"

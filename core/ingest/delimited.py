@@ -336,6 +336,8 @@ class _reader:
                 ),
             )
             yield from reader
+        except pa.ArrowMemoryError:
+            raise  # no fault of the file's
         except (pa.ArrowException, OSError, UnicodeError) as error:
             raise self._told(error) from None
 

@@ -44,6 +44,8 @@ def open_parquet(file: str, name: str) -> Part:
             for batch in _scan(source, columns):
                 read += batch.num_rows
                 yield batch.rename_columns(columns)
+        except pa.ArrowMemoryError:
+            raise  # no fault of the file's
         except (pa.ArrowException, OSError) as error:
             raise InputError(
                 f"{name} is damaged: its rows cannot be read ({first_line(error)})"

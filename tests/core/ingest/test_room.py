@@ -5,7 +5,7 @@ import pyarrow.parquet as pq
 import pytest
 
 from kingpost.core.errors import InputError
-from kingpost.core.ingest import LoadOptions, load, predict, room
+from kingpost.core.ingest import LoadOptions, load, parquet_file, predict, room
 from kingpost.core.ingest.columns import choose
 from kingpost.core.ingest.files import open_parts
 from kingpost.core.ingest.room import Available, available, estimate, size
@@ -118,6 +118,16 @@ def test_a_table_that_does_not_fit_is_refused_unread(table, monkeypatch):
     with pytest.raises(InputError) as caught:
         load(table, weight_as="none")
     assert "--weight-as" not in caught.value.sentence
+
+
+def test_memory_that_runs_out_is_no_fault_of_the_file(table, monkeypatch):
+    def refuse(*_):
+        raise pa.ArrowMemoryError("malloc of size 5 failed")
+        yield
+
+    monkeypatch.setattr(parquet_file, "_scan", refuse)
+    with pytest.raises(MemoryError):
+        load(table)
 
 
 def test_what_is_left_out_is_not_counted(table, monkeypatch):
