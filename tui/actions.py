@@ -28,10 +28,23 @@ START = "start"  # tables to choose from
 ROLES = "roles"  # which column of a table is what
 DOING = "doing"  # sheet that lists every action
 MAKEUP = "makeup"
-_LISTS = (SHORTLIST, SOLVES, APART, WAY, PLATE, MAKEUP)  # views that are one table
+# Answers to what is asked of the graph; each is one table too.
+AGREEMENT, WHY, THAN, LOSS, LOSSES, ALONG, WALK, DRIFT = (
+    "agreement",
+    "why",
+    "than",
+    "loss",
+    "losses",
+    "along",
+    "walk",
+    "drift",
+)
+ANSWERS = (AGREEMENT, WHY, THAN, LOSS, LOSSES, ALONG, WALK, DRIFT)
+_LISTS = (SHORTLIST, SOLVES, APART, WAY, PLATE, MAKEUP, *ANSWERS)  # views that are one table
 _TABLES = (STANDINGS, NODE, LOG, CHOICE, HELP, COLUMNS, START, ROLES, *_LISTS)
 _ROOMS = (STANDINGS, NODE, LOG, HELP, *_LISTS)
 _NODES = (STANDINGS, NODE, SHORTLIST)  # views in which a node is at hand
+_ASKED = (STANDINGS, NODE, SHORTLIST, *ANSWERS)  # views in which something can be asked
 _TYPING = (FORM, PROMPT, DOING)
 _LINES = (FORM, DOING)  # views of lines in which one types
 
@@ -56,6 +69,14 @@ VIEW_WORDS = {
     START: "Start",
     ROLES: "Column roles",
     DOING: "Any action",
+    AGREEMENT: "Agreement",
+    WHY: "Why",
+    THAN: "Why one stands above another",
+    LOSS: "Loss of a node",
+    LOSSES: "Losses",
+    ALONG: "Along a setting",
+    WALK: "Walk",
+    DRIFT: "Drift",
 }
 
 
@@ -107,7 +128,7 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "other.table",
         ("tab",),
-        (NODE, WAY, MAKEUP),
+        (NODE, WAY, MAKEUP, *ANSWERS),
         "to the other table, way or page",
         "other one",
         30,
@@ -117,7 +138,7 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "node.open",
         ("enter",),
-        (*_NODES, APART, WAY, PLATE),
+        (*_NODES, APART, WAY, PLATE, *ANSWERS),
         "open the node; in Node, make the neighbour the centre",
         "node",
         1,
@@ -132,7 +153,7 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "node.plate",
         ("d",),
-        (STANDINGS, NODE, SHORTLIST, APART, WAY),
+        (STANDINGS, NODE, SHORTLIST, APART, WAY, *ANSWERS),
         "details: everything known of the node, its neighbourhood drawn",
         "details",
         9,
@@ -146,6 +167,32 @@ ACTIONS: tuple[Action, ...] = (
         "way to",
         17,
         "Investigating",
+    ),
+    Action(
+        "ask.anything",
+        ("A",),
+        _ASKED,
+        "ask of the node or the graph: why, what if, how stable, how far measures agree",
+        "ask",
+        6,
+        "Asking",
+    ),
+    *(
+        Action(id, (), views, means, "", 70, "Asking")
+        for id, views, means in (
+            ("ask.why", _ASKED, "why the node scores what it scores, term by term"),
+            ("ask.than", _ASKED, "why the node stands above or below another, term by term"),
+            ("ask.agreement", _ASKED, "how far the solved measures agree, and where not"),
+        )
+    ),
+    Action(
+        "pair.choose",
+        ("m",),
+        (AGREEMENT,),
+        "choose the measures whose ranks are drawn against each other",
+        "measures drawn",
+        10,
+        "Asking",
     ),
     Action(
         "measure.choose",

@@ -23,6 +23,7 @@ from textual import events  # noqa: E402
 from textual.app import App  # noqa: E402
 from textual.screen import Screen  # noqa: E402
 
+from kingpost.tui.asking import Asking  # noqa: E402
 from kingpost.tui.config import Config  # noqa: E402
 from kingpost.tui.jobs import Job, Runner  # noqa: E402
 from kingpost.tui.keeping import Keeper  # noqa: E402
@@ -63,6 +64,8 @@ _VIEWS = (
     "start",
     "roles",
     "makeup",
+    "agreement",
+    "why",
 )
 
 
@@ -75,7 +78,7 @@ class KingpostApp(App[int], inherit_bindings=False):
         for name in ("app.tcss", "views/loading.tcss", "views/start.tcss")
     ]
     ENABLE_COMMAND_PALETTE = False
-    HELPERS = (Keeper, Opener, Resumer, Routes, Within)
+    HELPERS = (Keeper, Opener, Resumer, Routes, Within, Asking)
     VIEWS = _VIEWS
     TITLE = "kingpost"
 
@@ -107,7 +110,15 @@ class KingpostApp(App[int], inherit_bindings=False):
         self.resumer = Resumer(self)
         self.within = Within(self)
         self.opener = Opener(self, paths, load, options, measure, settings, kept, store)
-        self.helpers = (self.keeper, self.opener, self.resumer, Routes(self), self.within)
+        self.routes = Routes(self)
+        self.helpers = (
+            self.keeper,
+            self.opener,
+            self.resumer,
+            self.routes,
+            self.within,
+            Asking(self),
+        )
 
     # ---- start and end -------------------------------------------------------------------------
 

@@ -42,6 +42,7 @@ class Glyphs:
     gives: str  # into a standing line of a drawing
     takes: str
     mark: str  # beside the name of a node on the shortlist
+    density: str  # few to many in one cell of a drawing
 
 
 UNICODE = Glyphs(
@@ -68,6 +69,7 @@ UNICODE = Glyphs(
     gives="●",
     takes="◀",
     mark="★",
+    density="·░▒▓█",
 )
 ASCII = Glyphs(
     ascii=True,
@@ -93,6 +95,7 @@ ASCII = Glyphs(
     gives="o",
     takes="<",
     mark="*",
+    density=".:+%#",
 )
 
 # Only the terminal's own sixteen colours and its own background: they follow the reader's light

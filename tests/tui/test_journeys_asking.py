@@ -1,0 +1,93 @@
+"""Journeys through what can be asked, through the whole application without a terminal."""
+
+from __future__ import annotations
+
+import pytest
+
+from kingpost.tui import terminal
+from kingpost.tui.app import KingpostApp
+from tests.tui.test_journeys import Kingpost, opened, until
+
+
+class Real(Kingpost):
+    """The application over measures of the product."""
+
+    def __init__(self, graph, measure="surfer"):
+        looks = terminal.decide({"LANG": "C.UTF-8"})
+        KingpostApp.__init__(self, ["f.parquet"], lambda job: graph, measure, None, looks=looks)
+
+    def make_sitting(self, graph, measure):
+        return KingpostApp.make_sitting(self, graph, measure)
+
+
+@pytest.fixture
+def app(graph):
+    return Real(graph)
+
+
+async def asked(pilot, words):
+    """Open the sheet of questions and take the one called so."""
+    app = pilot.app
+    await pilot.press("A")
+    await until(pilot, lambda: app.screen.view == "choice")
+    names = [choice.name for choice in app.screen._choices.choices]
+    await pilot.press(*["down"] * names.index(words), "enter")
+
+
+async def test_agreement_leads_to_a_node_and_back(app):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await asked(pilot, "agreement")
+        await until(pilot, lambda: "[nodes apart]" in app.shown())
+        assert "agreement of surfer, eigenvector, katz, degree" in app.shown()
+        assert "◆" in app.shown()
+        await pilot.press("m", "t", "enter")
+        await until(pilot, lambda: "surfer rank across, eigenvector down" in app.shown())
+        await pilot.press("tab")
+        await until(pilot, lambda: "tau-b, Spearman" in app.shown())
+        await pilot.press("tab")
+        await until(pilot, lambda: "placed apart" in app.shown())
+        name = app.screen.page.listing.head[0].text(0)
+        await pilot.press("enter")
+        await until(pilot, lambda: f"▼ {name}" in app.shown())
+        await pilot.press("escape")
+        await until(pilot, lambda: app.screen.view == "agreement")
+        await pilot.press("escape")
+        await until(pilot, lambda: app.screen.view == "standings")
+
+
+async def test_agreement_of_one_measure_says_what_to_do(graph, bench):
+    app = Kingpost(graph, bench)
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        app.desk.sitting.results.pop("mirror")
+        await asked(pilot, "agreement")
+        await until(pilot, lambda: "no answer" in app.shown())
+        assert "m chooses another measure" in app.shown()
+        # The measure solved meanwhile is compared without being asked again.
+        app.desk.solve("mirror", None)
+        await until(pilot, lambda: "agreement of plain, mirror" in app.shown())
+
+
+async def test_why_and_against_another(app):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await asked(pilot, "why")
+        await until(pilot, lambda: "[terms]" in app.shown())
+        assert "The terms sum to the score" in app.shown().replace("\n ", " ")
+        await pilot.press("tab")
+        await until(pilot, lambda: "[supply paths]" in app.shown())
+        await pilot.press("escape")
+        await until(pilot, lambda: app.screen.view == "standings")
+        await asked(pilot, "against another")
+        await until(pilot, lambda: app.screen.view == "prompt")
+        await pilot.press(*"quay", "enter")
+        await until(pilot, lambda: "against quay, surfer" in app.shown())
+        assert "leads by" in app.shown()
+
+
+async def test_the_palette_knows_the_questions(app):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await pilot.press("g", *"term by", "enter")
+        await until(pilot, lambda: app.screen.view in ("why", "prompt"))

@@ -1,0 +1,104 @@
+"""What can be asked of the node at hand and of the graph: one sheet of questions, each an action.
+
+A helper of the application (see ``View.possible``): its ``do_`` methods carry out actions.
+"""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+from kingpost.tui import actions
+
+if TYPE_CHECKING:
+    from kingpost.tui.app import KingpostApp
+
+_NAMES = {
+    "ask.why": "why",
+    "ask.than": "against another",
+    "ask.loss": "what if it were lost",
+    "ask.walk": "walk from it",
+    "ask.agreement": "agreement",
+    "ask.along": "along a setting",
+    "ask.losses": "losses one by one",
+    "ask.drift": "drift",
+}
+
+
+class Asking:
+    """Questions: opens the view that answers each."""
+
+    def __init__(self, app: KingpostApp) -> None:
+        self._app = app
+
+    def _node(self) -> int | None:
+        view = self._app.view
+        return None if view is None else view.node_at_hand()
+
+    def _possible(self, id: str) -> bool:
+        name = id.replace(".", "_")
+        if not hasattr(self, f"do_{name}"):
+            return False
+        can = getattr(self, f"can_{name}", None)
+        return can is None or bool(can())
+
+    def can_ask_anything(self) -> bool:
+        """Whether there is a graph with standings to ask about."""
+        return self._app.can_start_open()
+
+    def do_ask_anything(self) -> None:
+        """List the questions that can be asked here."""
+        from kingpost.tui.views.sheets import Choice, ChoiceSheet
+
+        choices = [
+            Choice(id, name, actions.BY_ID[id].means)
+            for id, name in _NAMES.items()
+            if self._possible(id)
+        ]
+        node = self._node()
+        about = "" if node is None else f" of {self._app.sitting.graph.name(node, 40)} or the graph"
+
+        def chosen(key: str | None) -> None:
+            if key is not None:
+                getattr(self, f"do_{key.replace('.', '_')}")()
+
+        self._app.push_screen(ChoiceSheet(f"ask{about}", choices), chosen)
+
+    # ---- of the node at hand -----------------------------------------------------------------
+
+    def can_ask_why(self) -> bool:
+        """Whether there is a node to ask about."""
+        return self.can_ask_anything() and self._node() is not None
+
+    def do_ask_why(self) -> None:
+        """Take the score of the node apart."""
+        from kingpost.tui.views.why import WhyView
+
+        node = self._node()
+        if node is not None:
+            self._app.push_screen(WhyView(node))
+
+    can_ask_than = can_ask_why
+
+    def do_ask_than(self) -> None:
+        """Compare the node with another, marked or named."""
+        from kingpost.tui.views.why import ThanView
+
+        node = self._node()
+        if node is None:
+            return
+
+        def against(other: int) -> None:
+            self._app.push_screen(ThanView(node, other))
+
+        name = self._app.sitting.graph.name(node, 30)
+        self._app.routes.choose(node, f"{name} against", against)
+
+    # ---- of the graph ------------------------------------------------------------------------
+
+    can_ask_agreement = can_ask_anything
+
+    def do_ask_agreement(self) -> None:
+        """How far the solved measures agree."""
+        from kingpost.tui.views.agreement import AgreementView
+
+        self._app.push_screen(AgreementView())
