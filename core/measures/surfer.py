@@ -36,6 +36,7 @@ from kingpost.core.solvers.ledger import Ledger
 from kingpost.core.solvers.linear import Judge, Solution, System
 from kingpost.core.solvers.linear import solve as solve_linear
 from kingpost.core.structure import reachable
+from kingpost.core.text import count
 from kingpost.core.watch import Watch
 
 
@@ -233,7 +234,7 @@ class Jump:
 
     def conventions(self, leaked: float) -> dict[str, str]:
         """The choices in force, in words."""
-        mode, count = self.settings.dangling, int(self.dangling.sum())
+        mode, number = self.settings.dangling, count(int(self.dangling.sum()), "node")
         words = {
             "teleport": "jump by the teleport vector",
             "uniform": "jump to any node alike",
@@ -246,7 +247,7 @@ class Jump:
             self.graph,
             self.settings,
             **{
-                "dangling nodes": f"{count:,} nodes without out-edges {target}",
+                "dangling nodes": f"{number} without out-edges {target}",
                 "teleport": "to any node alike" if self.uniform else f"to {spots:,} nodes as given",
                 "scores": "probabilities, sum 1",
             },

@@ -155,7 +155,9 @@ def _beta(word: str, graph: Graph) -> tuple[Any, str]:
     if os.path.isfile(word):
         from kingpost.core.ingest import read_node_values
 
-        return read_node_values(word, graph), f"by the values in {visible(word, 80)}"
+        return read_node_values(
+            word, graph
+        ), f"by the values in {visible(os.path.basename(word), 80)}"
     raise click.UsageError(f"--beta {word} is neither a number, nor a node attribute, nor a file")
 
 
