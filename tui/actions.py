@@ -182,6 +182,8 @@ ACTIONS: tuple[Action, ...] = (
         for id, views, means in (
             ("ask.why", _ASKED, "why the node scores what it scores, term by term"),
             ("ask.than", _ASKED, "why the node stands above or below another, term by term"),
+            ("ask.loss", _ASKED, "what the loss of the node would do: who rises, who is cut off"),
+            ("ask.losses", _ASKED, "what the loss of each of the first nodes would do"),
             ("ask.agreement", _ASKED, "how far the solved measures agree, and where not"),
         )
     ),

@@ -66,6 +66,7 @@ _VIEWS = (
     "makeup",
     "agreement",
     "why",
+    "losses",
 )
 
 

@@ -93,6 +93,16 @@ class Asking:
         name = self._app.sitting.graph.name(node, 30)
         self._app.routes.choose(node, f"{name} against", against)
 
+    can_ask_loss = can_ask_why
+
+    def do_ask_loss(self) -> None:
+        """Try the standings without the node."""
+        from kingpost.tui.views.losses import LossView
+
+        node = self._node()
+        if node is not None:
+            self._app.push_screen(LossView(node))
+
     # ---- of the graph ------------------------------------------------------------------------
 
     can_ask_agreement = can_ask_anything
@@ -102,3 +112,11 @@ class Asking:
         from kingpost.tui.views.agreement import AgreementView
 
         self._app.push_screen(AgreementView())
+
+    can_ask_losses = can_ask_anything
+
+    def do_ask_losses(self) -> None:
+        """Try the loss of each of the first nodes."""
+        from kingpost.tui.views.losses import LossesView
+
+        self._app.push_screen(LossesView())

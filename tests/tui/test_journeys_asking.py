@@ -91,3 +91,21 @@ async def test_the_palette_knows_the_questions(app):
         await opened(pilot)
         await pilot.press("g", *"term by", "enter")
         await until(pilot, lambda: app.screen.view in ("why", "prompt"))
+
+
+async def test_the_loss_of_a_node_is_tried_with_the_caution_in_sight(app):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await asked(pilot, "what if it were lost")
+        await until(pilot, lambda: "[standings]" in app.shown())
+        assert "surfer without " in app.shown()
+        assert "Structure, not traffic engineering" in app.shown()
+        assert "follow the local change procedure" in app.shown()
+        await pilot.press("tab", "tab", "tab")
+        await until(pilot, lambda: "[in words]" in app.shown() and "reachability" in app.shown())
+        await pilot.resize_terminal(40, 10)
+        await until(pilot, lambda: "Structure, not traffic engin" in app.shown())
+        await pilot.press("escape")
+        await until(pilot, lambda: app.screen.view == "standings")
+        await asked(pilot, "losses one by one")
+        await until(pilot, lambda: "without" in app.shown() and "rank" in app.shown())
