@@ -284,6 +284,8 @@ class KingpostApp(App[int], inherit_bindings=False):
         if isinstance(event, events.Key) and event.key.startswith("alt+"):
             # No key here is a chord: an Escape and a letter that came in one packet look alike.
             key = event.key.removeprefix("alt+")
+            letter = key.removeprefix("shift+")
+            key = letter.upper() if letter != key and len(letter) == 1 else key
             self.typed(events.Key("escape", None))
             event = events.Key(key, key if len(key) == 1 else None)
         view = self.view

@@ -11,7 +11,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from kingpost.core.graph import Floats, Graph, Neighbours
-from kingpost.core.insight.terms import amounts, flow_of
+from kingpost.core.insight.terms import amounts, flow_of, has_terms
 from kingpost.core.result import Result
 
 _REST = {"surfer": "teleport", "katz": "beta"}
@@ -29,6 +29,8 @@ class Contributions:
         parts: share of the score by origin; ``feeders`` is the sum of ``share``, the rest
             (``teleport`` of a surfer with what dangling nodes give, ``beta`` of Katz, else
             ``rest``) is the difference to 1 and absent where the measure has none.
+        of_score: False for measures whose scores are no sum over neighbours: ``amount`` is then
+            the weight, ``share`` its part of the weights of all feeders, ``parts`` empty.
     """
 
     neighbours: Neighbours
@@ -36,6 +38,7 @@ class Contributions:
     amount: Floats
     share: Floats
     parts: Mapping[str, float]
+    of_score: bool = True
 
 
 def contributions(graph: Graph, result: Result, node: int) -> Contributions:
@@ -48,9 +51,14 @@ def contributions(graph: Graph, result: Result, node: int) -> Contributions:
     amount = amounts(graph, result, near, weights)
     order = np.argsort(-amount, kind="stable")
     amount = amount[order]
+    near, weights = near[order], weights[order]
+    if result.refusal is None and not has_terms(result):
+        total = float(amount.sum())
+        share = amount / total if total > 0.0 else np.zeros(len(amount))
+        return Contributions(near, weights, amount, share, {}, of_score=False)
     score = float(result.scores[node])
     share = amount / score if score > 0.0 and np.isfinite(score) else np.zeros(len(amount))
-    return Contributions(near[order], weights[order], amount, share, _parts(result, share, score))
+    return Contributions(near, weights, amount, share, _parts(result, share, score))
 
 
 def shares_given(graph: Graph, result: Result, node: int) -> tuple[Neighbours, Floats, Floats]:

@@ -65,7 +65,7 @@ async def test_standings_name_what_they_show(app):
         assert "order proven to 6 of 6" in lines[1]
         assert lines[3].split() == ["rank▴", "node", "plain", "mirror", "in", "out", "team", "tier"]
         assert lines[4].split() == ["┃▸", "1", "gate", "6.00", "6", "4", "1", "blue", "2"]
-        assert "held up by  kiosk" in app.screen.query_one("#supports", Line).plain
+        assert "weight from  kiosk 50%" in app.screen.query_one("#supports", Line).plain
 
 
 async def test_sort_find_and_filter(app):

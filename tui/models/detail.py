@@ -139,8 +139,10 @@ def supports_line(graph: Graph, given: Contributions, width: int, glyphs: Glyphs
     count = len(given.neighbours)
     if count == 0:
         return [(" held up by  nothing: no neighbour gives score to it", "plain")]
-    pieces: list[Piece] = [(" held up by  ", "plain")]
-    used = 13
+    # Where a score is no sum over neighbours, only weights have shares.
+    head = " held up by  " if given.of_score else " weight from  "
+    pieces: list[Piece] = [(head, "plain")]
+    used = len(head)
     for at in range(count):
         name = tame(graph.name(int(given.neighbours[at]), 120), glyphs)
         name = fit(name, min(cell_len(name), 24), glyphs=glyphs)
@@ -159,6 +161,8 @@ def supports_line(graph: Graph, given: Contributions, width: int, glyphs: Glyphs
 
 def parts_words(given: Contributions) -> str:
     """``feeders 83%  teleport 17%``."""
+    if not given.of_score:
+        return "shares are of weight, not of score"
     return "  ".join(f"{name} {percent(share)}" for name, share in given.parts.items())
 
 

@@ -170,6 +170,12 @@ class StandingsView(View):
             lambda width: detail.supports_line(graph, given, width, glyphs)
         )
 
+    def do(self, action_id: str) -> None:
+        super().do(action_id)
+        # The next key may come before the table has told where its cursor went.
+        if self.composed:
+            self.model.cursor = min(self.table.row, max(self.model.count - 1, 0))
+
     # ---- moving ------------------------------------------------------------------------------
 
     def do_row_up(self) -> None:

@@ -112,3 +112,14 @@ def test_nothing_is_given_where_there_is_no_score():
     refused = contributions(graph_of(linked), result_of("surfer", [np.nan, np.nan]), 1)
     assert refused.amount.tolist() == [0.0]
     assert refused.share.tolist() == [0.0]
+
+
+def test_scores_that_are_no_sum_over_neighbours_have_shares_of_weight(matrix):
+    """A score of another scale than the weights must not make shares beyond 1."""
+    graph, result = graph_of(matrix), result_of("votes", np.full(30, 1e-3))
+    for node in range(30):
+        given = contributions(graph, result, node)
+        expected = np.sort(matrix[:, node][matrix[:, node] > 0])[::-1]
+        assert not given.of_score
+        assert given.parts == {}
+        np.testing.assert_allclose(given.share, expected / expected.sum(), rtol=1e-15)
