@@ -183,6 +183,7 @@ ACTIONS: tuple[Action, ...] = (
             ("ask.why", _ASKED, "why the node scores what it scores, term by term"),
             ("ask.than", _ASKED, "why the node stands above or below another, term by term"),
             ("ask.loss", _ASKED, "what the loss of the node would do: who rises, who is cut off"),
+            ("ask.along", (*_ASKED, LOG), "how ranks change along a setting, such as the damping"),
             ("ask.losses", _ASKED, "what the loss of each of the first nodes would do"),
             ("ask.agreement", _ASKED, "how far the solved measures agree, and where not"),
         )

@@ -67,6 +67,7 @@ _VIEWS = (
     "agreement",
     "why",
     "losses",
+    "along",
 )
 
 

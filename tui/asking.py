@@ -10,6 +10,7 @@ from typing import TYPE_CHECKING
 from kingpost.tui import actions
 
 if TYPE_CHECKING:
+    from kingpost.core.measures.base import Settings
     from kingpost.tui.app import KingpostApp
 
 _NAMES = {
@@ -22,6 +23,7 @@ _NAMES = {
     "ask.losses": "losses one by one",
     "ask.drift": "drift",
 }
+_WRITTEN = "written"
 
 
 class Asking:
@@ -120,3 +122,51 @@ class Asking:
         from kingpost.tui.views.losses import LossesView
 
         self._app.push_screen(LossesView())
+
+    can_ask_along = can_ask_anything
+
+    def do_ask_along(self) -> None:
+        """Ask which setting of the measure shown to sweep."""
+        from kingpost.tui.models.along import offered
+        from kingpost.tui.views.sheets import Choice, ChoiceSheet
+
+        sitting = self._app.sitting
+        measure, settings = sitting.current, sitting.settings_of(sitting.current)
+        choices = [Choice(text, words) for text, words in offered(settings)]
+        if not choices:
+            self._write_along(measure, settings, "", "")
+            return
+        choices.append(Choice(_WRITTEN, "another setting, or other values, written"))
+
+        def chosen(key: str | None) -> None:
+            if key == _WRITTEN:
+                self._write_along(measure, settings, "", "")
+            elif key is not None:
+                self._along(measure, settings, key)
+
+        self._app.push_screen(ChoiceSheet(f"along which setting of {measure}", choices), chosen)
+
+    def _write_along(self, measure: str, settings: Settings, text: str, wrong: str) -> None:
+        from kingpost.tui.models.along import FORMS
+        from kingpost.tui.views.sheets import PromptSheet
+
+        def written(answer: str | None) -> None:
+            if answer:
+                self._along(measure, settings, answer)
+
+        hint = "" if wrong else f"such as {FORMS}"
+        self._app.push_screen(
+            PromptSheet(f"{measure} along", text, hint=hint, wrong=wrong), written
+        )
+
+    def _along(self, measure: str, settings: Settings, text: str) -> None:
+        from kingpost.core.errors import KingpostError
+        from kingpost.tui.models.along import checked
+        from kingpost.tui.views.along import AlongView
+
+        try:
+            over = checked(text, settings)
+        except KingpostError as error:
+            self._write_along(measure, settings, text, error.sentence)
+            return
+        self._app.push_screen(AlongView(measure, settings, over))

@@ -37,7 +37,7 @@ def walk_answer(graph: Graph, found: Walk) -> Answer:
     lasting = found.stationary
     head = [
         graph_line(graph, settings.flow),
-        f"a walk from {begin}: {_conventions(graph, found)}",
+        f"a walk from {begin}: {conventions_words(graph, found)}",
         "distance: total variation to the stationary distribution, 1 for all elsewhere to 0 for no "
         "difference; half: fewest nodes that hold half of the walkers",
     ]
@@ -55,11 +55,12 @@ def walk_answer(graph: Graph, found: Walk) -> Answer:
         "stationary": solve_facts(lasting),
         "sentence": mixing_words(found),
     }
-    tail = [mixing_words(found), _reach_words(graph, found), MODEL, CAUTION]
+    tail = [mixing_words(found), reach_words(graph, found), MODEL, CAUTION]
     return Answer(head, sheets, facts, tail)
 
 
-def _conventions(graph: Graph, found: Walk) -> str:
+def conventions_words(graph: Graph, found: Walk) -> str:
+    """How the walker moves, in words."""
     settings = found.settings
     d = settings.damping
     jump = "to any node alike" if settings.teleport is None else "by the teleport vector"
@@ -96,7 +97,8 @@ def mixing_words(found: Walk) -> str:
     return words if certain is None else f"{words}; the jumps alone bring it there in {certain:,}"
 
 
-def _reach_words(graph: Graph, found: Walk) -> str:
+def reach_words(graph: Graph, found: Walk) -> str:
+    """How far the walk can have come, in one sentence."""
     last = found.steps[-1]
     words = (
         f"after {count(last.step, 'step')} the walk can have been at {last.reached:,} of "

@@ -109,3 +109,19 @@ async def test_the_loss_of_a_node_is_tried_with_the_caution_in_sight(app):
         await until(pilot, lambda: app.screen.view == "standings")
         await asked(pilot, "losses one by one")
         await until(pilot, lambda: "without" in app.shown() and "rank" in app.shown())
+
+
+async def test_ranks_along_the_damping(app):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await asked(pilot, "along a setting")
+        await until(pilot, lambda: "along which setting of surfer" in app.shown())
+        await pilot.press("e", "enter")
+        await until(pilot, lambda: app.screen.view == "prompt")
+        await pilot.press(*"damping=0.5:2:3", "enter")
+        await until(pilot, lambda: "it takes a number" in app.shown())
+        await pilot.press(*["backspace"] * 3, *"0.9:3", "enter")
+        await until(pilot, lambda: "surfer along damping" in app.shown())
+        await until(pilot, lambda: "3 values from 0.5 to 0.9" in app.shown())
+        await pilot.press("tab", "tab")
+        await until(pilot, lambda: "[leader changes]" in app.shown())
