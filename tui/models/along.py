@@ -112,7 +112,9 @@ def _lines_page(graph: Graph, found: Sweep) -> Page:
 
     def rank(value: int) -> Callable[[int], str]:
         ranks = found.ranks[value]
-        return lambda at: "-" if ranks[at, 0] < 0 else rank_range(*map(int, ranks[at]), 11)
+        return lambda at: (
+            "-" if ranks[at, 0] < 0 else rank_range(int(ranks[at, 0]), int(ranks[at, 1]), 11)
+        )
 
     few = np.unique(np.linspace(0, len(values) - 1, min(len(values), 7)).round().astype(int))
     width = max([5, *(len(rank(value)(row)) for value in few for row in range(len(names)))])
