@@ -10,6 +10,7 @@ import contextlib
 import os
 import signal
 import sys
+import threading
 import traceback
 from collections.abc import Callable, Mapping, Sequence
 from typing import TYPE_CHECKING, Any
@@ -138,10 +139,19 @@ class KingpostApp(App[int], inherit_bindings=False):
         loop = self._loop
         if loop is not None and not self.is_headless:
             for number in (signal.SIGINT, signal.SIGTERM, signal.SIGHUP):
-                loop.add_signal_handler(number, self.leave, 128 + number)
+                loop.add_signal_handler(number, self._signalled, number)
         # The first frame is on its way before the heavy imports compete for the processor.
         if self.opener.paths:
             self.set_timer(0.01, self._begin)
+
+    def _signalled(self, number: int) -> None:
+        """Leave because the system says so."""
+        self.leave(128 + number)
+        if number == signal.SIGHUP:
+            # Nobody is there any more to see the program wait for something.
+            last = threading.Timer(5 * _PATIENCE, os._exit, (128 + number,))
+            last.daemon = True
+            last.start()
 
     def _begin(self) -> None:
         self.opener.begin()
