@@ -5,6 +5,7 @@ Nothing here sleeps: every wait is for something on the emulated screen, with a 
 
 from __future__ import annotations
 
+import contextlib
 import fcntl
 import os
 import pty
@@ -43,7 +44,13 @@ KEYS = {
 class Terminal:
     """One program on a pseudo-terminal of a given size."""
 
-    def __init__(self, argv: list[str], size: tuple[int, int], env: dict[str, str]) -> None:
+    def __init__(
+        self,
+        argv: list[str],
+        size: tuple[int, int],
+        env: dict[str, str],
+        cwd: Path | None = None,
+    ) -> None:
         self.width, self.height = size
         self.screen = pyte.Screen(self.width, self.height)
         self._stream = pyte.ByteStream(self.screen)
@@ -57,6 +64,7 @@ class Terminal:
             stdout=self._slave,
             stderr=self._slave,
             env=env,
+            cwd=cwd,
             start_new_session=True,
             close_fds=True,
             preexec_fn=self._take_terminal,
@@ -133,6 +141,21 @@ class Terminal:
         for key in keys:
             os.write(self._master, KEYS.get(key, key).encode())
 
+    def paste(self, text: str) -> None:
+        """Paste a text of any length, marked as pasted, reading what comes meanwhile."""
+        data = b"\x1b[200~" + text.encode() + b"\x1b[201~"
+        end = time.monotonic() + DEADLINE
+        os.set_blocking(self._master, False)  # a full queue must not keep us from reading
+        try:
+            while data:
+                assert time.monotonic() < end, f"{len(data):,} bytes are not taken"
+                _, ready, _ = select.select([], [self._master], [], 0.05)
+                with contextlib.suppress(BlockingIOError):
+                    data = data[os.write(self._master, data[:4096]) if ready else 0 :]
+                self.pump(0.0)
+        finally:
+            os.set_blocking(self._master, True)
+
     def resize(self, width: int, height: int, tell: bool = True) -> None:
         """Give the terminal another size."""
         fcntl.ioctl(self._slave, termios.TIOCSWINSZ, struct.pack("HHHH", height, width, 0, 0))
@@ -186,13 +209,18 @@ class Terminal:
 
 @pytest.fixture
 def terminal(tmp_path: Path) -> Iterator[Callable[..., Terminal]]:
-    """``terminal(*arguments, size=(80, 24), **environment)`` runs kingpost; ended afterwards."""
+    """``terminal(*arguments, size=(80, 24), **environment)`` runs kingpost; ended afterwards.
+
+    ``code`` is Python run before it in the same process: for making something go wrong.
+    """
     opened: list[Terminal] = []
 
     def start(
         *arguments: Any,
         size: tuple[int, int] = (80, 24),
         piped: Path | None = None,
+        code: str = "",
+        cwd: Path | None = None,
         **environment: str,
     ) -> Terminal:
         env = {
@@ -210,10 +238,11 @@ def terminal(tmp_path: Path) -> Iterator[Callable[..., Terminal]]:
             "KINGPOST_CACHE_DIR": str(tmp_path / "cache"),
         }
         env |= environment
-        argv = [sys.executable, "-m", "kingpost.tui", *map(str, arguments)]
+        how = ["-c", f"{code}\nfrom kingpost.tui.cli import main\nmain()"] if code else []
+        argv = [sys.executable, *(how or ["-m", "kingpost.tui"]), *map(str, arguments)]
         if piped is not None:  # a shell's pipe: standard input is no terminal then
             argv = ["sh", "-c", 'cat "$0" | exec "$@"', str(piped), *argv]
-        opened.append(Terminal(argv, size, env))
+        opened.append(Terminal(argv, size, env, cwd))
         return opened[-1]
 
     yield start

@@ -96,7 +96,8 @@ class View(Screen[Any], inherit_bindings=False):
                 self.typed(event)
 
     def pasted(self, text: str) -> None:
-        """Text that was pasted: views that take text use it."""
+        """Text that was pasted: views that take text use it, the others say that they do not."""
+        self.kingpost.news("nothing takes text here: what was pasted is left aside", "bad")
 
     def typed(self, event: events.Key) -> None:
         """A key that is no action: views that take text use it."""

@@ -17,7 +17,7 @@ from kingpost.tui.models.columns import Column
 from kingpost.tui.models.detail import on_screen
 from kingpost.tui.models.drawing import wrap
 from kingpost.tui.views.base import View
-from kingpost.tui.widgets.entry import Entry
+from kingpost.tui.widgets.entry import LIMIT, Entry
 from kingpost.tui.widgets.lines import KeyLine, Line, Rule
 from kingpost.tui.widgets.rowtable import RowTable
 
@@ -178,7 +178,9 @@ class PromptSheet(Sheet):
         self.entry.typed(event)
 
     def pasted(self, text: str) -> None:
-        self.entry.pasted(text)
+        if not self.entry.pasted(text):
+            told = f"only the first {LIMIT:,} characters are taken"
+            self.query(Rule).first().tell(told, "bad")
 
     def do_prompt_take(self) -> None:
         self.dismiss(self.entry.writing.text)

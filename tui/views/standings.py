@@ -202,6 +202,15 @@ class StandingsView(View):
     def do_columns_right(self) -> None:
         self.table.sideways(1)
 
+    def catch_up(self) -> None:
+        """Let the model know where the cursor is: keys typed fast overtake the news of it."""
+        if self.composed:
+            self.model.cursor = self.table.row
+
+    def possible(self, action_id: str) -> bool:
+        self.catch_up()
+        return super().possible(action_id)
+
     def node_at_hand(self) -> int | None:
         return self.model.node
 

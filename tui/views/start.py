@@ -177,7 +177,8 @@ class StartView(RowsView):
 
     def _title(self, words: str) -> None:
         place = places.home_short(folders.safe(self._folder))
-        self.query_one("#where", Rule).title(f"{place}   {words}".rstrip())
+        # The end of a long title is cut: what changes stands first.
+        self.query_one("#where", Rule).title(f"{words}   {place}".strip())
 
     # ---- moving ------------------------------------------------------------------------------
 

@@ -18,15 +18,20 @@ class Writing:
         self.text = text[:LIMIT]
         self.caret = len(self.text)
 
-    def insert(self, text: str) -> None:
-        """Put text at the caret; line ends become spaces, other control characters are left out."""
-        room = LIMIT - len(self.text)
-        text = text[: max(room, 0)]
+    def insert(self, text: str) -> bool:
+        """Put text at the caret; line ends become spaces, other control characters are left out.
+
+        True if all of it had room.
+        """
+        room = max(LIMIT - len(self.text), 0)
+        all_of_it = len(text) <= room
+        text = text[:room]
         text = "".join(
             " " if c in "\r\n\t" else c for c in text if c in "\r\n\t" or c.isprintable()
         )
         self.text = self.text[: self.caret] + text + self.text[self.caret :]
         self.caret += len(text)
+        return all_of_it
 
     def key(self, key: str, character: str | None) -> bool:
         """A key pressed; False if it means nothing here."""
@@ -79,10 +84,11 @@ class Entry(Line):
         if self.writing.key(event.key, event.character):
             self.write()
 
-    def pasted(self, text: str) -> None:
-        """Take pasted text, up to the limit."""
-        self.writing.insert(text)
+    def pasted(self, text: str) -> bool:
+        """Take pasted text, up to the limit; True if all of it had room."""
+        all_of_it = self.writing.insert(text)
         self.write()
+        return all_of_it
 
     def write(self) -> None:
         """Show the text as it stands."""
