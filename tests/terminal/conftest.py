@@ -227,7 +227,8 @@ def terminal(tmp_path: Path) -> Iterator[Callable[..., Terminal]]:
             key: value
             for key, value in os.environ.items()
             if not key.startswith(("LC_", "TEXTUAL"))
-            and key not in ("LANG", "NO_COLOR", "COLORTERM")
+            # Some runners of tests set the size of a terminal that is not this one.
+            and key not in ("LANG", "NO_COLOR", "COLORTERM", "COLUMNS", "LINES")
         }
         env |= {
             "TERM": "xterm-256color",

@@ -150,6 +150,7 @@ ATTRIBUTES = {"team": ["red", None, "blue", "red", "blue", "amber"], "tier": [3,
 @pytest.fixture(autouse=True)
 def _state_of_its_own(tmp_path: Any, monkeypatch: pytest.MonkeyPatch) -> None:
     """Logs of faults, marks and sittings stay out of the home folder."""
+    monkeypatch.delenv("COLUMNS", raising=False)  # some runners of tests set it
     for name in ("XDG_STATE_HOME", "XDG_CONFIG_HOME", "XDG_CACHE_HOME"):
         monkeypatch.setenv(name, str(tmp_path / name.split("_")[1].lower()))
 

@@ -274,7 +274,7 @@ async def test_help_names_every_key(app):
         await until(pilot, lambda: app.screen.view == "help")
         shown = app.shown()
         for _, keys, means in help_rows():
-            assert keys.split()[0] in shown
+            assert all(key in shown for key in keys.split()[:1])
             assert means[:60] in shown
 
 

@@ -20,13 +20,20 @@ def again(graph, bench, how=ASK):
 
 
 async def left(graph, bench, *keys):
-    """A sitting in which some keys are pressed one after the other, and then left."""
+    """A sitting in which keys are pressed, each when the one before has had its effect."""
     app = again(graph, bench)
     async with app.run_test(size=(80, 24)) as pilot:
         await opened(pilot)
         for key in keys:
-            await pilot.press(key)
-            await until(pilot, lambda: not app.runner.jobs("table"))
+            if key == "by name":
+                await pilot.press("s")
+                await until(pilot, lambda: app.screen.view == "choice" and app.screen.composed)
+                await pilot.press("down", "enter")
+                await until(pilot, lambda: app.standings.model.arrangement.sort == "node")
+            else:
+                await pilot.press(key)
+        if keys[-1:] == ("enter",):
+            await until(pilot, lambda: app.screen.view == "node")
         await pilot.pause()
         app.leave(129)
         await until(pilot, lambda: app._exit)
@@ -34,7 +41,7 @@ async def left(graph, bench, *keys):
 
 
 async def test_a_sitting_is_offered_and_taken_up(graph, bench):
-    await left(graph, bench, "x", "down", "down", "s", "down", "enter", "enter")
+    await left(graph, bench, "x", "down", "down", "by name", "enter")
     kept = resumption.read(PATHS)
     assert (kept.view, kept.wanted["sort"], kept.marks) == ("node", "node", 1)
     app = again(graph, bench)
@@ -73,7 +80,7 @@ async def test_a_measure_its_settings_and_the_filter_come_back(graph, bench):
 
 
 async def test_going_afresh_leaves_the_marks(graph, bench):
-    await left(graph, bench, "x", "down", "s", "down", "enter")
+    await left(graph, bench, "x", "down", "by name")
     app = again(graph, bench)
     async with app.run_test(size=(80, 24)) as pilot:
         await until(pilot, lambda: "begin afresh" in app.shown())
@@ -128,5 +135,5 @@ async def test_a_sitting_that_cannot_be_kept_is_said_on_leaving(
     wall = tmp_path / "wall"
     wall.write_text("no folder")
     monkeypatch.setenv("XDG_STATE_HOME", str(wall))
-    app = await left(graph, bench, "down", "s", "down", "enter")
+    app = await left(graph, bench, "down", "by name")
     assert app.sentence.startswith("the sitting is not kept: nothing can be kept")

@@ -177,7 +177,10 @@ class StartView(RowsView):
 
     def _title(self, words: str) -> None:
         place = places.home_short(folders.safe(self._folder))
-        # The end of a long title is cut: what changes stands first.
+        # Of a long path the end says most; of a long title the end is cut.
+        room = max(self.app.size.width - len(words) - 12, 8)
+        if len(place) > room:
+            place = self.looks.glyphs.ellipsis + place[len(place) - room :]
         self.query_one("#where", Rule).title(f"{words}   {place}".strip())
 
     # ---- moving ------------------------------------------------------------------------------
