@@ -185,6 +185,8 @@ ACTIONS: tuple[Action, ...] = (
             ("ask.loss", _ASKED, "what the loss of the node would do: who rises, who is cut off"),
             ("ask.along", (*_ASKED, LOG), "how ranks change along a setting, such as the damping"),
             ("ask.losses", _ASKED, "what the loss of each of the first nodes would do"),
+            ("ask.walk", _ASKED, "where a walker from the node is after each step"),
+            ("ask.drift", _ASKED, "what has changed against another table"),
             ("ask.agreement", _ASKED, "how far the solved measures agree, and where not"),
         )
     ),

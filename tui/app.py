@@ -69,6 +69,8 @@ _VIEWS = (
     "why",
     "losses",
     "along",
+    "walk",
+    "drift",
 )
 
 

@@ -24,6 +24,7 @@ _NAMES = {
     "ask.drift": "drift",
 }
 _WRITTEN = "written"
+_DAMPING = 0.85  # where the surfer has not been asked for yet
 
 
 class Asking:
@@ -105,6 +106,30 @@ class Asking:
         if node is not None:
             self._app.push_screen(LossView(node))
 
+    can_ask_walk = can_ask_why
+
+    def do_ask_walk(self) -> None:
+        """Let a walker loose at the node, once it is said whether it jumps."""
+        from kingpost.tui.views.sheets import Choice, ChoiceSheet
+        from kingpost.tui.views.walk import WalkView
+
+        node = self._node()
+        if node is None:
+            return
+        surfer = self._app.sitting.settings.get("surfer")
+        damping = float(getattr(surfer, "damping", _DAMPING))
+        choices = [Choice("1", "follows edges", "and never jumps of itself: damping 1")]
+        if damping < 1.0:
+            words = f"as the surfer does: damping {damping:g}"
+            choices.append(Choice(str(damping), "and jumps", words))
+
+        def chosen(key: str | None) -> None:
+            if key is not None:
+                self._app.push_screen(WalkView(node, float(key)))
+
+        name = self._app.sitting.graph.name(node, 40)
+        self._app.push_screen(ChoiceSheet(f"a walker from {name}", choices), chosen)
+
     # ---- of the graph ------------------------------------------------------------------------
 
     can_ask_agreement = can_ask_anything
@@ -170,3 +195,79 @@ class Asking:
             self._write_along(measure, settings, text, error.sentence)
             return
         self._app.push_screen(AlongView(measure, settings, over))
+
+    def can_ask_drift(self) -> bool:
+        """Whether this is a whole table, which another can be compared with."""
+        return self.can_ask_anything() and not self._app.within.depth
+
+    def do_ask_drift(self) -> None:
+        """Ask for the other table, first among those in the same folder."""
+        from kingpost.tui.models.drifts import beside
+
+        app, paths = self._app, list(self._app.opener.paths)
+        view = app.view
+
+        def found(tables: list[str]) -> None:
+            if app.view is view:  # whoever has gone elsewhere no longer asks
+                self._choose_other(tables)
+
+        app.background("drift", lambda job: beside(paths, job.watch), found, words="listing tables")
+
+    def _choose_other(self, tables: list[str]) -> None:
+        import os
+
+        from kingpost.tui.models.folders import safe
+        from kingpost.tui.views.sheets import Choice, ChoiceSheet
+
+        if not tables:
+            self._write_other("", "")
+            return
+        choices = [Choice(path, safe(os.path.basename(path)), "in the same folder")
+                   for path in tables]  # fmt: skip
+        choices.append(Choice(_WRITTEN, "another table", "by its path"))
+
+        def chosen(key: str | None) -> None:
+            if key == _WRITTEN:
+                self._write_other("", "")
+            elif key is not None:
+                self._choose_order(key)
+
+        self._app.push_screen(ChoiceSheet("drift against", choices), chosen)
+
+    def _write_other(self, text: str, wrong: str) -> None:
+        import os
+
+        from kingpost.tui.views.sheets import PromptSheet
+
+        def written(answer: str | None) -> None:
+            if not answer:
+                return
+            path = os.path.abspath(os.path.expanduser(answer.strip()))
+            if os.path.exists(path):
+                self._choose_order(path)
+            else:
+                self._write_other(answer, f"there is no table at {path}; write another path")
+
+        hint = "" if wrong else "the path of a table of edges, read by the same rules as this one"
+        self._app.push_screen(PromptSheet("drift against", text, hint=hint, wrong=wrong), written)
+
+    def _choose_order(self, path: str) -> None:
+        import os
+
+        from kingpost.tui.models.drifts import Other
+        from kingpost.tui.models.folders import safe
+        from kingpost.tui.views.drift import DriftView
+        from kingpost.tui.views.sheets import Choice, ChoiceSheet
+
+        name = safe(os.path.basename(path))
+        choices = [
+            Choice("later", "this one is before", f"{name} is after"),
+            Choice("earlier", "this one is after", f"{name} is before"),
+        ]
+
+        def chosen(key: str | None) -> None:
+            if key is not None:
+                options = dict(self._app.resumer.options)
+                self._app.push_screen(DriftView(Other(path, options, key == "later")))
+
+        self._app.push_screen(ChoiceSheet("which of the two is earlier", choices), chosen)

@@ -71,7 +71,7 @@ class Opener:
         self.paths = list(paths)
         self._load_given, self._options = load, options
         self._measure, self._settings = measure, settings
-        self._how, self._store = kept, store
+        self._how, self.store = kept, store
         self.notes: list[str] = []  # told where they stay to be read: after leaving
         self._offer: Kept | None = None
         self._taken: Kept | None = None
@@ -160,7 +160,7 @@ class Opener:
                     self.paths,
                     options=options,
                     watch=job.watch,
-                    store=self._store,
+                    store=self.store,
                     tell=self.notes.append,
                 )
             )

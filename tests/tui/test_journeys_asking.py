@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import pyarrow as pa
+import pyarrow.parquet as pq
 import pytest
 
 from kingpost.tui import terminal
@@ -125,3 +127,49 @@ async def test_ranks_along_the_damping(app):
         await until(pilot, lambda: "3 values from 0.5 to 0.9" in app.shown())
         await pilot.press("tab", "tab")
         await until(pilot, lambda: "[leader changes]" in app.shown())
+
+
+async def test_a_walk_from_the_node(app):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await asked(pilot, "walk from it")
+        await until(pilot, lambda: "a walker from" in app.shown())
+        await pilot.press("down", "enter")
+        await until(pilot, lambda: "jumping with chance 0.15" in app.shown())
+        await until(pilot, lambda: "mixed after" in app.shown())
+        await pilot.press("tab")
+        await until(pilot, lambda: "in the long run" in app.shown())
+
+
+async def test_drift_against_a_table_in_the_same_folder(tmp_path):
+    paths = []
+    for name, target in (("before", "hub"), ("after", "spare")):
+        table = pa.table({"source": ["a", "b", "c", "c"], "target": [target, target, "d", "e"]})
+        paths.append(str(tmp_path / f"{name}.parquet"))
+        pq.write_table(table, paths[-1])
+    looks = terminal.decide({"LANG": "C.UTF-8"})
+    app = KingpostApp([paths[0]], None, "degree", None, looks=looks, store=False)
+    app.shown = lambda: Kingpost.shown(app)
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await asked(pilot, "drift")
+        await until(pilot, lambda: "after.parquet" in app.shown())
+        await pilot.press("enter")
+        await until(pilot, lambda: "which of the two is earlier" in app.shown())
+        await pilot.press("enter")
+        await until(pilot, lambda: "drift of degree from before.parquet" in app.shown())
+        await pilot.press("tab", "tab", "tab")
+        await until(pilot, lambda: "1 node gone" in app.shown())
+        await pilot.press("enter")
+        await until(pilot, lambda: "▼ hub" in app.shown())
+        await pilot.press("escape")
+        await until(pilot, lambda: app.screen.view == "drift")
+        await pilot.press("escape")
+        await until(pilot, lambda: app.screen.view == "standings")
+        # A path written by hand that leads nowhere is asked for again.
+        await asked(pilot, "drift")
+        await until(pilot, lambda: "another table" in app.shown())
+        await pilot.press("e", "enter")
+        await until(pilot, lambda: app.screen.view == "prompt")
+        await pilot.press(*"nowhere", "enter")
+        await until(pilot, lambda: "there is no table at" in app.shown())

@@ -138,7 +138,8 @@ def _lines_page(graph: Graph, found: Sweep) -> Page:
         best, worst = int(ranks[:, 0].min()), int(ranks[:, 1].max())
         kept = " at every value, proven" if found.always[row] else ""
         among = f"; among the first {found.top:,}{kept}" if kept else ""
-        return f"{names[row]}: ranks {best:,} to {worst:,}{among}. {leader_words(graph, found)}"
+        leads = leader_words(graph, found)
+        return f"{names[row]}: ranks {best:,} to {worst:,}{among}. {leads[:1].upper()}{leads[1:]}"
 
     listing = Listing(head, len(names), lambda at: int(found.nodes[at]))
     return Page(

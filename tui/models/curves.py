@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass
+from itertools import pairwise
 
 from kingpost.tui.models.chart import Cell
 from kingpost.tui.models.numbers import compact
@@ -127,17 +128,29 @@ def _framed(
     foot = " " * _LEFT + glyphs.corner + glyphs.rule * plot_w
     out.append([(c, "rule") for c in foot.ljust(width)[:width]])
     words = [" "] * width
-    taken: list[tuple[int, int]] = []
-    last = len(across) - 1
-    for at in (0, last, *range(1, last)):
-        text = axes.labels[at]
-        start = min(max(_LEFT + 1 + across[at] - (len(text) - 1) // 2, 0), width - len(text))
-        end = start + len(text)
-        if start >= 0 and all(end + 1 < low or start > high + 1 for low, high in taken):
-            words[start:end] = text
-            taken.append((start, end))
+    for start, text in _spaced(axes.labels, across, width):
+        words[start : start + len(text)] = text
     out.append([(c, "quiet") for c in words])
     return out
+
+
+def _spaced(labels: Sequence[str], across: list[int], width: int) -> list[tuple[int, str]]:
+    """Where labels go: the first, the last, and every so manieth between, as many as fit."""
+    last = len(across) - 1
+
+    def placed(at: int) -> tuple[int, str]:
+        text = labels[at][:width]
+        start = _LEFT + 1 + across[at] - (len(text) - 1) // 2
+        return min(max(start, 0), width - len(text)), text
+
+    for step in range(1, last + 1):
+        chosen = [placed(at) for at in range(0, last, step)]
+        end = placed(last)
+        chosen = [one for one in chosen if one[0] + len(one[1]) + 1 < end[0]]
+        chosen.append(end)
+        if all(a + len(text) + 1 < b for (a, text), (b, _) in pairwise(chosen)):
+            return chosen
+    return [placed(last)]
 
 
 def _text(value: float) -> str:

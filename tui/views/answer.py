@@ -13,7 +13,7 @@ from kingpost.core.text import visible
 from kingpost.tui.jobs import Job
 from kingpost.tui.models.answers import NOWHERE, Answer, Page
 from kingpost.tui.models.drawing import wrap
-from kingpost.tui.models.pairs import Pairs, wrapped
+from kingpost.tui.models.pairs import Pairs, Row, wrapped
 from kingpost.tui.views.rows import RowsView
 from kingpost.tui.widgets.grid import Grid
 from kingpost.tui.widgets.lines import KeyLine, Line, Piece, Rule
@@ -106,13 +106,9 @@ class AnswerView(RowsView):
         if self.app.screen is self:
             self.kingpost.news("")
         self.query_one("#head", Line).show((f" {self.asked}", "head"))
-        lines = wrap(visible(sentence, 600), max((self.size.width or 80) - 4, 10))
-        from kingpost.tui.models.pairs import Row
-
         self.query_one("#top", Rule).title("no answer")
-        self.table.show(
-            Pairs([Row("" if at else "because", line) for at, line in enumerate(lines)])
-        )
+        rows = [Row("because", visible(sentence, 600))]
+        self.table.show(Pairs(wrapped(rows, self.size.width or self.app.size.width)))
 
     def _progress(self, job: Job) -> None:
         progress = job.progress
