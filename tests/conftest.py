@@ -5,6 +5,7 @@ from __future__ import annotations
 import hashlib
 import os
 import shutil
+import signal
 import sys
 import tempfile
 from pathlib import Path
@@ -29,3 +30,9 @@ def pytest_runtest_teardown(item: pytest.Item) -> None:
 
 def pytest_unconfigure() -> None:
     shutil.rmtree(_SHELVES, ignore_errors=True)
+
+
+if signal.getsignal(signal.SIGINT) is signal.SIG_IGN:
+    # A shell starts what it runs in the background without interrupts, and every program that
+    # a test interrupts would inherit that and run on for ever.
+    signal.signal(signal.SIGINT, signal.default_int_handler)

@@ -131,11 +131,13 @@ class LoadingView(View):
         glyphs = self.looks.glyphs
         name = visible(progress.stage, 40).ljust(width)
         pieces: list[Piece] = [(f" {glyphs.pointer if now else ' '} {name}  ", "plain")]
-        amount = f"{progress.done:,}"
+        # Stages are told of now and then: one that another follows is done, whatever was heard.
+        done = progress.done if now or not progress.total else progress.total
+        amount = f"{done:,}"
         if progress.total:
-            share = min(progress.done / progress.total, 1.0)
+            share = min(done / progress.total, 1.0)
             pieces.append((bar(share, 16, glyphs).ljust(16) + " ", "bar"))
             amount += f" of {progress.total:,}"
-        if progress.done or progress.total:
+        if done or progress.total:
             pieces.append((f"{amount} {visible(progress.unit, 20)}", "plain"))
         return pieces
