@@ -44,7 +44,7 @@ _LISTS = (SHORTLIST, SOLVES, APART, WAY, PLATE, MAKEUP, *ANSWERS)  # views that 
 _TABLES = (STANDINGS, NODE, LOG, CHOICE, HELP, COLUMNS, START, ROLES, *_LISTS)
 _ROOMS = (STANDINGS, NODE, LOG, HELP, *_LISTS)
 _NODES = (STANDINGS, NODE, SHORTLIST)  # views in which a node is at hand
-_ASKED = (STANDINGS, NODE, SHORTLIST, *ANSWERS)  # views in which something can be asked
+_ASKED = (STANDINGS, NODE, LOG, SHORTLIST, *ANSWERS)  # views in which something can be asked
 _TYPING = (FORM, PROMPT, DOING)
 _LINES = (FORM, DOING)  # views of lines in which one types
 
@@ -183,9 +183,14 @@ ACTIONS: tuple[Action, ...] = (
             ("ask.why", _ASKED, "why the node scores what it scores, term by term"),
             ("ask.than", _ASKED, "why the node stands above or below another, term by term"),
             ("ask.loss", _ASKED, "what the loss of the node would do: who rises, who is cut off"),
-            ("ask.along", (*_ASKED, LOG), "how ranks change along a setting, such as the damping"),
+            ("ask.along", _ASKED, "how ranks change along a setting, such as the damping"),
             ("ask.losses", _ASKED, "what the loss of each of the first nodes would do"),
             ("ask.walk", _ASKED, "where a walker from the node is after each step"),
+            (
+                "ask.peers",
+                (STANDINGS,),
+                "ranks and scores among peers, such as of one year or tier",
+            ),
             ("ask.drift", _ASKED, "what has changed against another table"),
             ("ask.agreement", _ASKED, "how far the solved measures agree, and where not"),
         )

@@ -21,6 +21,7 @@ _NAMES = {
     "ask.agreement": "agreement",
     "ask.along": "along a setting",
     "ask.losses": "losses one by one",
+    "ask.peers": "among peers",
     "ask.drift": "drift",
 }
 _WRITTEN = "written"
@@ -38,9 +39,10 @@ class Asking:
         return None if view is None else view.node_at_hand()
 
     def _possible(self, id: str) -> bool:
-        name = id.replace(".", "_")
-        if not hasattr(self, f"do_{name}"):
+        view = self._app.view
+        if view is None or view.view not in actions.BY_ID[id].views:
             return False
+        name = id.replace(".", "_")
         can = getattr(self, f"can_{name}", None)
         return can is None or bool(can())
 
@@ -195,6 +197,32 @@ class Asking:
             self._write_along(measure, settings, text, error.sentence)
             return
         self._app.push_screen(AlongView(measure, settings, over))
+
+    def can_ask_peers(self) -> bool:
+        """Whether nodes have an attribute to be grouped by."""
+        return self.can_ask_anything() and self._app.sitting.graph.attributes is not None
+
+    def do_ask_peers(self) -> None:
+        """Ask by which attribute scores are rescaled; shown as columns of the standings."""
+        from kingpost.core.text import visible
+        from kingpost.tui.models.peers import attributes_of
+        from kingpost.tui.views.sheets import Choice, ChoiceSheet
+
+        app = self._app
+        desk, now = app.desk, app.sitting.peers
+        choices = [
+            Choice(f"={name}", visible(name, 40), words)
+            for name, words in attributes_of(app.sitting.graph)
+        ]
+        if now:
+            choices.append(Choice("", "none", "take the columns away"))
+
+        def chosen(key: str | None) -> None:
+            if key is not None and app.desk is desk:
+                app.news("")
+                desk.among_peers(key[1:])
+
+        app.push_screen(ChoiceSheet("scores rescaled among peers by", choices, f"={now}"), chosen)
 
     def can_ask_drift(self) -> bool:
         """Whether this is a whole table, which another can be compared with."""

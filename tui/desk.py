@@ -12,7 +12,9 @@ from kingpost.core.measures import COMPANY, NAMES
 from kingpost.core.measures.base import Settings
 from kingpost.core.result import Result, Stop
 from kingpost.tui.jobs import Job, Runner, solve_work
+from kingpost.tui.models.columns import Column
 from kingpost.tui.models.headings import Choice, choice_of, shown
+from kingpost.tui.models.peers import peers_columns, peers_of
 from kingpost.tui.models.sitting import Sitting
 from kingpost.tui.models.solvelog import solved_words, sweep_words
 from kingpost.tui.models.standings import Standings, arrange, prepare
@@ -212,13 +214,18 @@ class Desk:
         result, others = sitting.result, sitting.others()
         if result is None or self.away:
             return
-        version = (id(result), *(id(other) for other in others))
+        peers = sitting.peers
+        version = (id(result), *(id(other) for other in others), hash(peers))
         fresh = version != self._prepared
 
         def work(job: Job) -> Any:
-            table = old
+            table, told = old, ""
             if table is None or fresh:
-                table = prepare(sitting.graph, result, others)
+                more: list[Column] = []
+                if peers:
+                    found, told = peers_of(sitting.graph, result, peers, job.watch)
+                    more = [] if found is None else peers_columns(found)
+                table = prepare(sitting.graph, result, others, more=more)
             if table.column(wanted["sort"]) is None:
                 wanted["sort"], wanted["turned"] = "rank", False
             lost = ""
@@ -230,7 +237,7 @@ class Desk:
                 # A condition that these results cannot answer must not keep them from sight.
                 lost = trouble.sentence
                 made = arrange(table, wanted["sort"], wanted["turned"])
-            return table, made, version, lost
+            return table, made, version, lost, told
 
         def failed(sentence: str) -> None:
             self._wanted["where"] = old.arrangement.where if old is not None else ""
@@ -248,7 +255,9 @@ class Desk:
     def _made(self, made: Any) -> None:
         if self._closed or self.away:
             return
-        table, arrangement, self._prepared, lost = made
+        table, arrangement, self._prepared, lost, told = made
+        if told:
+            self._front.news(told)
         old, self.table = self.table, table
         if old is not None and table is old:
             old.adopt(arrangement)
@@ -265,6 +274,11 @@ class Desk:
         self._front.table_ready(table, old is None)
         if old is None:
             self.keep_company()
+
+    def among_peers(self, attribute: str) -> None:
+        """Rescale scores among the peers by an attribute, as columns; none for an empty one."""
+        self.sitting.peers = attribute
+        self._make()
 
     def measures(self) -> list[tuple[str, str, str]]:
         """(name, heading, what is known of it) for every measure, to choose from."""

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import threading
+
 import pyarrow as pa
 import pyarrow.parquet as pq
 import pytest
@@ -173,3 +175,44 @@ async def test_drift_against_a_table_in_the_same_folder(tmp_path):
         await until(pilot, lambda: app.screen.view == "prompt")
         await pilot.press(*"nowhere", "enter")
         await until(pilot, lambda: "there is no table at" in app.shown())
+
+
+async def test_scores_among_peers_as_columns(app):
+    async with app.run_test(size=(120, 40)) as pilot:
+        await opened(pilot)
+        await asked(pilot, "among peers")
+        await until(pilot, lambda: "rescaled among peers by" in app.shown())
+        await pilot.press("enter")
+        await until(pilot, lambda: "in team" in app.shown())
+        # They go along to another measure, and away when they are not wanted.
+        app.desk.choose("katz")
+        await until(pilot, lambda: app.screen.model.result.measure == "katz")
+        assert "in team" in app.shown()
+        await asked(pilot, "among peers")
+        await pilot.press("e", "enter")
+        await until(pilot, lambda: "in team" not in app.shown())
+
+
+async def test_leaving_ends_the_work(app, monkeypatch):
+    working, ended = threading.Event(), threading.Event()
+
+    def held(graph, result, node, glyphs, watch):
+        working.set()
+        try:
+            while True:
+                watch.report("holding on", 1, 2, "parts")
+                watch.check()
+        finally:
+            ended.set()
+
+    monkeypatch.setattr("kingpost.tui.views.why.why_answer", held)
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await asked(pilot, "why")
+        await until(pilot, lambda: working.is_set() and "holding on 1 of 2 parts" in app.shown())
+        assert "being worked out; Esc ends it" in app.shown()
+        await pilot.press("escape")
+        await until(pilot, lambda: ended.is_set() and not app.runner.jobs("answer:why"))
+        assert app.screen.view == "standings"
+        await pilot.pause()
+        assert "holding on" not in app.shown()

@@ -32,6 +32,7 @@ class Sitting:
     formats: dict[int, tuple[Result, ScoreFormat]] = field(default_factory=dict)
     columns: Choice = field(default_factory=Choice)  # of the standings: what is shown, in order
     within: str = ""  # which part of a larger graph this is, if it is one
+    peers: str = ""  # attribute among whose peers scores are rescaled beside the score
     makeup: dict[Any, Any] = field(default_factory=dict)  # pages of the makeup worked out so far
 
     def measure(self, name: str) -> Measure:

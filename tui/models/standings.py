@@ -179,12 +179,16 @@ class Standings:
 
 
 def prepare(
-    graph: Graph, result: Result, others: Sequence[Result] = (), after: Standings | None = None
+    graph: Graph,
+    result: Result,
+    others: Sequence[Result] = (),
+    after: Standings | None = None,
+    more: Sequence[Column] = (),
 ) -> Standings:
     """Everything the table of ``result`` needs, O(n log n); run it in a job.
 
     ``others`` get a column of ranks and one of scores each; sort, filter and cursor are taken
-    over from ``after`` as far as they still make sense.
+    over from ``after`` as far as they still make sense.  ``more`` columns stand beside the score.
     """
     standing = result.standing
     rail = standing.rail
@@ -195,6 +199,7 @@ def prepare(
         make.rank_column(result),
         make.name_column(graph, standing.order),
         make.score_column(result),
+        *more,
         *ranks[:_NEAR],
         *make.degree_columns(graph),
         *make.attribute_columns(graph),
