@@ -113,18 +113,22 @@ def test_nothing_named_and_no_terminal_is_a_sentence(terminal):
     assert "no edge table was named" in run.text
 
 
-def test_a_slow_link_sends_less(terminal, calls):
-    sizes = {}
-    for options in ((), ("--slow-link",)):
-        run = terminal(calls, "--fresh", *options, size=(120, 40))
+FRAMES = """
+import atexit, sys
+def told():
+    from textual import constants
+    print("frames", constants.MAX_FPS, "animation", constants.TEXTUAL_ANIMATIONS)
+atexit.register(told)
+"""
+
+
+def test_a_slow_link_has_fewer_frames_no_animation_and_no_mouse(terminal, calls):
+    for options, frames in ((), 30), (("--slow-link",), 12):
+        run = terminal(calls, "--fresh", *options, code=FRAMES)
         run.shows("? all keys", "order proven to")
-        run.settle()
-        start = len(run.raw)
-        run.press(*["down"] * 12)
-        run.shows("held up by  berth-025")
-        run.settle()
-        sizes[options] = len(run.raw) - start
-        assert not re.search(rb"\x1b\[\?(1000|1003|1006)h", bytes(run.raw))
+        run.press("down")
+        run.shows("held up by  berth-007")
         run.press("q")
         assert run.ends() == 0
-    assert sizes[("--slow-link",)] <= sizes[()]
+        assert f"frames {frames} animation none" in run.text
+        assert not re.search(rb"\x1b\[\?(1000|1003|1006)h", bytes(run.raw))

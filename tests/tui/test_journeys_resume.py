@@ -47,8 +47,8 @@ async def test_a_sitting_is_offered_and_taken_up(graph, bench):
     app = again(graph, bench)
     async with app.run_test(size=(80, 24)) as pilot:
         await until(pilot, lambda: "take it up" in app.shown())
-        assert "a sitting of today" in app.shown()
-        assert "sorted by node" in app.shown()
+        await until(pilot, lambda: "a sitting of today" in app.shown())
+        await until(pilot, lambda: "sorted by node" in app.shown())
         await pilot.press("enter")
         await until(pilot, lambda: app.screen.view == "node")
         assert f"▼ {kept.trail[-1]}" in app.shown()

@@ -35,6 +35,7 @@ class LoadingView(View):
         self._stages: dict[str, Progress] = {}
         self._started = time.monotonic()
         self._offered = ("", "", "")
+        self._waits = False  # for an answer, with nothing left to read
 
     def compose(self) -> ComposeResult:
         yield Line(id="head")
@@ -54,6 +55,8 @@ class LoadingView(View):
         self.refresh_keys()
         self._run_clock()
         self.offer(*self._offered)
+        if self._waits:
+            self.wait_for_answer()
 
     def _run_clock(self) -> None:
         # On a slow link a clock is the first thing to go.
@@ -68,6 +71,7 @@ class LoadingView(View):
 
     def again(self) -> None:
         """Reading begins once more."""
+        self._waits = False
         self._stages.clear()
         self._started = time.monotonic()
         if self.composed:
@@ -87,6 +91,9 @@ class LoadingView(View):
 
     def wait_for_answer(self) -> None:
         """All is read; only the answer is missing."""
+        self._waits = True
+        if not self.composed:
+            return
         self._clock.stop()
         self.query_one("#head", Line).show(
             (f" {self._file_name}", "head"),
@@ -110,8 +117,9 @@ class LoadingView(View):
             self._stages[job.progress.stage] = job.progress
         elif job.words:
             self._stages.setdefault(job.words, Progress(job.words))
-        self._show()
-        self.refresh_keys()
+        if self.composed:
+            self._show()
+            self.refresh_keys()
 
     def _show(self) -> None:
         shown = list(self._stages.values())[-_MOST_STAGES:]

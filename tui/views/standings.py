@@ -23,6 +23,7 @@ from kingpost.tui.widgets.spread import SpreadRule
 
 BESIDE = 150  # columns from which the node view stands beside the table
 LOW = 17  # lines below which only the table is shown
+_SLOWER = 5  # times as long on a slow link
 _REST = 0.06  # seconds the cursor rests before the lines below follow it
 
 
@@ -110,7 +111,7 @@ class StandingsView(View):
         self.model.cursor = self.table.row
         # While a key is held down only the table moves; its lines follow once it rests.
         if self._timer is None:
-            self._timer = self.set_timer(_REST, self._rested)
+            self._timer = self.set_timer(_REST * (_SLOWER if self.looks.slow else 1), self._rested)
 
     def _rested(self) -> None:
         self._timer = None

@@ -91,8 +91,9 @@ class StartView(RowsView):
 
     def look_again(self) -> None:
         """Read the list of tables opened lately and the folder, in jobs."""
+        # In the lane in which the list is written: what was opened just now is read with the rest.
         self.kingpost.background(
-            "lately", self._read_lately, self._show_lately, words="reading what was opened lately"
+            "recent", self._read_lately, self._show_lately, words="reading what was opened lately"
         )
         self._list(self._folder)
 
