@@ -31,6 +31,7 @@ Flow = Literal["along", "against"]
 Floats = NDArray[np.float64]
 Offsets = NDArray[np.int64]
 Neighbours = NDArray[np.uint32]
+_PIECE = 1_000_000  # edges
 
 
 @dataclass(frozen=True, slots=True)
@@ -196,10 +197,18 @@ class Graph:
     @cached_property
     def loop_count(self) -> int:
         """Number of edges that lead from a node to itself."""
-        if self.stored == 0:
-            return 0
-        rows = np.repeat(np.arange(self.n, dtype=np.uint32), self.outward.degrees)
-        return int(np.count_nonzero(rows == self.outward.neighbours))
+        offsets, near = self.outward.offsets, self.outward.neighbours
+        found = first = 0
+        while first < self.n:
+            # In pieces: repeating keeps the interpreter to itself, and a screen may be waiting.
+            end = int(np.searchsorted(offsets, offsets[first] + _PIECE, side="right")) - 1
+            end = max(end, first + 1)
+            rows = np.repeat(
+                np.arange(first, end, dtype=np.uint32), np.diff(offsets[first : end + 1])
+            )
+            found += int(np.count_nonzero(rows == near[offsets[first] : offsets[end]]))
+            first = end
+        return found
 
     @property
     def weighted(self) -> bool:

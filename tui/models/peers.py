@@ -33,7 +33,10 @@ def peers_of(
     except SettingsError as error:
         sentence = error.sentence.replace("--within ", "").replace("--window", "the window")
         return None, f"not rescaled among peers: {sentence}"
-    return found, "; ".join(part for part in (found.words, found.left_out) if part)
+    name = visible(found.column, 24)
+    whom = f"nodes of its {name}" if found.window is None else f"{found.window:,} nearest by {name}"
+    words = f"z: deviations from the mean of the {whom} (arXiv 1509.01476)"
+    return found, "; ".join(part for part in (words, found.left_out) if part)
 
 
 def peers_columns(found: Cohorts) -> list[Column]:
