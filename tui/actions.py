@@ -315,7 +315,7 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "mark.toggle",
         ("x",),
-        _NODES,
+        (*_NODES, *ANSWERS),
         "mark the row's node (in Node, the centre) for the shortlist, or take the mark off",
         "mark",
         14,
@@ -324,7 +324,7 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "note.write",
         ("i",),
-        _NODES,
+        (*_NODES, *ANSWERS),
         "write a note on the node, which marks it",
         "note",
         22,
@@ -333,7 +333,7 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "shortlist.open",
         ("o",),
-        (STANDINGS, NODE, LOG),
+        (STANDINGS, NODE, LOG, *ANSWERS),
         "the shortlist: the nodes marked, their notes and their ranks",
         "shortlist",
         21,
@@ -360,7 +360,7 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "text.copy",
         ("y",),
-        _NODES,
+        (*_NODES, *ANSWERS),
         "copy the node's name to the terminal's clipboard; once more: the whole row",
         "copy",
         24,

@@ -216,3 +216,18 @@ async def test_leaving_ends_the_work(app, monkeypatch):
         assert app.screen.view == "standings"
         await pilot.pause()
         assert "holding on" not in app.shown()
+
+
+async def test_nodes_of_an_answer_go_on_the_shortlist(app):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        await asked(pilot, "agreement")
+        await until(pilot, lambda: "placed apart" in app.shown())
+        node = app.screen.node_at_hand()
+        await pilot.press("x")
+        await until(pilot, lambda: "1 on the shortlist" in app.shown() and "★" in app.shown())
+        assert node in app.keeper.marks
+        await pilot.press("o")
+        await until(pilot, lambda: app.screen.view == "shortlist")
+        await pilot.press("escape")
+        await until(pilot, lambda: app.screen.view == "agreement")

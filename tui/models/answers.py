@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Container, Sequence
 from dataclasses import dataclass, field
 
 from kingpost.core.standing import UNRANKED
@@ -27,6 +27,11 @@ class Listing:
         self.head = list(head)
         self.count = count
         self._node = node
+        self.marks: Container[int] = ()
+
+    def kept(self, item: int) -> bool:
+        """Whether the node of a row is on the shortlist."""
+        return self.node(item) in self.marks
 
     def node(self, row: int) -> int:
         """The node of a row, :data:`NOWHERE` for none."""

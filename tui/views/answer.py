@@ -146,6 +146,7 @@ class AnswerView(RowsView):
             self.table.headings(False)
             self.table.show(self._rows, row)
         else:
+            page.listing.marks = self.kingpost.keeper.marks
             self.table.headings(any(column.title for column in page.listing.head))
             self.table.show(page.listing, row, empty=page.empty)
         self._describe()
@@ -202,6 +203,17 @@ class AnswerView(RowsView):
             return None if self._rows is None else self._rows.rows[self.table.row].node
         node = page.listing.node(self.table.row)
         return None if node == NOWHERE else node
+
+    def row_at_hand(self) -> list[str]:
+        page, row = self.page, self.table.row
+        if page is None or page.listing is None or not page.listing.count:
+            return []
+        return [column.text(row) for column in page.listing.head]
+
+    def marks_changed(self) -> None:
+        if self.composed and self.page is not None and self.page.listing is not None:
+            self.page.listing.marks = self.kingpost.keeper.marks
+            self.table.refresh()
 
     def can_node_open(self) -> bool:
         return self.node_at_hand() is not None
