@@ -99,6 +99,7 @@ class LoadingView(View):
             (f" {self._file_name}", "head"),
             ("   read; take up the sitting that was kept?", "plain"),
         )
+        self.refresh_keys()  # there is nothing left to halt
 
     def _tick(self) -> None:
         if self.app.screen is not self:
