@@ -6,12 +6,14 @@ position in the stage (position p is node ``order[base + p]``), shape (4, rows o
 
 from __future__ import annotations
 
+import numpy as np
+
 from kingpost.core.kernels._compile import kernel
 
 
 @kernel()
-def record(order, base, low, high, x, before, f, g, new, sums):  # type: ignore[no-untyped-def]
-    """Keep the last sweep in slot ``new`` and add up the inner products mixing needs.
+def record(order, base, low, high, x, factor, before, f, g, new, sums):  # type: ignore[no-untyped-def]
+    """Keep the last sweep, times ``factor``, in slot ``new`` and add up what mixing needs.
 
     With d_k the difference of f[new] to the k-th sweep before it, ``sums`` (float64, 10)
     becomes d1.d1, d1.d2, d1.d3, d2.d2, d2.d3, d3.d3, d1.f, d2.f, d3.f and the sum of g[new].
@@ -20,7 +22,7 @@ def record(order, base, low, high, x, before, f, g, new, sums):  # type: ignore[
     aa = ab = ac = bb = bc = cc = af = bf = cf = total = 0.0
     for k in range(low, high):
         at = k - base
-        value = x[order[k]]
+        value = x[order[k]] * factor
         moved = value - before[at]
         f[new, at] = moved
         g[new, at] = value
@@ -55,3 +57,27 @@ def extrapolate(order, base, low, high, x, before, g, new, r, s, t, scale, z, la
         given = value * scale[i]
         for lane in range(lanes):
             z[lane, i] = given
+
+
+@kernel()
+def balance(order, low, high, x, z, given):  # type: ignore[no-untyped-def]
+    """Over ``order[low:high]``: the sums of x and of ``z * given``."""
+    whole = back = 0.0
+    for k in range(low, high):
+        i = order[k]
+        whole += x[i]
+        back += z[i] * given[i]
+    return whole, back
+
+
+@kernel()
+def given_to(offsets, neighbours, weights, order, low, high, totals):  # type: ignore[no-untyped-def]
+    """Add the weights of all edges into the rows ``order[low:high]`` to their givers' totals."""
+    one = np.uint64(1)
+    for k in range(np.uint64(low), np.uint64(high)):
+        i = np.uint64(order[k])
+        e = np.uint64(offsets[i])
+        end = np.uint64(offsets[i + one])
+        while e < end:
+            totals[neighbours[e]] += 1.0 if weights is None else weights[e]
+            e += one

@@ -26,11 +26,11 @@ from numpy.typing import NDArray
 
 from kingpost.core.certify import UNIT, Residual, componentwise
 from kingpost.core.colours import colours
-from kingpost.core.graph import Floats, Graph
+from kingpost.core.graph import Floats, Flow, Graph
 from kingpost.core.measures.base import Measure, Settings, Solve, option
 from kingpost.core.measures.common import Clock, conventions, empty, order_judge, reason
 from kingpost.core.measures.vectors import distribution
-from kingpost.core.operators import told_apart, walk
+from kingpost.core.operators import strengths, told_apart, walk
 from kingpost.core.result import Bound, BoundKind, Result, Stop
 from kingpost.core.solvers.ledger import Ledger
 from kingpost.core.solvers.linear import Judge, Solution, System
@@ -87,6 +87,8 @@ def _solve(graph: Graph, settings: SurferSettings, watch: Watch, start: Floats |
         "max_sweeps": settings.max_sweeps, "watch": watch, "gain": 0.5 * d / (1 - d)
     }  # fmt: skip
     early = settings.stop_order is not None
+    if start is None and jump.uniform and not structure.acyclic:
+        start = _guess(graph, settings.flow, d)
     if start is not None:  # scores that sum to 1, on the scale of the pseudo-rank
         start = start * ((1 - d) / (1 - d + d * float(start[jump.dangling].sum())))
     if jump.apart is None:
@@ -135,6 +137,14 @@ def _solve(graph: Graph, settings: SurferSettings, watch: Watch, start: Floats |
             told_apart(matrix, push), jump.landing(), watch, structure, settings.flow, pools
         ),
     )
+
+
+def _guess(graph: Graph, flow: Flow, damping: float) -> Floats:
+    """Scores if every edge carried as much as every other: nearer than no edges at all."""
+    taken = strengths(graph, "against" if flow == "along" else "along")
+    total = float(taken.sum())
+    flat = (1.0 - damping) / graph.n
+    return flat + taken * (damping / total) if total > 0 else np.full(graph.n, 1.0 / graph.n)
 
 
 # What holds of any two probability vectors.

@@ -35,6 +35,7 @@ from kingpost.core.graph import Adjacency, Floats, Flow
 from kingpost.core.layout import layout
 from kingpost.core.operators import Order, Pull
 from kingpost.core.result import Iteration, Stop
+from kingpost.core.solvers.balance import LEAST, Balance
 from kingpost.core.solvers.mixing import Mixing
 from kingpost.core.solvers.stages import Plan, Stage, plan
 from kingpost.core.solvers.sweeping import sweep
@@ -189,7 +190,7 @@ class _Sweeper:
     def __init__(self, system: System, watch: Watch, max_sweeps: int, start: Floats | None) -> None:
         self.watch, self.max_sweeps = watch, max_sweeps
         self.matrix, self.b = system.matrix, system.b
-        self.plan = _planned(system)
+        self.plan, self.structure = _planned(system), system.structure
         n = system.matrix.n
         self.x: Floats = np.empty(n)
         self.x[:] = self.b if start is None else start
@@ -267,8 +268,10 @@ class _Sweeper:
         if mixing is None:
             mixing = Mixing(stage, self.plan.order, self.x, self.watch.threads)
             self._mixing[stage.low] = mixing
+            balance = self._balance(stage)
         else:  # the stage was left right after a sweep: go on from there
-            mixing.mix(self.x, self.matrix.scale, self.z)
+            balance = self._balance(stage)
+            self._mix(mixing, balance)
         before, rates = float("inf"), [0.0]
         while self.sweeps < self.max_sweeps:
             moved, mass = sweep(
@@ -289,8 +292,19 @@ class _Sweeper:
             if not np.isfinite(moved) or mass > 1e250:
                 self.diverged = True
                 break
-            mixing.mix(self.x, self.matrix.scale, self.z)
+            self._mix(mixing, balance)
         self.floor = False
+
+    def _balance(self, stage: Stage) -> Balance | None:
+        if not np.isfinite(self.reach) or stage.edges < LEAST:
+            return None
+        return Balance(
+            self.matrix, self.b, self.plan.order, stage, self.structure, self.z[0], self.watch
+        )
+
+    def _mix(self, mixing: Mixing, balance: Balance | None) -> None:
+        factor = 1.0 if balance is None else balance.factor(self.x, self.z[0])
+        mixing.mix(self.x, self.matrix.scale, self.z, factor)
 
     def certify(self, judge: Judge, everywhere: bool = False) -> tuple[Residual, float, bool]:
         """The residual where rows were swept (or everywhere), and what the judge makes of it."""

@@ -25,16 +25,19 @@ class Mixing:
         self._totals = np.zeros(4)
         self._kept = 0
 
-    def mix(self, x: Floats, scale: Floats, z: Floats) -> None:
-        """Take the sweep that ended in ``x`` into account; move x, and z = scale x of all lanes."""
+    def mix(self, x: Floats, scale: Floats, z: Floats, factor: float = 1.0) -> None:
+        """Take the sweep that ended in ``x`` into account; move x, and z = scale x of all lanes.
+
+        ``factor`` multiplies what the sweep ended in first.
+        """
         from kingpost.core.kernels.mixing import extrapolate, record
 
         new = self._kept & 3
         parts = np.zeros((len(self._pieces), 10))
         each(
             lambda k: record(
-                self._order, self._base, *self._pieces[k], x, self._before, self._f, self._g,
-                new, parts[k],
+                self._order, self._base, *self._pieces[k], x, factor, self._before, self._f,
+                self._g, new, parts[k],
             ),
             range(len(self._pieces)),
             self._threads,
