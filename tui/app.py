@@ -22,7 +22,9 @@ terminal.prepare_environment()  # before textual is imported: it reads the envir
 
 from textual import events  # noqa: E402
 from textual.app import App  # noqa: E402
+from textual.geometry import Size  # noqa: E402
 from textual.screen import Screen  # noqa: E402
+from textual.timer import Timer  # noqa: E402
 
 from kingpost.tui.asking import Asking  # noqa: E402
 from kingpost.tui.config import Config  # noqa: E402
@@ -46,6 +48,7 @@ if TYPE_CHECKING:
     from kingpost.tui.views.standings import StandingsView
 
 FAULT = 70  # exit status of a fault of the program
+_SETTLED = 0.3  # seconds without another size after which the one shown is checked
 _PATIENCE = 2.0  # seconds that threads get to end on leaving
 
 # Imported with the graph, so that opening one does not keep the screen waiting.
@@ -111,6 +114,7 @@ class KingpostApp(App[int], inherit_bindings=False):
         self._desk: Desk | None = None
         self._trouble = self.config.trouble  # said once there is a view to say it in
         self._keymaps: dict[str, dict[str, str]] = {}
+        self._settling: Timer | None = None
         self.keeper = Keeper(self)
         self.resumer = Resumer(self)
         self.within = Within(self)
@@ -291,6 +295,20 @@ class KingpostApp(App[int], inherit_bindings=False):
                 self.typed(event)
             return
         await super().on_event(event)
+        if isinstance(event, events.Resize) and not self.is_headless:
+            if self._settling is not None:
+                self._settling.stop()
+            self._settling = self.set_timer(_SETTLED, self._check_size)
+
+    def _check_size(self) -> None:
+        """After a storm of sizes the last one may have been lost on its way to the view."""
+        self._settling = None
+        with contextlib.suppress(OSError):
+            size = Size(*os.get_terminal_size(sys.__stdout__.fileno() if sys.__stdout__ else 1))
+            if self.screen.size != size:
+                self._size = size
+                self.screen.post_message(events.Resize(size, size))
+                self._settling = self.set_timer(_SETTLED, self._check_size)
 
     def typed(self, event: events.Key | events.Paste) -> None:
         """Give a key or pasted text to the view on top."""
