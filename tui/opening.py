@@ -191,6 +191,7 @@ class Opener:
         if self._offer is None:
             self._go_on()
         elif isinstance(self._app.screen, LoadingView):
+            self._show_offer()
             self._app.screen.wait_for_answer()
 
     def _go_on(self) -> None:
@@ -248,6 +249,9 @@ class Opener:
         changed = ""
         if [list(one) for one in self._offer.tables] != resumption.stamps(self.paths):
             changed = "the table has changed since; what no longer fits is left out"
+        made = self._loaded
+        if isinstance(made, Loaded) and made.options != dict(self._offer.options):
+            changed = "the table was read with other options then; what does not fit is left out"
         when = resumption.clock(self._offer.when)
         view.offer(f"a sitting of {when} was kept", resumption.words(self._offer), changed)
 

@@ -58,9 +58,12 @@ class Sweeps:
         return False
 
     def _factor(self, at: int) -> str:
-        if at == 0:
+        # From one part of a solve, or of the graph, to the next there is no rate.
+        if at == 0 or self.log[at].part != self.log[at - 1].part:
             return ""
         before, here = self.log[at - 1].residual, self.log[at].residual
+        if here > 1e3 * before:
+            return ""
         return f"{here / before:.3f}" if before > 0.0 and math.isfinite(here / before) else ""
 
     def _proven(self, at: int) -> str:
