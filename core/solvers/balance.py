@@ -31,13 +31,16 @@ class Balance:
         self, matrix: Pull, b: Floats, order: Order, stage: Stage, structure: Structure,
         z: Floats, watch: Watch,
     ) -> None:  # fmt: skip
+        from kingpost.core.kernels.mixing import balance
+
         self._order, self._threads = order, watch.threads
         self._pieces = [block for step in stage.steps for block in step if block[0] < block[1]]
         self._given = _given(matrix, order, stage, structure, watch)
         inside = order[stage.low : stage.high]
         own = float(b[0]) * len(inside) if len(b) == 1 else float(b[inside].sum())
-        from_all = float(z @ self._given)
-        self._income = own + from_all - float(z[inside] @ self._given[inside])
+        _, from_all = balance(order, 0, len(order), z, z, self._given)
+        _, from_inside = balance(order, stage.low, stage.high, z, z, self._given)
+        self._income = own + from_all - from_inside
 
     def factor(self, x: Floats, z: Floats) -> float:
         """By what to multiply ``x`` (n,) in the stage, ``z = scale x``; 1 for a wild answer."""

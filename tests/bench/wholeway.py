@@ -41,13 +41,14 @@ def kingpost_command(file: str, measure: str, facts: dict[str, Any]) -> list[str
     """The installed command as a user would type it."""
     found = Path(sys.executable).with_name("kingpost")
     program = str(found) if found.exists() else (shutil.which("kingpost") or "kingpost")
-    command = [program, "rank", file, "--top", str(TOP)]
+    command = [program, "rank", file, "--top", str(TOP), "--no-store"]
     if not is_directed(Path(file)):
         command.append("--undirected")
     if measure != "surfer":
         command += ["--measure", measure]
     if measure == "katz":
-        command += ["--alpha", repr(facts["alpha"])]
+        # The peers' graph has no repeated edges, and alpha was chosen for that one.
+        command += ["--alpha", repr(facts["alpha"]), "--parallel", "max"]
     return command
 
 
