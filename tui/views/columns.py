@@ -9,6 +9,7 @@ from kingpost.core.standing import UNRANKED
 from kingpost.tui.actions import COLUMNS
 from kingpost.tui.models.columns import Column
 from kingpost.tui.models.headings import Choice, choice_of
+from kingpost.tui.views.rows import RowKeys
 from kingpost.tui.views.sheets import Sheet
 from kingpost.tui.widgets.lines import KeyLine, Rule
 from kingpost.tui.widgets.rowtable import RowTable
@@ -60,7 +61,7 @@ def _words(column: Column) -> str:
     return column.title if kind != "score" or name else f"{column.title} score"
 
 
-class ColumnsSheet(Sheet):
+class ColumnsSheet(RowKeys, Sheet):
     """Enter shows or hides, left and right move; Escape is done."""
 
     view = COLUMNS
@@ -125,21 +126,3 @@ class ColumnsSheet(Sheet):
 
     def do_columns_right(self) -> None:
         self._move(1)
-
-    def do_row_up(self) -> None:
-        self.table.move(-1)
-
-    def do_row_down(self) -> None:
-        self.table.move(1)
-
-    def do_page_ahead(self) -> None:
-        self.table.page(1)
-
-    def do_page_return(self) -> None:
-        self.table.page(-1)
-
-    def do_row_first(self) -> None:
-        self.table.go(0)
-
-    def do_row_last(self) -> None:
-        self.table.go(self.table.count - 1)

@@ -6,13 +6,13 @@ from kingpost.tui.views.base import View
 from kingpost.tui.widgets.rowtable import RowTable
 
 
-class RowsView(View):
-    """A view whose row keys move through the table ``#rows``."""
+class RowKeys:
+    """The keys that move through the rows of ``table``."""
 
     @property
     def table(self) -> RowTable:
-        """The widget."""
-        return self.query_one("#rows", RowTable)
+        """The widget with the rows."""
+        raise NotImplementedError
 
     def do_row_up(self) -> None:
         self.table.move(-1)
@@ -31,6 +31,15 @@ class RowsView(View):
 
     def do_row_last(self) -> None:
         self.table.go(self.table.count - 1)
+
+
+class RowsView(RowKeys, View):
+    """A view whose row keys move through the table ``#rows``."""
+
+    @property
+    def table(self) -> RowTable:
+        """The widget."""
+        return self.query_one("#rows", RowTable)
 
     def do_columns_left(self) -> None:
         self.table.sideways(-1)

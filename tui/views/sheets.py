@@ -17,6 +17,7 @@ from kingpost.tui.models.columns import Column
 from kingpost.tui.models.detail import on_screen
 from kingpost.tui.models.drawing import wrap
 from kingpost.tui.views.base import View
+from kingpost.tui.views.rows import RowKeys
 from kingpost.tui.widgets.entry import LIMIT, Entry
 from kingpost.tui.widgets.lines import KeyLine, Line, Rule
 from kingpost.tui.widgets.rowtable import RowTable
@@ -69,7 +70,7 @@ class Choices:
         return False
 
 
-class ChoiceSheet(Sheet):
+class ChoiceSheet(RowKeys, Sheet):
     """One of several rows; dismissed with the key of the row taken, or None."""
 
     view = CHOICE
@@ -106,24 +107,6 @@ class ChoiceSheet(Sheet):
 
     def do_choice_take(self) -> None:
         self.dismiss(self.key)
-
-    def do_row_up(self) -> None:
-        self.table.move(-1)
-
-    def do_row_down(self) -> None:
-        self.table.move(1)
-
-    def do_page_ahead(self) -> None:
-        self.table.page(1)
-
-    def do_page_return(self) -> None:
-        self.table.page(-1)
-
-    def do_row_first(self) -> None:
-        self.table.go(0)
-
-    def do_row_last(self) -> None:
-        self.table.go(self.table.count - 1)
 
     def can_settings_change(self) -> bool:
         return False

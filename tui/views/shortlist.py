@@ -17,7 +17,7 @@ from kingpost.tui.models.columns import Column
 from kingpost.tui.models.drawing import tame
 from kingpost.tui.models.marks import Mark, Marks
 from kingpost.tui.models.sitting import Sitting
-from kingpost.tui.views.base import View
+from kingpost.tui.views.rows import RowsView
 from kingpost.tui.views.sheets import Choice, ChoiceSheet, PromptSheet
 from kingpost.tui.widgets.lines import KeyLine, Line, Rule
 from kingpost.tui.widgets.rowtable import RowTable
@@ -82,7 +82,7 @@ class Rows:
         return self._marks.holds(self.listed[row])
 
 
-class ShortlistView(View):
+class ShortlistView(RowsView):
     """The marks of this graph; Enter opens a node, Escape goes back."""
 
     CSS_PATH = "shortlist.tcss"
@@ -96,11 +96,6 @@ class ShortlistView(View):
         yield Line(id="note")
         yield Rule(id="news")
         yield KeyLine(id="keys")
-
-    @property
-    def table(self) -> RowTable:
-        """The widget."""
-        return self.query_one("#rows", RowTable)
 
     @property
     def marks(self) -> Marks:
@@ -163,32 +158,6 @@ class ShortlistView(View):
         if self.composed:
             self.table.refresh()
             self._describe()
-
-    # ---- moving ------------------------------------------------------------------------------
-
-    def do_row_up(self) -> None:
-        self.table.move(-1)
-
-    def do_row_down(self) -> None:
-        self.table.move(1)
-
-    def do_page_ahead(self) -> None:
-        self.table.page(1)
-
-    def do_page_return(self) -> None:
-        self.table.page(-1)
-
-    def do_row_first(self) -> None:
-        self.table.go(0)
-
-    def do_row_last(self) -> None:
-        self.table.go(self.table.count - 1)
-
-    def do_columns_left(self) -> None:
-        self.table.sideways(-1)
-
-    def do_columns_right(self) -> None:
-        self.table.sideways(1)
 
     def do_step_back(self) -> None:
         self.app.pop_screen()

@@ -13,9 +13,9 @@ from kingpost.tui.models import detail, rowquery
 from kingpost.tui.models.drawing import wrap
 from kingpost.tui.models.node import MANY, centre
 from kingpost.tui.models.standings import Found, Standings, search
-from kingpost.tui.views.base import View
 from kingpost.tui.views.columns import ColumnsSheet
 from kingpost.tui.views.nodepanel import NodePanel
+from kingpost.tui.views.rows import RowsView
 from kingpost.tui.views.sheets import Choice, ChoiceSheet, PromptSheet
 from kingpost.tui.widgets.lines import KeyLine, Line, Rule
 from kingpost.tui.widgets.rowtable import RowTable
@@ -27,7 +27,7 @@ _SLOWER = 5  # times as long on a slow link
 _REST = 0.06  # seconds the cursor rests before the lines below follow it
 
 
-class StandingsView(View):
+class StandingsView(RowsView):
     """The table of the current measure; everything else is reached from here."""
 
     CSS_PATH = "standings.tcss"
@@ -176,32 +176,6 @@ class StandingsView(View):
         # The next key may come before the table has told where its cursor went.
         if self.composed:
             self.model.cursor = min(self.table.row, max(self.model.count - 1, 0))
-
-    # ---- moving ------------------------------------------------------------------------------
-
-    def do_row_up(self) -> None:
-        self.table.move(-1)
-
-    def do_row_down(self) -> None:
-        self.table.move(1)
-
-    def do_page_ahead(self) -> None:
-        self.table.page(1)
-
-    def do_page_return(self) -> None:
-        self.table.page(-1)
-
-    def do_row_first(self) -> None:
-        self.table.go(0)
-
-    def do_row_last(self) -> None:
-        self.table.go(self.table.count - 1)
-
-    def do_columns_left(self) -> None:
-        self.table.sideways(-1)
-
-    def do_columns_right(self) -> None:
-        self.table.sideways(1)
 
     def catch_up(self) -> None:
         """Let the model know where the cursor is: keys typed fast overtake the news of it."""
