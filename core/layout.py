@@ -57,10 +57,6 @@ class Layout:
         out[self.order] = values
         return out
 
-    def apply(self, matrix: Pull, x: Floats, watch: Watch) -> Floats:
-        """``matrix`` times ``x``, both by node, shape (n,)."""
-        return self.back(self.matrix(matrix).apply(self.there(x), watch))
-
     def apply_exactly(self, matrix: Pull, x: Floats, watch: Watch) -> tuple[Floats, Floats]:
         """``B x`` by compensated sums, and ``|B| |x|``, both by node, shape (n,)."""
         moved = self.matrix(matrix)
@@ -100,7 +96,7 @@ def layout(structure: Structure, rows: Adjacency, watch: Watch) -> Layout:
 
 
 def _lay_out(structure: Structure, rows: Adjacency, watch: Watch) -> Layout:
-    from kingpost.core.kernels.rows import renumber, renumber_weighted
+    from kingpost.core.kernels.rows import renumber
 
     order = structure.order
     n = len(order)
@@ -117,18 +113,11 @@ def _lay_out(structure: Structure, rows: Adjacency, watch: Watch) -> Layout:
 
     def piece(part: tuple[int, int]) -> int:
         watch.check()
-        if rows.weights is None:
-            return int(
-                renumber(
-                    rows.offsets, rows.neighbours, order, place, offsets, *part, near, diagonal
-                )
-            )
-        return int(
-            renumber_weighted(
-                rows.offsets, rows.neighbours, rows.weights, order, place, offsets, *part,
-                near, heavy, diagonal,
-            )
+        found = renumber(
+            rows.offsets, rows.neighbours, rows.weights, order, place, offsets, *part,
+            near, heavy, diagonal,
         )  # fmt: skip
+        return int(found)
 
     loops = sum(each(piece, row_pieces(offsets, _PIECE), watch.threads))
     moved = replace(

@@ -359,7 +359,7 @@ ACTIONS: tuple[Action, ...] = (
     ),
     Action(
         "text.copy",
-        ("y",),
+        ("C",),
         (*_NODES, *ANSWERS),
         "copy the node's name to the terminal's clipboard; once more: the whole row",
         "copy",

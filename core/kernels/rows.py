@@ -116,36 +116,14 @@ def row_totals(offsets, weights, low, high, totals):  # type: ignore[no-untyped-
 
 
 @kernel()
-def renumber(offsets, neighbours, order, place, moved, low, high, near, diagonal):  # type: ignore[no-untyped-def]
-    """Copy the rows ``order[low:high]`` to where ``moved`` (offsets) says, naming nodes by place.
-
-    ``diagonal[k]`` becomes the number of edges from row k to itself; returns how many rows have.
-    """
-    one = np.uint64(1)
-    found = 0
-    for k in range(np.uint64(low), np.uint64(high)):
-        i = np.uint64(order[k])
-        e = np.uint64(offsets[i])
-        end = np.uint64(offsets[i + one])
-        to = np.uint64(moved[k])
-        loops = 0.0
-        while e < end:
-            j = np.uint64(neighbours[e])
-            if j == i:
-                loops += 1.0
-            near[to] = place[j]
-            e += one
-            to += one
-        diagonal[k] = loops
-        found += loops > 0.0
-    return found
-
-
-@kernel()
-def renumber_weighted(  # type: ignore[no-untyped-def]
+def renumber(  # type: ignore[no-untyped-def]
     offsets, neighbours, weights, order, place, moved, low, high, near, heavy, diagonal
 ):
-    """As :func:`renumber`, with weights; if ``heavy`` is empty a weight w is w entries instead."""
+    """Copy the rows ``order[low:high]`` to where ``moved`` (offsets) says, naming nodes by place.
+
+    ``heavy`` takes the weights; where it is empty a weight w is w entries instead.
+    ``diagonal[k]`` becomes the weight from row k to itself; returns how many rows have any.
+    """
     one = np.uint64(1)
     repeat = len(heavy) == 0
     found = 0
@@ -158,8 +136,11 @@ def renumber_weighted(  # type: ignore[no-untyped-def]
         while e < end:
             j = np.uint64(neighbours[e])
             if j == i:
-                loops += weights[e]
-            if repeat:
+                loops += 1.0 if weights is None else weights[e]
+            if weights is None:
+                near[to] = place[j]
+                to += one
+            elif repeat:
                 for _ in range(np.uint64(weights[e])):
                     near[to] = place[j]
                     to += one

@@ -121,9 +121,9 @@ async def test_copying_sends_the_name_then_the_row(app):
     app.send = sent.append
     async with app.run_test(size=(80, 24)) as pilot:
         await opened(pilot)
-        await pilot.press("y")
+        await pilot.press("C")
         await until(pilot, lambda: "the name gate went to the terminal's clipboard" in app.shown())
-        await pilot.press("y")
+        await pilot.press("C")
         await until(pilot, lambda: "the row of gate went to" in app.shown())
     texts = [base64.b64decode(s.split(";")[2].rstrip("\x07")).decode() for s in sent]
     assert texts[0] == "gate"
