@@ -26,10 +26,10 @@ class Residual:
     """``r = b - M y`` as computed, and a bound of its rounding error; shape (n,) each.
 
     ``slack`` covers, per row, the rounding of scale (3 u), of scale times score (u), of weight
-    times that (u), of the compensated sum (2 u), and of the two last additions, doubled for
-    safety: ``12 u |B||y| + 6 u (|y| + |b|)``.  ``relative`` is set where y was solved in one pass
-    without a subtraction: then ``|x - y| <= relative y`` whatever the residual says (see
-    ``kernels.sweep.substitute_deep``).
+    times that (u), of the compensated sum (3 u), half as much again for safety, and of the two
+    last additions, doubled: ``12 u |B||y| + 6 u (|y| + |b|)``.  ``relative`` is set where y was
+    solved in one pass without a subtraction: then ``|x - y| <= relative y`` whatever the residual
+    says (see ``kernels.sweep.substitute_deep``).
     """
 
     value: Floats

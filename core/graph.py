@@ -34,7 +34,7 @@ Neighbours = NDArray[np.uint32]
 _PIECE = 1_000_000  # edges
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True)
 class Adjacency:
     """Compressed rows: node ``i`` meets ``neighbours[offsets[i]:offsets[i + 1]]``, ascending.
 
@@ -66,6 +66,15 @@ class Adjacency:
         total = np.zeros(n)
         row_totals(self.offsets, self.weights, 0, n, total)
         return total
+
+    @cached_property
+    def loops(self) -> Floats:
+        """Weight of the edge from every node to itself, shape (n,); empty where there is none."""
+        from kingpost.core.kernels.rows import diagonal
+
+        values = np.zeros(len(self.offsets) - 1)
+        found = diagonal(self.offsets, self.neighbours, self.weights, values)
+        return values if found else np.empty(0)
 
     def row(self, node: int) -> tuple[Neighbours, Floats]:
         """Neighbours of one node and the weights of those edges."""

@@ -11,7 +11,7 @@ it could not pay: without cycles, or above two gigabytes.
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
-from typing import cast
+from typing import TypeVar, cast
 
 import numpy as np
 from numpy.typing import NDArray
@@ -23,6 +23,8 @@ from kingpost.core.parallel import each
 from kingpost.core.structure import Structure, row_pieces
 from kingpost.core.watch import Watch
 
+V = TypeVar("V", bound=np.generic)
+
 _MOST = 2_000_000_000  # bytes; a fixed number, so that bits do not depend on the machine
 _SHARE = 0.05  # of the edges must need iterating
 _PIECE = 2_000_000  # edges
@@ -33,25 +35,23 @@ _LISTED = 1.5  # times as many edges, at most, where parallel ones are listed on
 class Layout:
     """A renumbering of the nodes: ``order[k]`` is the node at place k, shape (n,).
 
-    ``structure``, ``rows`` and ``diagonal`` (empty where there are no self-loops) are those of the
-    graph in the new numbers.  Rows are not ascending; where weights count parallel edges they may
-    list these one by one instead.
+    ``structure`` and ``rows`` are those of the graph in the new numbers.  Rows are not ascending;
+    where weights count parallel edges they may list these one by one instead.
     """
 
     order: Order
     structure: Structure
     rows: Adjacency
-    diagonal: Floats
 
     def matrix(self, matrix: Pull) -> Pull:
         """``matrix``, whose rows the layout was made for, in the new numbers."""
-        return matrix.moved(self.rows, self.order, self.diagonal)
+        return Pull(self.rows, matrix.scale[self.order])
 
-    def there(self, values: Floats) -> Floats:
+    def there(self, values: NDArray[V]) -> NDArray[V]:
         """``values`` by node, shape (n,), by place; those of shape (1,) as they are."""
         return values if len(values) == 1 else values[self.order]
 
-    def back(self, values: Floats) -> Floats:
+    def back(self, values: NDArray[V]) -> NDArray[V]:
         """``values`` by place, shape (n,), by node."""
         out = np.empty_like(values)
         out[self.order] = values
@@ -71,10 +71,10 @@ class _Same(Layout):
     def matrix(self, matrix: Pull) -> Pull:
         return matrix
 
-    def there(self, values: Floats) -> Floats:
+    def there(self, values: NDArray[V]) -> NDArray[V]:
         return values
 
-    def back(self, values: Floats) -> Floats:
+    def back(self, values: NDArray[V]) -> NDArray[V]:
         return values
 
 
@@ -84,7 +84,7 @@ def layout(structure: Structure, rows: Adjacency, watch: Watch) -> Layout:
     if kept is not None and kept[0] is rows:
         return kept[1]
     size = rows.neighbours.nbytes + (0 if rows.weights is None else rows.weights.nbytes)
-    same = _Same(structure.order, structure, rows, np.empty(0))
+    same = _Same(structure.order, structure, rows)
     if structure.share_iterated < _SHARE or size > _MOST:
         return same
     try:
@@ -124,7 +124,10 @@ def _lay_out(structure: Structure, rows: Adjacency, watch: Watch) -> Layout:
         structure, component=structure.component[order], order=identity, _outward=None, cache={}
     )
     laid = Adjacency(offsets, near, None if weights is None else heavy)
-    return Layout(order, moved, laid, diagonal if loops else np.empty(0))
+    laid.__dict__["loops"] = diagonal if loops else np.empty(0)  # not to be found by bisection here
+    # Whoever solves in the new numbers need not renumber again.
+    moved.cache["layout"] = laid, _Same(identity, moved, laid)
+    return Layout(order, moved, laid)
 
 
 def _repeats(rows: Adjacency, watch: Watch) -> NDArray[np.int64] | None:

@@ -103,16 +103,16 @@ def _of_large_graphs() -> None:
     import numpy as np
 
     from kingpost.core.kernels.build import move_left
-    from kingpost.core.kernels.mixing import balance, given_to
+    from kingpost.core.kernels.mixing import given_to, multiply
     from kingpost.core.kernels.rows import copy_rows
 
     near, scores = np.zeros(1, np.uint32), np.zeros(1)
     move_left(near, 0, 1, 0)
     move_left(scores, 0, 1, 0)
     copy_rows(near, 0, 1, scores, scores)
-    balance(near, 0, 1, scores, scores, scores)
+    multiply(near, 0, 1, 1.0, scores, np.zeros((1, 1)), 1)
     offsets = np.zeros(2, np.int64)
     for array in (offsets, rows := np.zeros(0, np.uint32), heavy := np.zeros(0)):
         array.setflags(write=False)
-    given_to(offsets, rows, None, near, 0, 1, scores)
-    given_to(offsets, rows, heavy, near, 0, 1, scores)
+    given_to(offsets, rows, None, near, 0, 1, scores, scores)
+    given_to(offsets, rows, heavy, near, 0, 1, scores, scores)

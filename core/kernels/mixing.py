@@ -60,24 +60,27 @@ def extrapolate(order, base, low, high, x, before, g, new, r, s, t, scale, z, la
 
 
 @kernel()
-def balance(order, low, high, x, z, given):  # type: ignore[no-untyped-def]
-    """Over ``order[low:high]``: the sums of x and of ``z * given``."""
-    whole = back = 0.0
+def multiply(order, low, high, factor, x, z, lanes):  # type: ignore[no-untyped-def]
+    """Multiply x and z of every lane by ``factor`` over ``order[low:high]``."""
     for k in range(low, high):
         i = order[k]
-        whole += x[i]
-        back += z[i] * given[i]
-    return whole, back
+        x[i] *= factor
+        for lane in range(lanes):
+            z[lane, i] *= factor
 
 
 @kernel()
-def given_to(offsets, neighbours, weights, order, low, high, totals):  # type: ignore[no-untyped-def]
-    """Add the weights of all edges into the rows ``order[low:high]`` to their givers' totals."""
-    one = np.uint64(1)
+def given_to(offsets, neighbours, weights, order, low, high, values, totals):  # type: ignore[no-untyped-def]
+    """Add ``weight * values[row]`` of all edges into the rows ``order[low:high]`` to their givers'
+    totals; ``values`` of length 1 stands for a constant.
+    """
+    zero, one = np.uint64(0), np.uint64(1)
+    constant = len(values) == 1
     for k in range(np.uint64(low), np.uint64(high)):
         i = np.uint64(order[k])
+        value = values[zero] if constant else values[i]
         e = np.uint64(offsets[i])
         end = np.uint64(offsets[i + one])
         while e < end:
-            totals[neighbours[e]] += 1.0 if weights is None else weights[e]
+            totals[neighbours[e]] += value if weights is None else weights[e] * value
             e += one

@@ -70,6 +70,25 @@ def reach_on(offsets, neighbours, order, low, high, live):  # type: ignore[no-un
 
 
 @kernel()
+def cuts(offsets, order, low, high, cost, row, ends):  # type: ignore[no-untyped-def]
+    """Write where ranges of ``order[low:high]`` end that cost about ``cost``; returns how many.
+
+    A row costs its entries and ``row``; one that costs more than a range does is not cut.
+    """
+    one = np.uint64(1)
+    found = 0
+    total, mark = np.int64(0), np.int64(cost)
+    for k in range(np.uint64(low), np.uint64(high)):
+        i = np.uint64(order[k])
+        total += offsets[i + one] - offsets[i] + row
+        if total >= mark or k + one == np.uint64(high):
+            ends[found] = k + one
+            found += 1
+            mark = (total // cost + 1) * cost
+    return found
+
+
+@kernel()
 def copy_rows(order, low, high, origin, target):  # type: ignore[no-untyped-def]
     """``target[i] = origin[i]`` for the nodes ``order[low:high]``."""
     for k in range(np.uint64(low), np.uint64(high)):

@@ -10,7 +10,7 @@ computed.  Scores have Euclidean length 1.
 from __future__ import annotations
 
 from collections.abc import Generator
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -18,6 +18,7 @@ from numpy.typing import NDArray
 from kingpost.core.certify import Residual
 from kingpost.core.errors import Interrupted
 from kingpost.core.graph import Floats, Graph
+from kingpost.core.layout import layout
 from kingpost.core.measures.base import Measure, Settings, Solve, option
 from kingpost.core.measures.common import (
     Clock,
@@ -27,9 +28,9 @@ from kingpost.core.measures.common import (
     reason,
     refused,
 )
-from kingpost.core.operators import Pull, adjacency
+from kingpost.core.operators import Pull, adjacency, strengths
 from kingpost.core.result import Bound, BoundKind, Iteration, Result, Stop
-from kingpost.core.solvers.dominating import Block, sharpen
+from kingpost.core.solvers.dominating import Block, sharpen, width_for
 from kingpost.core.solvers.ledger import Ledger
 from kingpost.core.solvers.linear import System
 from kingpost.core.solvers.linear import solve as solve_linear
@@ -53,9 +54,6 @@ class EigenvectorSettings(Settings):
         "bound every score (componentwise), or only bracket the eigenvalue (bracket)",
         choices=("componentwise", "bracket"),
     )
-
-
-_MARGIN = 0.03  # a score is known some tens of times worse than rho, by experience
 
 
 def solve(
@@ -94,13 +92,17 @@ class _Work:
         self.graph, self.settings, self.watch = graph, settings, watch
         self.start = start
         self.clock = Clock()
-        self.structure = graph.structure
-        self.matrix = adjacency(graph, settings.flow)
+        # Everything is found in the numbers that rows are visited in, and told in the graph's.
+        self.natural = adjacency(graph, settings.flow)
+        self.laid = layout(graph.structure, self.natural.rows, watch)
+        self.structure = self.laid.structure
+        self.matrix = self.laid.matrix(self.natural)
         self.ledger = Ledger()
         self.x: Floats = np.zeros(graph.n)
         self.rho = (0.0, float("inf"))
         self.bound = Bound(BoundKind.NONE, float("inf"))
         self.live: NDArray[np.bool_] = np.zeros(graph.n, dtype=bool)
+        self.left: Floats | None = None
         self.chosen = -1
         self.open = False  # which component dominates was not found out
         self.clock.ready()
@@ -116,7 +118,7 @@ class _Work:
             )
         if settings.component is not None:
             node = self.graph.find(settings.component)
-            self.chosen = int(structure.component[node])
+            self.chosen = int(self.graph.structure.component[node])
             if self.chosen not in structure.cyclic:
                 return (
                     f"{self.graph.name(node, 60)} lies on no cycle, so its strong component has no "
@@ -127,16 +129,8 @@ class _Work:
 
     def find(self) -> Generator[Iteration, None, tuple[str, str] | None]:
         """The dominating component and its vector; a refusal where several tie."""
-        settings, structure = self.settings, self.structure
-        found: Bracketed = yield from self.ledger.relay(
-            bracket(
-                self.matrix, structure,
-                width=self._width(), max_steps=settings.max_sweeps, watch=self.watch,
-                only=self.chosen if self.chosen >= 0 else None, start=self.start,
-            ),
-            "bracket",
-        )  # fmt: skip
-        self._keep(found)
+        settings = self.settings
+        found = yield from self._bracketed(self.chosen if self.chosen >= 0 else None)
         if not found.decided:
             if found.steps >= settings.max_sweeps:  # no verdict yet: nothing is said of a tie
                 self.x, self.open = found.y, True
@@ -144,54 +138,63 @@ class _Work:
             winner = self._last_of_chain(found)
             if winner is None:
                 return self._tie(found)
-            found = yield from self.ledger.relay(
-                bracket(
-                    self.matrix, structure,
-                    width=self._width(), max_steps=settings.max_sweeps, watch=self.watch,
-                    only=winner, start=self.start,
-                ),
-                "bracket",
-            )  # fmt: skip
-            self._keep(found)
+            found = yield from self._bracketed(winner)
         self.chosen = int(found.components[0])
         self.limit = found.steps >= settings.max_sweeps
-        inside = support(structure, self.chosen, self.graph.n)
+        inside = support(self.structure, self.chosen, self.graph.n)
         self.live = inside
         if settings.component is None:
-            self.live = downstream(
-                structure, self.graph.pull(settings.flow), self.graph.push(settings.flow),
+            live = downstream(
+                self.graph.structure, self.natural.rows, self.graph.push(settings.flow),
                 self.chosen, settings.flow, self.watch,
             )  # fmt: skip
+            self.live = self.laid.there(live)
             if not np.array_equal(self.live, inside):
-                yield from self._downstream(inside, self.live & ~inside)
+                yield from self._downstream(self.live & ~inside)
         return None
 
-    def _width(self) -> float:
-        """How well rho must be known for the scores to be known as asked."""
-        share = _MARGIN if self.settings.certificate == "componentwise" else 1.0
-        return max(share * self.settings.tol, 1e-14)
-
-    def _keep(self, found: Bracketed) -> None:
-        """Take over what a bracket found, as the best there is if it was cancelled."""
-        self.rho, self.x = found.rho, found.y
+    def _bracketed(self, only: int | None) -> Generator[Iteration, None, Bracketed]:
+        """The bracket of one component, or of all; kept as the best there is if cancelled."""
+        start = None if self.start is None else self.laid.there(self.start)
+        found: Bracketed = yield from self.ledger.relay(
+            bracket(
+                self.matrix, self.structure,
+                width=self._width(), max_steps=self.settings.max_sweeps, watch=self.watch,
+                only=only, start=start,
+                gives=self.laid.there(strengths(self.graph, self.settings.flow)),
+            ),
+            "bracket",
+        )  # fmt: skip
+        self.rho, self.x, self.left = found.rho, found.y, found.left
         if found.cancelled:
             if np.isfinite(found.rho[1]):
                 low, high = found.rho
                 self.bound = Bound(BoundKind.BRACKET, (high - low) / high)
             raise Interrupted("cancelled")
+        return found
+
+    def _width(self) -> float:
+        """How well rho must be known for what was asked."""
+        settings = self.settings
+        return (
+            width_for(settings.tol)
+            if settings.certificate == "componentwise"
+            else max(settings.tol, 1e-14)
+        )
 
     def _last_of_chain(self, found: Bracketed) -> int | None:
         """Of components that tie, the one all others feed: then it alone has a vector."""
         if len(found.components) > 8 or not same_radius(
-            self.matrix, self.structure, found.components, self.watch
+            self.natural, self.graph.structure, found.components, self.watch
         ):
             return None
         push = self.graph.push(self.settings.flow)
         numbers = found.components.tolist()
         last = numbers[-1] if self.settings.flow == "along" else numbers[0]
-        mark = int(self.structure.members(last)[0])
+        structure = self.graph.structure
+        mark = int(structure.members(last)[0])
         for number in numbers:
-            start = self.structure.members(number)[:1]
+            start = structure.members(number)[:1]
             if number != last and not reachable(push, start, self.watch)[mark]:
                 return None
         return int(last)
@@ -200,7 +203,7 @@ class _Work:
         sizes = self.structure.sizes[found.components]
         low, high = found.rho
         names = [
-            self.graph.name(int(self.structure.members(int(number))[0]), 40)
+            self.graph.name(int(self.graph.structure.members(int(number))[0]), 40)
             for number in found.components[:2]
         ]
         total = len(found.components)
@@ -214,13 +217,12 @@ class _Work:
             f"answer within one with --component {names[0]}, or use --measure katz",
         )
 
-    def _downstream(
-        self, inside: NDArray[np.bool_], below: NDArray[np.bool_]
-    ) -> Generator[Iteration, None, None]:
+    def _downstream(self, below: NDArray[np.bool_]) -> Generator[Iteration, None, None]:
         """Scores of what the dominating component feeds: ``(rho I - B) x = B x_D``."""
         middle = 0.5 * (self.rho[0] + self.rho[1])
-        given = self.matrix.apply(self.x, self.watch) / middle
-        given[~below] = 0.0
+        takers = np.flatnonzero(below).astype(np.uint32)
+        given, _ = self.matrix.apply_exactly(self.x, takers, 0, len(takers), self.watch)
+        given /= middle
         scale = np.where(below, self.matrix.scale / middle, 0.0)
         mass = float(self.x.sum())
 
@@ -251,7 +253,7 @@ class _Work:
             return Stop.CONVERGED if width <= settings.tol else self._short()
         block = Block(
             self.matrix, self.structure, settings.flow, self.live, self.x, self.rho,
-            home=support(self.structure, self.chosen, self.graph.n),
+            home=support(self.structure, self.chosen, self.graph.n), left=self.left,
         )  # fmt: skip
         wanted = settings.stop_order
         bound, stop = yield from sharpen(
@@ -273,7 +275,9 @@ class _Work:
         """Everything found, as a Result."""
         settings, graph = self.settings, self.graph
         norm = float(np.linalg.norm(self.x))
-        scores = self.x / norm if norm > 0 else self.x
+        scores = self.laid.back(self.x / norm if norm > 0 else self.x)
+        if isinstance(self.bound.absolute, np.ndarray):
+            self.bound = replace(self.bound, absolute=self.laid.back(self.bound.absolute))
         low, high = self.rho
         words = reason(stop, self.bound.value, settings)
         if self.bound.kind is BoundKind.BRACKET:
@@ -281,7 +285,7 @@ class _Work:
                 f"rho is known to a relative width of {self.bound.value:.1e}; the scores "
                 "themselves are not bounded (--certificate componentwise bounds them)"
             )
-        live = self.live
+        live = self.laid.back(self.live)
         if live.any():
             size = int(self.structure.sizes[self.chosen])
             zero = int((~live).sum())
@@ -290,10 +294,10 @@ class _Work:
                 f"{count(int(live.sum()) - size, 'node')} downstream, "
                 f"{count(zero, 'node')} exactly 0"
             )
-            period = self.structure.period(self.chosen)
+            period = graph.structure.period(self.chosen)
         else:
             where, period = "not decided", 0
-        matrix = self.matrix
+        matrix = self.natural
         return Result(
             measure="eigenvector",
             settings=settings,

@@ -28,7 +28,7 @@ from kingpost.core.measures.base import Measure, Settings, Solve, option
 from kingpost.core.measures.common import Clock, conventions, empty, proven_prefix, reason, refused
 from kingpost.core.operators import Pull, adjacency
 from kingpost.core.result import Bound, BoundKind, Result, Stop
-from kingpost.core.solvers.dominating import Block, sharpen
+from kingpost.core.solvers.dominating import Block, sharpen, width_for
 from kingpost.core.solvers.ledger import Ledger
 from kingpost.core.solvers.perron import Bracketed, bracket
 from kingpost.core.solvers.pinned import normalised_reach, support
@@ -74,7 +74,7 @@ def solve(graph: Graph, settings: HitsSettings, watch: Watch) -> Solve:
             )  # fmt: skip
         found: Bracketed = yield from work.ledger.relay(
             bracket(
-                work.matrix, work.structure, width=max(settings.tol, 1e-12),
+                work.matrix, work.structure, width=width_for(settings.tol),
                 max_steps=settings.max_sweeps, watch=watch, only=only,
             ),
             "bracket",
@@ -92,8 +92,9 @@ def solve(graph: Graph, settings: HitsSettings, watch: Watch) -> Solve:
         return work.result(Stop.LIMIT, watch)
     inside = support(work.structure, int(found.components[0]), work.double.n)
     block = Block(
-        work.matrix, work.structure, "along", inside, np.where(inside, found.y, 0.0), found.rho
-    )
+        work.matrix, work.structure, "along", inside, np.where(inside, found.y, 0.0), found.rho,
+        left=found.left,
+    )  # fmt: skip
     wanted = settings.stop_order
     work.bound, stop = yield from sharpen(
         block, work.shape, tol=settings.tol, max_sweeps=settings.max_sweeps, watch=watch,

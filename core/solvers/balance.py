@@ -13,15 +13,16 @@ from typing import cast
 
 import numpy as np
 
+from kingpost.core.certify import UNIT
 from kingpost.core.graph import Adjacency, Floats
 from kingpost.core.operators import Order, Pull
 from kingpost.core.parallel import each
 from kingpost.core.solvers.stages import Stage
+from kingpost.core.solvers.sweeping import Swept, Weighing
 from kingpost.core.structure import Structure
 from kingpost.core.watch import Watch
 
 LEAST = 1_000_000  # edges of a stage
-_FINE = 1e-9
 
 
 class Balance:
@@ -31,30 +32,36 @@ class Balance:
         self, matrix: Pull, b: Floats, order: Order, stage: Stage, structure: Structure,
         z: Floats, watch: Watch,
     ) -> None:  # fmt: skip
-        from kingpost.core.kernels.mixing import balance
-
         self._order, self._threads = order, watch.threads
         self._pieces = [block for step in stage.steps for block in step if block[0] < block[1]]
-        self._given = _given(matrix, order, stage, structure, watch)
+        given = _given(matrix, order, stage, structure, watch)
         inside = order[stage.low : stage.high]
         own = float(b[0]) * len(inside) if len(b) == 1 else float(b[inside].sum())
-        _, from_all = balance(order, 0, len(order), z, z, self._given)
-        _, from_inside = balance(order, stage.low, stage.high, z, z, self._given)
-        self._income = own + from_all - from_inside
+        enters = z * given
+        enters[inside] = 0.0
+        self._income = own + float(enters.sum())
+        # What the sweeps' sums of x, by 256 and of these, and those of long rows may be off by.
+        longest = int(matrix.rows.degrees[inside].max())
+        self._slack = UNIT * (256 + len(inside) / 256 + longest / 4)
+        self.weighing = Weighing(np.ones(1), given * matrix.scale)
 
-    def factor(self, x: Floats, z: Floats) -> float:
-        """By what to multiply ``x`` (n,) in the stage, ``z = scale x``; 1 for a wild answer."""
-        from kingpost.core.kernels.mixing import balance
+    def factor(self, swept: Swept) -> float:
+        """By what to multiply x in the stage after a sweep with ``weighing``; 1 if it is wild."""
+        kept = swept.weight - swept.image
+        found = self._income / kept if kept > 0 else 1.0
+        # Near the end the rounding of these sums would be all that a factor brings in.
+        fine = self._slack * (abs(swept.weight) + abs(swept.image))
+        return found if 0.2 < found < 5.0 and abs(found - 1.0) * kept > fine else 1.0
 
-        parts = each(
-            lambda block: balance(self._order, *block, x, z, self._given),
+    def scale(self, factor: float, x: Floats, z: Floats) -> None:
+        """Multiply ``x`` (n,) and all lanes of ``z`` by ``factor`` in the stage."""
+        from kingpost.core.kernels.mixing import multiply
+
+        each(
+            lambda block: multiply(self._order, *block, factor, x, z, len(z)),
             self._pieces,
             self._threads,
         )
-        kept = sum(part[0] for part in parts) - sum(part[1] for part in parts)
-        found = self._income / kept if kept > 0 else 1.0
-        # Near the end the rounding of these sums would be all that a factor brings in.
-        return found if 0.2 < found < 5.0 and abs(found - 1.0) > _FINE else 1.0
 
 
 def _given(matrix: Pull, order: Order, stage: Stage, structure: Structure, watch: Watch) -> Floats:
@@ -66,11 +73,13 @@ def _given(matrix: Pull, order: Order, stage: Stage, structure: Structure, watch
     if kept is not None and kept[0] is rows:
         return kept[1]
 
+    ones = np.ones(1)
+
     def lane(blocks: list[tuple[int, int]]) -> Floats:
         totals = np.zeros(matrix.n)
         for block in blocks:
             watch.check()
-            given_to(rows.offsets, rows.neighbours, rows.weights, order, *block, totals)
+            given_to(rows.offsets, rows.neighbours, rows.weights, order, *block, ones, totals)
         return totals
 
     lanes = [list(blocks) for blocks in zip(*stage.steps, strict=True)]

@@ -30,6 +30,12 @@ from kingpost.core.structure import Structure
 from kingpost.core.watch import Watch
 
 _ROUNDS = 12
+_MARGIN = 0.03  # a score is known some tens of times worse than rho, by experience
+
+
+def width_for(tol: float) -> float:
+    """How narrow a bracket of rho must be for the scores to be known to ``tol`` in the end."""
+    return max(_MARGIN * tol, 1e-14)
 
 
 @dataclass
@@ -38,7 +44,8 @@ class Block:
 
     ``y`` is positive on ``inside`` and zero elsewhere, shape (n,); ``spread`` is the relative error
     that the entries of ``matrix`` themselves may have (0 where they are exact).  Where ``inside``
-    also holds what the block feeds, ``home`` marks the block alone.
+    also holds what the block feeds, ``home`` marks the block alone.  ``left`` is a left vector of
+    the block, as near to an eigenvector as is known.
     """
 
     matrix: Pull
@@ -49,6 +56,7 @@ class Block:
     rho: tuple[float, float]
     spread: float = 0.0
     home: NDArray[np.bool_] | None = None
+    left: Floats | None = None
 
 
 # From the vector and the bounds of its errors to the scores and the bounds of theirs.
@@ -87,7 +95,10 @@ class _Sharpening:
         self.ledger, self.max_sweeps = ledger, max_sweeps
         self.bound = Bound(BoundKind.NONE, float("inf"))
         home = block.inside if block.home is None else block.home
-        self.pin = int(np.argmax(np.where(home, block.y, 0.0)))
+        # With the node held fixed through which most of the circulation runs, least is left of it.
+        self.left = None if block.left is None else np.where(home, block.left, 0.0)
+        through = block.y if self.left is None else block.y * self.left
+        self.pin = int(np.argmax(np.where(home, through, 0.0)))
         self.fixed = block.rho[0] == block.rho[1]
         self._all = np.arange(block.matrix.n, dtype=np.uint32)
         self._tried: list[tuple[float, float]] = []  # rho, and what row p made of it
@@ -134,7 +145,7 @@ class _Sharpening:
             yield from self.ledger.relay(
                 pinned_guard(
                     block.matrix, block.structure, block.flow, block.y, self.pin, block.rho[0],
-                    max_sweeps=self.max_sweeps, watch=self.watch, g=g,
+                    max_sweeps=self.max_sweeps, watch=self.watch, g=g, left=self.left,
                 ),
                 "certificate",
             )

@@ -51,18 +51,22 @@ def find_guard(
     max_sweeps: int,
     watch: Watch,
     ignore: int | None = None,
+    start: Floats | None = None,
 ) -> Generator[Iteration, None, Guard | None]:
     """Solve ``M w = g`` only so far that ``M w >= g / 2`` where ``g > 0``; None if that fails.
 
-    ``ignore`` is a node whose row does not count (its column in ``matrix`` must be zero).  Where
+    ``ignore`` is a node whose row does not count (its column in ``matrix`` must be zero), ``start``
+    a first w.  Where
     w spans so many decades that its own rounding drowns g, g is raised there to what can be
     held: what a guard is in proportion to is a matter of taste, that it is one is not.
     """
-    guard, found = yield from _guard(matrix, structure, flow, g, max_sweeps, watch, ignore)
+    guard, found = yield from _guard(matrix, structure, flow, g, max_sweeps, watch, ignore, start)
     if guard is None and found.stop is Stop.STALLED and np.isfinite(found.x).all():
         least = np.where(np.broadcast_to(g > 0, matrix.n), _HELD * UNIT * np.abs(found.x), 0.0)
         raised = np.maximum(g, least)
-        guard, _ = yield from _guard(matrix, structure, flow, raised, max_sweeps, watch, ignore)
+        guard, _ = yield from _guard(
+            matrix, structure, flow, raised, max_sweeps, watch, ignore, start
+        )
     return guard
 
 
@@ -74,6 +78,7 @@ def _guard(
     max_sweeps: int,
     watch: Watch,
     ignore: int | None,
+    start: Floats | None,
 ) -> Generator[Iteration, None, tuple[Guard | None, Solution]]:
     live = np.broadcast_to(g > 0, matrix.n).copy()
     if ignore is not None:
@@ -93,6 +98,7 @@ def _guard(
         tol=0.5,
         max_sweeps=max_sweeps,
         watch=watch,
+        start=start,
         gain=3.0,
     )
     if not found.bound <= 0.5:

@@ -36,9 +36,9 @@ from kingpost.core.layout import layout
 from kingpost.core.operators import Order, Pull
 from kingpost.core.result import Iteration, Stop
 from kingpost.core.solvers.balance import LEAST, Balance
-from kingpost.core.solvers.mixing import Mixing
+from kingpost.core.solvers.mixing import SLOW, Mixing
 from kingpost.core.solvers.stages import Plan, Stage, plan
-from kingpost.core.solvers.sweeping import sweep
+from kingpost.core.solvers.sweeping import UNWEIGHED, Swept, sweep
 from kingpost.core.structure import Structure
 from kingpost.core.watch import Watch
 
@@ -211,6 +211,7 @@ class _Sweeper:
         self.gain = 1.0
         self._shares: list[float] = []
         self._mixing: dict[int, Mixing] = {}
+        self._last: dict[int, Swept] = {}  # what the last sweep of a stage said
         self.floor = False  # whether the last pass went on until nothing moved any more
         self.diverged = False
         tracked = not self.swept and not len(self.matrix.loops)
@@ -264,19 +265,17 @@ class _Sweeper:
         self.visits += stage.edges
 
     def _settle(self, stage: Stage, goal: float) -> Generator[Iteration, None, None]:
-        mixing = self._mixing.get(stage.low)
-        if mixing is None:
-            mixing = Mixing(stage, self.plan.order, self.x, self.watch.threads)
-            self._mixing[stage.low] = mixing
-            balance = self._balance(stage)
-        else:  # the stage was left right after a sweep: go on from there
-            balance = self._balance(stage)
-            self._mix(mixing, balance)
-        before, rates = float("inf"), [0.0]
+        balance = self._balance(stage)
+        if stage.low in self._last:  # right after a sweep: go on from there
+            self._onwards(stage, balance, self._last[stage.low])
+        before, rates, slow = float("inf"), [0.0], 0
         while self.sweeps < self.max_sweeps:
-            moved, mass = sweep(
-                self.matrix, self.b, self.plan.order, stage, self.z, self.x, self.watch
-            )
+            swept = sweep(
+                self.matrix, self.b, self.plan.order, stage, self.z, self.x, self.watch,
+                weighing=UNWEIGHED if balance is None else balance.weighing,
+            )  # fmt: skip
+            self._last[stage.low] = swept
+            moved, mass = swept.moved, swept.mass
             self.sweeps += 1
             self.visits += stage.edges
             share = moved / mass if mass > 0 else 0.0
@@ -292,7 +291,11 @@ class _Sweeper:
             if not np.isfinite(moved) or mass > 1e250:
                 self.diverged = True
                 break
-            self._mix(mixing, balance)
+            slow = slow + 1 if rates[-1] > SLOW else 0
+            if slow > 1 and stage.low not in self._mixing:
+                self._mixing[stage.low] = Mixing(stage, self.plan.order, self.x, self.watch.threads)
+            else:
+                self._onwards(stage, balance, swept)
         self.floor = False
 
     def _balance(self, stage: Stage) -> Balance | None:
@@ -302,9 +305,14 @@ class _Sweeper:
             self.matrix, self.b, self.plan.order, stage, self.structure, self.z[0], self.watch
         )
 
-    def _mix(self, mixing: Mixing, balance: Balance | None) -> None:
-        factor = 1.0 if balance is None else balance.factor(self.x, self.z[0])
-        mixing.mix(self.x, self.matrix.scale, self.z, factor)
+    def _onwards(self, stage: Stage, balance: Balance | None, swept: Swept) -> None:
+        """From what a sweep ended in to what the next begins with."""
+        mixing = self._mixing.get(stage.low)
+        factor = 1.0 if balance is None else balance.factor(swept)
+        if mixing is not None:
+            mixing.mix(self.x, self.matrix.scale, self.z, factor)
+        elif balance is not None and factor != 1.0:
+            balance.scale(factor, self.x, self.z)
 
     def certify(self, judge: Judge, everywhere: bool = False) -> tuple[Residual, float, bool]:
         """The residual where rows were swept (or everywhere), and what the judge makes of it."""

@@ -9,7 +9,11 @@ from kingpost.core.operators import Order
 from kingpost.core.parallel import each
 from kingpost.core.solvers.stages import Stage
 
+# What is left of the movement, sweep after sweep, from which on mixing pays for the passes over
+# vectors that it takes.
+SLOW = 0.3
 _DEPTH = 3  # differences mixed; a fourth saved no sweep on the bench graphs
+_LEAP = 1e4  # times the sum of the scores, at most, in one extrapolation
 _SUMS = [(0, 1, 2), (1, 3, 4), (2, 4, 5)]  # where kernels.mixing.record puts d_i . d_j
 
 
@@ -51,7 +55,10 @@ class Mixing:
             factors[:depth] = _least_squares(sums, depth)
             past = self._totals[[(new + 3) & 3, (new + 2) & 3, (new + 1) & 3]]
             whole = sums[9] * (1 - factors.sum()) + factors @ past
-            if not 0.2 < whole / (sums[9] or 1.0) < 1e4:
+            growth = whole / (sums[9] or 1.0)
+            if growth > _LEAP:  # very near the limit there may be as far to go: in several leaps
+                factors *= (_LEAP - 1.0) / (growth - 1.0)
+            elif not growth > 0.2:
                 factors[:] = 0.0  # a wild guess: go on from the plain sweep
         each(
             lambda block: extrapolate(

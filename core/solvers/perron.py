@@ -18,19 +18,21 @@ from dataclasses import dataclass, field
 import numpy as np
 from numpy.typing import NDArray
 
-from kingpost.core.certify import UNIT
 from kingpost.core.errors import Interrupted
 from kingpost.core.graph import Floats
 from kingpost.core.layout import layout
 from kingpost.core.operators import Order, Pull, cut
 from kingpost.core.parallel import each
 from kingpost.core.result import Iteration
-from kingpost.core.solvers.pinned_sweeps import STILL, PinnedSweeps
+from kingpost.core.solvers.settling import Settling
 from kingpost.core.structure import Structure
 from kingpost.core.watch import Watch
 
 _DENSE = 300  # components up to this size get their first vector from a dense solver
 _PATIENCE = 24  # power steps before a slow component is handed to a Krylov solver
+_SAFE = 1.5  # movement of entries in the last sweep, as a share of the bracket's width asked for;
+# the bracket after it has a fifth to a half of that width on the bench graphs
+_LOOK = 3  # products after which the largest component need not be the only one left to be swept
 _WIDE = 4  # at most this many components are worth a Krylov solve each
 
 
@@ -40,12 +42,14 @@ class Bracketed:
 
     ``low`` and ``high`` have one entry for each of ``components`` (numbers in the Structure) that
     may still be dominating; ``y`` is positive on their nodes, zero elsewhere, shape (n,).
+    ``left`` is a rough left vector of the component that was decided for, if known.
     """
 
     components: NDArray[np.int64]
     low: Floats
     high: Floats
     y: Floats
+    left: Floats | None = None
     cancelled: bool = False
     steps: int = 0
     edge_visits: int = 0
@@ -72,12 +76,14 @@ def bracket(
     only: int | None = None,
     separate: bool = True,
     start: Floats | None = None,
+    gives: Floats | None = None,
 ) -> Generator[Iteration, None, Bracketed]:
     """Bracket the spectral radius of ``matrix``; needs at least one cyclic component.
 
     Ends when the bracket's relative width is at most ``width`` and (with ``separate``) one
     component is proven dominating, or when rounding or ``max_steps`` allow no more.  ``only``
-    names a single component to look at, ``start`` (n,) gives first vectors where it is positive.
+    names a single component to look at, ``start`` (n,) gives first vectors where it is positive,
+    ``gives`` (n,) first left vectors, such as what every node gives away.
 
     If ``watch`` is cancelled the state so far is returned, marked ``cancelled``.
     """
@@ -85,12 +91,15 @@ def bracket(
     if start is not None:
         start = laid.there(start)
     work = _Brackets(laid.matrix(matrix), laid.structure, watch, only, start)
-    work.enough = 1e-2 * width
+    work.gives = None if gives is None else laid.there(gives)
+    work.enough = _SAFE * width
     try:
         yield from _narrow(work, width, max_steps, separate)
     except Interrupted:
         work.state.cancelled = True
     work.state.y = laid.back(work.state.y)
+    if work.state.left is not None:
+        work.state.left = laid.back(work.state.left)
     return work.state
 
 
@@ -126,6 +135,7 @@ class _Brackets:
         y = np.zeros(matrix.n)
         self.state = Bracketed(numbers, np.zeros(len(numbers)), np.full(len(numbers), np.inf), y)
         self.began = time.perf_counter()
+        self._led = -1
         self._choose(np.ones(len(numbers), dtype=bool))
         y[self.nodes] = 1.0
         if start is not None:
@@ -134,12 +144,12 @@ class _Brackets:
             top = float(near.max(initial=0.0)) or 1.0
             y[self.nodes] = np.where(near > 0, np.maximum(near / top, 1e-200), 1.0)
         self.stuck = False
-        self.enough = STILL
+        self.enough = 0.0
         self._since = 0
         self._widths: list[float] = []
         self._shift = 0.0  # of the middle of the bracket, once iterates are seen to swing
         self._moves: list[float] = []
-        self._unsettled = 3
+        self.gives: Floats | None = None
         self._exact = False
         self._tried: set[int] = set()
 
@@ -162,11 +172,15 @@ class _Brackets:
         long = self.nodes.astype(np.int64)
         lengths = rows.offsets[long + 1] - rows.offsets[long]
         self.edges = int(lengths.sum())
-        # A plain sum of k terms is off by at most (k / 4 + 4) u of itself (four partial sums).
-        self.slack = UNIT * (lengths / 4 + 8)
+        each_has = np.add.reduceat(lengths, self.firsts)
+        self.leader = int(np.argmax(each_has))  # the one with most edges, by its place here
+        self.leading_share = float(each_has[self.leader]) / max(self.edges, 1)
+        if self._led != state.components[self.leader]:
+            self._led, self._unsettled = int(state.components[self.leader]), 3
+            state.left = None
 
     def product(self, y: Floats) -> Floats:
-        """``B y`` inside the components, for ``nodes`` in their order."""
+        """``B y`` inside the components, shape (n,); of other nodes whatever it may be."""
         from kingpost.core.kernels.rows import pull_inside
         from kingpost.core.kernels.sweep import pull_rows
 
@@ -186,39 +200,28 @@ class _Brackets:
 
         each(piece, self.pieces, self.watch.threads)
         self.state.edge_visits += self.edges
-        return out[self.nodes]
+        return out
 
     def _product_exactly(self, y: Floats) -> Floats:
         product, _ = self.matrix.apply_exactly(y, self.nodes, 0, len(self.nodes), self.watch)
         self.state.edge_visits += self.edges
-        return product[self.nodes]
+        return product
 
     def step(self) -> Iteration:
         """One product: new brackets, the next vector, and who can no longer be dominating."""
+        from kingpost.core.kernels.bracket import advance, ratios
+
         state = self.state
-        mine = state.y[self.nodes]
-        if self._exact:
-            # Once the vector is as good as it gets, the rounding of long rows is what is left.
-            product, slack = self._product_exactly(state.y), np.full(len(mine), 16 * UNIT)
-        else:
-            product, slack = self.product(state.y), self.slack
-        with np.errstate(divide="ignore", invalid="ignore"):
-            ratio = product / mine
-        low = np.minimum.reduceat(ratio * (1 - slack), self.firsts)
-        high = np.maximum.reduceat(ratio * (1 + slack), self.firsts)
-        # Both hold at every step, so the best of all steps does.
-        state.low = np.fmax(state.low, low)
-        state.high = np.fmin(state.high, high)
-        middle = np.repeat((np.fmax(low, 0) + np.fmin(high, 1e300)) / 2, self.sizes)
-        after = product + self._shift * middle * mine
-        top = np.repeat(np.maximum.reduceat(after, self.firsts), self.sizes)
-        with np.errstate(invalid="ignore", divide="ignore"):
-            after = after / top
-        # An entry that underflows would leave the bracket open for good.
-        after = np.maximum(np.nan_to_num(after), 1e-290)
-        state.y[self.nodes] = after
+        # Once the vector is as good as it gets, the rounding of long rows is what is left.
+        exactly = self._exact and len(state.components) == 1  # the others' edges do not count
+        product = self._product_exactly(state.y) if exactly else self.product(state.y)
+        middle = np.empty(len(self.firsts))
+        of_these = self.nodes, self.firsts, self.sizes
+        offsets = self.matrix.rows.offsets
+        ratios(offsets, *of_these, exactly, product, state.y, state.low, state.high, middle)
+        moved, total = advance(*of_these, product, self._shift, middle, state.y)
         state.steps += 1
-        self._watch_rate(float(np.abs(after - mine).sum() / after.sum()))
+        self._watch_rate(moved / total)
         keep = state.high >= state.low.max()
         if not keep.all():
             self._choose(keep)
@@ -256,23 +259,30 @@ class _Brackets:
 
     @property
     def settling(self) -> bool:
-        """Whether one component is left and its vector close enough for pinned sweeps."""
-        alone = len(self.state.components) == 1 and len(self.nodes) > 1
-        return alone and self._unsettled > 0 and len(self._moves) > 2 and self._moves[-1] < 0.03
+        """Whether one component, alone or by far the largest, is worth sweeps of its own."""
+        size = int(self.sizes[self.leader])
+        if self._unsettled == 0 or size == 1 or (size <= _DENSE and self._led not in self._tried):
+            return False
+        alone = len(self.state.components) == 1
+        return alone or (self.state.steps >= _LOOK and self.leading_share > 0.5)
 
     def settle(self) -> Generator[Iteration, None, None]:
-        """Pinned Gauss-Seidel sweeps; kept only if the vector they lead to is positive."""
+        """Gauss-Seidel sweeps; kept only if the vector they lead to is positive."""
         self._unsettled -= 1
-        # As far as the bracket asked for needs, by experience; all the way if that was too short.
-        enough = self.enough if self._unsettled == 2 else STILL
-        work = PinnedSweeps(self.matrix, self.nodes, self.state.y, self.watch, enough)
-        lines = work.run()
-        for moved in lines:
+        # As far as the bracket asked for needs, by experience; further if that was too short.
+        enough = self.enough * (0.0, 0.01, 1.0)[self._unsettled]
+        first = int(self.firsts[self.leader])
+        nodes = self.nodes[first : first + int(self.sizes[self.leader])]
+        work = Settling(self.matrix, nodes, self.state.y, self.watch, enough, self.gives)
+        edges = self.matrix.edges_of(nodes)
+        for moved in work.run():
             self.state.steps += 1
-            self.state.edge_visits += self.edges
-            yield self._line(moved, "pinned sweep")
+            self.state.edge_visits += edges
+            yield self._line(moved, "settling sweep")
+        self.state.edge_visits += edges  # for the left vector
+        self.state.left = work.left
         if work.sound:
-            self.state.y[self.nodes] = work.x[self.nodes] / work.x[self.nodes].max()
+            self.state.y[nodes] = work.x[nodes] / work.x[nodes].max()
             self._exact = True
 
     @property
