@@ -22,6 +22,7 @@ from kingpost.core.watch import Watch
 Order = NDArray[np.uint32]
 
 ROW = 8  # entries that take as long as coming to another row, measured on rows of 1 to 10,000
+_LANES = 2  # vectors a transposed product is added up in; fixed, for the sake of the bits
 _PIECE = 2_000_000  # edges in one piece of a product; also how soon a cancel is noticed
 
 
@@ -93,6 +94,32 @@ class Pull:
         """Number of stored entries in the rows of ``nodes``."""
         long = nodes.astype(np.int64)
         return int((self.rows.offsets[long + 1] - self.rows.offsets[long]).sum())
+
+
+def given_back(
+    rows: Adjacency, order: Order, low: int, high: int, values: Floats, watch: Watch
+) -> Floats:
+    """``sum_i weight(j -> i) values[i]`` over the rows i of ``order[low:high]``, for every j.
+
+    The transposed product, by the same rows; ``values`` has shape (n,), or (1,) for a constant.
+    Raises Interrupted if ``watch`` is cancelled on the way.
+    """
+    from kingpost.core.kernels.rows import given_to
+
+    n = len(rows.offsets) - 1
+    pieces = cut(rows, order, low, high, _PIECE // 2)
+    half = -(-len(pieces) // _LANES)
+    lanes = [pieces[at : at + half] for at in range(0, len(pieces), max(half, 1))]
+
+    def lane(blocks: list[tuple[int, int]]) -> Floats:
+        totals = np.zeros(n)
+        for block in blocks:
+            watch.check()
+            given_to(rows.offsets, rows.neighbours, rows.weights, order, *block, values, totals)
+        return totals
+
+    parts = each(lane, lanes, watch.threads)
+    return parts[0] if len(parts) == 1 else np.sum(parts, axis=0)
 
 
 def cut(rows: Adjacency, order: Order, low: int, high: int, edges: int) -> list[tuple[int, int]]:

@@ -103,8 +103,8 @@ def _of_large_graphs() -> None:
     import numpy as np
 
     from kingpost.core.kernels.build import move_left
-    from kingpost.core.kernels.mixing import given_to, multiply
-    from kingpost.core.kernels.rows import copy_rows
+    from kingpost.core.kernels.mixing import multiply
+    from kingpost.core.kernels.rows import copy_rows, given_to
 
     near, scores = np.zeros(1, np.uint32), np.zeros(1)
     move_left(near, 0, 1, 0)

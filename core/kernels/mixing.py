@@ -6,8 +6,6 @@ position in the stage (position p is node ``order[base + p]``), shape (4, rows o
 
 from __future__ import annotations
 
-import numpy as np
-
 from kingpost.core.kernels._compile import kernel
 
 
@@ -67,20 +65,3 @@ def multiply(order, low, high, factor, x, z, lanes):  # type: ignore[no-untyped-
         x[i] *= factor
         for lane in range(lanes):
             z[lane, i] *= factor
-
-
-@kernel()
-def given_to(offsets, neighbours, weights, order, low, high, values, totals):  # type: ignore[no-untyped-def]
-    """Add ``weight * values[row]`` of all edges into the rows ``order[low:high]`` to their givers'
-    totals; ``values`` of length 1 stands for a constant.
-    """
-    zero, one = np.uint64(0), np.uint64(1)
-    constant = len(values) == 1
-    for k in range(np.uint64(low), np.uint64(high)):
-        i = np.uint64(order[k])
-        value = values[zero] if constant else values[i]
-        e = np.uint64(offsets[i])
-        end = np.uint64(offsets[i + one])
-        while e < end:
-            totals[neighbours[e]] += value if weights is None else weights[e] * value
-            e += one

@@ -97,6 +97,23 @@ def copy_rows(order, low, high, origin, target):  # type: ignore[no-untyped-def]
 
 
 @kernel()
+def given_to(offsets, neighbours, weights, order, low, high, values, totals):  # type: ignore[no-untyped-def]
+    """Add ``weight * values[row]`` of all edges into the rows ``order[low:high]`` to their givers'
+    totals; ``values`` of length 1 stands for a constant.
+    """
+    zero, one = np.uint64(0), np.uint64(1)
+    constant = len(values) == 1
+    for k in range(np.uint64(low), np.uint64(high)):
+        i = np.uint64(order[k])
+        value = values[zero] if constant else values[i]
+        e = np.uint64(offsets[i])
+        end = np.uint64(offsets[i + one])
+        while e < end:
+            totals[neighbours[e]] += value if weights is None else weights[e] * value
+            e += one
+
+
+@kernel()
 def row_totals(offsets, weights, low, high, totals):  # type: ignore[no-untyped-def]
     """Sum the weights of every row ``low..high``, rounded once; was all whole, nothing rounded?"""
     one, two = np.uint64(1), np.uint64(2)

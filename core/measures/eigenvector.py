@@ -103,6 +103,7 @@ class _Work:
         self.bound = Bound(BoundKind.NONE, float("inf"))
         self.live: NDArray[np.bool_] = np.zeros(graph.n, dtype=bool)
         self.left: Floats | None = None
+        self.product: tuple[Floats, Floats] | None = None
         self.chosen = -1
         self.open = False  # which component dominates was not found out
         self.clock.ready()
@@ -165,7 +166,8 @@ class _Work:
             ),
             "bracket",
         )  # fmt: skip
-        self.rho, self.x, self.left = found.rho, found.y, found.left
+        self.rho, self.x = found.rho, found.y
+        self.left, self.product = found.left, found.product
         if found.cancelled:
             if np.isfinite(found.rho[1]):
                 low, high = found.rho
@@ -254,6 +256,7 @@ class _Work:
         block = Block(
             self.matrix, self.structure, settings.flow, self.live, self.x, self.rho,
             home=support(self.structure, self.chosen, self.graph.n), left=self.left,
+            product=self.product,
         )  # fmt: skip
         wanted = settings.stop_order
         bound, stop = yield from sharpen(

@@ -93,7 +93,7 @@ def solve(graph: Graph, settings: HitsSettings, watch: Watch) -> Solve:
     inside = support(work.structure, int(found.components[0]), work.double.n)
     block = Block(
         work.matrix, work.structure, "along", inside, np.where(inside, found.y, 0.0), found.rho,
-        left=found.left,
+        left=found.left, product=found.product,
     )  # fmt: skip
     wanted = settings.stop_order
     work.bound, stop = yield from sharpen(

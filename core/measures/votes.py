@@ -209,7 +209,7 @@ def solve(graph: Graph, settings: VotesSettings, watch: Watch) -> Solve:
         return work.result(Stop.CANCELLED)
     block = Block(
         matrix, structure, "along", work.inside, found.y, work.rho, spread=work.ballot.spread,
-        left=found.left,
+        left=found.left, product=found.product,
     )  # fmt: skip
     wanted = settings.stop_order
     work.bound, stop = yield from sharpen(

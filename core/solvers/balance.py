@@ -15,7 +15,7 @@ import numpy as np
 
 from kingpost.core.certify import UNIT
 from kingpost.core.graph import Adjacency, Floats
-from kingpost.core.operators import Order, Pull
+from kingpost.core.operators import Order, Pull, given_back
 from kingpost.core.parallel import each
 from kingpost.core.solvers.stages import Stage
 from kingpost.core.solvers.sweeping import Swept, Weighing
@@ -66,23 +66,12 @@ class Balance:
 
 def _given(matrix: Pull, order: Order, stage: Stage, structure: Structure, watch: Watch) -> Floats:
     """Sum of the weights from every node to the rows of a stage, shape (n,); kept."""
-    from kingpost.core.kernels.mixing import given_to
 
     rows, key = matrix.rows, f"given {stage.low} {stage.high} {int(order[0])}"
     kept = cast("tuple[Adjacency, Floats] | None", structure.cache.get(key))
     if kept is not None and kept[0] is rows:
         return kept[1]
 
-    ones = np.ones(1)
-
-    def lane(blocks: list[tuple[int, int]]) -> Floats:
-        totals = np.zeros(matrix.n)
-        for block in blocks:
-            watch.check()
-            given_to(rows.offsets, rows.neighbours, rows.weights, order, *block, ones, totals)
-        return totals
-
-    lanes = [list(blocks) for blocks in zip(*stage.steps, strict=True)]
-    total: Floats = np.sum(each(lane, lanes, watch.threads), axis=0)
+    total = given_back(rows, order, stage.low, stage.high, np.ones(1), watch)
     structure.cache[key] = rows, total
     return total

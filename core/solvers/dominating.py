@@ -19,6 +19,7 @@ from numpy.typing import NDArray
 from kingpost.core.certify import UNIT, Residual
 from kingpost.core.errors import Interrupted
 from kingpost.core.graph import Floats, Flow
+from kingpost.core.layout import layout
 from kingpost.core.operators import Pull
 from kingpost.core.result import Bound, BoundKind, Iteration, Stop
 from kingpost.core.solvers.guard import Guard
@@ -45,7 +46,8 @@ class Block:
     ``y`` is positive on ``inside`` and zero elsewhere, shape (n,); ``spread`` is the relative error
     that the entries of ``matrix`` themselves may have (0 where they are exact).  Where ``inside``
     also holds what the block feeds, ``home`` marks the block alone.  ``left`` is a left vector of
-    the block, as near to an eigenvector as is known.
+    the block, as near to an eigenvector as is known; ``product`` is ``B y`` by compensated sums
+    and ``|B| |y|`` on the block, if known for this y.
     """
 
     matrix: Pull
@@ -57,6 +59,7 @@ class Block:
     spread: float = 0.0
     home: NDArray[np.bool_] | None = None
     left: Floats | None = None
+    product: tuple[Floats, Floats] | None = None
 
 
 # From the vector and the bounds of its errors to the scores and the bounds of theirs.
@@ -100,6 +103,7 @@ class _Sharpening:
         through = block.y if self.left is None else block.y * self.left
         self.pin = int(np.argmax(np.where(home, through, 0.0)))
         self.fixed = block.rho[0] == block.rho[1]
+        self._given = block.y
         self._all = np.arange(block.matrix.n, dtype=np.uint32)
         self._tried: list[tuple[float, float]] = []  # rho, and what row p made of it
 
@@ -153,12 +157,28 @@ class _Sharpening:
 
     def _reach(self, y: Floats) -> Floats:
         block = self.block
-        reach = perron_reach(block.structure, block.matrix, y, block.rho, self.watch)
-        self.ledger.visits += block.matrix.stored
+        product = self._products(y)
+        reach = perron_reach(*product, y, block.rho)
         if block.spread:
             # The entries' own errors: as much of B y, which is y up to the reach.
             reach = reach + 2 * block.spread * (y + reach)
         return np.where(block.inside, reach, 0.0)
+
+    def _products(self, y: Floats) -> tuple[Floats, Floats]:
+        """``B y`` by compensated sums, and ``|B| |y|``, shape (n,); right inside alone."""
+        block = self.block
+        if block.product is None or y is not self._given:
+            self.ledger.visits += block.matrix.stored
+            laid = layout(block.structure, block.matrix.rows, self.watch)
+            return laid.apply_exactly(block.matrix, y, self.watch)
+        product, size = block.product
+        if block.home is not None:
+            fed = np.flatnonzero(block.inside & ~block.home).astype(np.uint32)
+            more, larger = block.matrix.apply_exactly(y, fed, 0, len(fed), self.watch)
+            self.ledger.visits += block.matrix.edges_of(fed)
+            product = np.where(block.home, product, more)
+            size = np.where(block.home, size, larger)
+        return product, size
 
     def _judge(self, y: Floats, guard: Guard) -> None:
         """Take ``y`` and its bound if that is less than the bound so far."""

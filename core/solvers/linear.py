@@ -36,7 +36,7 @@ from kingpost.core.layout import layout
 from kingpost.core.operators import Order, Pull
 from kingpost.core.result import Iteration, Stop
 from kingpost.core.solvers.balance import LEAST, Balance
-from kingpost.core.solvers.mixing import SLOW, Mixing
+from kingpost.core.solvers.mixing import SLOW, SLOW_BY_ENTRY, Mixing
 from kingpost.core.solvers.stages import Plan, Stage, plan
 from kingpost.core.solvers.sweeping import UNWEIGHED, Swept, sweep
 from kingpost.core.structure import Structure
@@ -91,6 +91,7 @@ def solve(
     start: Floats | None = None,
     early: bool = False,
     gain: float = 1.0,
+    by_entry: bool = False,
 ) -> Generator[Iteration, None, Solution]:
     """Solve ``system``; the generator yields one Iteration a sweep and returns a Solution.
 
@@ -103,6 +104,8 @@ def solve(
         early: certify on the way, each time the error has fallen a hundredfold, so that
             ``judge`` may be content early.
         gain: a first guess of bound over last movement.
+        by_entry: that movement is the largest of an entry relative to itself, not that of the
+            sum, and mixing is left for really slow sweeps: for bounds that go by entry.
     """
     laid = layout(system.structure, system.matrix.rows, watch)
     there = System(
@@ -119,7 +122,7 @@ def solve(
         return judge(*seen[0][1:])
 
     work = _Sweeper(there, watch, max_sweeps, start)
-    work.gain = gain
+    work.gain, work.by_entry = gain, by_entry
     found = yield from _solve(work, by_node, tol, early)
     assert seen, "no solve ends unjudged"
     assert seen[0][0] is found.residual
@@ -208,7 +211,7 @@ class _Sweeper:
         self.reach = float("nan") if q is None or q >= 1.0 else q / (1.0 - q)
         self.sweeps = self.visits = 0
         self.rate = float("nan")
-        self.gain = 1.0
+        self.gain, self.by_entry = 1.0, False
         self._shares: list[float] = []
         self._mixing: dict[int, Mixing] = {}
         self._last: dict[int, Swept] = {}  # what the last sweep of a stage said
@@ -285,13 +288,14 @@ class _Sweeper:
             if share < _ROUNDING:
                 return
             rate = min(max(rates), 0.9999)
-            if len(rates) > 2 and share * max(rate / (1.0 - rate), self.gain) <= goal:
-                self._shares.append(share)
+            step = swept.farthest if self.by_entry else share
+            if len(rates) > 2 and step * max(rate / (1.0 - rate), self.gain) <= goal:
+                self._shares.append(step)
                 break
             if not np.isfinite(moved) or mass > 1e250:
                 self.diverged = True
                 break
-            slow = slow + 1 if rates[-1] > SLOW else 0
+            slow = slow + 1 if rates[-1] > (SLOW_BY_ENTRY if self.by_entry else SLOW) else 0
             if slow > 1 and stage.low not in self._mixing:
                 self._mixing[stage.low] = Mixing(stage, self.plan.order, self.x, self.watch.threads)
             else:

@@ -12,6 +12,7 @@ from kingpost.core.solvers.stages import Stage
 # What is left of the movement, sweep after sweep, from which on mixing pays for the passes over
 # vectors that it takes.
 SLOW = 0.3
+SLOW_BY_ENTRY = 0.8  # where a slow amount of the whole does no harm
 _DEPTH = 3  # differences mixed; a fourth saved no sweep on the bench graphs
 _LEAP = 1e4  # times the sum of the scores, at most, in one extrapolation
 _SUMS = [(0, 1, 2), (1, 3, 4), (2, 4, 5)]  # where kernels.mixing.record puts d_i . d_j

@@ -42,7 +42,8 @@ class Bracketed:
 
     ``low`` and ``high`` have one entry for each of ``components`` (numbers in the Structure) that
     may still be dominating; ``y`` is positive on their nodes, zero elsewhere, shape (n,).
-    ``left`` is a rough left vector of the component that was decided for, if known.
+    ``left`` is a rough left vector of the component that was decided for, if known; ``product``
+    is ``B y`` by compensated sums and ``|B| |y|`` on its nodes, if the last bracket was of that.
     """
 
     components: NDArray[np.int64]
@@ -50,6 +51,7 @@ class Bracketed:
     high: Floats
     y: Floats
     left: Floats | None = None
+    product: tuple[Floats, Floats] | None = None
     cancelled: bool = False
     steps: int = 0
     edge_visits: int = 0
@@ -92,7 +94,7 @@ def bracket(
         start = laid.there(start)
     work = _Brackets(laid.matrix(matrix), laid.structure, watch, only, start)
     work.gives = None if gives is None else laid.there(gives)
-    work.enough = _SAFE * width
+    work.width = width
     try:
         yield from _narrow(work, width, max_steps, separate)
     except Interrupted:
@@ -100,12 +102,17 @@ def bracket(
     work.state.y = laid.back(work.state.y)
     if work.state.left is not None:
         work.state.left = laid.back(work.state.left)
+    if work.state.product is not None:
+        product, size = work.state.product
+        work.state.product = laid.back(product), laid.back(size)
     return work.state
 
 
 def _narrow(
     work: _Brackets, width: float, max_steps: int, separate: bool
 ) -> Generator[Iteration, None, None]:
+    if work.settling:
+        yield from work.settle()
     while True:
         yield work.step()
         state = work.state
@@ -144,7 +151,7 @@ class _Brackets:
             top = float(near.max(initial=0.0)) or 1.0
             y[self.nodes] = np.where(near > 0, np.maximum(near / top, 1e-200), 1.0)
         self.stuck = False
-        self.enough = 0.0
+        self.width = 0.0
         self._since = 0
         self._widths: list[float] = []
         self._shift = 0.0  # of the middle of the bracket, once iterates are seen to swing
@@ -202,11 +209,6 @@ class _Brackets:
         self.state.edge_visits += self.edges
         return out
 
-    def _product_exactly(self, y: Floats) -> Floats:
-        product, _ = self.matrix.apply_exactly(y, self.nodes, 0, len(self.nodes), self.watch)
-        self.state.edge_visits += self.edges
-        return product
-
     def step(self) -> Iteration:
         """One product: new brackets, the next vector, and who can no longer be dominating."""
         from kingpost.core.kernels.bracket import advance, ratios
@@ -214,14 +216,22 @@ class _Brackets:
         state = self.state
         # Once the vector is as good as it gets, the rounding of long rows is what is left.
         exactly = self._exact and len(state.components) == 1  # the others' edges do not count
-        product = self._product_exactly(state.y) if exactly else self.product(state.y)
+        state.product = None
+        if exactly:
+            size = len(self.nodes)
+            state.product = self.matrix.apply_exactly(state.y, self.nodes, 0, size, self.watch)
+            state.edge_visits += self.edges
+        product = self.product(state.y) if state.product is None else state.product[0]
         middle = np.empty(len(self.firsts))
         of_these = self.nodes, self.firsts, self.sizes
         offsets = self.matrix.rows.offsets
         ratios(offsets, *of_these, exactly, product, state.y, state.low, state.high, middle)
-        moved, total = advance(*of_these, product, self._shift, middle, state.y)
+        low, high = state.rho
+        if state.product is None or high - low > self.width * high:
+            moved, total = advance(*of_these, product, self._shift, middle, state.y)
+            self._watch_rate(moved / total)
+            state.product = None
         state.steps += 1
-        self._watch_rate(moved / total)
         keep = state.high >= state.low.max()
         if not keep.all():
             self._choose(keep)
@@ -270,7 +280,7 @@ class _Brackets:
         """Gauss-Seidel sweeps; kept only if the vector they lead to is positive."""
         self._unsettled -= 1
         # As far as the bracket asked for needs, by experience; further if that was too short.
-        enough = self.enough * (0.0, 0.01, 1.0)[self._unsettled]
+        enough = _SAFE * self.width * (0.0, 0.01, 1.0)[self._unsettled]
         first = int(self.firsts[self.leader])
         nodes = self.nodes[first : first + int(self.sizes[self.leader])]
         work = Settling(self.matrix, nodes, self.state.y, self.watch, enough, self.gives)

@@ -19,7 +19,6 @@ from numpy.typing import NDArray
 
 from kingpost.core.certify import UNIT
 from kingpost.core.graph import Floats, Flow
-from kingpost.core.layout import layout
 from kingpost.core.operators import Pull
 from kingpost.core.result import Iteration
 from kingpost.core.solvers.guard import Guard, find_guard
@@ -74,12 +73,12 @@ def _near(g: Floats, y: Floats, pin: int, left: Floats | None) -> Floats | None:
     return near if np.isfinite(near).all() else None
 
 
-def perron_reach(
-    structure: Structure, matrix: Pull, y: Floats, rho: tuple[float, float], watch: Watch
-) -> Floats:
-    """The most ``|(B y)_i / rho - y_i|`` can be for any rho of the bracket; shape (n,)."""
+def perron_reach(product: Floats, size: Floats, y: Floats, rho: tuple[float, float]) -> Floats:
+    """The most ``|(B y)_i / rho - y_i|`` can be for any rho of the bracket; shape (n,).
+
+    ``product`` is B y by compensated sums, ``size`` ``|B| |y|``.
+    """
     low, high = rho
-    product, size = layout(structure, matrix.rows, watch).apply_exactly(matrix, y, watch)
     middle = 0.5 * (low + high)
     gap = np.abs(product - middle * y) + 0.5 * (high - low) * np.abs(y)
     reach: Floats = (gap + UNIT * (12 * size + 6 * middle * np.abs(y))) / low

@@ -20,8 +20,7 @@ from collections.abc import Iterator
 import numpy as np
 
 from kingpost.core.graph import Floats
-from kingpost.core.operators import Order, Pull
-from kingpost.core.parallel import each
+from kingpost.core.operators import Order, Pull, given_back
 from kingpost.core.solvers.mixing import SLOW, Mixing
 from kingpost.core.solvers.stages import swept_stage
 from kingpost.core.solvers.sweeping import Weighing, sweep
@@ -107,20 +106,6 @@ class Settling:
         self.sound = bool(np.isfinite(inside).all() and (inside > 0).all())
 
     def _given(self, values: Floats) -> Floats:
-        """``B^T values``, shape (n,), with values only inside the block; zero where not."""
-        from kingpost.core.kernels.mixing import given_to
-
-        rows = self.matrix.rows
-
-        def lane(blocks: list[tuple[int, int]]) -> Floats:
-            totals = np.zeros(self.matrix.n)
-            for block in blocks:
-                self.watch.check()
-                given_to(
-                    rows.offsets, rows.neighbours, rows.weights, self.nodes, *block, values, totals
-                )
-            return totals
-
-        lanes = [list(blocks) for blocks in zip(*self.stage.steps, strict=True)]
-        total: Floats = np.sum(each(lane, lanes, self.watch.threads), axis=0) * self.matrix.scale
-        return total
+        """``B^T values``, shape (n,), of values in the block alone."""
+        rows, nodes = self.matrix.rows, self.nodes
+        return given_back(rows, nodes, 0, len(nodes), values, self.watch) * self.matrix.scale
