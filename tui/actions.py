@@ -1,83 +1,43 @@
 """The registry of actions: what can be done, by which keys, in which views, in what words.
 
-Key bindings, the line of keys at the foot of the screen and the help are all made from this
-table; an action that is not here does not exist.  A key means the same wherever it works.
+An action that is not here does not exist.  :mod:`kingpost.tui.keymaps` makes of this table the key
+bindings, the line of keys at the foot of the screen and the help.  A key means the same
+wherever it works.
 """
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 
-STANDINGS, NODE, LOG, FORM, CHOICE, PROMPT, NOTICE, HELP, LOADING, SHORTLIST = (
-    "standings",
-    "node",
-    "log",
-    "form",
-    "choice",
-    "prompt",
-    "notice",
-    "help",
-    "loading",
-    "shortlist",
+from kingpost.tui.rooms import (
+    AGREEMENT,
+    ANSWERS,
+    APART,
+    ASKED,
+    CHOICE,
+    COLUMNS,
+    DOING,
+    FORM,
+    LINES,
+    LISTS,
+    LOADING,
+    LOG,
+    MAKEUP,
+    NODE,
+    NODES,
+    NOTICE,
+    PLATE,
+    PROMPT,
+    ROLES,
+    ROOMS,
+    SHORTLIST,
+    SOLVES,
+    STANDINGS,
+    START,
+    TABLES,
+    TYPING,
+    WAY,
 )
-COLUMNS = "columns"  # sheet that chooses them
-SOLVES, APART = "solves", "apart"  # every solve; how two of them differ
-WAY, PLATE = "way", "plate"  # from one node to another; everything known of one
-START = "start"  # tables to choose from
-ROLES = "roles"  # which column of a table is what
-DOING = "doing"  # sheet that lists every action
-MAKEUP = "makeup"
-# Answers to what is asked of the graph; each is one table too.
-AGREEMENT, WHY, THAN, LOSS, LOSSES, ALONG, WALK, DRIFT = (
-    "agreement",
-    "why",
-    "than",
-    "loss",
-    "losses",
-    "along",
-    "walk",
-    "drift",
-)
-ANSWERS = (AGREEMENT, WHY, THAN, LOSS, LOSSES, ALONG, WALK, DRIFT)
-_LISTS = (SHORTLIST, SOLVES, APART, WAY, PLATE, MAKEUP, *ANSWERS)  # views that are one table
-_TABLES = (STANDINGS, NODE, LOG, CHOICE, HELP, COLUMNS, START, ROLES, *_LISTS)
-_ROOMS = (STANDINGS, NODE, LOG, HELP, *_LISTS)
-_NODES = (STANDINGS, NODE, SHORTLIST)  # views in which a node is at hand
-_ASKED = (STANDINGS, NODE, LOG, SHORTLIST, *ANSWERS)  # views in which something can be asked
-_TYPING = (FORM, PROMPT, DOING)
-_LINES = (FORM, DOING)  # views of lines in which one types
-
-# Views as they are named in a sentence.
-VIEW_WORDS = {
-    STANDINGS: "Standings",
-    NODE: "Node",
-    LOG: "Solve log",
-    FORM: "Settings",
-    CHOICE: "a choice",
-    PROMPT: "a question",
-    NOTICE: "a notice",
-    HELP: "Help",
-    LOADING: "Loading",
-    SHORTLIST: "Shortlist",
-    COLUMNS: "Columns",
-    SOLVES: "All solves",
-    APART: "Two solves",
-    WAY: "Way",
-    PLATE: "Name plate",
-    MAKEUP: "Makeup",
-    START: "Start",
-    ROLES: "Column roles",
-    DOING: "Any action",
-    AGREEMENT: "Agreement",
-    WHY: "Why",
-    THAN: "Why one stands above another",
-    LOSS: "Loss of a node",
-    LOSSES: "Losses",
-    ALONG: "Along a setting",
-    WALK: "Walk",
-    DRIFT: "Drift",
-}
 
 
 @dataclass(frozen=True, slots=True)
@@ -99,29 +59,29 @@ class Action:
 
 
 ACTIONS: tuple[Action, ...] = (
-    Action("row.up", ("up",), (*_TABLES, *_LINES), "one row up (upstream in Node)", group="Moving"),
+    Action("row.up", ("up",), (*TABLES, *LINES), "one row up (upstream in Node)", group="Moving"),
     Action(
         "row.down",
         ("down",),
-        (*_TABLES, *_LINES),
+        (*TABLES, *LINES),
         "one row down (downstream in Node)",
         group="Moving",
     ),
-    Action("page.ahead", ("a", "pagedown"), _TABLES, "a page ahead", group="Moving"),
-    Action("page.return", ("r", "pageup"), _TABLES, "return a page", group="Moving"),
-    Action("row.first", ("t", "home"), _TABLES, "to the top row", group="Moving"),
-    Action("row.last", ("e", "end"), _TABLES, "to the end row", group="Moving"),
+    Action("page.ahead", ("a", "pagedown"), TABLES, "a page ahead", group="Moving"),
+    Action("page.return", ("r", "pageup"), TABLES, "return a page", group="Moving"),
+    Action("row.first", ("t", "home"), TABLES, "to the top row", group="Moving"),
+    Action("row.last", ("e", "end"), TABLES, "to the end row", group="Moving"),
     Action(
         "columns.left",
         ("left",),
-        (STANDINGS, NODE, FORM, COLUMNS, ROLES, *_LISTS),
+        (STANDINGS, NODE, FORM, COLUMNS, ROLES, *LISTS),
         "columns further left, or the choice before; moves a column that is being arranged",
         group="Moving",
     ),
     Action(
         "columns.right",
         ("right",),
-        (STANDINGS, NODE, FORM, COLUMNS, ROLES, *_LISTS),
+        (STANDINGS, NODE, FORM, COLUMNS, ROLES, *LISTS),
         "columns further right, or the next choice; moves a column that is being arranged",
         group="Moving",
     ),
@@ -138,7 +98,7 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "node.open",
         ("enter",),
-        (*_NODES, APART, WAY, PLATE, *ANSWERS),
+        (*NODES, APART, WAY, PLATE, *ANSWERS),
         "open the node; in Node, make the neighbour the centre",
         "node",
         1,
@@ -171,7 +131,7 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "ask.anything",
         ("A",),
-        _ASKED,
+        ASKED,
         "ask of the node or the graph: why, what if, how stable, how far measures agree",
         "ask",
         6,
@@ -180,19 +140,19 @@ ACTIONS: tuple[Action, ...] = (
     *(
         Action(id, (), views, means, "", 70, "Asking")
         for id, views, means in (
-            ("ask.why", _ASKED, "why the node scores what it scores, term by term"),
-            ("ask.than", _ASKED, "why the node stands above or below another, term by term"),
-            ("ask.loss", _ASKED, "what the loss of the node would do: who rises, who is cut off"),
-            ("ask.along", _ASKED, "how ranks change along a setting, such as the damping"),
-            ("ask.losses", _ASKED, "what the loss of each of the first nodes would do"),
-            ("ask.walk", _ASKED, "where a walker from the node is after each step"),
+            ("ask.why", ASKED, "why the node scores what it scores, term by term"),
+            ("ask.than", ASKED, "why the node stands above or below another, term by term"),
+            ("ask.loss", ASKED, "what the loss of the node would do: who rises, who is cut off"),
+            ("ask.along", ASKED, "how ranks change along a setting, such as the damping"),
+            ("ask.losses", ASKED, "what the loss of each of the first nodes would do"),
+            ("ask.walk", ASKED, "where a walker from the node is after each step"),
             (
                 "ask.peers",
                 (STANDINGS,),
                 "ranks and scores among peers, such as of one year or tier",
             ),
-            ("ask.drift", _ASKED, "what has changed against another table"),
-            ("ask.agreement", _ASKED, "how far the solved measures agree, and where not"),
+            ("ask.drift", ASKED, "what has changed against another table"),
+            ("ask.agreement", ASKED, "how far the solved measures agree, and where not"),
         )
     ),
     Action(
@@ -315,7 +275,7 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "mark.toggle",
         ("x",),
-        (*_NODES, *ANSWERS),
+        (*NODES, *ANSWERS),
         "mark the row's node (in Node, the centre) for the shortlist, or take the mark off",
         "mark",
         14,
@@ -324,7 +284,7 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "note.write",
         ("i",),
-        (*_NODES, *ANSWERS),
+        (*NODES, *ANSWERS),
         "write a note on the node, which marks it",
         "note",
         22,
@@ -360,7 +320,7 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "text.copy",
         ("C",),
-        (*_NODES, *ANSWERS),
+        (*NODES, *ANSWERS),
         "copy the node's name to the terminal's clipboard; once more: the whole row",
         "copy",
         24,
@@ -456,7 +416,7 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "start.open",
         ("S",),
-        _ROOMS,
+        ROOMS,
         "to Start, to open another table; this sitting is kept",
         "another table",
         60,
@@ -483,7 +443,7 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "step.back",
         ("escape",),
-        (*_ROOMS, *_TYPING, CHOICE, NOTICE, COLUMNS, START, ROLES, LOADING),
+        (*ROOMS, *TYPING, CHOICE, NOTICE, COLUMNS, START, ROLES, LOADING),
         "one step back; nothing is lost",
         "back",
         4,
@@ -500,7 +460,7 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "do.anything",
         ("g",),
-        (*_ROOMS, LOADING, START, ROLES),
+        (*ROOMS, LOADING, START, ROLES),
         "go to any action: all of them by name, found by a few letters",
         "go to any action",
         89,
@@ -508,95 +468,18 @@ ACTIONS: tuple[Action, ...] = (
     Action(
         "help.open",
         ("question_mark",),
-        (STANDINGS, NODE, LOG, START, ROLES, *_LISTS),
+        (STANDINGS, NODE, LOG, START, ROLES, *LISTS),
         "every key, in words",
         "all keys",
         90,
     ),
-    Action("quit", ("q",), (*_ROOMS, LOADING, START, ROLES), "quit", "quit", 91),
+    Action("quit", ("q",), (*ROOMS, LOADING, START, ROLES), "quit", "quit", 91),
     Action(
         "quit.now",
         ("ctrl+c",),
-        (*_ROOMS, *_TYPING, CHOICE, NOTICE, LOADING, START, ROLES, COLUMNS),
+        (*ROOMS, *TYPING, CHOICE, NOTICE, LOADING, START, ROLES, COLUMNS),
         "quit at once, from anywhere",
     ),
 )
 
 BY_ID: dict[str, Action] = {action.id: action for action in ACTIONS}
-
-_KEY_WORDS = {
-    "slash": "/",
-    "question_mark": "?",
-    "enter": "Enter",
-    "escape": "Esc",
-    "tab": "Tab",
-    "up": "Up",
-    "down": "Down",
-    "left": "Left",
-    "right": "Right",
-    "pagedown": "PageDown",
-    "pageup": "PageUp",
-    "home": "Home",
-    "end": "End",
-    "ctrl+c": "Ctrl-C",
-}
-
-
-def key_words(key: str) -> str:
-    """A key as it is written on the screen."""
-    return _KEY_WORDS.get(key, key)
-
-
-Bound = Mapping[str, tuple[str, ...]]  # action id -> keys given by the user
-
-
-def keys_in(view: str, action: Action, bound: Bound | None = None) -> tuple[str, ...]:
-    """The keys of an action in a view: letters are no keys where text is typed."""
-    bound = bound or {}
-    keys = bound.get(action.id, action.keys)
-    if action.id not in bound:
-        # A key that was given to something else is no longer its former owner's.
-        taken = {key for one, given in bound.items() if view in BY_ID[one].views for key in given}
-        keys = tuple(key for key in keys if key not in taken)
-    if view in _TYPING:
-        return tuple(key for key in keys if len(key) > 1 and key not in ("slash", "question_mark"))
-    return keys
-
-
-def keymap(view: str, bound: Bound | None = None) -> dict[str, str]:
-    """Key -> action id for one view; ``bound`` gives other keys to some action ids."""
-    found: dict[str, str] = {}
-    for action in ACTIONS:
-        if view in action.views:
-            for key in keys_in(view, action, bound):
-                found.setdefault(key, action.id)
-    return found
-
-
-def key_line(
-    view: str, possible: Iterable[str], bound: Bound | None = None
-) -> list[tuple[str, str]]:
-    """(key, words) for the foot of a view, most useful first, of the actions possible now."""
-    now = set(possible)
-    chosen = [a for a in ACTIONS if view in a.views and a.words and a.id in now]
-    return [
-        (key_words(keys[0]), action.words)
-        for action in sorted(chosen, key=lambda a: a.order)
-        if (keys := keys_in(view, action, bound))
-    ]
-
-
-def help_rows(bound: Bound | None = None) -> list[tuple[str, str, str]]:
-    """(group, keys, meaning) of every action, grouped, in the order of the registry."""
-    groups: dict[str, list[Action]] = {}
-    for action in ACTIONS:
-        groups.setdefault(action.group, []).append(action)
-    return [
-        (
-            group,
-            " ".join(key_words(key) for key in (bound or {}).get(action.id, action.keys)),
-            action.means,
-        )
-        for group, actions in groups.items()
-        for action in actions
-    ]

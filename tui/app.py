@@ -16,7 +16,7 @@ from collections.abc import Callable, Mapping, Sequence
 from typing import TYPE_CHECKING, Any
 
 from kingpost.core.text import visible
-from kingpost.tui import actions, terminal
+from kingpost.tui import keymaps, rooms, terminal
 
 terminal.prepare_environment()  # before textual is imported: it reads the environment then
 
@@ -28,9 +28,10 @@ from textual.timer import Timer  # noqa: E402
 
 from kingpost.tui.asking import Asking  # noqa: E402
 from kingpost.tui.config import Config  # noqa: E402
+from kingpost.tui.doors import Doors  # noqa: E402
 from kingpost.tui.jobs import Job, Runner  # noqa: E402
 from kingpost.tui.keeping import Keeper  # noqa: E402
-from kingpost.tui.opening import ASK, FRESH, Load, Loaded, Opener  # noqa: E402
+from kingpost.tui.opening import FRESH, Load, Loaded, Opener  # noqa: E402
 from kingpost.tui.resuming import Resumer  # noqa: E402
 from kingpost.tui.routes import Routes  # noqa: E402
 from kingpost.tui.views.base import View  # noqa: E402
@@ -49,7 +50,7 @@ if TYPE_CHECKING:
 
 FAULT = 70  # exit status of a fault of the program
 _SETTLED = 0.3  # seconds without another size after which the one shown is checked
-_PATIENCE = 2.0  # seconds that threads get to end on leaving
+PATIENCE = 2.0  # seconds that threads get to end on leaving
 
 # Imported with the graph, so that opening one does not keep the screen waiting.
 _VIEWS = (
@@ -86,7 +87,7 @@ class KingpostApp(App[int], inherit_bindings=False):
         for name in ("app.tcss", "views/loading.tcss", "views/start.tcss")
     ]
     ENABLE_COMMAND_PALETTE = False
-    HELPERS = (Keeper, Opener, Resumer, Routes, Within, Asking)
+    HELPERS = (Keeper, Opener, Resumer, Routes, Within, Doors, Asking)
     VIEWS = _VIEWS
     TITLE = "kingpost"
 
@@ -126,6 +127,7 @@ class KingpostApp(App[int], inherit_bindings=False):
             self.resumer,
             self.routes,
             self.within,
+            Doors(self),
             Asking(self),
         )
 
@@ -155,7 +157,7 @@ class KingpostApp(App[int], inherit_bindings=False):
         self.leave(128 + number)
         if number == signal.SIGHUP:
             # Nobody is there any more to see the program wait for something.
-            last = threading.Timer(5 * _PATIENCE, os._exit, (128 + number,))
+            last = threading.Timer(5 * PATIENCE, os._exit, (128 + number,))
             last.daemon = True
             last.start()
 
@@ -191,7 +193,7 @@ class KingpostApp(App[int], inherit_bindings=False):
     @property
     def _chosen_in_start(self) -> bool:
         """Whether Start is beneath the views that are open."""
-        return any(screen.view == actions.START for screen in self._views)
+        return any(screen.view == rooms.START for screen in self._views)
 
     @property
     def _views(self) -> list[View]:
@@ -199,7 +201,7 @@ class KingpostApp(App[int], inherit_bindings=False):
 
     def _pop_to_start(self) -> None:
         """Close the views down to Start, or down to the one the application began with."""
-        while len(self.screen_stack) > 1 and self._views[-1].view != actions.START:
+        while len(self.screen_stack) > 1 and self._views[-1].view != rooms.START:
             self.pop_screen()
 
     def can_start_open(self) -> bool:
@@ -326,7 +328,7 @@ class KingpostApp(App[int], inherit_bindings=False):
     def keymap(self, view: str) -> dict[str, str]:
         """Key -> action id of a view."""
         if view not in self._keymaps:
-            self._keymaps[view] = actions.keymap(view, self.bound)
+            self._keymaps[view] = keymaps.keymap(view, self.bound)
         return self._keymaps[view]
 
     @property
@@ -514,111 +516,3 @@ class KingpostApp(App[int], inherit_bindings=False):
         from kingpost.tui.views.sheets import NoticeSheet
 
         self.push_screen(NoticeSheet(title, text))
-
-    def do_measure_choose(self) -> None:
-        """Ask for the measure."""
-        from kingpost.tui.views.sheets import Choice, MeasureSheet
-
-        choices = [Choice(*row) for row in self.desk.measures()]
-        self.push_screen(MeasureSheet("measure", choices, self.sitting.current), self._chosen)
-
-    def _chosen(self, measure: str | None) -> None:
-        if measure is not None:
-            self.desk.choose(measure)
-
-    def do_settings_change(self) -> None:
-        """Ask for the settings of the measure shown."""
-        self.open_settings(self.sitting.current)
-
-    def do_log_open(self) -> None:
-        """Open the solve log."""
-        from kingpost.tui.views.solvelog import SolveLogView
-
-        self.push_screen(SolveLogView())
-
-    def do_makeup_open(self) -> None:
-        """Open what the graph is made of."""
-        from kingpost.tui.views.makeup import MakeupView
-
-        self.push_screen(MakeupView())
-
-    def do_solves_open(self) -> None:
-        """Open the list of all solves."""
-        from kingpost.tui.views.solves import SolvesView
-
-        self.push_screen(SolvesView())
-
-    def do_do_anything(self) -> None:
-        """List every action, to be found by name."""
-        from kingpost.tui.views.doing import DoingSheet
-
-        view = self.view
-        if view is not None:
-            self.push_screen(DoingSheet(view), lambda deed: view.do(deed) if deed else None)
-
-    def do_help_open(self) -> None:
-        """Open the help."""
-        from kingpost.tui.views.help import HelpView
-
-        self.push_screen(HelpView())
-
-
-def run(
-    paths: list[str],
-    load_options: LoadOptions | Callable[[], LoadOptions] | None,
-    measure: str,
-    settings: Settings | Callable[[Graph], Settings] | None,
-    *,
-    threads: int | None = None,
-    slow: bool = False,
-    store: bool = True,
-    kept: str = ASK,
-    config: Config | None = None,
-) -> int:
-    """Open the screen on some edge tables; returns the exit status.
-
-    Options and settings may be given as functions: they are then called in the loading job,
-    settings with the graph, so that the first frame need not wait for the modules they need.
-    ``kept`` says what becomes of a sitting over these tables that was kept.
-    """
-    config = config or Config()
-    looks = terminal.decide(
-        slow=slow,
-        ascii_only=config.ascii,
-        coloured=config.colour,
-        background=config.background,
-    )
-    # The framework's own reading of NO_COLOR paints greys; our styles have no colour then.
-    os.environ.pop("NO_COLOR", None)
-    app = KingpostApp(
-        paths,
-        None,
-        measure,
-        settings,
-        options=load_options,
-        kept=kept,
-        store=store,
-        threads=threads,
-        looks=looks,
-        config=config,
-    )
-    try:
-        status: int | None = app.run(mouse=False)
-    except KeyboardInterrupt:
-        status = 130
-    ended = app.runner.shutdown(_PATIENCE)
-    if status is None:
-        status = app.return_code or 1
-    for note in app.opener.notes:  # the screen goes without; it is told where it stays to be read
-        with contextlib.suppress(OSError):
-            print(f"kingpost: note: {visible(note)}", file=sys.stderr)
-    if app.sentence:
-        # The terminal may have gone: then there is nobody to tell.
-        with contextlib.suppress(OSError):
-            print(f"kingpost: {app.sentence}", file=sys.stderr, flush=True)
-    if not ended:
-        # A thread deep in a library cannot be stopped; waiting for it would hang the shell.
-        sys.stdout.flush()
-        sys.stderr.flush()
-        os._exit(status)
-    return status

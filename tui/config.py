@@ -30,7 +30,7 @@ from typing import Any
 
 from kingpost.core.measures import NAMES
 from kingpost.core.text import visible
-from kingpost.tui import actions, places
+from kingpost.tui import actions, keymaps, places, rooms
 
 MOST_BYTES = 200_000
 _NAMED_KEYS = {
@@ -199,9 +199,9 @@ def _check_apart(bound: Mapping[str, tuple[str, ...]]) -> None:
     A letter that an action not named in the file has by default may be given away: the action is
     then without it, and can still be done by name.
     """
-    for view in actions.VIEW_WORDS:
+    for view in rooms.VIEW_WORDS:
         taken: dict[str, str] = {}
-        where = actions.VIEW_WORDS[view]
+        where = rooms.VIEW_WORDS[view]
         for action in actions.ACTIONS:
             if view not in action.views or action.id not in (*bound, *_FIXED):
                 continue
@@ -210,9 +210,9 @@ def _check_apart(bound: Mapping[str, tuple[str, ...]]) -> None:
                 other = taken.setdefault(key, action.id)
                 if other != action.id:
                     name = action.id if action.id in bound else other
-                    word = actions.key_words(key)
+                    word = keymaps.key_words(key)
                     raise _Wrong(f"{word} would mean both {other} and {action.id} in {where}", name)
-            if not actions.keys_in(view, action, bound) and action.id in bound:
+            if not keymaps.keys_in(view, action, bound) and action.id in bound:
                 raise _Wrong(
                     f"{action.id} needs a key that is no letter: in {where} letters are typed",
                     action.id,

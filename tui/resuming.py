@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING, Any
 
 from kingpost.core.errors import KingpostError
 from kingpost.core.text import id_text, visible
-from kingpost.tui import actions, places
+from kingpost.tui import actions, places, rooms
 from kingpost.tui.models import resumption
 from kingpost.tui.models.resumption import Kept
 
@@ -20,8 +20,8 @@ if TYPE_CHECKING:
 
 # Views that are opened again, and the action that opens each.
 _OPENERS = {
-    actions.LOG: "log.open",
-    actions.SHORTLIST: "shortlist.open",
+    rooms.LOG: "log.open",
+    rooms.SHORTLIST: "shortlist.open",
     "solves": "solves.open",
     "makeup": "makeup.open",
 }
@@ -112,7 +112,7 @@ class Resumer:
         if kept.find:
             app.standings.find(kept.find)
         trail = [self._nodes[name] for name in kept.trail if name in self._nodes]
-        if kept.view == actions.NODE and trail:
+        if kept.view == rooms.NODE and trail:
             app.open_node(trail[-1], trail, kept.trail_at)
         elif kept.view in _OPENERS and _OPENERS[kept.view] in actions.BY_ID:
             app.standings.do(_OPENERS[kept.view])
@@ -162,7 +162,7 @@ class Resumer:
         desk = app.within.home
         sitting, table = desk.sitting, desk.table
         assert table is not None
-        view, trail, at = (actions.STANDINGS, [], 0) if app.within.depth else self._place()
+        view, trail, at = (rooms.STANDINGS, [], 0) if app.within.depth else self._place()
         settings: dict[str, dict[str, Any]] = {}
         left_out: dict[str, list[str]] = {}
         for name, result in sitting.results.items():
@@ -177,7 +177,7 @@ class Resumer:
         found = table.found
         begun = app.opener.first_measure
         unchanged = (
-            view == actions.STANDINGS
+            view == rooms.STANDINGS
             and table.cursor == 0
             and sitting.current == begun
             and wanted == {"sort": "rank", "turned": False, "where": ""}
@@ -216,8 +216,8 @@ class Resumer:
         for screen in reversed(self._app.screen_stack):
             if isinstance(screen, NodeView):
                 first = max(screen.trail.at - 40, 0)
-                return actions.NODE, screen.trail.nodes[first : first + 50], screen.trail.at - first
+                return rooms.NODE, screen.trail.nodes[first : first + 50], screen.trail.at - first
             view = getattr(screen, "view", "")
-            if view == actions.STANDINGS or view in _OPENERS:
+            if view == rooms.STANDINGS or view in _OPENERS:
                 return view, [], 0
-        return actions.STANDINGS, [], 0
+        return rooms.STANDINGS, [], 0

@@ -7,7 +7,7 @@ import inspect
 
 import pytest
 
-from kingpost.tui import actions
+from kingpost.tui import actions, keymaps, rooms
 from kingpost.tui.app import _VIEWS, KingpostApp
 from kingpost.tui.views.base import View
 
@@ -58,20 +58,20 @@ def test_only_plain_keys_are_used():
 
 
 def test_letters_are_not_taken_where_text_is_typed():
-    for view in (actions.FORM, actions.PROMPT):
-        assert not [key for key in actions.keymap(view) if len(key) == 1]
+    for view in (rooms.FORM, rooms.PROMPT):
+        assert not [key for key in keymaps.keymap(view) if len(key) == 1]
 
 
 def test_help_lists_every_action():
-    assert len(actions.help_rows()) == len(actions.ACTIONS)
+    assert len(keymaps.help_rows()) == len(actions.ACTIONS)
 
 
 def test_keys_can_be_rebound():
-    keymap = actions.keymap(actions.STANDINGS, {"rows.sort": ("z",)})
+    keymap = keymaps.keymap(rooms.STANDINGS, {"rows.sort": ("z",)})
     assert keymap["z"] == "rows.sort"
     assert "s" not in keymap
 
 
 def test_the_key_line_names_what_is_possible():
-    line = actions.key_line(actions.STANDINGS, ["node.open", "rows.sort"])
+    line = keymaps.key_line(rooms.STANDINGS, ["node.open", "rows.sort"])
     assert line == [("Enter", "node"), ("s", "sort")]

@@ -8,7 +8,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from kingpost.tui import actions, config, places
+from kingpost.tui import actions, config, keymaps, places, rooms
 from kingpost.tui.config import Config, parse
 from tests.tui.test_journeys import Kingpost, opened, until
 
@@ -88,9 +88,9 @@ def test_no_text_stops_the_program(text):
 
 def test_a_key_given_away_is_no_longer_its_former_owners():
     bound = {"rows.sort": ("f",)}
-    assert actions.keymap(actions.STANDINGS, bound)["f"] == "rows.sort"
-    assert actions.keys_in(actions.STANDINGS, actions.BY_ID["rows.filter"], bound) == ()
-    line = actions.key_line(actions.STANDINGS, ["rows.sort", "rows.filter"], bound)
+    assert keymaps.keymap(rooms.STANDINGS, bound)["f"] == "rows.sort"
+    assert keymaps.keys_in(rooms.STANDINGS, actions.BY_ID["rows.filter"], bound) == ()
+    line = keymaps.key_line(rooms.STANDINGS, ["rows.sort", "rows.filter"], bound)
     assert line == [("f", "sort")]
 
 

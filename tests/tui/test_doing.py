@@ -4,23 +4,23 @@ from __future__ import annotations
 
 import pytest
 
-from kingpost.tui import actions
+from kingpost.tui import actions, rooms
 from kingpost.tui.models.doing import deeds, narrowed
 from tests.tui.test_journeys import Kingpost, opened, until
 
 
 def test_every_action_is_listed_but_the_list_itself():
-    listed = deeds(actions.STANDINGS, lambda _: True, {})
+    listed = deeds(rooms.STANDINGS, lambda _: True, {})
     told = {deed.action.id for deed in listed}
-    own = {a.id for a in actions.ACTIONS if a.views == (actions.DOING,)} | {"do.anything"}
+    own = {a.id for a in actions.ACTIONS if a.views == (rooms.DOING,)} | {"do.anything"}
     elsewhere = {
-        a.id for a in actions.ACTIONS if a.group == "Moving" and actions.STANDINGS not in a.views
+        a.id for a in actions.ACTIONS if a.group == "Moving" and rooms.STANDINGS not in a.views
     }
     assert told == {a.id for a in actions.ACTIONS} - own - elsewhere
 
 
 def test_what_is_possible_comes_first_and_the_rest_says_where():
-    listed = deeds(actions.STANDINGS, lambda name: name == "rows.sort", {})
+    listed = deeds(rooms.STANDINGS, lambda name: name == "rows.sort", {})
     assert listed[0].action.id == "rows.sort"
     assert not listed[0].where
     back = next(deed for deed in listed if deed.action.id == "walk.back")
@@ -28,14 +28,14 @@ def test_what_is_possible_comes_first_and_the_rest_says_where():
 
 
 def test_every_view_has_a_name():
-    assert set(actions.VIEW_WORDS) == {view for a in actions.ACTIONS for view in a.views}
+    assert set(rooms.VIEW_WORDS) == {view for a in actions.ACTIONS for view in a.views}
 
 
 @pytest.mark.parametrize(
     ("text", "first"), [("sort", "rows.sort"), ("SHORT", "shortlist.open"), ("sql", "rows.filter")]
 )
 def test_a_few_letters_find_it(text, first):
-    listed = deeds(actions.STANDINGS, lambda _: True, {})
+    listed = deeds(rooms.STANDINGS, lambda _: True, {})
     assert narrowed(listed, text)[0].action.id == first
     assert narrowed(listed, "no such thing at all") == []
 

@@ -266,7 +266,7 @@ async def test_a_megabyte_pasted_is_cut(app):
 
 
 async def test_help_names_every_key(app):
-    from kingpost.tui.actions import help_rows
+    from kingpost.tui.keymaps import help_rows
 
     async with app.run_test(size=(100, len(help_rows()) + 20)) as pilot:
         await opened(pilot)

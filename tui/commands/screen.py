@@ -49,7 +49,7 @@ def screen(edges: tuple[str, ...], **given: Any) -> int:
     found = config.read()
     slow = given["slow_link"] or found.slow_link
     terminal.prepare_environment(slow=slow)  # the toolkit reads it when it is imported
-    from kingpost.tui.app import run
+    from kingpost.tui.running import run
 
     measure = given["measure"]
     if not named("measure") and found.measure:

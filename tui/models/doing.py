@@ -6,7 +6,7 @@ from collections.abc import Callable
 from dataclasses import dataclass
 
 from kingpost.core.standing import UNRANKED
-from kingpost.tui import actions
+from kingpost.tui import actions, keymaps, rooms
 from kingpost.tui.actions import Action
 from kingpost.tui.models.columns import Column
 
@@ -27,13 +27,13 @@ class Deed:
         """Where it is possible, if not here."""
         if self.possible:
             return ""
-        return "in " + ", ".join(actions.VIEW_WORDS.get(view, view) for view in self.action.views)
+        return "in " + ", ".join(rooms.VIEW_WORDS.get(view, view) for view in self.action.views)
 
 
 def deeds(
     view: str,
     possible: Callable[[str], bool],
-    bound: actions.Bound,
+    bound: keymaps.Bound,
 ) -> list[Deed]:
     """All actions but those that move and those of this list itself: the possible ones first,
     in the order of the key line.
@@ -41,11 +41,11 @@ def deeds(
     listed = [
         Deed(
             action,
-            " ".join(actions.key_words(key) for key in bound.get(action.id, action.keys)),
+            " ".join(keymaps.key_words(key) for key in bound.get(action.id, action.keys)),
             view in action.views and possible(action.id),
         )
         for action in actions.ACTIONS
-        if action.views != (actions.DOING,)
+        if action.views != (rooms.DOING,)
         and (action.group not in _LEFT_OUT or view in action.views)
     ]
     ordered = sorted(

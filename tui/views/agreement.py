@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Callable
 from typing import TYPE_CHECKING
 
-from kingpost.tui.actions import AGREEMENT
 from kingpost.tui.jobs import Job
 from kingpost.tui.models.agreement import (
     Compared,
@@ -15,6 +14,7 @@ from kingpost.tui.models.agreement import (
     scatter,
 )
 from kingpost.tui.models.answers import Answer
+from kingpost.tui.rooms import AGREEMENT
 from kingpost.tui.views.answer import AnswerView
 
 if TYPE_CHECKING:

@@ -5,10 +5,10 @@ from __future__ import annotations
 from collections.abc import Callable
 from typing import TYPE_CHECKING
 
-from kingpost.tui.actions import ALONG
 from kingpost.tui.jobs import Job
 from kingpost.tui.models.along import along_answer
 from kingpost.tui.models.answers import Answer
+from kingpost.tui.rooms import ALONG
 from kingpost.tui.views.answer import AnswerView
 
 if TYPE_CHECKING:

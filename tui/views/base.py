@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Any, cast
 from textual import events
 from textual.screen import Screen
 
-from kingpost.tui import actions
+from kingpost.tui import actions, keymaps
 from kingpost.tui.terminal import Looks
 from kingpost.tui.widgets.lines import KeyLine, Rule
 
@@ -118,7 +118,7 @@ class View(Screen[Any], inherit_bindings=False):
             return
         possible = [a.id for a in actions.ACTIONS if self.view in a.views and self.possible(a.id)]
         for line in self.query(KeyLine):
-            line.keys(actions.key_line(self.view, possible, self.kingpost.bound))
+            line.keys(keymaps.key_line(self.view, possible, self.kingpost.bound))
 
     def tell(self, text: str, role: str = "news") -> None:
         """Show news in the rule above the keys, where the view has one."""

@@ -6,9 +6,9 @@ from textual.app import ComposeResult
 from textual.containers import Vertical
 
 from kingpost.core.standing import UNRANKED
-from kingpost.tui.actions import COLUMNS
 from kingpost.tui.models.columns import Column
 from kingpost.tui.models.headings import Choice, choice_of
+from kingpost.tui.rooms import COLUMNS
 from kingpost.tui.views.rows import RowKeys
 from kingpost.tui.views.sheets import Sheet
 from kingpost.tui.widgets.lines import KeyLine, Rule

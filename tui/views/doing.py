@@ -6,8 +6,8 @@ from textual import events
 from textual.app import ComposeResult
 from textual.containers import Vertical
 
-from kingpost.tui.actions import DOING
 from kingpost.tui.models.doing import Deed, Deeds, deeds, narrowed
+from kingpost.tui.rooms import DOING
 from kingpost.tui.views.base import View
 from kingpost.tui.views.sheets import Sheet
 from kingpost.tui.widgets.entry import Entry

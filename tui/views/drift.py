@@ -4,10 +4,10 @@ from __future__ import annotations
 
 from collections.abc import Callable
 
-from kingpost.tui.actions import DRIFT
 from kingpost.tui.jobs import Job
 from kingpost.tui.models.answers import Answer
 from kingpost.tui.models.drifts import Other, drift_answer
+from kingpost.tui.rooms import DRIFT
 from kingpost.tui.views.answer import AnswerView
 
 

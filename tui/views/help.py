@@ -5,8 +5,9 @@ from __future__ import annotations
 from textual.app import ComposeResult
 
 from kingpost.core.standing import UNRANKED
-from kingpost.tui.actions import HELP, Bound, help_rows
+from kingpost.tui.keymaps import Bound, help_rows
 from kingpost.tui.models.columns import Column
+from kingpost.tui.rooms import HELP
 from kingpost.tui.views.rows import RowsView
 from kingpost.tui.widgets.lines import KeyLine, Line, Rule
 from kingpost.tui.widgets.rowtable import RowTable

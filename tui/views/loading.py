@@ -12,8 +12,8 @@ from textual.app import ComposeResult
 
 from kingpost.core.text import visible
 from kingpost.core.watch import Progress
-from kingpost.tui.actions import LOADING
 from kingpost.tui.models.drawing import bar
+from kingpost.tui.rooms import LOADING
 from kingpost.tui.views.base import View
 from kingpost.tui.widgets.lines import KeyLine, Line, Piece, Rule
 

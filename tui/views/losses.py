@@ -4,10 +4,10 @@ from __future__ import annotations
 
 from collections.abc import Callable
 
-from kingpost.tui.actions import LOSS, LOSSES
 from kingpost.tui.jobs import Job
 from kingpost.tui.models.answers import Answer
 from kingpost.tui.models.losses import loss_answer, losses_answer
+from kingpost.tui.rooms import LOSS, LOSSES
 from kingpost.tui.views.answer import AnswerView
 
 

@@ -10,11 +10,11 @@ from textual.app import ComposeResult
 
 from kingpost.core.insight.audit import examine
 from kingpost.core.text import visible
-from kingpost.tui.actions import MAKEUP
 from kingpost.tui.jobs import Job
 from kingpost.tui.models import makeup as model
 from kingpost.tui.models.makeup import Parts, Tail
 from kingpost.tui.models.pairs import Pairs, Row, wrapped
+from kingpost.tui.rooms import MAKEUP
 from kingpost.tui.views.rows import RowsView
 from kingpost.tui.widgets.grid import Grid
 from kingpost.tui.widgets.lines import KeyLine, Line, Piece, Rule

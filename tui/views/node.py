@@ -5,9 +5,9 @@ from __future__ import annotations
 from textual import events
 from textual.app import ComposeResult
 
-from kingpost.tui.actions import NODE
 from kingpost.tui.models.drawing import fit, tame
 from kingpost.tui.models.node import MANY, NodeModel, Trail, centre
+from kingpost.tui.rooms import NODE
 from kingpost.tui.views.base import View
 from kingpost.tui.views.nodepanel import NodePanel
 from kingpost.tui.widgets.lines import KeyLine, Rule

@@ -5,9 +5,9 @@ from __future__ import annotations
 from textual import events
 from textual.app import ComposeResult
 
-from kingpost.tui.actions import PLATE
 from kingpost.tui.models.drawing import tame
 from kingpost.tui.models.plate import Plate, plate
+from kingpost.tui.rooms import PLATE
 from kingpost.tui.views.rows import RowsView
 from kingpost.tui.widgets.lines import KeyLine, Line, Rule
 from kingpost.tui.widgets.rowtable import RowTable

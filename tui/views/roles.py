@@ -8,8 +8,8 @@ from textual.app import ComposeResult
 from kingpost.core.ingest import LoadOptions
 from kingpost.core.ingest.glance import Peek
 from kingpost.core.text import visible
-from kingpost.tui.actions import ROLES
 from kingpost.tui.models.roles import Roles
+from kingpost.tui.rooms import ROLES
 from kingpost.tui.views.rows import RowsView
 from kingpost.tui.widgets.lines import KeyLine, Line, Rule
 from kingpost.tui.widgets.rowtable import RowTable

@@ -8,10 +8,10 @@ from textual import events
 from textual.app import ComposeResult
 
 from kingpost.core.text import visible
-from kingpost.tui.actions import FORM
 from kingpost.tui.models.cost import cost_words, known_radius
 from kingpost.tui.models.drawing import fit, wrap
 from kingpost.tui.models.forms import Field, fields_of, validated
+from kingpost.tui.rooms import FORM
 from kingpost.tui.views.base import View
 from kingpost.tui.widgets.entry import Writing
 from kingpost.tui.widgets.lines import KeyLine, Line, Piece, Rule

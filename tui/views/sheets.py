@@ -12,10 +12,10 @@ from textual.containers import Vertical
 from textual.screen import ModalScreen
 
 from kingpost.core.standing import UNRANKED
-from kingpost.tui.actions import CHOICE, NOTICE, PROMPT
 from kingpost.tui.models.columns import Column
 from kingpost.tui.models.detail import on_screen
 from kingpost.tui.models.drawing import wrap
+from kingpost.tui.rooms import CHOICE, NOTICE, PROMPT
 from kingpost.tui.views.base import View
 from kingpost.tui.views.rows import RowKeys
 from kingpost.tui.widgets.entry import LIMIT, Entry

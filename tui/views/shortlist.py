@@ -11,12 +11,12 @@ from textual.app import ComposeResult
 
 from kingpost.core.standing import UNRANKED
 from kingpost.core.text import count, visible
-from kingpost.tui.actions import SHORTLIST
 from kingpost.tui.models import marks as model
 from kingpost.tui.models.columns import Column
 from kingpost.tui.models.drawing import tame
 from kingpost.tui.models.marks import Mark, Marks
 from kingpost.tui.models.sitting import Sitting
+from kingpost.tui.rooms import SHORTLIST
 from kingpost.tui.views.rows import RowsView
 from kingpost.tui.views.sheets import Choice, ChoiceSheet, PromptSheet
 from kingpost.tui.widgets.lines import KeyLine, Line, Rule

@@ -9,12 +9,12 @@ from textual import events
 from textual.app import ComposeResult
 
 from kingpost.core.text import visible
-from kingpost.tui.actions import LOG
 from kingpost.tui.jobs import Job
 from kingpost.tui.models.detail import on_screen
 from kingpost.tui.models.drawing import wrap
 from kingpost.tui.models.keeping import keep_log
 from kingpost.tui.models.solvelog import Sweeps, series_of, why_stopped
+from kingpost.tui.rooms import LOG
 from kingpost.tui.views.rows import RowsView
 from kingpost.tui.views.sheets import PromptSheet
 from kingpost.tui.widgets.lines import KeyLine, Line, Rule

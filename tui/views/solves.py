@@ -6,11 +6,11 @@ from textual import events
 from textual.app import ComposeResult
 
 from kingpost.core.result import Result
-from kingpost.tui.actions import APART, SOLVES
 from kingpost.tui.jobs import Job
 from kingpost.tui.models.drawing import wrap
 from kingpost.tui.models.solvelog import why_stopped
 from kingpost.tui.models.solves import Differences, Entry, Solves, compare, differing, entries
+from kingpost.tui.rooms import APART, SOLVES
 from kingpost.tui.views.rows import RowsView
 from kingpost.tui.widgets.lines import KeyLine, Line, Rule
 from kingpost.tui.widgets.rowtable import RowTable

@@ -8,11 +8,11 @@ from textual.containers import Horizontal
 
 from kingpost.core.insight.contributions import Contributions, contributions
 from kingpost.core.text import visible
-from kingpost.tui.actions import STANDINGS
 from kingpost.tui.models import detail, rowquery
 from kingpost.tui.models.drawing import wrap
 from kingpost.tui.models.node import MANY, centre
 from kingpost.tui.models.standings import Found, Standings, search
+from kingpost.tui.rooms import STANDINGS
 from kingpost.tui.views.columns import ColumnsSheet
 from kingpost.tui.views.nodepanel import NodePanel
 from kingpost.tui.views.rows import RowsView

@@ -10,12 +10,12 @@ from textual.app import ComposeResult
 from kingpost.core.errors import KingpostError
 from kingpost.core.text import visible
 from kingpost.tui import places
-from kingpost.tui.actions import START
 from kingpost.tui.jobs import Job
 from kingpost.tui.models import folders, recent
 from kingpost.tui.models.folders import Listing
 from kingpost.tui.models.recent import Recent
 from kingpost.tui.models.starting import FolderRows, RecentRows, told
+from kingpost.tui.rooms import START
 from kingpost.tui.views.rows import RowsView
 from kingpost.tui.views.sheets import PromptSheet
 from kingpost.tui.widgets.entry import Writing

@@ -5,10 +5,10 @@ from __future__ import annotations
 from collections.abc import Callable
 from typing import TYPE_CHECKING, cast
 
-from kingpost.tui.actions import WALK
 from kingpost.tui.jobs import Job
 from kingpost.tui.models.answers import Answer
 from kingpost.tui.models.walks import walk_answer
+from kingpost.tui.rooms import WALK
 from kingpost.tui.views.answer import AnswerView
 
 if TYPE_CHECKING:

@@ -7,11 +7,11 @@ from textual import events
 from textual.app import ComposeResult
 
 from kingpost.core.insight.way import Way
-from kingpost.tui.actions import WAY
 from kingpost.tui.jobs import Job
 from kingpost.tui.models import detail
 from kingpost.tui.models.drawing import fit, tame
 from kingpost.tui.models.ways import Steps, course_words, ways
+from kingpost.tui.rooms import WAY
 from kingpost.tui.views.rows import RowsView
 from kingpost.tui.widgets.lines import KeyLine, Line, Rule
 from kingpost.tui.widgets.rowtable import RowTable

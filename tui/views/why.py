@@ -4,10 +4,10 @@ from __future__ import annotations
 
 from collections.abc import Callable
 
-from kingpost.tui.actions import THAN, WHY
 from kingpost.tui.jobs import Job
 from kingpost.tui.models.answers import Answer
 from kingpost.tui.models.whys import than_answer, why_answer
+from kingpost.tui.rooms import THAN, WHY
 from kingpost.tui.views.answer import AnswerView
 
 
