@@ -125,6 +125,17 @@ def analyse(graph: Graph, watch: Watch | None = None) -> Structure:
     return _finish(component, order, starts, graph, watch)
 
 
+def structure_of(graph: Graph, watch: Watch) -> Structure:
+    """``graph.structure``, looked for where that can be cancelled if it is not known yet.
+
+    Raises:
+        Interrupted: if ``watch`` was cancelled.
+    """
+    if "structure" not in graph.__dict__:
+        graph.__dict__["structure"] = analyse(graph, watch)
+    return graph.structure
+
+
 def _by_degree(graph: Graph) -> NDArray[np.uint32]:
     """All nodes, those that meet most edges first, ties by number."""
     met = np.minimum(graph.outward.degrees + graph.inward.degrees, 65_535)

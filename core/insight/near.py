@@ -34,8 +34,8 @@ def solve_near(
     """
     if start is None or not starts_warm(name, settings):
         return finish(measure(name).solve(graph, settings, watch), _reporter(watch)), COLD
-    solver: Callable[..., Any] = measure(name).solver
-    return finish(solver(graph, settings, watch, start), _reporter(watch)), WARM
+    work = measure(name).solve(graph, settings, watch, start)
+    return finish(work, _reporter(watch)), WARM
 
 
 def _reporter(watch: Watch) -> Callable[[Iteration], None]:

@@ -32,7 +32,6 @@ from kingpost.core.measures.base import Settings
 from kingpost.core.measures.common import reason
 from kingpost.core.measures.vectors import distribution, node_vector
 from kingpost.core.result import Result, Seconds, Stop
-from kingpost.core.structure import analyse
 from kingpost.core.watch import Watch
 
 LOOSER = 16  # how much more error is allowed after a change than before
@@ -162,7 +161,6 @@ def resolve(
         start = (result.scores if found is None else found.scores)[nodes]
         watch.report("changing the graph")
         changed, _ = edited(graph, edit, watch)
-        changed.__dict__["structure"] = analyse(changed, watch)  # where it can be cancelled
         after, method = solve_near(result.measure, changed, settings, start, watch)
         watch.check()
         return after, method, visits + after.edge_visits

@@ -5,14 +5,18 @@ from __future__ import annotations
 import dataclasses
 import math
 import re
+import time
 from collections.abc import Callable, Generator, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any, TypeVar
 
 from kingpost.core.errors import SettingsError
-from kingpost.core.graph import Flow, Graph
+from kingpost.core.graph import Floats, Flow, Graph
 from kingpost.core.result import Iteration, Result
+from kingpost.core.structure import structure_of
 from kingpost.core.watch import Watch
+
+_PROMPT = 4_000_000  # stored edges whose structure is found in less than 0.1 s
 
 Solve = Generator[Iteration, None, Result]
 
@@ -111,21 +115,40 @@ class Measure:
         title: a few words for a heading.
         settings: the Settings class.
         solver: ``solver(graph, settings, watch)``, a generator of Iterations that returns a
-            Result.  It must look at ``watch.cancelled`` at least five times a second and then
-            return its best iterate.
+            Result; it may take ``start``, scores of a near problem, too.  It must look at
+            ``watch.cancelled`` at least five times a second and then return its best iterate.
+        structured: whether the solver looks at ``graph.structure``; it is then found beforehand.
     """
 
     name: str
     letter: str
     title: str
     settings: type[Settings]
-    solver: Callable[[Graph, Any, Watch], Solve]
+    solver: Callable[..., Solve]
+    structured: bool = True
 
     def solve(
-        self, graph: Graph, settings: Settings | None = None, watch: Watch | None = None
+        self,
+        graph: Graph,
+        settings: Settings | None = None,
+        watch: Watch | None = None,
+        start: Floats | None = None,
     ) -> Solve:
-        """Start a solve; drive the generator, or hand it to :func:`finish`."""
-        return self.solver(graph, settings or self.settings(), watch or Watch())
+        """Start a solve; drive the generator, or hand it to :func:`finish`.
+
+        ``start`` are scores of a near problem, shape (n,), for solvers that take them.
+        Cancelled, it returns the best there is.  On a large graph the first step may raise
+        Interrupted: where there is nothing at all yet, not even the structure of the graph.
+        """
+        watch = watch or Watch()
+        began = time.perf_counter()
+        if self.structured:
+            structure_of(graph, watch if graph.stored > _PROMPT else Watch())
+        taken = time.perf_counter() - began
+        near = () if start is None else (start,)
+        found = yield from self.solver(graph, settings or self.settings(), watch, *near)
+        seconds = replace(found.seconds, prepare=found.seconds.prepare + taken)
+        return replace(found, seconds=seconds)
 
     def rank(
         self,

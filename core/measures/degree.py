@@ -78,4 +78,4 @@ def _coarse(weights: Floats) -> bool:
     return True
 
 
-MEASURE = Measure("degree", "D", "degree", DegreeSettings, solve)
+MEASURE = Measure("degree", "D", "degree", DegreeSettings, solve, structured=False)

@@ -193,4 +193,4 @@ def _fed_by_none(pull: Any) -> Any:
     return pull.degrees == loops
 
 
-MEASURE = Measure("harmonic", "N", "harmonic", HarmonicSettings, solve)
+MEASURE = Measure("harmonic", "N", "harmonic", HarmonicSettings, solve, structured=False)

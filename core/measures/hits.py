@@ -228,4 +228,4 @@ def doubled(graph: Graph) -> Graph:
     return Graph(labels, rows, rows, directed=False)
 
 
-MEASURE = Measure("hits", "H", "HITS", HitsSettings, solve)
+MEASURE = Measure("hits", "H", "HITS", HitsSettings, solve, structured=False)

@@ -355,4 +355,4 @@ class _Work:
         return colours(pairs, self.inside.astype(np.float64), self.watch, pools=pools)
 
 
-MEASURE = Measure("votes", "V", "ratings by votes", VotesSettings, solve)
+MEASURE = Measure("votes", "V", "ratings by votes", VotesSettings, solve, structured=False)

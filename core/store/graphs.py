@@ -14,7 +14,7 @@ import pyarrow as pa
 from kingpost.core.graph import Account, Adjacency, Graph, Origin
 from kingpost.core.store.code import libraries, version_of
 from kingpost.core.store.sealed import Draft, StoreTrouble, hash_text, read_files, read_manifest
-from kingpost.core.structure import Structure, analyse
+from kingpost.core.structure import Structure, structure_of
 from kingpost.core.watch import Watch
 
 KIND = "graph"
@@ -28,9 +28,7 @@ def write_graph(graph: Graph, draft: Draft, watch: Watch, more: Mapping[str, Any
         OSError: if the system refuses.
         Interrupted: if the watch was cancelled.
     """
-    structure = graph.__dict__.get("structure")
-    if structure is None:
-        structure = graph.__dict__["structure"] = analyse(graph, watch)
+    structure = structure_of(graph, watch)
     try:
         draft.arrays("labels.arrow", {"id": graph.labels})
         _write_adjacency(draft, "outward", graph.outward)

@@ -14,7 +14,9 @@ from scipy.sparse.csgraph import connected_components
 from kingpost.core import gallery, structure
 from kingpost.core.errors import Interrupted
 from kingpost.core.graph import Graph
-from kingpost.core.structure import analyse, reachable, row_pieces, weak_components
+from kingpost.core.measures import measure
+from kingpost.core.result import Stop
+from kingpost.core.structure import analyse, reachable, row_pieces, structure_of, weak_components
 from kingpost.core.watch import Watch
 
 examples = settings(deadline=None, max_examples=150)
@@ -123,3 +125,18 @@ def test_graphs_without_edges(n: int) -> None:
     found = analyse(build(n, []))
     assert (found.count, found.acyclic, found.share_iterated) == (n, True, 0.0)
     assert weak_components(build(n, [])).tolist() == list(range(n))
+
+
+def test_structure_is_looked_for_where_that_can_be_cancelled(monkeypatch) -> None:
+    graph = build(4, [(0, 1), (1, 2), (2, 0), (2, 3)])
+    watch = Watch(threads=1)
+    watch.cancel()
+    # Small: found anyhow, and the solver returns what it has.
+    small = measure("surfer").rank(build(4, [(0, 1), (1, 2), (2, 0), (2, 3)]), None, watch)
+    assert small.stop is Stop.CANCELLED
+    monkeypatch.setattr("kingpost.core.measures.base._PROMPT", 3)
+    with pytest.raises(Interrupted):
+        measure("surfer").rank(graph, None, watch)
+    assert "structure" not in graph.__dict__
+    assert measure("surfer").rank(graph).seconds.prepare > 0
+    assert structure_of(graph, watch) is graph.structure
