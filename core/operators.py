@@ -92,8 +92,7 @@ class Pull:
 
     def edges_of(self, nodes: Order) -> int:
         """Number of stored entries in the rows of ``nodes``."""
-        long = nodes.astype(np.int64)
-        return int((self.rows.offsets[long + 1] - self.rows.offsets[long]).sum())
+        return entries_of(self.rows, nodes, 0, len(nodes))
 
 
 def given_back(
@@ -120,6 +119,13 @@ def given_back(
 
     parts = each(lane, lanes, watch.threads)
     return parts[0] if len(parts) == 1 else np.sum(parts, axis=0)
+
+
+def entries_of(rows: Adjacency, order: Order, low: int, high: int) -> int:
+    """Number of entries in the rows ``order[low:high]``."""
+    from kingpost.core.kernels.rows import entries
+
+    return int(entries(rows.offsets, order, low, high))
 
 
 def cut(rows: Adjacency, order: Order, low: int, high: int, edges: int) -> list[tuple[int, int]]:

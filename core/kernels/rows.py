@@ -89,6 +89,17 @@ def cuts(offsets, order, low, high, cost, row, ends):  # type: ignore[no-untyped
 
 
 @kernel()
+def entries(offsets, order, low, high):  # type: ignore[no-untyped-def]
+    """Number of entries in the rows ``order[low:high]``."""
+    one = np.uint64(1)
+    total = np.int64(0)
+    for k in range(np.uint64(low), np.uint64(high)):
+        i = np.uint64(order[k])
+        total += offsets[i + one] - offsets[i]
+    return total
+
+
+@kernel()
 def copy_rows(order, low, high, origin, target):  # type: ignore[no-untyped-def]
     """``target[i] = origin[i]`` for the nodes ``order[low:high]``."""
     for k in range(np.uint64(low), np.uint64(high)):

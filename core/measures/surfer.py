@@ -170,6 +170,8 @@ class Jump:
 
     def __init__(self, graph: Graph, settings: SurferSettings, dangling: NDArray[np.bool_]) -> None:
         self.graph, self.settings, self.dangling = graph, settings, dangling
+        # What was judged last, for that is what is asked for in the end.
+        self._last: tuple[Floats, Residual, tuple[Floats, Bound]] | None = None
         n = graph.n
         self.uniform = settings.teleport is None
         self.teleport: Floats = (
@@ -191,6 +193,11 @@ class Jump:
 
         With S = sum(y) the residual of y / S in the full system is ``(r - v sum(r)) / S``.
         """
+        if self._last is None or self._last[0] is not y or self._last[1] is not r:
+            self._last = y, r, self._pseudo(y, r)
+        return self._last[2]
+
+    def _pseudo(self, y: Floats, r: Residual) -> tuple[Floats, Bound]:
         total = float(y.sum())
         if not total > 0:
             return y, Bound(BoundKind.NONE, float("inf"))

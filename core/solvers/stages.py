@@ -12,7 +12,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from kingpost.core.graph import Adjacency, Flow
-from kingpost.core.operators import ROW, Order, cut
+from kingpost.core.operators import ROW, Order, cut, entries_of
 from kingpost.core.structure import Structure
 
 _LARGE = 0.02  # share of all cyclic edges above which a component is a stage of its own
@@ -105,14 +105,9 @@ def _marked(cyclic: NDArray[np.int64], large: set[int]) -> list[int]:
     return keep
 
 
-def _count(rows: Adjacency, order: Order, low: int, high: int) -> int:
-    nodes = order[low:high].astype(np.int64)
-    return int((rows.offsets[nodes + 1] - rows.offsets[nodes]).sum())
-
-
 def _once(stages: list[Stage], rows: Adjacency, order: Order, low: int, high: int) -> None:
     if low < high:
-        edges = _count(rows, order, low, high)
+        edges = entries_of(rows, order, low, high)
         pieces = cut(rows, order, low, high, _PIECE)
         stages.append(Stage(low, high, False, edges, [[piece] for piece in pieces]))
 
@@ -124,7 +119,7 @@ def swept_stage(rows: Adjacency, order: Order, low: int, high: int) -> Stage:
     one way that costs sweeps, on the layered bench graph of 3.4 million edges twice as many in
     eight blocks, so small stages are left whole and large ones cut fine.
     """
-    edges = _count(rows, order, low, high)
+    edges = entries_of(rows, order, low, high)
     if edges < _SPLIT:
         return Stage(low, high, True, edges, [[(low, high)]])
     blocks = _LANES * round(edges / (_LANES * _BLOCK))
