@@ -163,6 +163,9 @@ class _Work:
                 width=self._width(), max_steps=self.settings.max_sweeps, watch=self.watch,
                 only=only, start=start,
                 gives=self.laid.there(strengths(self.graph, self.settings.flow)),
+                scores=self.settings.tol
+                if self.settings.certificate == "componentwise"
+                else None,
             ),
             "bracket",
         )  # fmt: skip

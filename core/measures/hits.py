@@ -74,7 +74,7 @@ def solve(graph: Graph, settings: HitsSettings, watch: Watch) -> Solve:
             )  # fmt: skip
         found: Bracketed = yield from work.ledger.relay(
             bracket(
-                work.matrix, work.structure, width=width_for(settings.tol),
+                work.matrix, work.structure, width=width_for(settings.tol), scores=settings.tol,
                 max_steps=settings.max_sweeps, watch=watch, only=only,
             ),
             "bracket",

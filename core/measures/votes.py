@@ -199,8 +199,8 @@ def solve(graph: Graph, settings: VotesSettings, watch: Watch) -> Solve:
     matrix, structure = work.ballot.matrix, work.ballot.structure
     found: Bracketed = yield from work.ledger.relay(
         bracket(
-            matrix, structure, width=width_for(settings.tol), max_steps=settings.max_sweeps,
-            watch=watch, only=work.group,
+            matrix, structure, width=width_for(settings.tol), scores=settings.tol,
+            max_steps=settings.max_sweeps, watch=watch, only=work.group,
         ),
         "bracket",
     )  # fmt: skip

@@ -32,6 +32,9 @@ _DENSE = 300  # components up to this size get their first vector from a dense s
 _PATIENCE = 24  # power steps before a slow component is handed to a Krylov solver
 _SAFE = 1.5  # movement of entries in the last sweep, as a share of the bracket's width asked for;
 # the bracket after it has a fifth to a half of that width on the bench graphs
+_PART = 0.25  # of the error of the scores that a bracket may leave once it is multiplied by the
+# amount that circulates (see Settling.amount)
+_LEAST = 1e-14  # width of a bracket; less is not to be had by double precision
 _LOOK = 3  # products after which the largest component need not be the only one left to be swept
 _WIDE = 4  # at most this many components are worth a Krylov solve each
 
@@ -79,13 +82,16 @@ def bracket(
     separate: bool = True,
     start: Floats | None = None,
     gives: Floats | None = None,
+    scores: float | None = None,
 ) -> Generator[Iteration, None, Bracketed]:
     """Bracket the spectral radius of ``matrix``; needs at least one cyclic component.
 
     Ends when the bracket's relative width is at most ``width`` and (with ``separate``) one
     component is proven dominating, or when rounding or ``max_steps`` allow no more.  ``only``
     names a single component to look at, ``start`` (n,) gives first vectors where it is positive,
-    ``gives`` (n,) first left vectors, such as what every node gives away.
+    ``gives`` (n,) first left vectors, such as what every node gives away.  With ``scores``, the
+    error the scores are to have in the end, rho is narrowed further than ``width`` where a left
+    vector says that they need it.
 
     If ``watch`` is cancelled the state so far is returned, marked ``cancelled``.
     """
@@ -94,9 +100,9 @@ def bracket(
         start = laid.there(start)
     work = _Brackets(laid.matrix(matrix), laid.structure, watch, only, start)
     work.gives = None if gives is None else laid.there(gives)
-    work.width = width
+    work.width, work.scores = width, scores
     try:
-        yield from _narrow(work, width, max_steps, separate)
+        yield from _narrow(work, max_steps, separate)
     except Interrupted:
         work.state.cancelled = True
     work.state.y = laid.back(work.state.y)
@@ -108,16 +114,14 @@ def bracket(
     return work.state
 
 
-def _narrow(
-    work: _Brackets, width: float, max_steps: int, separate: bool
-) -> Generator[Iteration, None, None]:
+def _narrow(work: _Brackets, max_steps: int, separate: bool) -> Generator[Iteration, None, None]:
     if work.settling:
         yield from work.settle()
     while True:
         yield work.step()
         state = work.state
         rho_low, rho_high = state.rho
-        narrow = rho_high - rho_low <= width * rho_high
+        narrow = rho_high - rho_low <= work.width * rho_high
         if narrow and (state.decided or not separate):
             return
         if state.steps >= max_steps or work.stuck:
@@ -152,6 +156,7 @@ class _Brackets:
             y[self.nodes] = np.where(near > 0, np.maximum(near / top, 1e-200), 1.0)
         self.stuck = False
         self.width = 0.0
+        self.scores: float | None = None
         self._since = 0
         self._widths: list[float] = []
         self._shift = 0.0  # of the middle of the bracket, once iterates are seen to swing
@@ -280,10 +285,14 @@ class _Brackets:
         """Gauss-Seidel sweeps; kept only if the vector they lead to is positive."""
         self._unsettled -= 1
         # As far as the bracket asked for needs, by experience; further if that was too short.
-        enough = _SAFE * self.width * (0.0, 0.01, 1.0)[self._unsettled]
+        further = (0.0, 0.01, 1.0)[self._unsettled]
+        enough = _SAFE * further * (self.width if self.scores is None else _PART * self.scores)
         first = int(self.firsts[self.leader])
         nodes = self.nodes[first : first + int(self.sizes[self.leader])]
-        work = Settling(self.matrix, nodes, self.state.y, self.watch, enough, self.gives)
+        work = Settling(
+            self.matrix, nodes, self.state.y, self.watch, enough, self.gives,
+            shared=self.scores is not None,
+        )  # fmt: skip
         edges = self.matrix.edges_of(nodes)
         for moved in work.run():
             self.state.steps += 1
@@ -292,6 +301,8 @@ class _Brackets:
         self.state.edge_visits += edges  # for the left vector
         self.state.left = work.left
         if work.sound:
+            if self.scores is not None:
+                self.width = max(_PART * self.scores / work.amount, _LEAST)
             self.state.y[nodes] = work.x[nodes] / work.x[nodes].max()
             self._exact = True
 

@@ -34,7 +34,8 @@ _TAIL = 2  # sweeps after that, for entries too small to show in the sum
 class Settling:
     """Sweeps over ``nodes`` from the vector ``y``, positive there; shape (n,).
 
-    They end once no entry moves by more than ``enough`` of itself, or nothing moves any more.
+    They end once no entry moves by more than ``enough`` of itself, or nothing moves any more;
+    with ``shared`` by more than ``enough`` over the ``amount``.
     ``gives`` (n,) is a first left vector, by default what every node gives to ``nodes``.  ``x``
     is the iterate, zero elsewhere; ``left`` the left vector once known; ``sound`` says whether x
     is still positive and finite.
@@ -48,8 +49,10 @@ class Settling:
         watch: Watch,
         enough: float = 0.0,
         gives: Floats | None = None,
+        shared: bool = False,
     ) -> None:
-        self.matrix, self.watch, self.enough = matrix, watch, enough
+        self.matrix, self.watch = matrix, watch
+        self.enough, self.shared = enough, shared
         self.nodes: Order = nodes
         self.x: Floats = np.zeros(matrix.n)
         self.x[nodes] = y[nodes] / y[nodes].max()
@@ -87,7 +90,9 @@ class Settling:
             root = swept.image / swept.weight if swept.weight > 0 else np.nan
             share = swept.moved / swept.mass if swept.mass > 0 else np.inf
             yield share
-            if swept.farthest <= self.enough:
+            if swept.farthest <= self.enough and (
+                not self.shared or swept.farthest * self.amount <= self.enough
+            ):
                 break
             worse = worse + 1 if not share < least else 0
             slow = slow + 1 if share > SLOW * earlier else 0
@@ -104,6 +109,17 @@ class Settling:
                 mixing.mix(self.x, self.matrix.scale, z)
         inside = self.x[self.nodes]
         self.sound = bool(np.isfinite(inside).all() and (inside > 0).all())
+
+    @property
+    def amount(self) -> float:
+        """How many times as much circulates in all as runs through the node most runs through.
+
+        About the factor between what is known of rho and what can be proven of the scores: the
+        guard of :mod:`kingpost.core.solvers.pinned` is nearly as many times the vector.
+        """
+        assert self.left is not None
+        through = self.left[self.nodes] * self.x[self.nodes]
+        return float(through.sum() / through.max())
 
     def _given(self, values: Floats) -> Floats:
         """``B^T values``, shape (n,), of values in the block alone."""
