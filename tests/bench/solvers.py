@@ -147,7 +147,7 @@ def main() -> None:
     if importlib.util.find_spec("kingpost") is None:
         parser.error("kingpost is not installed in this environment")
     words = asked.contestants or [""]
-    names = [kind.name for kind in ALL if any(word in kind.name for word in words)]
+    names = [kind.name for kind in ALL if any(word.lower() in kind.name.lower() for word in words)]
     began, load = time.time(), os.getloadavg()[0]
     report: dict[str, Any] = {"graphs": {}, "ways": []}
     with tempfile.TemporaryDirectory() as scratch:
