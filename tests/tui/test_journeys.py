@@ -6,6 +6,7 @@ Nothing waits for time: :func:`until` gives the application turns until a condit
 from __future__ import annotations
 
 import asyncio
+import threading
 
 import pytest
 
@@ -13,7 +14,9 @@ from kingpost.core.errors import InputError
 from kingpost.tui import terminal
 from kingpost.tui.app import KingpostApp
 from kingpost.tui.models.sitting import Sitting
+from kingpost.tui.views import standings
 from kingpost.tui.views.loading import LoadingView
+from kingpost.tui.views.standings import StandingsView
 from kingpost.tui.widgets.lines import Line, Rule
 
 
@@ -66,6 +69,32 @@ async def test_standings_name_what_they_show(app):
         assert lines[3].split() == ["rank▴", "node", "plain", "mirror", "in", "out", "team", "tier"]
         assert lines[4].split() == ["┃▸", "1", "gate", "6.00", "6", "4", "1", "blue", "2"]
         assert "weight from  kiosk 50%" in app.screen.query_one("#supports", Line).plain
+
+
+async def test_what_is_looked_for_while_another_table_comes_is_found_in_that(app, monkeypatch):
+    async with app.run_test(size=(80, 24)) as pilot:
+        await opened(pilot)
+        replaced = threading.Event()
+        asked = []  # arrangements that were searched
+
+        def show(self, table, before=StandingsView.show):
+            before(self, table)
+            replaced.set()
+
+        def look(model, arranged, text, before=standings.search):
+            asked.append(arranged)
+            if len(asked) == 1:
+                app.call_from_thread(app.desk.arrange, sort="in")
+                assert replaced.wait(30)
+            return before(model, arranged, text)
+
+        monkeypatch.setattr(StandingsView, "show", show)
+        monkeypatch.setattr(standings, "search", look)
+        await pilot.press("slash", *"QU", "enter")
+        await until(pilot, lambda: "1 of 1 names with 'QU'" in app.shown())
+        assert len(asked) == 2
+        assert asked[1] is app.screen.model.arrangement is not asked[0]
+        assert app.screen.model.graph.label(app.screen.model.node) == "quay"
 
 
 async def test_sort_find_and_filter(app):

@@ -11,7 +11,7 @@ from kingpost.core.text import visible
 from kingpost.tui.models import detail, rowquery
 from kingpost.tui.models.drawing import wrap
 from kingpost.tui.models.node import MANY, centre
-from kingpost.tui.models.standings import Found, Standings, search
+from kingpost.tui.models.standings import Arrangement, Found, Standings, search
 from kingpost.tui.rooms import STANDINGS
 from kingpost.tui.views.columns import ColumnsSheet
 from kingpost.tui.views.nodepanel import NodePanel
@@ -272,12 +272,14 @@ class StandingsView(RowsView):
         self.kingpost.background(
             "find",
             lambda job: search(model, arranged, text),
-            lambda found: self._searched(found, model),
+            lambda found: self._searched(found, model, arranged),
             words="finding",
         )
 
-    def _searched(self, found: Found, model: Standings) -> None:
-        if model is not self.model:
+    def _searched(self, found: Found, model: Standings, arranged: Arrangement) -> None:
+        if model is not self.model or arranged is not model.arrangement:
+            # Another table, or another order, has come meanwhile: what was typed counts there too.
+            self.find(found.text)
             return
         model.found = found
         self.table.refresh()
