@@ -228,6 +228,13 @@ class KingpostApp(App[int], inherit_bindings=False):
             # the screen it began with.
             self.push_screen(self._start())
 
+    def noted(self) -> None:
+        """A table has been noted among those opened lately: Start may have been quicker."""
+        from kingpost.tui.views.start import StartView
+
+        if isinstance(self.screen, StartView):
+            self.screen.look_again()
+
     def leave(self, status: int) -> None:
         """Leave with an exit status; the terminal is restored by the driver."""
         self._put_away()
@@ -387,6 +394,9 @@ class KingpostApp(App[int], inherit_bindings=False):
             self.latest_news = (self._trouble, "bad")
             self._trouble = ""
             self.push_screen(StandingsView(table))
+            if not self.within.depth:
+                # What is kept and taken up again is the sitting over the whole.
+                self.opener.remember()
             # Once its widgets exist: the rest of a sitting that is taken up needs them.
             self.call_after_refresh(self._opened)
             return
@@ -395,13 +405,12 @@ class KingpostApp(App[int], inherit_bindings=False):
         self.refreshed()
 
     def _opened(self) -> None:
-        if self.within.depth:
-            return  # what is kept and taken up again is the sitting over the whole
+        if self.within.depth or self._desk is None:
+            return
         shown = self.standings_shown
         if shown is None or not shown.composed:
             self.call_after_refresh(self._opened)
             return
-        self.opener.remember()
         self.resumer.opened()
 
     def swept(self, job: Job) -> None:

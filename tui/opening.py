@@ -309,7 +309,9 @@ class Opener:
             recent.note(paths, graph.n, graph.m, options)
 
         if self._load_given is None and "-" not in self.paths:
-            self._app.background("recent", work, lambda _: None, words="noting the table")
+            self._app.background(
+                "noting", work, lambda _: self._app.noted(), words="noting the table"
+            )
 
 
 def _known_options(given: Mapping[str, Any]) -> LoadOptions:

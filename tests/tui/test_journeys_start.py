@@ -2,12 +2,15 @@
 
 from __future__ import annotations
 
+import threading
+
 import pyarrow as pa
 import pyarrow.parquet as pq
 import pytest
 
 from kingpost.tui import terminal
 from kingpost.tui.app import KingpostApp
+from kingpost.tui.models import recent
 from kingpost.tui.opening import ASK
 from tests.tui.test_journeys import Kingpost, opened, until
 
@@ -51,7 +54,7 @@ async def test_a_table_is_chosen_and_offered_the_next_time(folder):
         await pilot.press("down", "enter")
         await opened(pilot)
         assert "calls.parquet   3 nodes" in app.shown()
-        await until(pilot, lambda: not app.runner.jobs("recent"))
+        await until(pilot, lambda: not app.runner.jobs("noting"))
         await pilot.press("x", "S")
         await until(pilot, lambda: app.screen.view == "start" and "3 nodes" in app.shown())
         assert "this sitting is kept" in app.shown()
@@ -69,6 +72,26 @@ async def test_a_table_is_chosen_and_offered_the_next_time(folder):
         await until(pilot, lambda: "no longer there" in app.shown())
         await pilot.press("enter")
         await until(pilot, lambda: "it is no longer there: " in app.shown())
+
+
+async def test_start_is_told_of_a_table_that_is_noted_after_it_opened(folder, monkeypatch):
+    back = threading.Event()
+
+    def note(*about, before=recent.note):
+        assert back.wait(30)
+        before(*about)
+
+    monkeypatch.setattr(recent, "note", note)
+    app = Started()
+    async with app.run_test(size=(80, 24)) as pilot:
+        await started(pilot)
+        await pilot.press("down", "enter")
+        await opened(pilot)
+        await pilot.press("S")
+        await until(pilot, lambda: app.screen.view == "start" and not app.runner.jobs("recent"))
+        assert "nothing was opened yet" in app.shown()
+        back.set()
+        await until(pilot, lambda: "opened lately" in app.shown() and "3 nodes" in app.shown())
 
 
 async def test_what_cannot_be_read_comes_back_to_start_with_its_sentence(folder):

@@ -91,7 +91,7 @@ class StartView(RowsView):
 
     def look_again(self) -> None:
         """Read the list of tables opened lately and the folder, in jobs."""
-        # In the lane in which the list is written: what was opened just now is read with the rest.
+        # Once what was opened just now has been noted, it is read again: see KingpostApp.noted.
         self.kingpost.background(
             "recent", self._read_lately, self._show_lately, words="reading what was opened lately"
         )
