@@ -30,7 +30,7 @@ from kingpost.core.measures.common import (
 )
 from kingpost.core.operators import Pull, adjacency, strengths
 from kingpost.core.result import Bound, BoundKind, Iteration, Result, Stop
-from kingpost.core.solvers.dominating import Block, sharpen, width_for
+from kingpost.core.solvers.dominating import Block, sharpen
 from kingpost.core.solvers.ledger import Ledger
 from kingpost.core.solvers.linear import System
 from kingpost.core.solvers.linear import solve as solve_linear
@@ -157,15 +157,13 @@ class _Work:
     def _bracketed(self, only: int | None) -> Generator[Iteration, None, Bracketed]:
         """The bracket of one component, or of all; kept as the best there is if cancelled."""
         start = None if self.start is None else self.laid.there(self.start)
+        tol = self.settings.tol
         found: Bracketed = yield from self.ledger.relay(
             bracket(
                 self.matrix, self.structure,
-                width=self._width(), max_steps=self.settings.max_sweeps, watch=self.watch,
-                only=only, start=start,
+                max_steps=self.settings.max_sweeps, watch=self.watch, only=only, start=start,
                 gives=self.laid.there(strengths(self.graph, self.settings.flow)),
-                scores=self.settings.tol
-                if self.settings.certificate == "componentwise"
-                else None,
+                width=tol, scores=tol if self.settings.certificate == "componentwise" else None,
             ),
             "bracket",
         )  # fmt: skip
@@ -177,15 +175,6 @@ class _Work:
                 self.bound = Bound(BoundKind.BRACKET, (high - low) / high)
             raise Interrupted("cancelled")
         return found
-
-    def _width(self) -> float:
-        """How well rho must be known for what was asked."""
-        settings = self.settings
-        return (
-            width_for(settings.tol)
-            if settings.certificate == "componentwise"
-            else max(settings.tol, 1e-14)
-        )
 
     def _last_of_chain(self, found: Bracketed) -> int | None:
         """Of components that tie, the one all others feed: then it alone has a vector."""

@@ -28,7 +28,7 @@ from kingpost.core.measures.base import Measure, Settings, Solve, option
 from kingpost.core.measures.common import Clock, conventions, empty, proven_prefix, reason, refused
 from kingpost.core.operators import Pull, adjacency
 from kingpost.core.result import Bound, BoundKind, Result, Stop
-from kingpost.core.solvers.dominating import Block, sharpen, width_for
+from kingpost.core.solvers.dominating import Block, sharpen
 from kingpost.core.solvers.ledger import Ledger
 from kingpost.core.solvers.perron import Bracketed, bracket
 from kingpost.core.solvers.pinned import normalised_reach, support
@@ -74,7 +74,7 @@ def solve(graph: Graph, settings: HitsSettings, watch: Watch) -> Solve:
             )  # fmt: skip
         found: Bracketed = yield from work.ledger.relay(
             bracket(
-                work.matrix, work.structure, width=width_for(settings.tol), scores=settings.tol,
+                work.matrix, work.structure, scores=settings.tol,
                 max_steps=settings.max_sweeps, watch=watch, only=only,
             ),
             "bracket",

@@ -38,7 +38,7 @@ from kingpost.core.measures.common import Clock, conventions, empty, proven_pref
 from kingpost.core.operators import Pull
 from kingpost.core.parallel import each
 from kingpost.core.result import Bound, BoundKind, Result, Stop
-from kingpost.core.solvers.dominating import Block, sharpen, width_for
+from kingpost.core.solvers.dominating import Block, sharpen
 from kingpost.core.solvers.ledger import Ledger
 from kingpost.core.solvers.perron import Bracketed, bracket
 from kingpost.core.solvers.pinned import normalised_reach, support
@@ -199,7 +199,7 @@ def solve(graph: Graph, settings: VotesSettings, watch: Watch) -> Solve:
     matrix, structure = work.ballot.matrix, work.ballot.structure
     found: Bracketed = yield from work.ledger.relay(
         bracket(
-            matrix, structure, width=width_for(settings.tol), scores=settings.tol,
+            matrix, structure, scores=settings.tol,
             max_steps=settings.max_sweeps, watch=watch, only=work.group,
         ),
         "bracket",

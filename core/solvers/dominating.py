@@ -31,12 +31,6 @@ from kingpost.core.structure import Structure
 from kingpost.core.watch import Watch
 
 _ROUNDS = 12
-_MARGIN = 0.03  # a score is known some tens of times worse than rho, by experience
-
-
-def width_for(tol: float) -> float:
-    """How narrow a bracket of rho must be for the scores to be known to ``tol`` in the end."""
-    return max(_MARGIN * tol, 1e-14)
 
 
 @dataclass

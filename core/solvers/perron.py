@@ -32,6 +32,7 @@ _DENSE = 300  # components up to this size get their first vector from a dense s
 _PATIENCE = 24  # power steps before a slow component is handed to a Krylov solver
 _SAFE = 1.5  # movement of entries in the last sweep, as a share of the bracket's width asked for;
 # the bracket after it has a fifth to a half of that width on the bench graphs
+_MARGIN = 0.03  # a score is known some tens of times worse than rho, by experience
 _PART = 0.25  # of the error of the scores that a bracket may leave once it is multiplied by the
 # amount that circulates (see Settling.amount)
 _LEAST = 1e-14  # width of a bracket; less is not to be had by double precision
@@ -75,13 +76,13 @@ def bracket(
     matrix: Pull,
     structure: Structure,
     *,
-    width: float,
     max_steps: int,
     watch: Watch,
     only: int | None = None,
     separate: bool = True,
     start: Floats | None = None,
     gives: Floats | None = None,
+    width: float = 0.0,
     scores: float | None = None,
 ) -> Generator[Iteration, None, Bracketed]:
     """Bracket the spectral radius of ``matrix``; needs at least one cyclic component.
@@ -89,9 +90,9 @@ def bracket(
     Ends when the bracket's relative width is at most ``width`` and (with ``separate``) one
     component is proven dominating, or when rounding or ``max_steps`` allow no more.  ``only``
     names a single component to look at, ``start`` (n,) gives first vectors where it is positive,
-    ``gives`` (n,) first left vectors, such as what every node gives away.  With ``scores``, the
-    error the scores are to have in the end, rho is narrowed further than ``width`` where a left
-    vector says that they need it.
+    ``gives`` (n,) first left vectors, such as what every node gives away.  ``scores`` is the error
+    that the scores are to have in the end: the width is then what they need, by experience until
+    a left vector can tell.
 
     If ``watch`` is cancelled the state so far is returned, marked ``cancelled``.
     """
@@ -100,7 +101,8 @@ def bracket(
         start = laid.there(start)
     work = _Brackets(laid.matrix(matrix), laid.structure, watch, only, start)
     work.gives = None if gives is None else laid.there(gives)
-    work.width, work.scores = width, scores
+    work.width = max(width if scores is None else _MARGIN * scores, _LEAST)
+    work.scores = scores
     try:
         yield from _narrow(work, max_steps, separate)
     except Interrupted:
@@ -299,7 +301,8 @@ class _Brackets:
             self.state.edge_visits += edges
             yield self._line(moved, "settling sweep")
         self.state.edge_visits += edges  # for the left vector
-        self.state.left = work.left
+        if work.left is not None and np.isfinite(work.left).all():
+            self.state.left = work.left
         if work.sound:
             if self.scores is not None:
                 self.width = max(_PART * self.scores / work.amount, _LEAST)

@@ -27,7 +27,7 @@ from kingpost.core.solvers.sweeping import Weighing, sweep
 from kingpost.core.watch import Watch
 
 _SWEEPS = 40
-STILL = 1e-15  # a sweep that moves less than this share of the mass moves nothing
+_STILL = 1e-15  # a sweep that moves less than this share of the mass moves nothing
 _TAIL = 2  # sweeps after that, for entries too small to show in the sum
 
 
@@ -97,7 +97,7 @@ class Settling:
             worse = worse + 1 if not share < least else 0
             slow = slow + 1 if share > SLOW * earlier else 0
             least, earlier = min(least, share), share
-            still = still + 1 if share < STILL else 0
+            still = still + 1 if share < _STILL else 0
             if still > _TAIL or (worse > 2 and least < 1e-12):
                 break
             if not np.isfinite(share) or worse > 6:
