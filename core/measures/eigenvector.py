@@ -34,7 +34,7 @@ from kingpost.core.solvers.dominating import Block, sharpen
 from kingpost.core.solvers.ledger import Ledger
 from kingpost.core.solvers.linear import System
 from kingpost.core.solvers.linear import solve as solve_linear
-from kingpost.core.solvers.perron import Bracketed, bracket
+from kingpost.core.solvers.perron import LEAST, Bracketed, bracket
 from kingpost.core.solvers.pinned import normalised_reach, support
 from kingpost.core.solvers.tied import same_radius
 from kingpost.core.structure import downstream, reachable
@@ -157,13 +157,13 @@ class _Work:
     def _bracketed(self, only: int | None) -> Generator[Iteration, None, Bracketed]:
         """The bracket of one component, or of all; kept as the best there is if cancelled."""
         start = None if self.start is None else self.laid.there(self.start)
-        tol = self.settings.tol
+        tol, every = self.settings.tol, self.settings.certificate == "componentwise"
         found: Bracketed = yield from self.ledger.relay(
             bracket(
                 self.matrix, self.structure,
                 max_steps=self.settings.max_sweeps, watch=self.watch, only=only, start=start,
                 gives=self.laid.there(strengths(self.graph, self.settings.flow)),
-                width=tol, scores=tol if self.settings.certificate == "componentwise" else None,
+                width=max(tol, LEAST), scores=tol if every else None,
             ),
             "bracket",
         )  # fmt: skip

@@ -35,7 +35,7 @@ _SAFE = 1.5  # movement of entries in the last sweep, as a share of the bracket'
 _MARGIN = 0.03  # a score is known some tens of times worse than rho, by experience
 _PART = 0.25  # of the error of the scores that a bracket may leave once it is multiplied by the
 # amount that circulates (see Settling.amount)
-_LEAST = 1e-14  # width of a bracket; less is not to be had by double precision
+LEAST = 1e-14  # width of a bracket; less is not to be had by double precision
 _LOOK = 3  # products after which the largest component need not be the only one left to be swept
 _WIDE = 4  # at most this many components are worth a Krylov solve each
 
@@ -101,7 +101,7 @@ def bracket(
         start = laid.there(start)
     work = _Brackets(laid.matrix(matrix), laid.structure, watch, only, start)
     work.gives = None if gives is None else laid.there(gives)
-    work.width = max(width if scores is None else _MARGIN * scores, _LEAST)
+    work.width = width if scores is None else max(_MARGIN * scores, LEAST)
     work.scores = scores
     try:
         yield from _narrow(work, max_steps, separate)
@@ -305,7 +305,7 @@ class _Brackets:
             self.state.left = work.left
         if work.sound:
             if self.scores is not None:
-                self.width = max(_PART * self.scores / work.amount, _LEAST)
+                self.width = max(_PART * self.scores / work.amount, LEAST)
             self.state.y[nodes] = work.x[nodes] / work.x[nodes].max()
             self._exact = True
 
